@@ -1,0 +1,1 @@
+"""What people see: one file per command, tables and documents."""

@@ -1,0 +1,1 @@
+"""The demo: an invented distributor with invented makers, models, sites, stock and bundles."""
