@@ -1,0 +1,200 @@
+"""The year of one module on one plane: irradiance, cell temperature, power, voltage; condensed to classes."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from matcher.errors import MatcherError
+
+if TYPE_CHECKING:
+    import numpy as np
+
+    from matcher.singlediode import SixParameters
+    from matcher.weather import Weather
+
+ALBEDO = 0.2
+FAIMAN_U0 = 25.0  # [W/m2/K]
+FAIMAN_U1 = 6.84  # [W/m2/K per m/s]
+
+
+@dataclass(frozen=True, slots=True)
+class PlaneYear:
+    """Sunlit intervals of one year on one plane, arrays of one length.
+
+    irradiance [W/m2] on the plane, cell_c [degC], hours [h] that each entry stands for, rows: the entries of
+    the weather they come from.
+    """
+
+    irradiance: np.ndarray
+    cell_c: np.ndarray
+    hours: np.ndarray
+    rows: np.ndarray
+
+    @property
+    def irradiation_kwh_m2(self) -> float:
+        """Yearly irradiation on the plane [kWh/m2]."""
+        return float(self.irradiance @ self.hours) / 1000
+
+
+@dataclass(frozen=True, slots=True)
+class ModuleYear:
+    """One year of one module, hour by hour or in classes, arrays of one length.
+
+    power_w [W] and vmp_v [V] of the module at its maximum power point, power after DC losses; hours [h] that
+    each entry stands for.
+    """
+
+    power_w: np.ndarray
+    vmp_v: np.ndarray
+    hours: np.ndarray
+
+    @property
+    def energy_kwh(self) -> float:
+        """Yearly energy of the module after DC losses [kWh]."""
+        return float(self.power_w @ self.hours) / 1000
+
+
+def plane_year(weather: Weather, tilt: float, azimuth: float) -> PlaneYear:
+    """Irradiance on a plane and cell temperature over the year.
+
+    Transposition by Hay and Davies with albedo 0.2, cell temperature by Faiman with u0 = 25 and u1 = 6.84
+    and the wind of the weather, both by pvlib. No reflection, soiling, snow or spectral loss. A file that
+    holds irradiance on a plane instead is taken as it is, where the plane is the one asked for.
+
+    Parameters
+    ----------
+    weather
+        The year.
+    tilt, azimuth
+        Of the plane [deg]: from the horizontal, and clockwise from north.
+
+    Returns
+    -------
+    PlaneYear
+        The intervals with irradiance above 0.
+
+    Raises
+    ------
+    MatcherError
+        When the file holds irradiance on another plane.
+
+    References
+    ----------
+    Hay and Davies 1980; Faiman 2008, doi:10.1002/pip.813
+    """
+    import numpy as np
+    from pvlib.temperature import faiman
+
+    if weather.plane is not None:
+        given = weather.plane
+        turned = abs((given.azimuth - azimuth + 180) % 360 - 180)
+        if abs(given.tilt - tilt) > 0.5 or (turned > 0.5 and given.tilt > 0.5):
+            raise MatcherError(
+                f"the {weather.kind} file of {weather.name} holds irradiance on a plane of tilt {given.tilt:g}, azimuth "
+                f"{given.azimuth:g} deg only; ask for that plane, or fetch the file with slope 0 and its components"
+            )
+        total, rows = given.global_, np.arange(given.global_.size)
+    else:
+        from pvlib.irradiance import get_extra_radiation, get_total_irradiance
+
+        rows = np.flatnonzero((weather.ghi > 0) | (weather.dhi > 0) | (weather.dni > 0))
+        zenith, sun_azimuth = (angle[rows] for angle in weather.sun)
+        total = get_total_irradiance(
+            tilt, azimuth, zenith, sun_azimuth,
+            dni=weather.dni[rows], ghi=weather.ghi[rows], dhi=weather.dhi[rows],
+            dni_extra=get_extra_radiation(weather.times[rows].dayofyear.to_numpy()),
+            albedo=ALBEDO, model="haydavies",
+        )["poa_global"]  # fmt: skip
+        total = np.asarray(total)
+    lit = total > 0  # drops NaN too
+    rows, total = rows[lit], total[lit]
+    cell_c = faiman(total, weather.temp_air[rows], weather.wind_speed[rows], u0=FAIMAN_U0, u1=FAIMAN_U1)
+    return PlaneYear(total, np.asarray(cell_c), weather.hours[rows], rows)
+
+
+def module_year(params: SixParameters, plane: PlaneYear, dc_loss_pct: float = 2.0) -> ModuleYear:
+    """Power and voltage of one module over the year.
+
+    Parameters
+    ----------
+    params
+        Of one module.
+    plane
+        Irradiance and cell temperature.
+    dc_loss_pct
+        DC losses, on power [%]; the voltage stays that of the module.
+
+    Returns
+    -------
+    ModuleYear
+        Entry by entry as in ``plane``. An entry without a finite maximum power point counts as no power.
+    """
+    import numpy as np
+
+    from matcher.singlediode import max_power_point
+
+    vmp, imp = max_power_point(params, plane.irradiance, plane.cell_c)
+    usable = np.isfinite(vmp) & np.isfinite(imp) & (vmp > 0) & (imp > 0)
+    power = np.where(usable, vmp * imp, 0.0) * (1 - dc_loss_pct / 100)
+    return ModuleYear(power, np.where(usable, vmp, 0.0), plane.hours)
+
+
+def condense(year: ModuleYear, classes: int = 300) -> ModuleYear:
+    """The same year in a few hundred classes of like power and like voltage.
+
+    Each class carries the sums of its entries' hours and energy and their mean voltage, so energy is exact,
+    and so is every loss that is linear over a class. What is left is the kink where an inverter or a tracker
+    begins to limit, within the classes that it cuts through. For a limit in power, or in current (power over
+    voltage), the error of one class is at most half the sum of hours times the distance from the class mean
+    (Jensen's inequality), so the class where that is largest is cut in two until there are enough of them.
+
+    Parameters
+    ----------
+    year
+        Entry by entry.
+    classes
+        How many classes at most.
+
+    Returns
+    -------
+    ModuleYear
+        By falling power.
+    """
+    import heapq
+
+    import numpy as np
+
+    lit = year.power_w > 0
+    power, vmp, hours = year.power_w[lit], year.vmp_v[lit], year.hours[lit]
+    if power.size <= classes:
+        return ModuleYear(power, vmp, hours)
+    current = power / vmp
+
+    def weighed(members: np.ndarray) -> tuple[float, int, np.ndarray, np.ndarray]:
+        """Heap entry of a class: its worst error (negative), a tie breaker, its members, where to cut."""
+        h, p, v = hours[members], power[members], vmp[members]
+        mean_p, mean_v = h @ p / h.sum(), h @ v / h.sum()
+        by_power = h @ np.abs(p - mean_p)
+        ratio = mean_p / mean_v
+        by_current = h @ np.abs(p - ratio * v)
+        if by_power >= by_current:
+            return -by_power, int(members[0]), members, p > mean_p
+        return -by_current, int(members[0]), members, current[members] > ratio
+
+    heap = [weighed(np.arange(power.size))]
+    while len(heap) < classes and heap[0][0] < 0:
+        _, _, members, upper = heapq.heappop(heap)
+        if upper.all() or not upper.any():  # equal up to rounding
+            heapq.heappush(heap, (0.0, int(members[0]), members, upper))
+            continue
+        heapq.heappush(heap, weighed(members[upper]))
+        heapq.heappush(heap, weighed(members[~upper]))
+    label = np.empty(power.size, dtype=int)
+    for number, (_, _, members, _) in enumerate(heap):
+        label[members] = number
+    total = np.bincount(label, hours)
+    mean_power = np.bincount(label, hours * power) / total
+    mean_vmp = np.bincount(label, hours * vmp) / total
+    order = np.argsort(-mean_power)
+    return ModuleYear(mean_power[order], mean_vmp[order], total[order])
