@@ -44,10 +44,14 @@ class Candidate:
 
 @dataclass(frozen=True, slots=True)
 class LookUp:
-    """The one record that a query means, or ``None`` and the records it may mean, best first."""
+    """The one record that a query means, or ``None`` and the records it may mean, best first.
+
+    ``ambiguous`` tells records that it could equally be from names that are merely near.
+    """
 
     match: int | None
     candidates: list[Candidate]
+    ambiguous: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -205,7 +209,7 @@ def _match(row: int, index: NameIndex) -> LookUp:
 
 
 def _ambiguous(rows: list[int], key: str, index: NameIndex, limit: int) -> LookUp:
-    return LookUp(None, _ranked(rows, key, key, index)[:limit])
+    return LookUp(None, _ranked(rows, key, key, index)[:limit], ambiguous=True)
 
 
 def _exact(typed: str, text: str, key: str, index: NameIndex) -> Iterable[list[int]]:

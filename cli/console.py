@@ -1,0 +1,77 @@
+"""The terminal: results on stdout, notes on stderr, tables that fit 100 columns and read well without colour."""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from rich.console import Console
+
+WIDTH = 100
+
+
+@dataclass(frozen=True, slots=True)
+class Column:
+    """A column of a table: its header with unit, whether it holds numbers, and whether it may fold."""
+
+    header: str
+    number: bool = False
+    fold: bool = False
+
+
+def console(stderr: bool = False) -> Console:
+    """A console no wider than `WIDTH`; without colour where it is no terminal."""
+    from rich.console import Console
+
+    stream = sys.stderr if stderr else sys.stdout
+    screen = Console(file=stream, highlight=False, soft_wrap=False, emoji=False, markup=False)
+    width = min(screen.width, WIDTH) if stream.isatty() else WIDTH
+    return Console(file=stream, highlight=False, emoji=False, markup=False, width=width)
+
+
+def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> None:
+    """Print rows of text; numbers are set to the right and never wrapped."""
+    from rich.table import Table
+
+    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="bold", show_edge=False)
+    for column in columns:
+        table.add_column(
+            column.header,
+            justify="right" if column.number else "left",
+            no_wrap=not column.fold,
+            overflow="fold",
+            vertical="top",
+        )
+    for row in rows:
+        table.add_row(*row)
+    console().print(table)
+
+
+def say(text: str = "", indent: int = 0) -> None:
+    """Print a paragraph of the result, wrapped at the width."""
+    _wrapped(text, indent, stderr=False)
+
+
+def note(text: str) -> None:
+    """Print a note on stderr."""
+    _wrapped(text, 0, stderr=True)
+
+
+def _wrapped(text: str, indent: int, stderr: bool) -> None:
+    import textwrap
+
+    screen = console(stderr)
+    if not text:
+        print(file=screen.file)
+        return
+    pad = " " * indent
+    print(textwrap.fill(text, screen.width, initial_indent=pad, subsequent_indent=pad, break_long_words=False,
+                        break_on_hyphens=False), file=screen.file)  # fmt: skip
+
+
+def number(value: float | None, digits: int = 0) -> str:
+    """A number as text; blank where it is not known."""
+    return "" if value is None else f"{value:,.{digits}f}"

@@ -1,0 +1,156 @@
+"""The fit document, `ferrule.fit/1`, as a dict and as a stream."""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Iterator
+from typing import IO, TYPE_CHECKING, Any
+
+from matcher.limits import voltage_cap
+
+if TYPE_CHECKING:
+    from matcher.fit import Fit, Option
+
+FIT_SCHEMA = "ferrule.fit/1"
+
+
+def head(fit: Fit, weather: str | None) -> dict[str, Any]:
+    """Everything of the document that stands before the options, except the records."""
+    r = fit.request
+    cap = voltage_cap(r.site, r.rules)
+    return {
+        "schema": FIT_SCHEMA,
+        "site": {
+            "name": r.site.name,
+            "design_low_c": r.site.design_low_c,
+            "design_high_c": r.site.design_high_c,
+            "mounting": r.site.mounting,
+            "weather": weather,
+        },
+        "rules": {"name": r.rules.name, "isc_factor": r.rules.isc_factor, "voltage_cap_v": _known(cap)},
+        "ratio_window": list(r.ratio),
+        "order": fit.order,
+    }
+
+
+def module_entry(fit: Fit, m: int) -> dict[str, Any]:
+    """One module of the document."""
+    module, p = fit.modules[m], fit.module_points(m)
+    return {
+        "maker": module.maker,
+        "model": module.model,
+        "pmax_w": module.pmax_w,
+        "cell_cold_c": p.cell_cold_c,
+        "cell_hot_c": p.cell_hot_c,
+        "voc_cold_v": p.voc_cold_v,
+        "vmp_hot_v": p.vmp_hot_v,
+        "vmp_25_v": p.vmp_25_v,
+        "vmp_cold_v": p.vmp_cold_v,
+        "isc_design_a": p.isc_design_a,
+        "imp_a": p.imp_a,
+    }
+
+
+def inverter_entry(fit: Fit, i: int) -> dict[str, Any]:
+    """One inverter of the document."""
+    inverter = fit.inverters[i]
+    return {
+        "maker": inverter.maker,
+        "model": inverter.model,
+        "ac_power_w": inverter.ac_power_w,
+        "trackers": sum(g.trackers for g in inverter.inputs),
+    }
+
+
+def module_key(fit: Fit, m: int) -> str:
+    """Key of a module in the document."""
+    return f"m{fit.modules[m].id}"
+
+
+def inverter_key(fit: Fit, i: int) -> str:
+    """Key of an inverter in the document."""
+    return f"i{fit.inverters[i].id}"
+
+
+def option_entry(fit: Fit, option: Option, with_checks: bool) -> dict[str, Any]:
+    """One option of the document; ``checks``, ``confirm`` and ``climate`` only where asked for."""
+    entry: dict[str, Any] = {
+        "rank": option.rank,
+        "verdict": str(option.verdict),
+        "module": module_key(fit, option.module),
+        "inverter": inverter_key(fit, option.inverter),
+        "units": 1,
+        "modules": option.modules,
+        "arrangement": [
+            {"inputs": t.inputs, "strings": t.strings, "in_series": t.in_series} for t in option.arrangement
+        ],
+        "label": option.label,
+        "dc_ac_ratio": option.dc_ac_ratio,
+        "clipping_loss_pct": option.clipping_loss_pct,
+        "yearly_kwh": option.yearly_kwh,
+    }
+    if with_checks:
+        entry["checks"] = [
+            {
+                "check": c.check,
+                "verdict": str(c.verdict),
+                "value": c.value,
+                "limit": c.limit,
+                "unit": c.unit,
+                "margin_pct": c.margin_pct,
+                "rule": c.rule,
+            }
+            | ({"remark": c.remark} if c.remark else {})
+            for c in option.checks
+        ]
+        entry["confirm"] = [
+            {"record": c.record, "field": c.field, "at_least": c.at_least}
+            | ({} if c.inputs is None else {"inputs": c.inputs})
+            for c in option.confirm
+        ]
+        entry["climate"] = {"coldest_c": option.coldest_c, "hottest_c": option.hottest_c}
+    return entry
+
+
+def totals_entry(fit: Fit) -> dict[str, int]:
+    """Totals of the document."""
+    t = fit.totals
+    return {
+        "records_considered": t.records_considered,
+        "records_with_option": t.records_with_option,
+        "arrangements": t.arrangements,
+    }
+
+
+def write_fit(fit: Fit, stream: IO[str], *, weather: str | None, with_checks: bool, rejected: list[dict] | None) -> None:
+    """Write the document as a stream, one option a line, so that no number of options fills the memory."""
+    opening = json.dumps(head(fit, weather), allow_nan=False)
+    stream.write(opening[:-1])
+    seen_modules: set[int] = set()
+    seen_inverters: set[int] = set()
+    stream.write(', "options": [')
+    for k, line in enumerate(_option_lines(fit, with_checks, seen_modules, seen_inverters)):
+        stream.write(",\n " if k else "\n ")
+        stream.write(line)
+    stream.write("],\n")
+    modules = {module_key(fit, m): module_entry(fit, m) for m in sorted(seen_modules)}
+    if not modules and len(fit.modules) == 1:
+        modules = {module_key(fit, 0): module_entry(fit, 0)}
+    inverters = {inverter_key(fit, i): inverter_entry(fit, i) for i in sorted(seen_inverters)}
+    tail: dict[str, Any] = {"modules": modules, "inverters": inverters, "totals": totals_entry(fit)}
+    if rejected is not None:
+        tail["rejected"] = rejected
+    stream.write(json.dumps(tail, allow_nan=False)[1:])
+    stream.write("\n")
+
+
+def _option_lines(fit: Fit, with_checks: bool, modules: set[int], inverters: set[int]) -> Iterator[str]:
+    encode = json.JSONEncoder(allow_nan=False).encode
+    for option in fit.options(full=with_checks):
+        modules.add(option.module)
+        inverters.add(option.inverter)
+        yield encode(option_entry(fit, option, with_checks))
+
+
+def _known(value: float) -> float | None:
+    return None if value != value else value

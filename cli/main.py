@@ -1,0 +1,68 @@
+"""The command `ferrule`: its commands, and the one place where errors become a line and an exit status."""
+
+from __future__ import annotations
+
+import sys
+
+import typer
+
+from catalog.errors import CatalogError
+from matcher.errors import MatcherError
+
+BAD_INPUT = 2
+INTERRUPTED = 130
+
+app = typer.Typer(
+    name="ferrule",
+    help="Which PV modules and inverters go together, in which strings, how sure that is, and what it costs in clipping.",
+    no_args_is_help=True,
+    context_settings={"help_option_names": ["--help", "-h"], "max_content_width": 100},
+    pretty_exceptions_enable=False,
+)
+
+
+def _register() -> None:
+    from cli import demo, fit, sheet, site
+
+    app.command("fit")(fit.fit)
+    app.add_typer(sheet.app, name="sheet")
+    app.add_typer(site.app, name="site")
+    app.command("demo")(demo.demo)
+
+
+_register()
+
+
+def main(arguments: list[str] | None = None) -> None:
+    """Run the command and leave with its exit status: 0 something fits, 1 nothing fits, 2 bad input."""
+    sys.exit(run(arguments))
+
+
+def run(arguments: list[str] | None = None) -> int:
+    """Run the command line and return its exit status; every error is one line on stderr."""
+    command = typer.main.get_command(app)
+    try:
+        status = command.main(arguments, prog_name="ferrule", standalone_mode=False)
+        return status if isinstance(status, int) else 0
+    except (CatalogError, MatcherError) as error:
+        return _refused(str(error))
+    except KeyboardInterrupt:
+        return _refused("interrupted; nothing was left half-written", INTERRUPTED)
+    except BrokenPipeError:
+        # The reader of a pipe has seen enough (ferrule ... | head).
+        sys.stdout = None  # type: ignore[assignment]
+        return 0
+    except OSError as error:
+        where = f"{error.filename}: " if error.filename else ""
+        return _refused(f"{where}{error.strerror or error}")
+    except Exception as error:
+        # Typing errors on the command line carry a message of their own.
+        if not hasattr(error, "format_message"):
+            raise
+        message = error.format_message()
+        return _refused(f"{message} (see 'ferrule --help')" if message else "") if message else BAD_INPUT
+
+
+def _refused(line: str, status: int = BAD_INPUT) -> int:
+    print(f"ferrule: {line}", file=sys.stderr)
+    return status

@@ -1,0 +1,186 @@
+"""Voltages and currents of one module at the design temperatures.
+
+All functions take several modules at once; a quantity that cannot be known is NaN, and a module that
+cannot be matched at all carries the reason.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from catalog.records import MOUNTINGS, SIX_PARAMETERS, Module, Site
+from matcher.errors import MatcherError
+from matcher.rules import RuleSet, cold_factor
+from matcher.singlediode import SixParameters, max_power_point, six_parameters
+
+#: NOCT [degC] that stands in where a record has none.
+ASSUMED_NOCT_C = 45.0
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Points:
+    """Design values of n modules; every array has shape (n,).
+
+    Voltages in V and currents in A per module. ``voc_hot_v`` is NaN where the record has no coefficient
+    of Voc. ``reasons`` holds, per module, why it cannot be matched, or ``None``.
+    """
+
+    cell_cold_c: np.ndarray
+    cell_hot_c: np.ndarray
+    voc_cold_v: np.ndarray
+    voc_hot_v: np.ndarray
+    vmp_hot_v: np.ndarray
+    vmp_25_v: np.ndarray
+    vmp_cold_v: np.ndarray
+    isc_design_a: np.ndarray
+    imp_a: np.ndarray
+    pmax_w: np.ndarray
+    reasons: tuple[str | None, ...]
+
+
+def is_crystalline(module: Module) -> bool:
+    """Whether the module's cells are crystalline silicon, by the words of its technology."""
+    words = module.technology.casefold()
+    if any(w in words for w in ("thin", "cdte", "cigs", "cis", "amorph", "a-si", "tandem", "organic", "perovskite")):
+        return False
+    return any(w in words for w in ("c-si", "mono", "multi", "poly", "perc", "topcon", "crystal", "hjt", "heterojunction"))
+
+
+def hot_adder(module: Module, site: Site) -> float:
+    """Rise of the cell over ambient [K] at 1000 W/m2: NOCT, and the adder of the mounting.
+
+    References
+    ----------
+    Ross 1980; P. Gilman, "SAM Photovoltaic Model Technical Reference", 2015, NREL/TP-6A20-64102.
+    """
+    noct = ASSUMED_NOCT_C if module.noct_c is None else module.noct_c
+    return (noct + MOUNTINGS[site.mounting] - 20.0) / 800.0 * 1000.0
+
+
+def uses_cold_table(module: Module, rules: RuleSet) -> bool:
+    """Whether the cold Voc comes from NEC Table 690.7(A) and not from the datasheet's coefficient."""
+    return module.voc_coef_pct is None or (rules.cold_voltage == "table" and is_crystalline(module))
+
+
+def diode_parameters(module: Module) -> SixParameters | None:
+    """Six-parameter model of a module; ``None`` where the record does not allow one."""
+    try:
+        return six_parameters(module)
+    except MatcherError:
+        return None
+
+
+def vmp(module: Module, cell_c: np.ndarray | float, diode: SixParameters | None) -> np.ndarray | None:
+    """Voltage at the maximum power point [V] at 1000 W/m2 and the given cell temperatures [degC].
+
+    From the coefficient of Vmp where it is stated, else from the six-parameter model, else from the
+    coefficients of Pmax and Isc; ``None`` where none of these can be had. Never from the coefficient of
+    Voc, which reads high in the heat.
+    """
+    t = np.asarray(cell_c, dtype=float)
+    if module.vmp_coef_pct is not None:
+        return module.vmp_v * (1.0 + module.vmp_coef_pct / 100.0 * (t - 25.0))
+    if diode is not None:
+        return np.asarray(max_power_point(diode, np.full_like(t, 1000.0), t)[0])
+    if module.pmax_coef_pct is not None and module.isc_coef_pct is not None:
+        return module.vmp_v * (1.0 + (module.pmax_coef_pct - module.isc_coef_pct) / 100.0 * (t - 25.0))
+    return None
+
+
+def _cold_voc(module: Module, site: Site, rules: RuleSet) -> float | str:
+    """Voc at the design low [V], or the reason why there is none."""
+    if not uses_cold_table(module, rules):
+        assert module.voc_coef_pct is not None
+        return module.voc_v * (1.0 + module.voc_coef_pct / 100.0 * (site.design_low_c - 25.0))
+    if not is_crystalline(module):
+        return "voc_coef_pct is not stated, and no table replaces it for this technology"
+    factor = cold_factor(site.design_low_c)
+    if factor is None:
+        return "voc_coef_pct is not stated, and NEC Table 690.7(A) ends at -40 degC"
+    return module.voc_v * factor
+
+
+def _isc_design(module: Module, site: Site, rules: RuleSet) -> float | str:
+    """Design short-circuit current [A], or the reason why there is none."""
+    current = module.isc_a * rules.isc_factor
+    if module.bifacial and site.rear_share:
+        if module.bifaciality is None:
+            return "bifaciality is not stated, and the site gives a rear share"
+        current *= 1.0 + module.bifaciality * site.rear_share
+    return current
+
+
+def _table_diodes(modules: Sequence[Module], wanted: Sequence[int]) -> SixParameters:
+    """Six-parameter models of several table records at once, as arrays."""
+    columns = {p: np.array([getattr(modules[k], p) for k in wanted], dtype=float) for p in SIX_PARAMETERS}
+    alpha = np.array([modules[k].isc_coef_pct / 100.0 * modules[k].isc_a for k in wanted], dtype=float)
+    return SixParameters(alpha_sc=alpha, **columns)
+
+
+def _vmp_at(modules: Sequence[Module], temperatures: np.ndarray) -> np.ndarray:
+    """Vmp [V] of n modules at their own temperatures, shape (n, 3); NaN rows where it cannot be had."""
+    out = np.full(temperatures.shape, np.nan)
+    table: list[int] = []
+    for k, module in enumerate(modules):
+        if (
+            module.vmp_coef_pct is None
+            and module.isc_coef_pct is not None
+            and all(getattr(module, p) is not None for p in SIX_PARAMETERS)
+        ):
+            table.append(k)
+            continue
+        needs_model = module.vmp_coef_pct is None
+        found = vmp(module, temperatures[k], diode_parameters(module) if needs_model else None)
+        if found is not None:
+            out[k] = found
+    if table:
+        diodes = _table_diodes(modules, table)
+        for column in range(temperatures.shape[1]):
+            t = temperatures[table, column]
+            out[table, column] = max_power_point(diodes, np.full_like(t, 1000.0), t)[0]
+    return out
+
+
+def design_points(modules: Sequence[Module], site: Site, rules: RuleSet) -> Points:
+    """Voltages and currents of each module at the site's design temperatures.
+
+    References
+    ----------
+    NEC 690.7(A), 690.8(A)(1); IEC 62548 (K_I); De Soto et al. 2006, doi:10.1016/j.solener.2005.06.010;
+    Dobos 2012, doi:10.1115/1.4005759.
+    """
+    n = len(modules)
+    cold = np.full(n, site.design_low_c, dtype=float)
+    hot = np.array([site.design_high_c + hot_adder(m, site) for m in modules], dtype=float)
+    voc_cold, isc = np.full(n, np.nan), np.full(n, np.nan)
+    voc_hot = np.full(n, np.nan)
+    reasons: list[str | None] = [None] * n
+    for k, module in enumerate(modules):
+        if module.voc_coef_pct is not None:
+            voc_hot[k] = module.voc_v * (1.0 + module.voc_coef_pct / 100.0 * (hot[k] - 25.0))
+        for target, found in ((voc_cold, _cold_voc(module, site, rules)), (isc, _isc_design(module, site, rules))):
+            if isinstance(found, str):
+                reasons[k] = reasons[k] or found
+            else:
+                target[k] = found
+    vmps = _vmp_at(modules, np.column_stack([hot, np.full(n, 25.0), cold]))
+    for k in np.flatnonzero(~(vmps > 0).all(axis=1)):
+        missing = [c for c in ("isc_coef_pct", "pmax_coef_pct") if getattr(modules[k], c) is None]
+        wanted = " and ".join(missing) if missing else "vmp_coef_pct"
+        reasons[k] = reasons[k] or f"Vmp in the heat needs {wanted} (or vmp_coef_pct), not stated"
+    return Points(
+        cell_cold_c=cold,
+        cell_hot_c=hot,
+        voc_cold_v=voc_cold,
+        voc_hot_v=voc_hot,
+        vmp_hot_v=vmps[:, 0],
+        vmp_25_v=vmps[:, 1],
+        vmp_cold_v=vmps[:, 2],
+        isc_design_a=isc,
+        imp_a=np.array([m.imp_a for m in modules], dtype=float),
+        pmax_w=np.array([m.pmax_w for m in modules], dtype=float),
+        reasons=tuple(reasons),
+    )

@@ -1,0 +1,98 @@
+"""Options as columns: hundreds of thousands of them are a few arrays, not as many objects."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass, fields
+
+import numpy as np
+
+from matcher.checks import Tracker
+from matcher.clipping import Losses
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Options:
+    """n options; arrays of shape (n,) unless said otherwise.
+
+    ``module`` and ``inverter`` index the records of the search. ``to_confirm`` tells the verdict apart
+    (False: fits). Losses are NaN where they cannot be known. ``strings``, ``in_series`` and ``inputs``
+    have shape (n, trackers), with 0 strings where a tracker is empty or there is none.
+    """
+
+    module: np.ndarray
+    inverter: np.ndarray
+    modules: np.ndarray
+    ratio: np.ndarray
+    to_confirm: np.ndarray
+    clipping_pct: np.ndarray
+    current_clipping_pct: np.ndarray
+    yearly_kwh: np.ndarray
+    lengths: np.ndarray
+    margin_pct: np.ndarray
+    strings: np.ndarray
+    in_series: np.ndarray
+    inputs: np.ndarray
+
+    def __len__(self) -> int:
+        return len(self.module)
+
+    def take(self, index: np.ndarray | slice) -> Options:
+        """The options at these positions, in this order."""
+        return Options(*(getattr(self, f.name)[index] for f in fields(self)))
+
+    def trackers(self, k: int) -> tuple[Tracker, ...]:
+        """What the trackers in use carry in option k."""
+        return tuple(
+            Tracker(int(g), int(s), int(n))
+            for g, s, n in zip(self.inputs[k], self.strings[k], self.in_series[k], strict=True)
+            if s
+        )
+
+
+def build(
+    module: np.ndarray,
+    inverter: np.ndarray,
+    to_confirm: np.ndarray,
+    strings: np.ndarray,
+    in_series: np.ndarray,
+    inputs: np.ndarray,
+    *,
+    pmax_w: np.ndarray,
+    ac_power_w: np.ndarray,
+    voc_cold_v: np.ndarray,
+    voltage_limit_v: np.ndarray,
+    losses: Losses,
+) -> Options:
+    """Options with the columns that follow from the others; arrays (n,) or (n, trackers)."""
+    modules = (strings * in_series).sum(axis=1)
+    ordered = np.sort(in_series, axis=1)
+    lengths = (np.diff(ordered, axis=1, prepend=0) > 0).sum(axis=1)
+    limit = voltage_limit_v
+    return Options(
+        module=module,
+        inverter=inverter,
+        modules=modules,
+        ratio=modules * pmax_w / ac_power_w,
+        to_confirm=to_confirm,
+        clipping_pct=losses.total_pct,
+        current_clipping_pct=losses.current_pct,
+        yearly_kwh=losses.yearly_kwh,
+        lengths=lengths,
+        margin_pct=(limit - in_series.max(axis=1) * voc_cold_v) / limit * 100.0,
+        strings=strings,
+        in_series=in_series,
+        inputs=inputs,
+    )
+
+
+def join(parts: Sequence[Options]) -> Options:
+    """All options of several tables in one."""
+    width = max((p.strings.shape[1] for p in parts), default=1)
+
+    def widened(a: np.ndarray) -> np.ndarray:
+        return np.pad(a, ((0, 0), (0, width - a.shape[1]))) if a.ndim == 2 and a.shape[1] < width else a
+
+    if len(parts) == 1:
+        return parts[0]
+    return Options(*(np.concatenate([widened(getattr(p, f.name)) for p in parts]) for f in fields(Options)))
