@@ -10,6 +10,7 @@ from pathlib import Path
 
 import numpy as np
 import pandas as pd
+import pvlib
 import pytest
 
 from catalog.cec import cec_kind, read_cec_inverters, read_cec_modules
@@ -92,6 +93,24 @@ def test_module_coefficients(modules, cec_modules_csv):
 @pytest.mark.parametrize("field, column", INVERTER_FIELDS.items())
 def test_inverter_values(inverters, cec_inverters_csv, field, column):
     assert [getattr(i, field) for i in inverters] == pytest.approx(cec_inverters_csv[column].to_numpy())
+
+
+def test_six_parameters_give_the_power_of_the_table(modules):
+    # CEC model by pvlib (Dobos 2012, doi:10.1115/1.4005759): at STC its maximum power is the table's
+    some = [modules[k] for k in np.random.default_rng(12).choice(len(modules), 300, replace=False)]
+    p = {name: np.array([getattr(m, name) for m in some]) for name in SIX_PARAMETERS}
+    alpha = np.array([m.isc_coef_pct * m.isc_a / 100 for m in some])
+    diode = pvlib.pvsystem.calcparams_cec(1000.0, 25.0, alpha, **p)
+    best = pvlib.pvsystem.max_power_point(*diode, method="newton")
+    assert best["p_mp"] == pytest.approx([m.pmax_w for m in some], rel=0.01)
+    assert best["v_mp"] == pytest.approx([m.vmp_v for m in some], rel=0.02)
+
+
+def test_sandia_parameters_give_the_rated_power(inverters):
+    # Sandia model by pvlib (King et al. 2007, SAND2007-5036): at Pdco and Vdco it gives Paco
+    p = {name: np.array([getattr(i, name) for i in inverters]) for name in SANDIA_PARAMETERS}
+    ac = pvlib.inverter.sandia(p["Vdco"], p["Pdco"], {**p, "Pnt": 0.0})
+    assert ac == pytest.approx([i.ac_power_w for i in inverters], rel=1e-6)
 
 
 def test_blank_is_unknown_and_zero_is_zero(modules, cec_modules_csv):
