@@ -10,4 +10,3 @@ CAUTIONS: tuple[str, ...] = (
 )
 
 HOURLY_MEANS = "Hourly means hide short peaks: true clipping is somewhat higher at high DC/AC ratios."
-UPPER_BOUND = "Clear-sky year: an upper bound of clipping and energy, not a forecast."

@@ -15,11 +15,12 @@ WIDTH = 100
 
 @dataclass(frozen=True, slots=True)
 class Column:
-    """A column of a table: its header with unit, whether it holds numbers, and whether it may fold."""
+    """A column of a table: its header with unit, whether it holds numbers, whether it may fold, its least width."""
 
     header: str
     number: bool = False
     fold: bool = False
+    min_width: int | None = None
 
 
 def console(stderr: bool = False) -> Console:
@@ -36,7 +37,7 @@ def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> Non
     """Print rows of text; numbers are set to the right and never wrapped."""
     from rich.table import Table
 
-    table = Table(box=None, pad_edge=False, padding=(0, 2, 0, 0), header_style="bold", show_edge=False)
+    table = Table(box=None, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold", show_edge=False)
     for column in columns:
         table.add_column(
             column.header,
@@ -44,6 +45,7 @@ def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> Non
             no_wrap=not column.fold,
             overflow="fold",
             vertical="top",
+            min_width=column.min_width,
         )
     for row in rows:
         table.add_row(*row)

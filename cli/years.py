@@ -10,7 +10,6 @@ from dataclasses import astuple, dataclass
 from typing import TYPE_CHECKING
 
 from catalog.errors import CatalogError
-from cli.cautions import UPPER_BOUND
 
 if TYPE_CHECKING:
     from catalog.records import Module, Site
@@ -73,8 +72,6 @@ def _worked_out(site: Site, diode: SixParameters, dc_loss_pct: float) -> SiteYea
         f" {plane.irradiation_kwh_m2:,.0f} kWh/m2 a year on the array (tilt {tilt:g}, azimuth {azimuth:g} deg"
         f"{', assumed' if assumed else ''})."
     ]
-    if site.weather is None:
-        notes.append(UPPER_BOUND)
     notes += [f"{n[0].upper()}{n[1:].rstrip('.')}." for n in weather.notes]
     return SiteYear(year, label, tuple(notes))
 

@@ -11,7 +11,7 @@ from __future__ import annotations
 
 import heapq
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from functools import cached_property
 
 import numpy as np
@@ -29,6 +29,7 @@ from matcher.electrical import Points, design_points
 from matcher.errors import MatcherError
 from matcher.limits import PairLimits, at_most, pair_limits
 from matcher.moduleyear import ModuleYear
+from matcher.near import Rejection, rejection
 from matcher.options import Options, build, join
 from matcher.order import Order, in_words, ranked, sort_keys
 from matcher.rules import DEFAULT_RULES, RuleSet
@@ -113,7 +114,11 @@ class Totals:
 
 @dataclass(eq=False)
 class Fit:
-    """Result of a search. ``lists_inverters`` tells which side is listed."""
+    """Result of a search.
+
+    ``lists_inverters`` tells which side is listed, ``found`` (bool, one per listed record) which records have
+    an option.
+    """
 
     modules: tuple[Module, ...]
     inverters: tuple[Inverter, ...]
@@ -122,8 +127,15 @@ class Fit:
     year: ModuleYear | None
     totals: Totals
     lists_inverters: bool
+    found: np.ndarray
     table: Options
-    lazy: list[Iterator[tuple[tuple[float, ...], Options, int]]] = field(default_factory=list)
+    lazy: list[Iterator[tuple[tuple[float, ...], Options, int]]]
+    search: _Search
+
+    @property
+    def is_pair(self) -> bool:
+        """Whether the question is about one module and one inverter."""
+        return len(self.modules) == 1 and len(self.inverters) == 1
 
     @property
     def order(self) -> str:
@@ -185,6 +197,20 @@ class Fit:
         """What the checks need to know of a module and an inverter."""
         r = self.request
         return Pair(self.modules[m], self.module_points(m), self.inverters[i], r.site, r.rules, r.combiner)
+
+    def rejections(self) -> list[tuple[int, Rejection]]:
+        """Listed records without option, the nearest misses first: index, and why."""
+        missed = []
+        for k in np.flatnonzero(~self.found):
+            m, i = (0, int(k)) if self.lists_inverters else (int(k), 0)
+            reason = self.points.reasons[m]
+            if reason is not None:
+                missed.append((int(k), Rejection((), f"cannot be matched: {reason}", np.inf)))
+                continue
+            limits = self.search.limits(np.array([m]), np.array([i]))
+            space = self.search.space(m, i, limits)
+            missed.append((int(k), rejection(self.pair(m, i), space, self._window(m), self.request.ratio)))
+        return sorted(missed, key=lambda entry: entry[1].distance)
 
     @cached_property
     def _windows(self) -> dict[int, ClimateWindow]:
@@ -262,7 +288,7 @@ def fit(
     if not request.every:
         table = _first_of_each(table, lists_inverters)
     totals = Totals(len(inverters) if lists_inverters else len(modules), int(found.sum()), arrangements)
-    return Fit(tuple(modules), tuple(inverters), request, points, year, totals, lists_inverters, table, lazy)
+    return Fit(tuple(modules), tuple(inverters), request, points, year, totals, lists_inverters, found, table, lazy, search)
 
 
 class _Search:

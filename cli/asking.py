@@ -1,0 +1,56 @@
+"""From the words of the command line to a request that the matcher understands."""
+
+from __future__ import annotations
+
+from catalog.errors import CatalogError
+from catalog.records import Site
+from cli.ranges import number_range, whole_range
+from matcher.fit import Request
+from matcher.order import Order
+from matcher.rules import RULE_SETS, RuleSet
+
+
+def rule_set(name: str) -> RuleSet:
+    """A rule set by name.
+
+    Raises
+    ------
+    CatalogError
+        Where there is none of this name.
+    """
+    if name not in RULE_SETS:
+        raise CatalogError(f"--rules {name}: there is no such rule set; choose {' or '.join(RULE_SETS)}")
+    return RULE_SETS[name]
+
+
+def request_of(
+    site: Site,
+    ratio: str,
+    count: str | None,
+    clip_cap: float,
+    rules: str,
+    combiner: bool,
+    by: str,
+    every: bool,
+) -> Request:
+    """A request from the command line's values.
+
+    Raises
+    ------
+    CatalogError
+        Where one of them is not understood or not possible.
+    """
+    if not 0 <= clip_cap <= 100:
+        raise CatalogError(f"--clip-cap {clip_cap:g}: a clipping loss is 0 to 100 %")
+    if by not in list(Order):
+        raise CatalogError(f"--by {by}: choose one of {', '.join(Order)}")
+    return Request(
+        site=site,
+        rules=rule_set(rules),
+        ratio=number_range(ratio, "--ratio"),
+        counts=None if count is None else whole_range(count, "--count"),
+        clip_cap_pct=clip_cap,
+        combiner=combiner,
+        order=Order(by),
+        every=every,
+    )

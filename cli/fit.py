@@ -1,0 +1,102 @@
+"""``ferrule fit``: name what you have, get what fits it."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Annotated
+
+import typer
+
+from catalog.errors import CatalogError
+from cli.opening import CatalogOption, open_catalog
+from cli.siting import (
+    AzimuthOption, CapOption, HighOption, LatOption, LonOption, LowOption, MountingOption, RearOption,
+    SiteOption, TiltOption, WeatherOption, site_of,
+)  # fmt: skip
+
+if TYPE_CHECKING:
+    from catalog.records import Inverter, Module
+    from catalog.store import Catalog
+
+NOTHING_FITS = 1
+
+
+def fit(
+    module: Annotated[str | None, typer.Option("--module", "-m", metavar="NAME", help="The module on hand.")] = None,
+    inverter: Annotated[str | None, typer.Option("--inverter", "-i", metavar="NAME", help="The inverter on hand.")] = None,
+    count: Annotated[str | None, typer.Option(metavar="N", help="Modules on one inverter: 60, or a range 56..64.")] = None,
+    ratio: Annotated[str, typer.Option(metavar="LOW..HIGH", help="Window of DC/AC ratios.")] = "0.8..1.5",
+    clip_cap: Annotated[float, typer.Option(metavar="PCT", help="Clipping loss up to which a higher DC/AC ratio is better [%].")] = 2.0,
+    rules: Annotated[str, typer.Option(metavar="NAME", help="Rule set: iec-62548 or nec-690.")] = "iec-62548",
+    combiner: Annotated[bool, typer.Option("--combiner", help="Strings are paralleled in a combiner box: string inputs are waived.")] = False,
+    by: Annotated[str, typer.Option(metavar="ORDER", help="least-inverter, ratio, clipping, margin or energy.")] = "least-inverter",
+    every: Annotated[bool, typer.Option("--every", help="Every arrangement, not the best one of each record.")] = False,
+    checks: Annotated[bool, typer.Option("--checks", help="Show every check of the options shown (and put them into documents).")] = False,
+    why: Annotated[bool, typer.Option("--why", help="Say of the records without option what stops them and what would change that.")] = False,
+    limit: Annotated[int, typer.Option(metavar="N", min=1, help="Options shown on screen.")] = 20,
+    json: Annotated[bool, typer.Option("--json", help="Print the document ferrule.fit/1 instead of tables.")] = False,
+    out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file: .csv or .json.")] = None,
+    site: SiteOption = None,
+    low: LowOption = None,
+    high: HighOption = None,
+    mounting: MountingOption = None,
+    voltage_cap: CapOption = None,
+    rear_share: RearOption = None,
+    lat: LatOption = None,
+    lon: LonOption = None,
+    tilt: TiltOption = None,
+    azimuth: AzimuthOption = None,
+    weather: WeatherOption = None,
+    catalog: CatalogOption = None,
+) -> int:
+    """Name what you have, get what fits it.
+
+    With --module, the inverters that take it; with --inverter, the modules it takes; with both, every
+    arrangement of that pair. Exit status: 0 something fits, 1 nothing fits, 2 bad input.
+
+    Example: ferrule fit --module "af6k 270p" --low -12 --high 38
+    """
+    if module is None and inverter is None:
+        raise CatalogError("name what you have: --module NAME, --inverter NAME, or both")
+    with open_catalog(catalog) as opened:
+        place = site_of(
+            opened, site, low=low, high=high, mounting=mounting, voltage_cap=voltage_cap, rear_share=rear_share,
+            lat=lat, lon=lon, tilt=tilt, azimuth=azimuth, weather=weather,
+        )  # fmt: skip
+        from cli.asking import request_of
+        from cli.years import no_year, site_year, site_years
+        from matcher.fit import fit as search
+
+        pair = module is not None and inverter is not None
+        request = request_of(place, ratio, count, clip_cap, rules, combiner, by, every or pair)
+        modules, inverters = _records(opened, module, inverter)
+        if len(modules) == 1:
+            year = site_year(opened, place, modules[0])
+        elif place.weather is None and place.lat is None:
+            year = no_year(place)
+        else:
+            year = site_years(opened, place, modules)
+        found = search(modules, inverters, request, year.year)
+
+    from cli import fit_screen, fit_files
+
+    if out is not None:
+        fit_files.write(found, out, year.weather, with_checks=checks or not request.every, why=why)
+    if json:
+        fit_files.print_document(found, year.weather, with_checks=checks or not request.every, why=why)
+    elif out is None or fit_screen.on_terminal():
+        fit_screen.show(found, year, limit=limit, checks=checks, why=why)
+    return 0 if found.totals.records_with_option else NOTHING_FITS
+
+
+def _records(catalog: Catalog, module: str | None, inverter: str | None) -> tuple[list[Module], list[Inverter]]:
+    from cli.choosing import choose_inverter, choose_module
+
+    modules = [choose_module(catalog, module)] if module is not None else catalog.modules()
+    inverters = [choose_inverter(catalog, inverter)] if inverter is not None else catalog.inverters()
+    for kind, records in (("module", modules), ("inverter", inverters)):
+        if not records:
+            raise CatalogError(
+                f"the catalog holds no {kind}: load the public tables with 'ferrule sheet load cec', or your own"
+                " with 'ferrule sheet load FILE'"
+            )
+    return modules, inverters

@@ -1,0 +1,123 @@
+"""The result of a search as a file or a document; the ending of the file decides the form."""
+
+from __future__ import annotations
+
+import csv
+import os
+import sys
+import tempfile
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import IO, TYPE_CHECKING, Any
+
+from catalog.errors import CatalogError
+from cli.documents import inverter_key, module_key, write_fit
+
+if TYPE_CHECKING:
+    from matcher.fit import Fit
+    from matcher.options import Options
+
+FORMS = (".csv", ".json")
+
+
+def write(fit: Fit, out: str, weather: str | None, *, with_checks: bool, why: bool) -> None:
+    """Write all options to a file.
+
+    Raises
+    ------
+    CatalogError
+        Where the ending names no form, or the file cannot be written; a file of that name is then as before.
+    """
+    path = Path(out)
+    form = path.suffix.lower()
+    if form not in FORMS:
+        raise CatalogError(f"--out {out}: the ending decides the form, {' or '.join(FORMS)}")
+    with replacing(path) as stream:
+        if form == ".json":
+            write_fit(fit, stream, weather=weather, with_checks=with_checks, rejected=_rejected(fit, why))
+        else:
+            write_csv(fit, stream)
+
+
+def print_document(fit: Fit, weather: str | None, *, with_checks: bool, why: bool) -> None:
+    """Print the document on stdout."""
+    write_fit(fit, sys.stdout, weather=weather, with_checks=with_checks, rejected=_rejected(fit, why))
+
+
+@contextmanager
+def replacing(path: Path) -> Iterator[IO[str]]:
+    """A text file that takes the place of ``path`` only once it is whole."""
+    folder = path.parent if str(path.parent) else Path()
+    try:
+        handle, name = tempfile.mkstemp(dir=folder, prefix=f".{path.name}.", suffix=".part")
+    except OSError as error:
+        raise CatalogError(f"{path}: {error.strerror}; choose another place with --out") from None
+    try:
+        with os.fdopen(handle, "w", encoding="utf-8", newline="") as stream:
+            yield stream
+        os.chmod(name, 0o666 & ~_umask())
+        os.replace(name, path)
+    except OSError as error:
+        Path(name).unlink(missing_ok=True)
+        raise CatalogError(f"{path}: {error.strerror}; nothing was written") from None
+    except BaseException:
+        Path(name).unlink(missing_ok=True)
+        raise
+
+
+def _umask() -> int:
+    mask = os.umask(0)
+    os.umask(mask)
+    return mask
+
+
+def _rejected(fit: Fit, why: bool) -> list[dict[str, Any]] | None:
+    if not why:
+        return None
+    side, key = ("inverter", inverter_key) if fit.lists_inverters else ("module", module_key)
+    records = fit.inverters if fit.lists_inverters else fit.modules
+    return [
+        {side: key(fit, k), "maker": records[k].maker, "model": records[k].model,
+         "failed": list(r.failed), "nearest": r.nearest}
+        for k, r in fit.rejections()
+    ]  # fmt: skip
+
+
+#: Columns of the CSV form: header with unit, and the value of row k of a table of options.
+_COLUMNS: tuple[tuple[str, Callable[[Fit, Options, int], Any]], ...] = (
+    ("verdict", lambda f, t, k: "to-confirm" if t.to_confirm[k] else "fits"),
+    ("module_maker", lambda f, t, k: safe(f.modules[t.module[k]].maker)),
+    ("module_model", lambda f, t, k: safe(f.modules[t.module[k]].model)),
+    ("inverter_maker", lambda f, t, k: safe(f.inverters[t.inverter[k]].maker)),
+    ("inverter_model", lambda f, t, k: safe(f.inverters[t.inverter[k]].model)),
+    ("units", lambda f, t, k: 1),
+    ("modules", lambda f, t, k: t.modules[k]),
+    ("arrangement", lambda f, t, k: " | ".join(x.label for x in t.trackers(k))),
+    ("dc_ac_ratio", lambda f, t, k: f"{t.ratio[k]:.6g}"),
+    ("clipping_loss_pct", lambda f, t, k: blank(t.clipping_pct[k])),
+    ("yearly_kwh", lambda f, t, k: blank(t.yearly_kwh[k])),
+    ("cold_voltage_margin_pct", lambda f, t, k: blank(t.margin_pct[k])),
+    ("string_lengths", lambda f, t, k: t.lengths[k]),
+)
+
+
+def write_csv(fit: Fit, stream: IO[str]) -> None:
+    """Write all options as CSV, in order."""
+    writer = csv.writer(stream)
+    writer.writerow(["rank", *(header for header, _ in _COLUMNS)])
+    rank = 0
+    for table in fit.ranked():
+        for k in range(len(table)):
+            rank += 1
+            writer.writerow([rank, *(value(fit, table, k) for _, value in _COLUMNS)])
+
+
+def blank(value: float) -> str:
+    """A number for a cell; blank where it is not known."""
+    return "" if value != value else f"{value:.7g}"
+
+
+def safe(text: str) -> str:
+    """Text for a cell that no spreadsheet takes for a formula."""
+    return f"'{text}" if text[:1] in ("=", "+", "-", "@", "\t", "\r") else text

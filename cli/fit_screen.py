@@ -1,0 +1,257 @@
+"""The result of a search on the terminal: the question, the answer, the reasons, what to read, the cautions."""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Sequence
+from typing import TYPE_CHECKING
+
+from cli.cautions import CAUTIONS, HOURLY_MEANS
+from cli.console import Column, number, print_table, say
+from matcher.checks import Check, Confirm, Verdict
+
+if TYPE_CHECKING:
+    from cli.years import SiteYear
+    from matcher.fit import Fit, Option
+
+
+def on_terminal() -> bool:
+    """Whether stdout is a terminal."""
+    return sys.stdout.isatty()
+
+
+def show(fit: Fit, year: SiteYear, *, limit: int, checks: bool, why: bool) -> None:
+    """Print the answer."""
+    say(question(fit))
+    say()
+    options = list(fit.options(limit))
+    say(_answer(fit, options))
+    if options:
+        say(f"Order: {fit.order}.")
+        say()
+        _options_tables(fit, options, year.year is not None)
+        more = _number_listed(fit) - len(options)
+        if more > 0:
+            say(f"... and {more:,} more (--limit N shows more, --out FILE.csv holds all of them).")
+            say()
+        _confirm_lines(fit, options)
+        if checks or fit.is_pair:
+            for option in options if checks else options[:1]:
+                say()
+                _checks_table(fit, option)
+    if fit.is_pair and not options:
+        (_, reason), *_ = fit.rejections()
+        say(f"Stopped by {', '.join(reason.failed)}: {reason.nearest}.")
+    elif why:
+        _why_table(fit, limit)
+    elif not options:
+        say("--why says what stops each of them, and what would change that.")
+    say()
+    for line in year.notes or (f"No clipping figure: {year.why_not}.",):
+        say(line)
+    if year.year is not None:
+        say(HOURLY_MEANS)
+    for line in assumptions(fit):
+        say(line)
+    for line in CAUTIONS:
+        say(line)
+
+
+def question(fit: Fit) -> str:
+    """What was asked, as a sentence."""
+    r = fit.request
+    where = f"{r.site.design_low_c:g} to {r.site.design_high_c:g} degC, {r.site.mounting}"
+    if r.site.name != "as given":
+        where = f"{r.site.name} ({where})"
+    if fit.is_pair:
+        asked = f"How can {fit.modules[0].name} be wired to {fit.inverters[0].name}"
+    elif fit.lists_inverters:
+        asked = f"Which inverters take {fit.modules[0].name}"
+    else:
+        asked = f"Which modules can be wired to {fit.inverters[0].name}"
+    low, high = r.ratio
+    count = "" if r.counts is None else f", {_span(r.counts)} modules on an inverter"
+    return f"{asked} at {where}? DC/AC {low:.2f} to {high:.2f}{count}, rules {r.rules.name}."
+
+
+def _span(counts: tuple[int, int]) -> str:
+    return str(counts[0]) if counts[0] == counts[1] else f"{counts[0]} to {counts[1]}"
+
+
+def _answer(fit: Fit, options: Sequence[Option]) -> str:
+    t = fit.totals
+    if not t.arrangements:
+        return "Nothing fits."
+    ways = f"{t.arrangements:,} arrangement{'s' if t.arrangements != 1 else ''}"
+    if fit.is_pair:
+        answer = f"In {ways}."
+    else:
+        side = "inverters" if fit.lists_inverters else "modules"
+        answer = f"{t.records_with_option:,} of {t.records_considered:,} {side}, in {ways}."
+    if options and options[0].verdict is Verdict.TO_CONFIRM:
+        answer += " None is proven by the ratings on record: each waits for the values named below the table."
+    return answer
+
+
+def _number_listed(fit: Fit) -> int:
+    return fit.totals.arrangements if fit.request.every else fit.totals.records_with_option
+
+
+def _options_tables(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
+    """One table per verdict, which is why the verdict needs no column."""
+    for outcome in (Verdict.FITS, Verdict.TO_CONFIRM):
+        some = [o for o in options if o.verdict is outcome]
+        if some:
+            say(_HEADINGS[outcome])
+            _options_table(fit, some, has_year)
+            say()
+
+
+_HEADINGS = {
+    Verdict.FITS: "fits: every rating is on record and holds",
+    Verdict.TO_CONFIRM: "to-confirm: nothing on record speaks against it, but a safety rating is not on record",
+}
+
+
+def _options_table(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
+    columns = [Column("#", number=True)]
+    if not fit.is_pair:
+        columns += [Column("inverter" if fit.lists_inverters else "module", fold=True, min_width=30)]
+        columns += [Column("AC kW" if fit.lists_inverters else "W", number=True)]
+    columns += [Column("wiring", fold=True), Column("mod.", number=True), Column("DC/AC", number=True)]
+    if has_year:
+        columns += [Column("clip %", number=True), Column("kWh/year", number=True)]
+    columns += [Column("holds at degC", number=True)]
+    rows = []
+    for o in options:
+        row = [str(o.rank)]
+        if not fit.is_pair:
+            row += _listed(fit, o)
+        row += [wiring(o), str(o.modules), f"{o.dc_ac_ratio:.2f}"]
+        if has_year:
+            row += [number(o.clipping_loss_pct, 2), number(o.yearly_kwh)]
+        rows.append([*row, climate_window(o)])
+    print_table(columns, rows)
+
+
+def _listed(fit: Fit, option: Option) -> list[str]:
+    if fit.lists_inverters:
+        inverter = fit.inverters[option.inverter]
+        return [inverter.name, f"{inverter.ac_power_w / 1000:.2f}"]
+    module = fit.modules[option.module]
+    return [module.name, f"{module.pmax_w:.0f}"]
+
+
+def wiring(option: Option) -> str:
+    """Arrangement with like trackers taken together: ``8 of 2x21 | 1x20``."""
+    parts: list[tuple[str, int]] = []
+    for t in option.arrangement:
+        if parts and parts[-1][0] == t.label:
+            parts[-1] = (t.label, parts[-1][1] + 1)
+        else:
+            parts.append((t.label, 1))
+    if len(option.arrangement) <= 3:
+        return option.label
+    return " | ".join(label if n == 1 else f"{n} of {label}" for label, n in parts)
+
+
+#: Nowhere on Earth is the air colder (Vostok, 1983: -89.2 degC); an option that holds there holds anywhere.
+_COLDEST_ON_EARTH_C = -90.0
+
+
+def climate_window(option: Option) -> str:
+    """Coldest to hottest ambient temperature at which the option holds; ``any`` where nothing bounds it."""
+    low = "any" if option.coldest_c is None or option.coldest_c < _COLDEST_ON_EARTH_C else f"{option.coldest_c:.0f}"
+    high = "any" if option.hottest_c is None else f"{option.hottest_c:.0f}"
+    return f"{low} to {high}"
+
+
+_FIELDS = {
+    "max_dc_voltage_v": "maximum DC voltage",
+    "max_system_voltage_v": "maximum system voltage",
+    "max_isc_a": "maximum short-circuit current of a tracker",
+    "voc_coef_pct": "temperature coefficient of Voc",
+}
+
+
+def confirm_words(confirm: Confirm) -> str:
+    """A value to confirm in words: "maximum DC voltage of at least 561 V"."""
+    what = _FIELDS.get(confirm.field, confirm.field)
+    if confirm.inputs is not None:
+        what += f" (inputs {confirm.inputs + 1})" if confirm.inputs else ""
+    if confirm.at_least is None:
+        return what
+    return f"{what} of at least {confirm.at_least:.1f} {confirm.unit}"
+
+
+def _confirm_lines(fit: Fit, options: Sequence[Option]) -> None:
+    waiting = [o for o in options if o.confirm]
+    if not waiting:
+        return
+    say("To confirm on the datasheets before ordering:")
+    shared = _shared(fit, waiting)
+    for line in shared:
+        say(line, indent=2)
+    own = "inverter" if fit.lists_inverters else "module"
+    for o in waiting[:5]:
+        words = [confirm_words(c) for c in o.confirm if c.record == own]
+        if words:
+            say(f"#{o.rank}  {own}: {'; '.join(words)}", indent=2)
+    if len(waiting) > 5:
+        say("(the document holds them for every option: --json)", indent=2)
+
+
+def _shared(fit: Fit, waiting: Sequence[Option]) -> list[str]:
+    """What the record that all options share is asked for: the largest value of each field."""
+    other = "module" if fit.lists_inverters else "inverter"
+    need: dict[str, Confirm] = {}
+    for o in waiting:
+        for c in o.confirm:
+            if c.record == other and (c.field not in need or (c.at_least or 0) > (need[c.field].at_least or 0)):
+                need[c.field] = c
+    name = (fit.modules if other == "module" else fit.inverters)[0].name
+    return [f"{name}: {confirm_words(c)} (for all of the above)" for c in need.values()]
+
+
+def _checks_table(fit: Fit, option: Option) -> None:
+    say(f"Checks of #{option.rank}: {fit.modules[option.module].name}, {option.label} on"
+        f" {fit.inverters[option.inverter].name}")  # fmt: skip
+    columns = [Column("check"), Column("value", number=True), Column("limit", number=True), Column("unit"),
+               Column("margin %", number=True), Column("verdict"), Column("rule", fold=True)]  # fmt: skip
+    print_table(columns, [_check_row(c) for c in option.checks])
+
+
+def _check_row(c: Check) -> list[str]:
+    rule = c.rule + (f"; {c.remark}" if c.remark else "")
+    if c.confirm is not None and c.confirm.at_least is not None:
+        rule += f"; to confirm: at least {c.confirm.at_least:.1f} {c.confirm.unit}"
+    digits = 0 if c.unit == "W" or c.unit == "1" else 1
+    unit = "" if c.unit == "1" else c.unit
+    return [c.check, number(c.value, digits), number(c.limit, digits), unit, number(c.margin_pct, 1), str(c.verdict), rule]
+
+
+def _why_table(fit: Fit, limit: int) -> None:
+    missed = fit.rejections()
+    if not missed:
+        say("Every record considered has an option.")
+        return
+    records = fit.inverters if fit.lists_inverters else fit.modules
+    say(f"Without option: {len(missed):,}; the nearest misses first.")
+    columns = [Column("inverter" if fit.lists_inverters else "module", fold=True), Column("stopped by", fold=True),
+               Column("nearest", fold=True)]  # fmt: skip
+    print_table(columns, [[records[k].name, ", ".join(r.failed), r.nearest] for k, r in missed[:limit]])
+
+
+def assumptions(fit: Fit) -> list[str]:
+    """Values that a default stands in for, said wherever a result rests on them."""
+    from matcher.electrical import ASSUMED_NOCT_C
+
+    lines = []
+    if any(m.noct_c is None for m in fit.modules[:1]) and len(fit.modules) == 1:
+        lines.append(f"Assumed: NOCT {ASSUMED_NOCT_C:g} degC, which the module's record does not state.")
+    assumed = sum(1 for i in fit.inverters if i.origin("inputs") == "assumed")
+    if assumed:
+        lines.append(
+            f"Assumed: one tracker, for {assumed:,} of {len(fit.inverters):,} inverters whose source says nothing of trackers."
+        )
+    return lines
