@@ -1,0 +1,102 @@
+"""A supplier's free text, taken apart: words, their places in the text without separators, what they measure."""
+
+from __future__ import annotations
+
+import re
+from dataclasses import dataclass
+
+from catalog import namekeys, tradewords
+
+_WORD = re.compile(r"(?:[^\W_]|(?<=\w)\||\|(?=\w))+")
+_WATTS = re.compile(r"(\d+(?:[.,]\d+)?) ?(kwp?|kva|kwac|wp?|watts?|wc)(?![^\W_])")
+_VOLTS = re.compile(r"(?<![^\W_])(\d{3}) ?v(?:ac|olts?)?(?![^\W_])")
+
+#: Nominal AC voltages of grids and their common readings [V]; other voltages in a text are DC limits.
+AC_VOLTS = frozenset({"110", "115", "120", "127", "208", "220", "230", "240", "277", "347", "380", "400", "415", "480"})
+
+
+@dataclass(frozen=True, slots=True)
+class Word:
+    """One word: as written (case folded), folded, its place in the joined text, and how it stands there."""
+
+    raw: str
+    folded: str
+    start: int
+    end: int
+    apart: bool  # white space (or the beginning) before it
+    remark: bool  # a trade word or a measure: it may be part of a name, or be a remark about it
+
+
+class SupplierText:
+    """A free text and what can be read off it without knowing any record."""
+
+    def __init__(self, text: str) -> None:
+        self.squeezed = namekeys.squeezed(text)
+        self.key = namekeys.compact(text)
+        self.words = _words(self.squeezed)
+        #: All words folded and joined.
+        self.joined = "".join(w.folded for w in self.words)
+        #: The same, not folded.
+        self.joined_raw = "".join(w.raw for w in self.words)
+        self.starts = {w.start for w in self.words}
+        self.ends = {w.end for w in self.words}
+        #: Places inside words where letters and digits meet.
+        self.seams = {
+            i
+            for i in range(1, len(self.joined_raw))
+            if self.joined_raw[i].isdigit() != self.joined_raw[i - 1].isdigit()
+        }
+        self.remarks = 0
+        for w in self.words:
+            if w.remark:
+                self.remarks |= mask(w.start, w.end)
+
+    @property
+    def watts(self) -> list[float]:
+        """Powers that the text states [W]."""
+        found = []
+        for number, unit in _WATTS.findall(_digits_mended(self.squeezed)):
+            value = float(number.replace(",", "."))
+            found.append(value * 1000 if unit.startswith("k") else value)
+        return found
+
+    @property
+    def ac_volts(self) -> set[str]:
+        """AC voltages that the text states [V], as written."""
+        return {v for v in _VOLTS.findall(_digits_mended(self.squeezed)) if v in AC_VOLTS}
+
+
+def mask(start: int, end: int) -> int:
+    """Places from start to end as bits of a number."""
+    return (1 << end) - (1 << start)
+
+
+def _digits_mended(squeezed: str) -> str:
+    """The text with scanner's letters among digits turned back: "27owp" is "270wp"."""
+    return re.sub(r"(?<=\d)[oilsb|]+(?=\d|w|kw|v)|(?<![^\W_])[oilsb|]+(?=\d)", _as_digits, squeezed)
+
+
+def _as_digits(match: re.Match[str]) -> str:
+    return match.group().translate(namekeys.SCANNER_DIGITS)
+
+
+def _words(squeezed: str) -> list[Word]:
+    found = list(_WORD.finditer(squeezed))
+    raws = [m.group() for m in found]
+    folds = [namekeys.folded(raw) for raw in raws]
+    out: list[Word] = []
+    place = 0
+    for n, match in enumerate(found):
+        before = squeezed[found[n - 1].end() : match.start()] if n else " "
+        apart = " " in before or not n
+        follows = folds[n + 1] if n + 1 < len(folds) else ""
+        precedes = folds[n - 1] if n else ""
+        is_number = raws[n].isdigit()
+        remark = apart and (
+            tradewords.is_trade(raws[n])
+            or tradewords.is_measure(raws[n])
+            or (is_number and (follows in tradewords.UNITS or precedes in tradewords.COUNTS))
+        )
+        out.append(Word(raws[n], folds[n], place, place + len(folds[n]), apart, remark))
+        place += len(folds[n])
+    return out
