@@ -2,10 +2,10 @@
 
 pvlib installs one of each; newer ones of the same form are read from a path.
 
-What the inverter table does not say. Its ``Vdcmax`` repeats ``Mppt_high`` in every row: it is the top of the tested
-window and no maximum input voltage, so ``max_dc_voltage_v`` stays unknown. Its ``Idcmax`` is ``Pdco / Vdco``: an
-operating point and no rating, so it is kept as derived and limits nothing. Of trackers it says nothing: one is
-assumed.
+What the inverter table does not say. Its ``Vdcmax`` repeats ``Mppt_high`` in every row: it is the top of the
+tested window and no maximum input voltage, so ``max_dc_voltage_v`` stays unknown. Its ``Idcmax`` is
+``Pdco / Vdco``: an operating point and no rating, so it is kept as derived and limits nothing. Of trackers it
+says nothing: one is assumed.
 """
 
 from __future__ import annotations
@@ -21,8 +21,8 @@ from catalog.makers import split_maker
 from catalog.records import SANDIA_PARAMETERS, SIX_PARAMETERS, Inputs, Inverter, Module, Origin, Source
 
 MODULE_COLUMNS = (
-    ("Name", "Technology", "Bifacial", "STC", "Length", "Width", "N_s", "I_sc_ref", "V_oc_ref", "I_mp_ref", "V_mp_ref")
-    + ("alpha_sc", "beta_oc", "T_NOCT", "gamma_r")
+    ("Name", "Technology", "Bifacial", "STC", "Length", "Width", "N_s")
+    + ("I_sc_ref", "V_oc_ref", "I_mp_ref", "V_mp_ref", "alpha_sc", "beta_oc", "T_NOCT", "gamma_r")
     + SIX_PARAMETERS
 )
 INVERTER_COLUMNS = ("Name", "Vac", "Pnt", "Idcmax", "Mppt_low", "Mppt_high") + SANDIA_PARAMETERS
@@ -59,8 +59,8 @@ def read_cec_modules(path: Path | None = None) -> list[Module]:
     Returns
     -------
     list of Module
-        In the order of the table. A blank cell is ``None``. Temperature coefficients are percent of the STC value
-        per kelvin.
+        In the order of the table. A blank cell is ``None``. Temperature coefficients are percent of the STC
+        value per kelvin.
 
     Raises
     ------
@@ -97,9 +97,9 @@ def read_cec_modules(path: Path | None = None) -> list[Module]:
 def read_cec_inverters(path: Path | None = None) -> list[Inverter]:
     """Read a CEC inverter table.
 
-    The model keeps the nominal voltage that the table writes behind it ("PVI-5000 [240V]"): most models are listed
-    once per voltage. Where the voltage column is empty, the voltage is taken from the name if the name states it
-    beyond doubt.
+    The model keeps the nominal voltage that the table writes behind it ("SHO-5.2 [240V]"): most models are
+    listed once per voltage. Where the voltage column is empty, the voltage is taken from the name if the name
+    states it beyond doubt.
 
     Parameters
     ----------
@@ -133,7 +133,8 @@ def read_cec_inverters(path: Path | None = None) -> list[Inverter]:
     one_tracker = (Inputs(trackers=1),)
     keys = tuple(columns)
     records = []
-    for (maker, model), stated, watts, values in zip(names, table.each("Vac", _volts), power, zip(*columns.values())):
+    volts = table.each("Vac", _volts)
+    for (maker, model), stated, watts, values in zip(names, volts, power, zip(*columns.values())):
         named = None if stated else _voltage_in_name(model, watts)
         records.append(
             Inverter(
@@ -155,19 +156,23 @@ def _split(table: CecTable, split: Callable[[str, str], tuple[str, str]]) -> lis
     names = [split(name, maker) for name, maker in zip(table.cells["Name"], makers)]
     for k, (maker, model) in enumerate(names):
         if not (maker and model):
-            raise table.error(k, "Name", f"{table.cells['Name'][k]!r} is no maker with a model; correct the name")
+            name = table.cells["Name"][k]
+            raise table.error(k, "Name", f"{name!r} is no maker with a model; correct the name")
     if len(set(names)) < len(names):
         first: dict[tuple[str, str], int] = {}
         k = next(k for k, name in enumerate(names) if first.setdefault(name, k) != k)
-        earlier = table.rows[first[names[k]]]
-        raise table.error(k, "Name", f"{table.cells['Name'][k]!r} stands in row {earlier} too; take one of them out")
+        name, earlier = table.cells["Name"][k], table.rows[first[names[k]]]
+        raise table.error(k, "Name", f"{name!r} stands in row {earlier} too; take one of them out")
     return names
 
 
 def _module_name(name: str, maker: str) -> tuple[str, str]:
     """Maker and model of "Maker Model"; the maker from its own column where the table has one."""
-    name, maker = " ".join(name.split()), " ".join(maker.split())
-    return (maker, name[len(maker) + 1 :]) if maker and name.startswith(maker + " ") else split_maker(name)
+    if maker:
+        name, maker = " ".join(name.split()), " ".join(maker.split())
+        if name.startswith(maker + " "):
+            return maker, name[len(maker) + 1 :]
+    return split_maker(name)
 
 
 def _inverter_name(name: str, _maker: str) -> tuple[str, str]:
@@ -177,7 +182,7 @@ def _inverter_name(name: str, _maker: str) -> tuple[str, str]:
 
 
 def _voltage_in_name(model: str, watts: float) -> float | None:
-    """Nominal AC voltage that a model's name states: "[240V]", or one of the usual voltages as a part by itself.
+    """Nominal AC voltage that a model's name states: "[240V]", or one of the usual voltages by itself.
 
     Below 1 kW a number like 240 may be the power; with two voltages ("208-240") the name decides nothing.
     """

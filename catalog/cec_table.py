@@ -1,7 +1,7 @@
 """The form of a CEC table: find the file, read it by columns, and say which row and column cannot be read.
 
-A table is a CSV file: a heading, a row of units, a row of variable names, then one row per type. What the columns
-mean is in ``catalog.cec``.
+A table is a CSV file: a heading, a row of units, a row of variable names, then one row per type. What the
+columns mean is in ``catalog.cec``.
 """
 
 from __future__ import annotations
@@ -97,11 +97,11 @@ def read_table(
             heading[heading.index(other)] = name
     missing = [name for name in columns if name not in heading]
     if len(missing) > len(columns) // 2:
-        raise CatalogError(
-            f"{path}, row 1: no heading of a CEC {kind} table ({', '.join(columns[:4])} ...); give another file"
-        )
+        shape = f"no heading of a CEC {kind} table ({', '.join(columns[:4])} ...)"
+        raise CatalogError(f"{path}, row 1: {shape}; give another file")
     if missing:
-        raise CatalogError(f"{path}, row 1, column {', '.join(missing)}: is missing; get the whole CEC {kind} table")
+        names = ", ".join(missing)
+        raise CatalogError(f"{path}, row 1, column {names}: is missing; get the whole CEC {kind} table")
 
     first = 1
     while first < min(3, len(lines)) and lines[first] and lines[first][0].strip().casefold() in _ROW_LABELS:
@@ -111,10 +111,8 @@ def read_table(
     for row, line in zip(rows, body):
         if len(line) != len(heading):
             mend = "the file looks cut off, get it again" if row == rows[-1] else _TAKE_OUT
-            at = f"column {heading[min(len(line), len(heading)) - 1]}"
-            raise CatalogError(
-                f"{path}, row {row}, {at}: the row has {len(line)} cells where the heading has {len(heading)}; {mend}"
-            )
+            at = f"{path}, row {row}, column {heading[min(len(line), len(heading)) - 1]}"
+            raise CatalogError(f"{at}: the row has {len(line)} cells, the heading has {len(heading)}; {mend}")
     if not body:
         raise CatalogError(f"{path}, row {first + 1}: the CEC {kind} table has no rows; get it again")
     return CecTable(path, dict(zip(heading, zip(*body))), rows)
@@ -145,16 +143,18 @@ def _lines(path: Path) -> list[list[str]]:
     except FileNotFoundError:
         raise CatalogError(f"{path}: no such file; give the path of a CEC table (CSV)") from None
     except OSError as problem:
-        raise CatalogError(f"{path}: cannot be read ({problem.strerror}); give the path of a CEC table (CSV)") from None
+        reason = f"cannot be read ({problem.strerror})"
+        raise CatalogError(f"{path}: {reason}; give the path of a CEC table (CSV)") from None
     except (UnicodeDecodeError, csv.Error) as problem:
-        raise CatalogError(f"{path}: no CSV text in UTF-8 ({problem}); save the table as CSV in UTF-8") from None
+        reason = f"no CSV text in UTF-8 ({problem})"
+        raise CatalogError(f"{path}: {reason}; save the table as CSV in UTF-8") from None
 
 
 def _installed(kind: str) -> Path:
     """Newest CEC table of a kind in pvlib's data folder; pvlib itself is not imported."""
     spec = find_spec("pvlib")
     if spec is None or not spec.submodule_search_locations:
-        raise CatalogError(f"no CEC {kind} table: pvlib is not installed; pip install pvlib, or give the table's file")
+        raise CatalogError(f"no CEC {kind} table, as pvlib is not installed; install it or give a file")
     folder = Path(spec.submodule_search_locations[0]) / "data"
     found = list(folder.glob(f"sam-library-cec-{kind}s-*.csv"))
     if not found:

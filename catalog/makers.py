@@ -34,8 +34,8 @@ def _words() -> _Words:
 def split_maker(name: str) -> tuple[str, str]:
     """Split a module's full name into maker and model.
 
-    The model begins at the first word with a digit, and earlier where the words before it show that they are no
-    part of a company's name: after a legal form ("Co._ Ltd."), at a repetition of the maker's first word
+    The model begins at the first word with a digit, and earlier where the words before it show that they are
+    no part of a company's name: after a legal form ("Co._ Ltd."), at a repetition of the maker's first word
     ("Conergy Conergy P 170M"), at a dotted name ("Q.PEAK L-G4.2 370"), at a product line (a list, in
     ``makers.toml``), and at a short code just before the number ("Solar Liberty SLX 235").
 
@@ -47,7 +47,8 @@ def split_maker(name: str) -> tuple[str, str]:
     Returns
     -------
     tuple of str
-        Maker and model; joined by a blank they are ``name`` again. The model is empty where ``name`` is one word.
+        Maker and model; joined by a blank they are ``name`` again. The model is empty where ``name`` is one
+        word.
     """
     name = " ".join(name.split())
     number = _NUMBERED.search(name)
@@ -96,7 +97,7 @@ def _closes_company(lower: list[str], k: int) -> bool:
 
 
 def _is_code(word: str) -> bool:
-    """Whether a word before the number is a code ("SLX") or in small letters ("c-Si"), but no company word."""
+    """Whether a word before the number is a code ("SLX") or in small letters ("c-Si"), no company word."""
     if word.casefold() in _words().company_words or _is_legal_form(word.casefold()):
         return False
     return word == "-" or bool(_CODE.fullmatch(word)) or word[0].islower()

@@ -52,7 +52,7 @@ def inverters() -> list[Inverter]:
     return read_cec_inverters()
 
 
-# --- what the tables hold -------------------------------------------------------------------------------------------
+# --- what the tables hold --------------------------------------------------------------------------------
 
 
 def test_row_counts(modules, inverters, cec_modules_csv, cec_inverters_csv):
@@ -67,7 +67,8 @@ def test_module_names_reassemble(modules, cec_modules_csv):
 
 def test_inverter_names_reassemble(inverters, cec_inverters_csv):
     # "Maker: Model", some with a blank before the colon; two end in marks that a faulty encoding left.
-    table = cec_inverters_csv.Name.str.replace(r" ?: ", " ", n=1, regex=True).str.replace(r"\?+$", "", regex=True)
+    table = cec_inverters_csv.Name.str.replace(r" ?: ", " ", n=1, regex=True)
+    table = table.str.replace(r"\?+$", "", regex=True)
     assert [i.name for i in inverters] == list(table)
     assert len({i.name for i in inverters}) == len(inverters)
     assert all(i.maker == i.maker.strip() and ":" not in i.maker for i in inverters)
@@ -121,7 +122,7 @@ def test_blank_is_unknown_and_zero_is_zero(modules, cec_modules_csv):
 def test_what_the_tables_do_not_state(modules, inverters):
     for name in ("bifaciality", "max_system_voltage_v", "max_series_fuse_a", "vmp_coef_pct"):
         assert {getattr(m, name) for m in modules} == {None}
-    for name in ("max_dc_voltage_v", "phases", "start_voltage_v", "max_array_power_w", "weighted_efficiency_pct"):
+    for name in ("max_dc_voltage_v", "phases", "start_voltage_v", "max_array_power_w"):
         assert {getattr(i, name) for i in inverters} == {None}
     (group,) = inverters[0].inputs
     assert group.trackers == 1
@@ -137,7 +138,7 @@ def test_source_names_the_table_and_its_date(modules, inverters):
     assert {str(i.source) for i in inverters} == {"CEC inverter table, 2019-03-05"}
 
 
-# --- facts that decided how the columns are read ------------------------------------------------------------------
+# --- facts that decided how the columns are read ---------------------------------------------------------
 
 
 def test_vdcmax_is_the_top_of_the_window(cec_inverters_csv):
@@ -164,7 +165,8 @@ def test_voltage_from_the_column_else_from_the_name(inverters, cec_inverters_csv
     assert named["PVI 14TL-208"] == 208 and named["PVI 100-208-PE"] == 208  # 208 V, not 100 V
     assert named["Evershine TL3000-US-240"] == 240
     # 240 W, 240 or 208 V, a DC voltage and a range: the name decides nothing
-    for model in ("SMI-240-60", "P250HV-208/240-xxx", "SC500CP-US 600V (with ABB transformer)", "Conext CL 18000NA"):
+    dc_in_name = "SC500CP-US 600V (with ABB transformer)"
+    for model in ("SMI-240-60", "P250HV-208/240-xxx", dc_in_name, "Conext CL 18000NA"):
         assert named[model] is None
     derived = [i for i in inverters if i.origin("ac_voltage_v") is Origin.DERIVED]
     assert len(derived) == 19
@@ -174,7 +176,7 @@ def test_the_suffix_parts_models_that_differ_by_voltage_only(inverters):
     assert len({(i.maker, i.model.partition(" [")[0]) for i in inverters}) < len(inverters)
 
 
-# --- files that are not as they should be ---------------------------------------------------------------------------
+# --- files that are not as they should be ----------------------------------------------------------------
 
 
 @pytest.fixture
@@ -265,7 +267,9 @@ def test_text_in_a_number_cell(tmp_path, module_lines, text):
     assert "row 7" in line and "V_mp_ref" in line and text in line
 
 
-@pytest.mark.parametrize("column, text", [("N_s", "60.5"), ("Bifacial", "perhaps"), ("STC", ""), ("Technology", "")])
+@pytest.mark.parametrize(
+    "column, text", [("N_s", "60.5"), ("Bifacial", "perhaps"), ("STC", ""), ("Technology", "")]
+)
 def test_cell_that_cannot_be_read(tmp_path, module_lines, column, text):
     line = refusal(saved(tmp_path, with_cell(module_lines, 5, column, text)))
     assert "row 5" in line and f"column {column}" in line
@@ -292,7 +296,8 @@ def test_cut_file(tmp_path, module_lines):
 
 
 def test_row_too_long(tmp_path, module_lines):
-    assert "row 6" in refusal(saved(tmp_path, [*module_lines[:5], module_lines[5] + ",more", *module_lines[6:]]))
+    longer = [*module_lines[:5], module_lines[5] + ",more", *module_lines[6:]]
+    assert "row 6" in refusal(saved(tmp_path, longer))
 
 
 def test_names_that_cannot_be_split_or_come_twice(tmp_path, module_lines, inverter_lines):

@@ -1,4 +1,4 @@
-"""Maker and model of module names, against splits that were verified by eye on the public CEC module table."""
+"""Maker and model of module names, against splits verified by eye on the public CEC module table."""
 
 from __future__ import annotations
 

@@ -1,7 +1,7 @@
 """What the trade says of inverters, measured over the public CEC table.
 
-The Sandia model is pvlib's (King et al. 2007, SAND2007-5036); the figures in the comments are what was measured on the
-table of 2019-03-05.
+The Sandia model is pvlib's (King et al. 2007, SAND2007-5036); the shares are what was measured on the table
+of 2019-03-05.
 """
 
 from __future__ import annotations
