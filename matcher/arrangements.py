@@ -11,6 +11,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from functools import cached_property
 from itertools import combinations
+from math import prod
 
 import numpy as np
 
@@ -40,10 +41,73 @@ class Choices:
         """Modules of each choice."""
         return self.in_series * self.strings
 
+    def keep(self, which: np.ndarray) -> Choices:
+        """Only these choices, in their order."""
+        return Choices(self.in_series[which], self.strings[which], self.to_confirm[which])
+
     def of_lengths(self, lengths: tuple[int, ...]) -> Choices:
         """Only the choices with one of these string lengths."""
-        keep = np.isin(self.in_series, lengths)
-        return Choices(self.in_series[keep], self.strings[keep], self.to_confirm[keep])
+        return self.keep(np.isin(self.in_series, lengths))
+
+
+@dataclass(frozen=True, slots=True)
+class ByCount:
+    """Arrangements told apart by their module count: state m is m modules placed, up to ``most``."""
+
+    most: int
+
+    @property
+    def states(self) -> int:
+        """Number of states."""
+        return self.most + 1
+
+    def steps(self, choices: Choices) -> np.ndarray:
+        """States that each choice moves on, shape (c,)."""
+        return choices.modules
+
+    def open(self, choices: Choices) -> np.ndarray:
+        """From which states each choice can be made; bool (c, states)."""
+        return np.arange(self.states)[None, :] + choices.modules[:, None] <= self.most
+
+
+@dataclass(frozen=True, slots=True)
+class ByStrings:
+    """Arrangements told apart by their strings of each length, up to ``wanted``: (length, strings) pairs.
+
+    A state is a mixed-radix number with one digit per length, the strings of that length placed so far.
+    """
+
+    wanted: tuple[tuple[int, int], ...]
+
+    @property
+    def states(self) -> int:
+        """Number of states; the last one is all strings placed."""
+        return prod(count + 1 for _, count in self.wanted)
+
+    def _strides(self) -> dict[int, tuple[int, int]]:
+        """Stride and wanted strings of each length."""
+        strides, stride = {}, 1
+        for length, count in self.wanted:
+            strides[length] = (stride, count)
+            stride *= count + 1
+        return strides
+
+    def steps(self, choices: Choices) -> np.ndarray:
+        """States that each choice moves on, shape (c,)."""
+        strides = self._strides()
+        stride = np.array([strides[n][0] if n in strides else 0 for n in choices.in_series.tolist()], dtype=np.int64)
+        return choices.strings * stride
+
+    def open(self, choices: Choices) -> np.ndarray:
+        """From which states each choice can be made; bool (c, states)."""
+        strides = self._strides()
+        state = np.arange(self.states)
+        rows = np.zeros((len(choices.in_series), self.states), dtype=bool)
+        for c, (n, s) in enumerate(zip(choices.in_series.tolist(), choices.strings.tolist(), strict=True)):
+            if n in strides:
+                stride, count = strides[n]
+                rows[c] = state // stride % (count + 1) + s <= count
+        return rows
 
 
 @dataclass(frozen=True)
@@ -88,16 +152,19 @@ class Space:
         return self._ways(sure_only=True)
 
     def _ways(self, sure_only: bool) -> list[int]:
-        total = np.zeros(self.most + 1, dtype=object)
-        total[0] = 1
-        for group, choices in zip(self.groups, self.choices, strict=True):
-            modules = choices.modules
-            if sure_only:
-                modules = modules[~choices.to_confirm]
-            total = _multiply(total, _group_ways(modules, group.trackers, self.most))
-        counts = [int(c) for c in total]
+        counts = self.ways_by(ByCount(self.most), sure_only)
         counts[0] = 0  # the empty inverter is no arrangement
         return [c if m >= self.fewest else 0 for m, c in enumerate(counts)]
+
+    def ways_by(self, tally: ByCount | ByStrings, sure_only: bool = False) -> list[int]:
+        """Exact number of arrangements in each state of a tally, the module window left aside."""
+        total = np.zeros(tally.states, dtype=object)
+        total[0] = 1
+        for group, choices in zip(self.groups, self.choices, strict=True):
+            if sure_only:
+                choices = choices.keep(~choices.to_confirm)
+            total = _take_group(total, choices, group.trackers, tally)
+        return [int(c) for c in total]
 
     @property
     def total(self) -> int:
@@ -115,27 +182,31 @@ class Space:
         return self.ways[modules] - sure if to_confirm else sure
 
     def listing(
-        self, accepted: np.ndarray, to_confirm: bool | None = None, lengths: tuple[int, ...] | None = None
+        self,
+        accepted: np.ndarray,
+        to_confirm: bool | None = None,
+        lengths: tuple[int, ...] | None = None,
+        tally: ByCount | ByStrings | None = None,
     ) -> Iterator[np.ndarray]:
-        """Arrangements whose module count is accepted, in blocks of shape (k, trackers, 2): strings, in series.
+        """Arrangements whose state is accepted, in blocks of shape (k, trackers, 2): strings, in series.
 
         Parameters
         ----------
-        accepted : bool array, shape (most + 1,)
-            Wanted module counts.
+        accepted : bool array, shape (states,)
+            Wanted states of the tally: module counts, where no other is given.
         to_confirm : bool, optional
             Only those that leave something to confirm (True) or nothing (False).
         lengths : tuple of int, optional
             Only these string lengths.
         """
-        slots: list[tuple[Choices, bool]] = []
+        slots: list[_Slot] = []
         for group, choices in zip(self.groups, self.choices, strict=True):
             if lengths is not None:
                 choices = choices.of_lengths(lengths)
             if to_confirm is False:
-                sure = ~choices.to_confirm
-                choices = Choices(choices.in_series[sure], choices.strings[sure], choices.to_confirm[sure])
-            slots += [(choices, t == 0) for t in range(group.trackers)]
+                choices = choices.keep(~choices.to_confirm)
+            slot = _Slot.of(choices, tally or ByCount(self.most))
+            slots += [slot if t == 0 else replace(slot, opens_group=False) for t in range(group.trackers)]
         return _walk(slots, accepted, needs_confirm=to_confirm is True)
 
     def upto(self, longest: int) -> Space:
@@ -185,129 +256,125 @@ def longest_string(block: np.ndarray) -> np.ndarray:
     return block[:, :, 1].max(axis=1)
 
 
-def _group_ways(modules: np.ndarray, trackers: int, most: int) -> np.ndarray:
-    """Number of multisets of at most ``trackers`` choices, by total modules; object array (most + 1,)."""
-    one = np.bincount(modules[modules <= most], minlength=most + 1).astype(object)
-    if trackers == 1:
-        one[0] += 1
-        return one
-    # used[k][m]: multisets of k choices with m modules; each choice may be taken again and again.
-    used = [np.zeros(most + 1, dtype=object) for _ in range(trackers + 1)]
-    used[0][0] = 1
-    for m in modules[modules <= most]:
+@dataclass(frozen=True, slots=True, eq=False)
+class _Slot:
+    """One tracker on the walk. The last entry of each array stands for leaving it empty."""
+
+    choices: Choices
+    step: np.ndarray
+    unsure: np.ndarray
+    open: np.ndarray
+    opens_group: bool = True
+
+    @classmethod
+    def of(cls, choices: Choices, tally: ByCount | ByStrings) -> _Slot:
+        return cls(
+            choices,
+            np.append(tally.steps(choices), 0),
+            np.append(choices.to_confirm, False),
+            np.vstack([tally.open(choices), np.ones((1, tally.states), dtype=bool)]),
+        )
+
+
+def _take_group(total: np.ndarray, choices: Choices, trackers: int, tally: ByCount | ByStrings) -> np.ndarray:
+    """Ways of each state after a group of like trackers; a multiset of at most ``trackers`` choices is added."""
+    steps, opens = tally.steps(choices), tally.open(choices)
+    # used[k]: ways with k trackers of the group in use. A choice may be taken again and again, so each
+    # is worked in for k ascending; what it can be added to is cut to the states it is open from.
+    used = [total] + [np.zeros(len(total), dtype=object) for _ in range(trackers)]
+    for step, opened in zip(steps.tolist(), opens, strict=True):
+        start = np.flatnonzero(opened)
+        if not len(start):
+            continue
         for k in range(1, trackers + 1):
-            used[k][m:] += used[k - 1][: most + 1 - m]
-    return sum(used)
+            used[k][start + step] += used[k - 1][start]
+    return sum(used[1:], start=used[0])
 
 
-def _multiply(a: np.ndarray, b: np.ndarray) -> np.ndarray:
-    """Product of two generating functions, cut at the length of ``a``."""
-    out = np.zeros(len(a), dtype=object)
-    for m in np.flatnonzero(b):
-        out[m:] += a[: len(a) - m] * b[m]
-    return out
+def _reach(slots: list[_Slot], accepted: np.ndarray, needs_confirm: bool) -> list[list[np.ndarray]]:
+    """Per slot and flag: whether an accepted state can still be reached; bool (choices + 1, states).
 
-
-def _reach(slots: list[tuple[Choices, bool]], accepted: np.ndarray, needs_confirm: bool) -> list[list[np.ndarray]]:
-    """Per slot and flag: whether an accepted count can still be reached; bool (choices + 1, most + 1).
-
-    Entry [slot][flag][c, used] is for a slot that may take choice c or a later one, or stay empty, with
-    ``used`` modules placed. Flag 0: something to confirm is still to come; flag 1: nothing is asked any more.
+    Entry [slot][flag][c, state] is for a slot that may take choice c or a later one, or stay empty. Flag 0:
+    something to confirm is still to come; flag 1: nothing is asked any more.
     """
-    most = len(accepted) - 1
-    nothing = np.zeros(most + 1, dtype=bool)
+    nothing = np.zeros(len(accepted), dtype=bool)
     table: list[list[np.ndarray]] = [[np.empty(0)] * 2 for _ in slots]
     for j in range(len(slots) - 1, -1, -1):
-        choices, _ = slots[j]
-        modules, unsure = choices.modules, choices.to_confirm
-        last = j + 1 == len(slots)
-        next_is_new = not last and slots[j + 1][1]
-        for flag in ((0, 1) if needs_confirm else (1,)):
-            rows = np.zeros((len(modules) + 1, most + 1), dtype=bool)
-            # Empty: so are all later trackers of the group, which row -1 of the next slot stands for.
-            if last:
-                rows[-1] = accepted if flag else nothing
-            else:
-                rows[-1] = table[j + 1][flag][0 if next_is_new else -1]
-            for c in range(len(modules) - 1, -1, -1):
-                after = 1 if flag or unsure[c] else 0
-                if last:
+        slot = slots[j]
+        for flag in (0, 1) if needs_confirm else (1,):
+            rows = np.zeros_like(slot.open)
+            for c in range(len(slot.step) - 1, -1, -1):
+                after = 1 if flag or slot.unsure[c] else 0
+                if j + 1 == len(slots):
                     target = accepted if after else nothing
                 else:
-                    target = table[j + 1][after][0 if next_is_new else c]
-                rows[c] = rows[c + 1]
-                m = int(modules[c])
-                if m <= most:
-                    rows[c, : most + 1 - m] |= target[m:]
+                    # The next tracker of a group takes the same choice or a later one.
+                    target = table[j + 1][after][0 if slots[j + 1].opens_group else c]
+                step = int(slot.step[c])
+                if step < len(target):
+                    rows[c, : len(target) - step] = target[step:]
+                rows[c] &= slot.open[c]
+                if c + 1 < len(slot.step):
+                    rows[c] |= rows[c + 1]
             table[j][flag] = rows
     return table
 
 
-def _walk(slots: list[tuple[Choices, bool]], accepted: np.ndarray, needs_confirm: bool) -> Iterator[np.ndarray]:
+def _walk(slots: list[_Slot], accepted: np.ndarray, needs_confirm: bool) -> Iterator[np.ndarray]:
     """Depth first over blocks of partial arrangements; yields complete ones, shape (k, trackers, 2)."""
     if not slots:
         return
     table = _reach(slots, accepted, needs_confirm)
-    flag0 = 0 if needs_confirm else 1
-    if not table[0][flag0][0, 0]:
+    flag = 0 if needs_confirm else 1
+    if not table[0][flag][0, 0]:
         return
-    first = (np.zeros((1, 0), dtype=np.int64), np.zeros(1, np.int64), np.full(1, flag0))
-    stack = [first]
+    stack = [(np.zeros((1, 0), dtype=np.int64), np.zeros(1, np.int64), np.full(1, flag))]
     while stack:
-        path, used, flag = stack.pop()
+        path, state, flags = stack.pop()
         j = path.shape[1]
         if j == len(slots):
             yield _complete(slots, path)
             continue
-        choices, _ = slots[j]
-        allowed = _allowed(slots, table, accepted, j, path, used, flag)
-        row, c = np.nonzero(allowed)
-        modules = np.append(choices.modules, 0)
-        unsure = np.append(choices.to_confirm, False)
+        slot = slots[j]
+        row, c = np.nonzero(_allowed(slots, table, accepted, path, state, flags))
         grown = np.column_stack([path[row], c])
-        grown_used = used[row] + modules[c]
-        grown_flag = flag[row] | unsure[c]
+        grown_state = state[row] + slot.step[c]
+        grown_flags = flags[row] | slot.unsure[c]
         for start in reversed(range(0, len(row), BLOCK)):
             part = slice(start, start + BLOCK)
-            stack.append((grown[part], grown_used[part], grown_flag[part]))
+            stack.append((grown[part], grown_state[part], grown_flags[part]))
 
 
 def _allowed(
-    slots: list[tuple[Choices, bool]],
+    slots: list[_Slot],
     table: list[list[np.ndarray]],
     accepted: np.ndarray,
-    j: int,
     path: np.ndarray,
-    used: np.ndarray,
-    flag: np.ndarray,
+    state: np.ndarray,
+    flags: np.ndarray,
 ) -> np.ndarray:
     """Which choices each partial arrangement can take next; bool (k, choices + 1), the last is "empty"."""
-    choices, is_new = slots[j]
-    count = len(choices.modules)
-    most = len(accepted) - 1
-    index = np.arange(count + 1)
-    start = np.zeros(len(path), dtype=np.int64) if is_new else path[:, -1]
-    modules = np.append(choices.modules, 0)
-    unsure = np.append(choices.to_confirm, False)
-    total = used[:, None] + modules[None, :]
-    inside = (index[None, :] >= start[:, None]) & (total <= most)
-    after = flag[:, None] | unsure[None, :]
-    total = np.minimum(total, most)
+    j = path.shape[1]
+    slot = slots[j]
+    index = np.arange(len(slot.step))[None, :]
+    from_choice = np.zeros((len(path), 1), dtype=np.int64) if slot.opens_group else path[:, -1:]
+    inside = (index >= from_choice) & slot.open[:, state].T
+    after = flags[:, None] | slot.unsure[None, :]
+    next_state = np.minimum(state[:, None] + slot.step[None, :], len(accepted) - 1)
     if j + 1 == len(slots):
-        return inside & (after == 1) & accepted[total]
-    next_is_new = slots[j + 1][1]
-    nxt = np.zeros_like(index) if next_is_new else index
-    nxt = np.broadcast_to(nxt[None, :], total.shape)
-    good = table[j + 1][1][nxt, total]
+        return inside & (after == 1) & accepted[next_state]
+    entry = np.zeros_like(index) if slots[j + 1].opens_group else index
+    entry = np.broadcast_to(entry, next_state.shape)
+    good = table[j + 1][1][entry, next_state]
     if len(table[j + 1][0]):
-        good = np.where(after == 1, good, table[j + 1][0][nxt, total])
+        good = np.where(after == 1, good, table[j + 1][0][entry, next_state])
     return inside & good
 
 
-def _complete(slots: list[tuple[Choices, bool]], path: np.ndarray) -> np.ndarray:
+def _complete(slots: list[_Slot], path: np.ndarray) -> np.ndarray:
     """Chosen indices turned into strings and lengths; empty trackers are 0, 0."""
     out = np.zeros((len(path), len(slots), 2), dtype=np.int64)
-    for j, (choices, _) in enumerate(slots):
-        out[:, j, 0] = np.append(choices.strings, 0)[path[:, j]]
-        out[:, j, 1] = np.append(choices.in_series, 0)[path[:, j]]
+    for j, slot in enumerate(slots):
+        out[:, j, 0] = np.append(slot.choices.strings, 0)[path[:, j]]
+        out[:, j, 1] = np.append(slot.choices.in_series, 0)[path[:, j]]
     return out
