@@ -126,6 +126,21 @@ class Module(_Sheet):
     R_sh_ref: float | None = _value("shunt resistance", unit="ohm", low=0.0)
     Adjust: float | None = _value("adjustment of the Isc coefficient", unit="%", low=-100, high=100)
 
+    @property
+    def crystalline(self) -> bool:
+        """Whether the words of the technology name crystalline silicon cells and nothing else."""
+        return _is_crystalline(self.technology)
+
+
+_OTHER_CELLS = ("thin", "cdte", "cigs", "cis", "amorph", "a-si", "tandem", "organic", "perovskite", "gaas")
+_CRYSTALLINE = ("c-si", "mono", "multi", "poly", "perc", "topcon", "crystal", "hjt", "heterojunction", "ibc")
+
+
+@cache
+def _is_crystalline(technology: str) -> bool:
+    words = technology.casefold()
+    return not any(w in words for w in _OTHER_CELLS) and any(w in words for w in _CRYSTALLINE)
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Inputs:
