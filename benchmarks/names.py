@@ -27,12 +27,13 @@ def main() -> None:
     options.add_argument("--seed", type=int, default=1)
     options.add_argument("--show", type=int, default=0, help="print this many texts that were not resolved")
     asked = options.parse_args()
-    modules, inverters = read_cec_modules(), read_cec_inverters()
-    records = [("module", m, m.pmax_w) for m in modules] + [("inverter", i, i.ac_power_w) for i in inverters]
-    names = [Named(n, record.maker, record.model) for n, (_, record, _) in enumerate(records)]
+    modules = [("module", m, m.pmax_w) for m in read_cec_modules()]
+    inverters = [("inverter", i, i.ac_power_w) for i in read_cec_inverters()]
     rng = random.Random(asked.seed)
-    _resolve(names, records, asked.count, asked.show, rng, left_out=False)
-    _resolve(names, records, asked.count // 4, 0, rng, left_out=True)
+    for records in (modules, inverters, modules + inverters):
+        names = [Named(n, record.maker, record.model) for n, (_, record, _) in enumerate(records)]
+        for left_out in (False, True):
+            _resolve(names, records, asked.count // (4 if left_out else 1), asked.show, rng, left_out)
     _command_line(names, rng)
 
 

@@ -71,7 +71,7 @@ class Match:
     exact: bool  # the core stands there letter by letter, nothing mended
     verbatim: bool  # with its separators, too
     maker: int  # 2 named, 1 abbreviated, 0 not there
-    line: bool
+    line: bool  # no word before the core is missing
     doubts: tuple[str, ...]
     strangers: tuple[str, ...]
 
@@ -133,13 +133,14 @@ def match(row: int, shape: Shape, spans: Sequence[tuple[int, int]], text: Suppli
     volts = _volts(shape, text, core)
     told = core | volts
     left = _left_over(text, told)
-    line, left, marks = _named(left, shape.line_words)
+    _, left, marks = _named(left, shape.line_words)
     told |= marks
     maker_level, left, marks = _named(left, shape.maker_words)
     told |= marks
+    line = all(w in shape.maker_words or _is_there(w, text) for w in shape.line_words)
     doubts, strangers = _unexplained(left, core, shape, text)
     return Match(
-        row, shape, core, told, volts, in_order, exact, verbatim, maker_level, line > 1, tuple(doubts), tuple(strangers)
+        row, shape, core, told, volts, in_order, exact, verbatim, maker_level, line, tuple(doubts), tuple(strangers)
     )
 
 
@@ -170,9 +171,13 @@ def _volts(shape: Shape, text: SupplierText, core: int) -> int:
     """Marks the record's AC voltage where the text names it outside the core."""
     if shape.volts is None:
         return 0
-    for w in text.words:
+    units = ("v", "vac", "volt", "volts") if text.ac_volts else ("", "v", "vac", "volt", "volts")
+    for n, w in enumerate(text.words):
         end = w.start + 3
-        if w.folded[:3] == shape.volts and w.raw[3:] in ("", "v", "vac", "volt", "volts") and not core & mask(w.start, end):
+        if w.folded[:3] != shape.volts or core & mask(w.start, end):
+            continue
+        unit = w.raw[3:] or (text.words[n + 1].raw if n + 1 < len(text.words) else "")
+        if unit in units or (not text.ac_volts and not w.raw[3:] and unit not in tradewords.UNITS):
             return mask(w.start, end)
     return 0
 
@@ -195,37 +200,44 @@ def _named(left: list[_Piece], words: list[str]) -> tuple[int, list[_Piece], int
             count = 1
             group = left[n : n + 1]
             joined = group[0].folded
-        how = 2 if joined in runs else _likeness(group[0].raw, joined, words)
+        how, common = (2, False) if joined in runs else _likeness(group[0].raw, joined, words)
+        common = common or all(p.folded in tradewords.COMMON for p in group)
         if not how:
             rest.extend(group)
-        elif how == 2 and not all(p.folded in tradewords.COMMON for p in group) and joined not in tradewords.TRADE:
-            level = 2
-            for p in group:
-                marks |= mask(p.start, p.end)
-        elif how == 1 and joined not in tradewords.TRADE:
-            level = max(level, 1)
+        elif not all(p.folded in tradewords.HOLLOW for p in group):
+            level = level if common else max(level, how)
+            if how == 2:
+                for p in group:
+                    marks |= mask(p.start, p.end)
         n += count
     return level, rest, marks
 
 
-def _likeness(raw: str, piece: str, words: list[str]) -> int:
-    """How a piece stands for one of the words: 2 cut short or with a slip, 1 as initials or thinned out, 0 not at all."""
+def _likeness(raw: str, piece: str, words: list[str]) -> tuple[int, bool]:
+    """How a piece stands for one of the words, and whether only for one that many makers share.
+
+    2: cut short, or with a slip; 1: cut very short, as initials, or thinned out; 0: not at all.
+    """
     if any(c.isdigit() for c in raw) and len(raw) < 5:
-        return 0
+        return 0, False
     telling = [w for w in words if w not in tradewords.COMMON]
-    if any(len(piece) >= 4 and w.startswith(piece) for w in telling):
-        return 2
-    if len(piece) >= 5 and any(abs(len(w) - len(piece)) <= 2 and _slips(piece, w) for w in telling):
-        return 2
-    if len(piece) >= 2 and any(w.startswith(piece) for w in words):
-        return 1
+    for some, common in ((telling, False), (words, True)):
+        if len(piece) >= 4 and any(w.startswith(piece) for w in some):
+            return 2, common
+        if len(piece) >= 5 and any(abs(len(w) - len(piece)) <= 2 and _slips(piece, w) for w in some):
+            return 2, common
+        if len(piece) >= 2 and any(w.startswith(piece) for w in some):
+            return 1, common
     initials = "".join(w[0] for w in words)
     if len(piece) >= 2 and (initials.startswith(piece) or "".join(w[0] for w in telling).startswith(piece)):
-        return 1
-    whole = "".join(words)
-    if len(piece) >= 3 and any(w[0] == piece[0] and _thinned(piece, w) for w in (*words, whole)):
-        return 1
-    return 0
+        return 1, False
+    if len(piece) >= 3 and any(w[0] == piece[0] and _thinned(piece, w) for w in (*telling, "".join(words))):
+        return 1, False
+    return 0, False
+
+
+def _is_there(word: str, text: SupplierText) -> bool:
+    return word in text.joined or any(_likeness(w.raw, w.folded, [word])[0] == 2 for w in text.words)
 
 
 def _slips(piece: str, word: str) -> bool:
@@ -242,22 +254,26 @@ def _thinned(piece: str, word: str) -> bool:
 
 
 def _unexplained(left: list[_Piece], core: int, shape: Shape, text: SupplierText) -> tuple[list[str], list[str]]:
+    """Pieces that may tell another type, and other words that nothing explains."""
     doubts: list[str] = []
     strangers: list[str] = []
     for p in left:
         inside = p.start > p.word.start or p.end < p.word.end  # the core takes a part of the same word
-        beside = bool(core & (mask(max(p.start - 1, 0), p.start) | mask(p.end, p.end + 1)))
+        after = bool(p.start and core >> (p.start - 1) & 1)
+        beside = after or bool(core >> p.end & 1)
         joined = inside or (beside and not _apart(p, core, text))
         if p.raw.isdigit():
-            if _is_number_remark(p, joined, beside, core, shape, text):
-                continue
-            doubts.append(p.raw)
-        elif tradewords.is_trade(p.raw) or tradewords.is_measure(p.raw) or (inside and p.folded in tradewords.UNITS):
-            if p.raw == "x" and not _next_to_number(p, text):
+            if not _is_number_remark(p, joined, after, shape):
                 doubts.append(p.raw)
-        elif any(c.isdigit() for c in p.raw):
-            doubts.append(p.raw)
-        elif joined or (beside and len(p.raw) <= 3) or len(p.raw) == 1:
+        elif tradewords.is_measure(p.raw) or (inside and _is_unit_of_core(p, shape, text)):
+            continue
+        elif tradewords.is_trade(p.raw):
+            if joined and len(p.raw) < 4:
+                doubts.append(p.raw)
+        elif p.folded in tradewords.CODES:
+            if inside or (beside and not _is_remark(p, after, shape, text)):
+                doubts.append(p.raw)
+        elif any(c.isdigit() for c in p.raw) or joined or (beside and len(p.raw) <= 3) or len(p.raw) == 1:
             doubts.append(p.raw)
         else:
             strangers.append(p.raw)
@@ -275,16 +291,29 @@ def _apart(p: _Piece, core: int, text: SupplierText) -> bool:
     return True
 
 
-def _is_number_remark(p: _Piece, joined: bool, beside: bool, core: int, shape: Shape, text: SupplierText) -> bool:
+def _is_number_remark(p: _Piece, joined: bool, after: bool, shape: Shape) -> bool:
     """Whether a bare number is a quantity, a measure or the power once more, and no part of a type."""
-    if p.word.remark or p.raw in AC_VOLTS:
+    if p.word.remark or (p.raw in AC_VOLTS and not joined):
         return True
     if len(p.raw) >= 3 and any(p.raw in n for n in shape.numbers):
         return True
-    after = bool(p.start and core >> (p.start - 1) & 1)
     return not joined and not after
 
 
-def _next_to_number(p: _Piece, text: SupplierText) -> bool:
+def _is_unit_of_core(p: _Piece, shape: Shape, text: SupplierText) -> bool:
+    """Whether a piece is the unit of a number that the core ends with ("270" in "270wp")."""
+    return p.folded in tradewords.UNITS and p.word.apart and p.word.remark and shape.core[-1:].isdigit()
+
+
+def _is_remark(p: _Piece, after: bool, shape: Shape, text: SupplierText) -> bool:
+    """Whether a short word beside the core belongs to a number or a trade word next to it ("24 x", "A-grade")."""
     n = text.words.index(p.word)
-    return any(w.raw.isdigit() for w in text.words[max(n - 1, 0) : n + 2])
+    previous = text.words[n - 1] if n else None
+    following = text.words[n + 1] if n + 1 < len(text.words) else None
+    if following is not None and not following.apart and len(following.raw) > 3 and tradewords.is_trade(following.raw):
+        return p.word.apart
+    if p.raw == "x" and following is not None and following.raw.isdigit():
+        return True
+    if after:  # the unit of a number that the core ends with
+        return p.raw == "w" and shape.core[-1:].isdigit()
+    return p.folded in tradewords.UNITS and previous is not None and previous.raw.isdigit()

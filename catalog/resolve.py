@@ -41,11 +41,13 @@ class TextIndex:
             core_of(_VOLTS_END.sub("", model), maker_words[maker])[0] if " " in model or "[" in model else model
             for maker, model in zip(index.makers, index.models, strict=True)
         ]
-        cores = [namekeys.folded(c) for c in namekeys.compact_all(cores)]
+        cores = namekeys.compact_all(cores)
+        self.families = set(_sizeless("\n".join(cores)).split("\n"))
+        cores = [namekeys.folded(c) for c in cores]
         self.by_core = _rows_by(cores)
         self.sorted_cores = sorted(self.by_core)
         self.longest = max(map(len, cores), default=0)
-        self.maker_vocabulary = set().union(*maker_words.values()) - tradewords.COMMON - tradewords.TRADE
+        self.maker_vocabulary = set().union(*maker_words.values()) - tradewords.HOLLOW - tradewords.CODES
         self.grams = _Grams([namekeys.folded(k) for k in index.full_keys])
 
     def shape(self, row: int) -> Shape:
@@ -54,6 +56,10 @@ class TextIndex:
         if found is None:
             found = self._shapes[row] = Shape(self.index.makers[row], self.index.models[row])
         return found
+
+    def is_suffix(self, shape: Shape, word: str) -> bool:
+        """Whether types of this family, in whatever size, end with this word ("-270P BLK" where "-260P BLK" is known)."""
+        return bool(word) and _sizeless(shape.plain + word) in self.families
 
     def has_longer(self, core: str) -> bool:
         """Whether another model goes on with letters after this core ("AF6K-270P" after "AF6K-270")."""
@@ -148,6 +154,11 @@ def resolve_text(text: str, index: NameIndex, limit: int = 5) -> Resolution:
     return Resolution("choose", known) if known else Resolution("none", candidates)
 
 
+def _sizeless(plain: str) -> str:
+    """Compact names with every digit the same."""
+    return re.sub(r"\d", "#", plain)
+
+
 def _rows_by(keys: Iterable[str]) -> dict[str, list[int]]:
     out: dict[str, list[int]] = {}
     for i, key in enumerate(keys):
@@ -177,9 +188,14 @@ def _matches(read: SupplierText, texts: TextIndex, likeness: dict[int, float]) -
 
 
 def _stands_free(a: int, b: int, read: SupplierText) -> bool:
-    """Whether a piece of the text can be a model: a short one must be made of whole words."""
+    """Whether a piece of the text can be a model: no part of a number, and whole words if it is short."""
     if a in read.starts and b in read.ends:
         return True
+    raw = read.joined_raw
+    if a not in read.starts and raw[a].isdigit() and raw[a - 1].isdigit():
+        return False
+    if b not in read.ends and raw[b].isdigit() and raw[b - 1].isdigit():
+        return False
     return b - a >= 4
 
 
@@ -189,11 +205,11 @@ def _merit(m: Match) -> tuple:
 
 def _winner(matches: list[Match], read: SupplierText, texts: TextIndex) -> Match | None:
     """The one match that the text means for sure, if there is one."""
-    clean = [m for m in matches if not m.doubts]
-    best = max(clean, key=lambda m: (m.told.bit_count(), *_merit(m)), default=None)
-    if best is None or not _is_evident(best, read, texts):
+    told = [m for m in matches if not m.doubts and _is_told(m, texts)]
+    best = max(told, key=lambda m: (m.told.bit_count(), *_merit(m)), default=None)
+    if best is None or _is_contradicted(best, read, texts):
         return None
-    return best if all(m is best or _beats(best, m, read) for m in clean) else None
+    return best if all(m is best or _beats(best, m, read) for m in told) else None
 
 
 def _beats(a: Match, b: Match, read: SupplierText) -> bool:
@@ -202,46 +218,65 @@ def _beats(a: Match, b: Match, read: SupplierText) -> bool:
         return False
     more = a.told & ~b.told
     if more:
-        return bool(more & (~read.remarks | a.volts))
+        return bool(more & (~read.remarks | a.volts)) or (a.in_order and not b.in_order)
     if a.shape.plain == b.shape.plain and a.shape.volts == b.shape.volts:
         return a.maker > b.maker
-    if namekeys.folded(a.shape.plain) == namekeys.folded(b.shape.plain):
+    if a.shape.core == b.shape.core:
         return a.verbatim and not b.verbatim and a.shape.plain == b.shape.plain
     return a.in_order and not b.in_order
 
 
-def _is_evident(m: Match, read: SupplierText, texts: TextIndex) -> bool:
-    """Whether a match that has no doubts about it is told well enough, and nothing contradicts it."""
-    core = m.shape.core
+def _is_told(m: Match, texts: TextIndex) -> bool:
+    """Whether so much of a record stands in the text that the text may mean it, and names no other maker."""
+    if not m.line or (not _is_telling(m) and m.maker < 2):
+        return False
+    if m.strangers and not m.maker and not m.shape.line_words:
+        return False
+    return not any(namekeys.folded(word) in texts.maker_vocabulary for word in m.strangers)
+
+
+def _is_telling(m: Match) -> bool:
+    """Whether a core is no mere number or word that may stand in any text."""
     plain = m.shape.plain
-    telling = len(core) >= 5 and any(c.isdigit() for c in plain) and any(c.isalpha() for c in plain)
-    if not telling and m.maker < 2 and not m.line:
-        return False
-    if m.maker < 2 and not m.line and (m.strangers if not m.maker else _other_maker(m, texts)):
-        return False
-    remarks = m.core & read.remarks
-    if remarks and texts.has_longer(core):
-        return False
+    if m.shape.line_words and not all(w in m.shape.maker_words for w in m.shape.line_words):
+        return m.line
+    return len(plain) >= 5 and any(c.isdigit() for c in plain) and any(c.isalpha() for c in plain)
+
+
+def _is_contradicted(m: Match, read: SupplierText, texts: TextIndex) -> bool:
+    """Whether the voltage or the power that the text names is another one, or only a remark completes the name."""
+    if m.core & read.remarks and texts.has_longer(m.shape.core):
+        return True
+    if m.in_order and texts.is_suffix(m.shape, read.word_after(m.core)):
+        return True
     if m.shape.volts and read.ac_volts and m.shape.volts not in read.ac_volts:
-        return False
-    return not any(_contradicts(watts, m.shape) for watts in read.watts)
+        return True
+    return any(_is_other_power(watts, m.shape, texts) for watts in read.watts)
 
 
-def _other_maker(m: Match, texts: TextIndex) -> bool:
-    """Whether the text names a maker, and another one."""
-    return any(namekeys.folded(word) in texts.maker_vocabulary for word in m.strangers)
+def _is_other_power(watts: float, shape: Shape, texts: TextIndex) -> bool:
+    """Whether a stated power is not the one in the model, yet so near that the model's number must be its power.
 
-
-def _contradicts(watts: float, shape: Shape) -> bool:
-    """Whether a stated power lies near a number of the model, yet is another one: 275 W and "-270"."""
+    Names carry round classes and lists sometimes the measured power ("-250", "251 W"): up to 2 % off
+    is the same type, unless the stated power is a class itself or there is a type for it. From 1 kW on
+    (inverters, whose names are looser) only a type for the stated power counts.
+    """
+    writings = {f"{watts:g}".replace(".", ""), f"{watts / 1000:g}".replace(".", ""), f"{watts / 1000:.1f}".replace(".", "")}
     digits = [n.replace(".", "") for n in shape.numbers]
-    for written in (f"{watts:g}", f"{watts / 1000:g}"):
-        if any(written.replace(".", "") in d for d in digits):
-            return False
+    if any(w in d for w in writings for d in digits):
+        return False
     for n in shape.numbers:
-        sizes = [float(n), float(n) * 1000] + [float(p) for p in (n[:3], n[-3:]) if len(n) > 4 and "." not in n]
-        if n not in AC_VOLTS and any(s >= 50 and 0 < abs(s - watts) <= 0.15 * watts for s in sizes):
-            return True
+        if n in AC_VOLTS and n not in {"220", "230", "240"}:
+            continue
+        for part in {n, n[:3], n[-3:]} if len(n) > 4 and "." not in n else {n}:
+            for size in (float(part), 1000 * float(part)):
+                off = abs(size - watts) / watts
+                if size < 50 or off > 0.15:
+                    continue
+                sibling = any(shape.core.replace(part.replace(".", ""), w) in texts.by_core for w in writings)
+                classes = watts % 5 == 0 and size % 5 == 0
+                if sibling or (watts < 1000 and (off > 0.02 or classes)):
+                    return True
     return False
 
 
@@ -253,7 +288,12 @@ def _ranked(
     score: dict[int, float] = {}
     for m in matches:
         told = m.told.bit_count() / size
-        score[m.row] = max(60.0, 86 + 12 * told - 9 * len(m.doubts) - (0 if m.maker else 1)) if m is not best else 100.0
+        if m is best:
+            score[m.row] = 100.0
+        elif _is_telling(m) or m.maker == 2:
+            score[m.row] = max(60.0, 86 + 12 * told - 9 * len(m.doubts) - (0 if m.maker else 1))
+        else:
+            score[m.row] = 20 + 40 * told
     for row, like in likeness.items():
         if row not in score:
             score[row] = 85 * (0.6 * placed_share(texts.shape(row), read) + 0.4 * like)

@@ -65,6 +65,11 @@ class SupplierText:
         """AC voltages that the text states [V], as written."""
         return {v for v in _VOLTS.findall(_digits_mended(self.squeezed)) if v in AC_VOLTS}
 
+    def word_after(self, places: int) -> str:
+        """The remark, as written, that comes right after the marked places; empty if there is none."""
+        end = places.bit_length()
+        return next((w.raw for w in self.words if w.start == end and w.remark and not w.raw[0].isdigit()), "")
+
 
 def mask(start: int, end: int) -> int:
     """Places from start to end as bits of a number."""
@@ -84,19 +89,29 @@ def _words(squeezed: str) -> list[Word]:
     found = list(_WORD.finditer(squeezed))
     raws = [m.group() for m in found]
     folds = [namekeys.folded(raw) for raw in raws]
+    gaps = [" "] + [squeezed[a.end() : b.start()] for a, b in zip(found, found[1:], strict=False)]
     out: list[Word] = []
     place = 0
-    for n, match in enumerate(found):
-        before = squeezed[found[n - 1].end() : match.start()] if n else " "
-        apart = " " in before or not n
-        follows = folds[n + 1] if n + 1 < len(folds) else ""
-        precedes = folds[n - 1] if n else ""
-        is_number = raws[n].isdigit()
-        remark = apart and (
-            tradewords.is_trade(raws[n])
-            or tradewords.is_measure(raws[n])
-            or (is_number and (follows in tradewords.UNITS or precedes in tradewords.COUNTS))
-        )
-        out.append(Word(raws[n], folds[n], place, place + len(folds[n]), apart, remark))
+    for n, raw in enumerate(raws):
+        apart = not n or " " in gaps[n]
+        remark = apart and (tradewords.is_trade(raw) or tradewords.is_measure(raw) or _is_count(n, raws, folds, gaps))
+        if not apart and gaps[n] in (".", ",") and raw[0].isdigit():  # the decimals of a measure
+            remark = out[-1].remark
+        out.append(Word(raw, folds[n], place, place + len(folds[n]), apart, remark))
         place += len(folds[n])
     return out
+
+
+def _is_count(n: int, raws: list[str], folds: list[str], gaps: list[str]) -> bool:
+    """Whether the word is a number that a word beside it makes a measure, a count or a price."""
+    if not raws[n].isdigit():
+        return False
+    if n and folds[n - 1] in tradewords.ANNOUNCING:
+        return True
+    after = n + 1
+    if after < len(raws) and gaps[after] in (".", ","):
+        if tradewords.is_measure(raws[after]):
+            return True
+        if raws[after].isdigit():
+            after += 1
+    return after < len(raws) and folds[after] in tradewords.COUNTED and gaps[after] == " "

@@ -10,38 +10,43 @@ import re
 from catalog.namekeys import folded
 
 _TRADE = """
-poly polycrystalline polykristallin policristalino policristallino multi multicrystalline mc pc mono monocrystalline
-monokristallin monocristalino monocristallin monocristallino cryst crystalline perc topcon hjt ibc shingled tandem thin
-film thinfilm cdte cigs cis amorphous csi bifacial bifi monofacial halfcut half cut split full cell cells cel zellen
-celdas cellules celle busbar busbars
-blk black blck schwarz noir negro nero slv silver silber argent plata sil wht white weiss blanc blanco bianco clr clear
-anodized anodised alu aluminium aluminum frame framed frameless fr frm rahmen cadre marco cornice backsheet bs bsheet
-backsh bob bow all glass gg glassglass dual double tempered coated ar arc arcoating junction box jbox connector
-connectors conn cable cables lead leads mc tyco
-module modules mod modul module moduli modulo modulos mdl panel panels pnl panneau panneaux paneel panelen pannello
-pannelli placa pv photovoltaic photovoltaik fotovoltaico fotovoltaica solar solarmodul solarpanel solarmodule sol slr
+poly polycrystalline polykristallin policristalino policristallino multi multicrystalline mono monocrystalline
+monokristallin monocristalino monocristallin monocristallino cryst crystalline perc topcon shingled tandem thin film
+thinfilm cdte cigs amorphous csi bifacial bifi monofacial halfcut half cut split full cell cells zellen celdas cellules
+celle busbar busbars
+blk black blck schwarz noir negro nero slv silver silber argent plata wht white weiss blanc blanco bianco clear anodized
+anodised alu aluminium aluminum frame framed frameless frm rahmen cadre marco cornice backsheet bsheet backsh glass
+glassglass dual double tempered coated arcoating junction box jbox connector connectors conn cable cables lead leads tyco
+module modules mod modul moduli modulo modulos mdl panel panels pnl panneau panneaux paneel panelen pannello pannelli
+placa pv photovoltaic photovoltaik fotovoltaico fotovoltaica solar solarmodul solarpanel solarmodule sol slr
 inverter inverters inv invert wechselrichter wr onduleur inversor omvormer string central micro microinverter hybrid
-gridtie grid tie tied transformerless tl afci rsd dc ac phase phases ph single three split outdoor indoor wifi wlan
-watt watts wp w kw kwp kva kwac va mw vdc vac volt volts v amp amps mm cm kg lbs lb inch in hz
-pallet pallets plt pal pall palette paletten pallette palet skid container cont cntr fcl lcl truck box boxes ctn carton
-kit set lot batch bundle pack packed pkg pk loose full part rest
-qty quantity menge anz anzahl qte cant cantidad pcs pce pc pieces piece stk stck stuck stueck st ea each unit units un
-uds pz pzs x no nr num number pos position item items art article artikel artnr sku ref code id
+gridtie grid tie tied transformerless afci rsd phase phases single three outdoor indoor wifi wlan disconnect
+watt watts wp kw kwp kwpeak kva kwac vac vdc volt volts amp amps mm cm kg lbs lb inch hz
+pallet pallets plt pal pall palette paletten pallette palet skid container cont cntr fcl lcl truck boxes ctn carton kit
+set lot batch bundle pack packed pkg loose part rest
+qty quantity menge anz anzahl qte cant cantidad pcs pce pieces piece stk stck stuck stueck each unit units uds pzs nr num
+number pos position item items art article artikel artnr sku ref code
 new neu neuf nuevo nuovo used refurb refurbished unused surplus overstock clearance promo promotion special offer sale
-stock stk lager avail available disp verfugbar instock delivery del lieferung eta ex exw ddp dap cif fob works warehouse
-wh whse week wk price preis prix precio prezzo net netto gross brutto incl excl inc vat mwst tva iva tax usd eur gbp chf
-euro dollar per pro each
-grade class klasse cat quality tier bstock a b approx ca about min max nom nominal rated rating power pmax pmpp voc isc
-vmp imp stc noct output leistung potenza potencia puissance
-warranty garantie garantia yr yrs year years ul iec tuv ce cec listed certified cert rohs fire type typ model modell
-modele modelo series serie version vers rev made origin usa us eu eea china cn germany de mcs
-and und et y e with w mit avec con for fur pour para the of or and incl
+stock lager avail available disp verfugbar instock delivery del lieferung eta exw ddp dap cif fob works warehouse whse
+week weeks wks day days price preis prix precio prezzo net netto gross brutto incl excl inc vat mwst tva iva tax usd eur
+gbp chf euro dollar per pro order min max
+grade class klasse quality tier bstock approx about nom nominal rated rating power pmax pmpp voc isc vmp imp stc noct
+output leistung potenza potencia puissance
+warranty garantie garantia years year yrs listed certified cert rohs ul iec tuv type typ model modell modele modelo series serie
+version vers made origin china germany
+und with mit avec con pour para the and
 """
 
-_LEGAL = """
-inc incorporated corp corporation co company ltd limited llc llp lp plc gmbh ag kg se sa sas sarl srl spa sl slu bv nv ab
-as aps oy oyj kk pty pte pvt bhd sdn group holding holdings international intl
+#: Short words of the trade that are just as often part of a type: explained only away from the model.
+_CODES = """
+mc pc hjt ibc cis cel clr fr bs bob bow all gg ar arc ac dc tl ph in out w v x no st ea un u pz id wh wk ex each a b ca
+yr ce cec fire rev us usa eu eea cn de mcs et y e of or for fur zu ab je l sil sp d p k m
 """
+
+_LEGAL_LONG = """
+inc incorporated corp corporation company ltd limited llc gmbh sarl bhd group holding holdings international intl
+"""
+_LEGAL_SHORT = "co llp lp plc ag kg se sa sas srl spa sl slu bv nv as aps oy oyj kk pty pte pvt sdn"
 
 _COMPANY = """
 solar energy energie energia power technology technologies tech electric electronics electronic electrical new green
@@ -50,27 +55,39 @@ semiconductor global modules products enterprise manufacturing
 """
 
 _UNITS = """
-w wp watt watts wc wac wdc kw kwp kwac kva va v vdc vac volt volts a amp amps mm cm m kg lb lbs in hz c cell cells cel z
-zellen pc pcs pce st stk stck ea x un uds pz ph phase p yr yrs y year years bb mppt mpp mppts pct k
+w wp watt watts wc wac wdc kw kwp kwac kva v vdc vac volt volts amp amps mm cm kg lb lbs hz cell cells cel zellen pc pcs
+pce st stk stck ea x un uds pz ph phase yr yrs year years mppt mpps mpp pct
 """
+_COUNTED = "pallet pallets plt pal pieces modules module panels panel units unit boxes weeks week days in wk container"
+_ANNOUNCING = "qty quantity menge anz anzahl qte cant cantidad pos nr eur usd gbp chf wk tier order min max art sku eta"
+
+
+def _folded(words: str) -> frozenset[str]:
+    return frozenset(folded(word) for word in words.split())
+
 
 #: Folded words that say nothing about which record is meant.
-TRADE = frozenset(folded(word) for word in (_TRADE + _LEGAL).split())
-#: Folded words of makers' names that too many makers share to tell them apart.
-COMMON = frozenset(folded(word) for word in (_COMPANY + _LEGAL).split())
-#: Folded units, as they stand alone after a number.
-UNITS = frozenset(folded(word) for word in _UNITS.split() if word not in {"m", "a", "z", "p", "y", "k"})
-#: Words that announce a number of pieces.
-COUNTS = frozenset(folded(word) for word in "qty quantity menge anz anzahl qte cant cantidad x pos no nr".split())
+TRADE = _folded(_TRADE + _LEGAL_LONG)
+#: The same, but only away from the model; beside it they may be part of another type's name.
+CODES = _folded(_CODES + _LEGAL_SHORT)
+#: Folded words of makers' names that too many makers share to tell them apart by one of them.
+COMMON = _folded(_COMPANY + _LEGAL_LONG + _LEGAL_SHORT)
+#: Those that tell nothing at all.
+HOLLOW = TRADE | _folded(_LEGAL_LONG + _LEGAL_SHORT)
+#: Folded units, and other words that make a number before them a measure or a count.
+UNITS = _folded(_UNITS)
+COUNTED = _folded(_UNITS + _COUNTED)
+#: Words that make a number after them a count, a price or the like.
+ANNOUNCING = _folded(_ANNOUNCING)
 
 _MEASURE = re.compile(r"[\doil|sb]*\d[\doil|sb]*?(?:" + "|".join(sorted(_UNITS.split(), key=len, reverse=True)) + ")")
 _SPECIFICATION = re.compile(
-    r"x\d+|qty\d+|ip\d\d|mc\d|t4|h4|pv\d|iec\d+|ul\d+|en\d+|\d+bb|\d+x\d+(x\d+)?|\d+(ph|hc)|\d+in|[1-4]p|20[12]\d|a{1,3}\d?"
+    r"x\d+|qty\d+|ip\d\d|mc\d|iec\d+|ul\d+|[2-9]bb|\d+x\d+(x\d+)?|[13]ph|(36|48|54|60|66|72|96|108|120|132|144)[cz]|[1-9]m"
 )
 
 
 def is_measure(word: str) -> bool:
-    """Whether a case-folded word is a number with its unit ("270wp", "60c", "24x"), scanner's letters allowed."""
+    """Whether a case-folded word is a number with its unit ("270wp", "35mm", "24x"), scanner's letters allowed."""
     return _MEASURE.fullmatch(word) is not None
 
 
