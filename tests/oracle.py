@@ -229,7 +229,9 @@ def checks(
         if inverter.start_voltage_v is None:
             found["start"].append(NOT_ASKED)
         elif p["voc_hot"] is None:
-            found["start"].append(OPEN)
+            # Voc is above Vmp at any temperature: what Vmp reaches, Voc reaches.
+            certain = at_least(n * p["vmp_hot"], inverter.start_voltage_v)
+            found["start"].append(PASS if certain else OPEN)
         else:
             found["start"].append(PASS if at_least(n * p["voc_hot"], inverter.start_voltage_v) else FAIL)
         design, least = p["isc_design"], p["isc_design_least"]

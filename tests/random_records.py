@@ -185,8 +185,8 @@ def random_inverter(rng: random.Random, module: Module, site: Site, ratio: float
 def random_case(rng: random.Random) -> Case:
     """A module, site and inverter that go together, with the ratio window and the counts asked for."""
     module, site = random_module(rng), random_site(rng)
-    low, high = rng.choice(((0.8, 1.5), (0.8, 1.5), (0.0, 1.5), (1.0, 1.2), (0.9, 0.9)))
-    inverter = random_inverter(rng, module, site, rng.choice((low or 0.5, high, (low + high) / 2)))
+    low, high = rng.choice(((0.8, 1.5), (0.8, 1.5), (0.05, 1.5), (1.0, 1.2), (0.9, 0.9)))
+    inverter = random_inverter(rng, module, site, rng.choice((max(low, 0.5), high, (low + high) / 2)))
     counts = None
     if rng.random() < 0.3:
         inside = rng.uniform(low, high) * inverter.ac_power_w / module.pmax_w
