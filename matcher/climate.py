@@ -62,7 +62,7 @@ class ClimateWindow:
             # Vmp stands in for the unknown Voc where it alone already proves the start.
             if shortest * self._points.vmp_hot_v >= start * (1.0 - TOLERANCE):
                 cell.append(self._hottest_vmp(start / shortest))
-        bounds = [c for c in cell if c is not None]
+        bounds = [c for c in cell if c is not None and c <= HOTTEST_CELL_C]
         return min(bounds) - self._adder if bounds else None
 
     def _hottest_vmp(self, volts: float) -> float | None:

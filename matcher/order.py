@@ -53,7 +53,9 @@ def leading_keys(
     yearly_kwh: np.ndarray,
 ) -> list[np.ndarray]:  # fmt: skip
     """Sort keys that follow the verdict, most important first, all ascending; arrays (n,)."""
-    clipping = np.nan_to_num(clipping_pct, nan=np.inf)
+    # Rounded, so that sums taken in another order tie and the next key decides.
+    clipping = np.round(np.nan_to_num(clipping_pct, nan=np.inf), 9)
+    yearly_kwh = np.round(yearly_kwh, 6)
     if order is Order.RATIO:
         return [-ratio]
     if order is Order.CLIPPING:
