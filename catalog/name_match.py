@@ -12,6 +12,8 @@ from catalog.supplier_text import AC_VOLTS, SupplierText, Word, mask
 
 _VOLTS = re.compile(r"\s*[\[(]\s*(\d{3})\s*v(?:ac)?\s*[\])]\s*$")
 
+_VOLT_UNITS = ("v", "vac", "volt", "volts")
+
 
 class Shape:
     """The name of a record, taken apart for comparison.
@@ -32,8 +34,8 @@ class Shape:
 
     @cached_property
     def chunks(self) -> list[str]:
-        """Pieces of the core between separators, folded."""
-        return [namekeys.folded(w) for w in re.findall(r"[^\W_]+", self.verbatim)]
+        """Pieces of the core between separators, longest first."""
+        return sorted(re.findall(r"[^\W_]+", self.verbatim), key=len, reverse=True)
 
     @cached_property
     def numbers(self) -> list[str]:
@@ -80,7 +82,7 @@ def place(shape: Shape, text: SupplierText) -> list[tuple[int, int]] | None:
     """Places of the core's chunks in the text, in any order; ``None`` unless all are there."""
     taken = 0
     spans = []
-    for chunk in sorted(shape.chunks, key=len, reverse=True):
+    for chunk in shape.chunks:
         span = _find(chunk, text, taken)
         if span is None:
             return None
@@ -93,31 +95,35 @@ def placed_share(shape: Shape, text: SupplierText) -> float:
     """Share of the core's characters that stand in the text, chunk by chunk; wrong digits weigh twice."""
     taken = 0
     told = total = 0.0
-    for chunk in sorted(shape.chunks, key=len, reverse=True):
+    for chunk in shape.chunks:
         weight = len(chunk) * (2.0 if any(c.isdigit() for c in chunk) else 1.0)
         total += weight
         span = _find(chunk, text, taken)
         if span is not None:
             told += weight
             taken |= mask(*span)
-        elif chunk in text.joined:
+        elif namekeys.folded(chunk) in text.joined:
             told += 0.8 * weight
     return told / total if total else 0.0
 
 
 def _find(chunk: str, text: SupplierText, taken: int) -> tuple[int, int] | None:
-    """First free place of a chunk: between ends of words, else where letters and digits meet."""
+    """First free place of a chunk: between ends of words, else where letters and digits meet.
+
+    In chunks of one or two characters nothing is mended: a quantity of 8 is no "B".
+    """
     loose = None
-    at = text.joined.find(chunk)
+    wanted, there = (chunk, text.joined_raw) if len(chunk) < 3 else (namekeys.folded(chunk), text.joined)
+    at = there.find(wanted)
     while at >= 0:
-        end = at + len(chunk)
+        end = at + len(wanted)
         if not taken & mask(at, end):
             begins, closes = at in text.starts, end in text.ends
             if begins and closes:
                 return at, end
-            if len(chunk) > 1 and (begins or at in text.seams) and (closes or end in text.seams):
+            if len(wanted) > 1 and (begins or at in text.seams) and (closes or end in text.seams):
                 loose = loose or (at, end)
-        at = text.joined.find(chunk, at + 1)
+        at = there.find(wanted, at + 1)
     return loose
 
 
@@ -171,14 +177,16 @@ def _volts(shape: Shape, text: SupplierText, core: int) -> int:
     """Marks the record's AC voltage where the text names it outside the core."""
     if shape.volts is None:
         return 0
-    units = ("v", "vac", "volt", "volts") if text.ac_volts else ("", "v", "vac", "volt", "volts")
     for n, w in enumerate(text.words):
-        end = w.start + 3
-        if w.folded[:3] != shape.volts or core & mask(w.start, end):
+        if w.folded[:3] != shape.volts or core & mask(w.start, w.end):
             continue
-        unit = w.raw[3:] or (text.words[n + 1].raw if n + 1 < len(text.words) else "")
-        if unit in units or (not text.ac_volts and not w.raw[3:] and unit not in tradewords.UNITS):
-            return mask(w.start, end)
+        following = text.words[n + 1] if n + 1 < len(text.words) else None
+        if w.raw[3:] in _VOLT_UNITS:
+            return mask(w.start, w.end)
+        if not w.raw[3:] and following is not None and following.raw in _VOLT_UNITS:
+            return mask(w.start, following.end)
+        if not w.raw[3:] and not text.ac_volts and not (following and tradewords.is_in(following.raw, tradewords.UNITS)):
+            return mask(w.start, w.end)
     return 0
 
 
@@ -270,7 +278,7 @@ def _unexplained(left: list[_Piece], core: int, shape: Shape, text: SupplierText
         elif tradewords.is_trade(p.raw):
             if joined and len(p.raw) < 4:
                 doubts.append(p.raw)
-        elif p.folded in tradewords.CODES:
+        elif tradewords.is_in(p.raw, tradewords.CODES):
             if inside or (beside and not _is_remark(p, after, shape, text)):
                 doubts.append(p.raw)
         elif any(c.isdigit() for c in p.raw) or joined or (beside and len(p.raw) <= 3) or len(p.raw) == 1:
@@ -302,7 +310,7 @@ def _is_number_remark(p: _Piece, joined: bool, after: bool, shape: Shape) -> boo
 
 def _is_unit_of_core(p: _Piece, shape: Shape, text: SupplierText) -> bool:
     """Whether a piece is the unit of a number that the core ends with ("270" in "270wp")."""
-    return p.folded in tradewords.UNITS and p.word.apart and p.word.remark and shape.core[-1:].isdigit()
+    return tradewords.is_in(p.raw, tradewords.UNITS) and p.word.apart and p.word.remark and shape.core[-1:].isdigit()
 
 
 def _is_remark(p: _Piece, after: bool, shape: Shape, text: SupplierText) -> bool:
@@ -316,4 +324,4 @@ def _is_remark(p: _Piece, after: bool, shape: Shape, text: SupplierText) -> bool
         return True
     if after:  # the unit of a number that the core ends with
         return p.raw == "w" and shape.core[-1:].isdigit()
-    return p.folded in tradewords.UNITS and previous is not None and previous.raw.isdigit()
+    return tradewords.is_in(p.raw, tradewords.UNITS) and previous is not None and previous.raw.isdigit()

@@ -20,8 +20,8 @@ from collections.abc import Iterable, Sequence
 SCANNER_DIGITS = str.maketrans("oilsb|", "011581")
 
 _DROP_ASCII = {i: None for i in range(128) if not chr(i).isalnum() and chr(i) not in "+\n"}
-_LOWER_DROP = {**_DROP_ASCII, **{ord(c): c.lower() for c in "ABCDEFGHIJKLMNOPQRSTUVWXYZ"}}
 _NOT_COMPACT = re.compile(r"[^\w+\n]|_")
+_ACCENTS = re.compile(r"[\u0300-\u036f]")
 _WORD = re.compile(r"\d+(?:[.,]\d+)+|[^\W_]+\+?")
 _RUN = re.compile(r"\d+|[^\W\d_]+|\+")
 
@@ -33,23 +33,20 @@ def squeezed(text: str) -> str:
 
 def squeezed_all(texts: Iterable[str]) -> list[str]:
     """`squeezed` of every text."""
-    joined = "\n".join([" ".join(text.split()) for text in texts])
-    return _unaccented(joined).casefold().split("\n")
+    return "\n".join([_unaccented(" ".join(text.split())) for text in texts]).casefold().split("\n")
 
 
 def compact(text: str) -> str:
     """Letters, digits and ``+`` of the text, case folded."""
-    return compact_all([text])[0]
+    return compact_all([squeezed(text)])[0]
 
 
 def compact_all(texts: Sequence[str]) -> list[str]:
-    """`compact` of every text; the texts must hold no line breaks other than as white space."""
+    """`compact` of every squeezed text."""
     joined = "\n".join(texts)
-    if joined.count("\n") != max(len(texts) - 1, 0):  # a name with a line break in it
-        joined = "\n".join([" ".join(text.split()) for text in texts])
     if joined.isascii():
-        return joined.translate(_LOWER_DROP).split("\n")
-    return _NOT_COMPACT.sub("", _unaccented(joined).casefold()).split("\n")
+        return joined.translate(_DROP_ASCII).split("\n")
+    return _NOT_COMPACT.sub("", joined).split("\n")
 
 
 def folded(compact_text: str) -> str:
@@ -75,5 +72,4 @@ def digit_runs(text: str) -> list[str]:
 def _unaccented(text: str) -> str:
     if text.isascii():
         return text
-    decomposed = unicodedata.normalize("NFKD", text)
-    return "".join([c for c in decomposed if not unicodedata.combining(c)])
+    return _ACCENTS.sub("", unicodedata.normalize("NFKD", text))

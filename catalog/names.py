@@ -78,7 +78,7 @@ class NameIndex:
     @cached_property
     def full(self) -> list[str]:
         """Full names, squeezed."""
-        return namekeys.squeezed_all([f"{n.maker} {n.model}" for n in self.names])
+        return [f"{maker} {model}" for maker, model in zip(self.makers, self.models, strict=True)]
 
     @cached_property
     def makers(self) -> list[str]:
@@ -266,7 +266,8 @@ def _holding(text: str, key: str, index: NameIndex, *, unfinished: bool = False)
     parts = namekeys.words(text)
     if len(parts) < 2:
         return rows
-    left = [i for i, k in enumerate(index.full_keys) if i not in set(rows)] if rows else range(len(index))
+    known = set(rows)
+    left: Iterable[int] = [i for i in range(len(index)) if i not in known]
     for n, part in enumerate(parts):
         part_key = namekeys.compact(part)
         pattern = re.compile(_pattern(part, unfinished=unfinished and n == len(parts) - 1))

@@ -77,7 +77,8 @@ class _Grams:
         self._np = np
         self.count = len(keys)
         codes, rows = self._codes("\n".join(keys))
-        pairs = np.unique(codes.astype(np.int64) * max(self.count, 1) + rows)
+        pairs = np.sort(codes.astype(np.int64) * max(self.count, 1) + rows)
+        pairs = pairs[np.diff(pairs, prepend=-1) > 0]
         codes, self.rows = np.divmod(pairs, max(self.count, 1))
         size = np.bincount(codes, minlength=37**3)
         self.begin = np.concatenate([[0], np.cumsum(size)])
@@ -230,7 +231,7 @@ def _is_told(m: Match, texts: TextIndex) -> bool:
     """Whether so much of a record stands in the text that the text may mean it, and names no other maker."""
     if not m.line or (not _is_telling(m) and m.maker < 2):
         return False
-    if m.strangers and not m.maker and not m.shape.line_words:
+    if m.strangers and not (m.in_order and (m.maker or m.shape.line_words)):
         return False
     return not any(namekeys.folded(word) in texts.maker_vocabulary for word in m.strangers)
 
@@ -249,8 +250,9 @@ def _is_contradicted(m: Match, read: SupplierText, texts: TextIndex) -> bool:
         return True
     if m.in_order and texts.is_suffix(m.shape, read.word_after(m.core)):
         return True
-    if m.shape.volts and read.ac_volts and m.shape.volts not in read.ac_volts:
-        return True
+    if m.shape.volts and not m.volts and m.shape.volts not in read.ac_volts:
+        if read.ac_volts or read.bare_volts & ~m.told:
+            return True
     return any(_is_other_power(watts, m.shape, texts) for watts in read.watts)
 
 

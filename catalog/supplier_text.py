@@ -47,9 +47,13 @@ class SupplierText:
             if self.joined_raw[i].isdigit() != self.joined_raw[i - 1].isdigit()
         }
         self.remarks = 0
+        #: Places of bare numbers that can be AC voltages.
+        self.bare_volts = 0
         for w in self.words:
             if w.remark:
                 self.remarks |= mask(w.start, w.end)
+            elif w.apart and w.raw in AC_VOLTS:
+                self.bare_volts |= mask(w.start, w.end)
 
     @property
     def watts(self) -> list[float]:
@@ -94,7 +98,7 @@ def _words(squeezed: str) -> list[Word]:
     place = 0
     for n, raw in enumerate(raws):
         apart = not n or " " in gaps[n]
-        remark = apart and (tradewords.is_trade(raw) or tradewords.is_measure(raw) or _is_count(n, raws, folds, gaps))
+        remark = apart and (tradewords.is_trade(raw) or tradewords.is_measure(raw) or _is_count(n, raws, gaps))
         if not apart and gaps[n] in (".", ",") and raw[0].isdigit():  # the decimals of a measure
             remark = out[-1].remark
         out.append(Word(raw, folds[n], place, place + len(folds[n]), apart, remark))
@@ -102,11 +106,11 @@ def _words(squeezed: str) -> list[Word]:
     return out
 
 
-def _is_count(n: int, raws: list[str], folds: list[str], gaps: list[str]) -> bool:
+def _is_count(n: int, raws: list[str], gaps: list[str]) -> bool:
     """Whether the word is a number that a word beside it makes a measure, a count or a price."""
     if not raws[n].isdigit():
         return False
-    if n and folds[n - 1] in tradewords.ANNOUNCING:
+    if n and tradewords.is_in(raws[n - 1], tradewords.ANNOUNCING):
         return True
     after = n + 1
     if after < len(raws) and gaps[after] in (".", ","):
@@ -114,4 +118,4 @@ def _is_count(n: int, raws: list[str], folds: list[str], gaps: list[str]) -> boo
             return True
         if raws[after].isdigit():
             after += 1
-    return after < len(raws) and folds[after] in tradewords.COUNTED and gaps[after] == " "
+    return after < len(raws) and tradewords.is_in(raws[after], tradewords.COUNTED) and gaps[after] == " "

@@ -86,6 +86,11 @@ _SPECIFICATION = re.compile(
 )
 
 
+def is_in(word: str, some: frozenset[str]) -> bool:
+    """Whether a case-folded word is one of some folded words; a number never is, though "18" looks like "lb"."""
+    return not word.isdigit() and folded(word) in some
+
+
 def is_measure(word: str) -> bool:
     """Whether a case-folded word is a number with its unit ("270wp", "35mm", "24x"), scanner's letters allowed."""
     return _MEASURE.fullmatch(word) is not None
@@ -93,4 +98,4 @@ def is_measure(word: str) -> bool:
 
 def is_trade(word: str) -> bool:
     """Whether a case-folded word is a word of the trade, or a mark such as "mc4" or "ip67"."""
-    return folded(word) in TRADE or _SPECIFICATION.fullmatch(word) is not None
+    return is_in(word, TRADE) or _SPECIFICATION.fullmatch(word) is not None
