@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from catalog.errors import CatalogError
 from catalog.records import Site
-from cli.ranges import number_range, whole_range
+from cli.ranges import number_range, strings_of, whole_range
 from matcher.fit import Request
 from matcher.order import Order
 from matcher.rules import RULE_SETS, RuleSet
@@ -32,6 +32,8 @@ def request_of(
     combiner: bool,
     by: str,
     every: bool,
+    units: str = "1",
+    strings: str | None = None,
 ) -> Request:
     """A request from the command line's values.
 
@@ -49,6 +51,8 @@ def request_of(
         rules=rule_set(rules),
         ratio=number_range(ratio, "--ratio"),
         counts=None if count is None else whole_range(count, "--count"),
+        units=whole_range(units, "--units"),
+        strings=None if strings is None else strings_of(strings),
         clip_cap_pct=clip_cap,
         combiner=combiner,
         order=Order(by),

@@ -9,6 +9,7 @@ from typing import IO, TYPE_CHECKING, Any
 from matcher.limits import voltage_cap
 
 if TYPE_CHECKING:
+    from matcher.checks import Tracker
     from matcher.fit import Fit, Option
 
 FIT_SCHEMA = "ferrule.fit/1"
@@ -79,16 +80,20 @@ def option_entry(fit: Fit, option: Option, with_checks: bool) -> dict[str, Any]:
         "verdict": str(option.verdict),
         "module": module_key(fit, option.module),
         "inverter": inverter_key(fit, option.inverter),
-        "units": 1,
+        "units": option.units,
         "modules": option.modules,
-        "arrangement": [
-            {"inputs": t.inputs, "strings": t.strings, "in_series": t.in_series} for t in option.arrangement
-        ],
+        "arrangement": _arrangement(option.arrangement),
         "label": option.label,
         "dc_ac_ratio": option.dc_ac_ratio,
         "clipping_loss_pct": option.clipping_loss_pct,
         "yearly_kwh": option.yearly_kwh,
     }
+    if len(option.wired) > 1:
+        # Unlike units: `arrangement` is that of the first, `split` holds all.
+        entry["split"] = [
+            {"units": u.copies, "modules": u.modules, "arrangement": _arrangement(u.trackers), "label": u.label}
+            for u in option.wired
+        ]
     if with_checks:
         entry["checks"] = [
             {
@@ -110,6 +115,10 @@ def option_entry(fit: Fit, option: Option, with_checks: bool) -> dict[str, Any]:
         ]
         entry["climate"] = {"coldest_c": option.coldest_c, "hottest_c": option.hottest_c}
     return entry
+
+
+def _arrangement(trackers: tuple[Tracker, ...]) -> list[dict[str, int]]:
+    return [{"inputs": t.inputs, "strings": t.strings, "in_series": t.in_series} for t in trackers]
 
 
 def totals_entry(fit: Fit) -> dict[str, int]:

@@ -23,7 +23,9 @@ NOTHING_FITS = 1
 def fit(
     module: Annotated[str | None, typer.Option("--module", "-m", metavar="NAME", help="The module on hand.")] = None,
     inverter: Annotated[str | None, typer.Option("--inverter", "-i", metavar="NAME", help="The inverter on hand.")] = None,
-    count: Annotated[str | None, typer.Option(metavar="N", help="Modules on one inverter: 60, or a range 56..64.")] = None,
+    count: Annotated[str | None, typer.Option(metavar="N", help="Modules on hand: 60, or a range 56..64.")] = None,
+    units: Annotated[str, typer.Option(metavar="K", help="Inverters of one type that share them: 2, or a range 1..4.")] = "1",
+    strings: Annotated[str | None, typer.Option(metavar="LIST", help="The array as strings, hosted exactly: 2x11,1x12 is 2 strings of 11 modules and 1 of 12.")] = None,
     ratio: Annotated[str, typer.Option(metavar="LOW..HIGH", help="Window of DC/AC ratios.")] = "0.8..1.5",
     clip_cap: Annotated[float, typer.Option(metavar="PCT", help="Clipping loss up to which a higher DC/AC ratio is better [%].")] = 2.0,
     rules: Annotated[str, typer.Option(metavar="NAME", help="Rule set: iec-62548 or nec-690.")] = "iec-62548",
@@ -57,6 +59,8 @@ def fit(
     """
     if module is None and inverter is None:
         raise CatalogError("name what you have: --module NAME, --inverter NAME, or both")
+    if strings is not None and module is None:
+        raise CatalogError("--strings needs the module that they are made of: --module NAME")
     with open_catalog(catalog) as opened:
         place = site_of(
             opened, site, low=low, high=high, mounting=mounting, voltage_cap=voltage_cap, rear_share=rear_share,
@@ -67,7 +71,7 @@ def fit(
         from matcher.fit import fit as search
 
         pair = module is not None and inverter is not None
-        request = request_of(place, ratio, count, clip_cap, rules, combiner, by, every or pair)
+        request = request_of(place, ratio, count, clip_cap, rules, combiner, by, every or pair, units, strings)
         modules, inverters = _records(opened, module, inverter)
         if len(modules) == 1:
             year = site_year(opened, place, modules[0])

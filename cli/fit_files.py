@@ -13,6 +13,7 @@ from typing import IO, TYPE_CHECKING, Any
 
 from catalog.errors import CatalogError
 from cli.documents import inverter_key, module_key, write_fit
+from matcher.options import label
 
 if TYPE_CHECKING:
     from matcher.fit import Fit
@@ -91,9 +92,9 @@ _COLUMNS: tuple[tuple[str, Callable[[Fit, Options, int], Any]], ...] = (
     ("module_model", lambda f, t, k: safe(f.modules[t.module[k]].model)),
     ("inverter_maker", lambda f, t, k: safe(f.inverters[t.inverter[k]].maker)),
     ("inverter_model", lambda f, t, k: safe(f.inverters[t.inverter[k]].model)),
-    ("units", lambda f, t, k: 1),
+    ("units", lambda f, t, k: t.units[k]),
     ("modules", lambda f, t, k: t.modules[k]),
-    ("arrangement", lambda f, t, k: " | ".join(x.label for x in t.trackers(k))),
+    ("arrangement", lambda f, t, k: label(t.wired(k))),
     ("dc_ac_ratio", lambda f, t, k: f"{t.ratio[k]:.6g}"),
     ("clipping_loss_pct", lambda f, t, k: blank(t.clipping_pct[k])),
     ("yearly_kwh", lambda f, t, k: blank(t.yearly_kwh[k])),

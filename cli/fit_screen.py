@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import sys
 from collections.abc import Sequence
+from itertools import groupby
 from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
@@ -13,6 +14,7 @@ from matcher.checks import Check, Confirm, Verdict
 if TYPE_CHECKING:
     from cli.years import SiteYear
     from matcher.fit import Fit, Option
+    from matcher.options import Unit
 
 
 def on_terminal() -> bool:
@@ -70,7 +72,13 @@ def question(fit: Fit) -> str:
     else:
         asked = f"Which modules can be wired to {fit.inverters[0].name}"
     low, high = r.ratio
-    count = "" if r.counts is None else f", {_span(r.counts)} modules on an inverter"
+    count = ""
+    if r.counts is not None:
+        count = f", {_span(r.counts)} modules"
+    if r.strings is not None:
+        count = ", exactly the strings " + ", ".join(f"{s}x{n}" for n, s in r.strings)
+    if r.several:
+        count += f" on {_span(r.units)} units"
     return f"{asked} at {where}? DC/AC {low:.2f} to {high:.2f}{count}, rules {r.rules.name}."
 
 
@@ -143,16 +151,19 @@ def _listed(fit: Fit, option: Option) -> list[str]:
 
 
 def wiring(option: Option) -> str:
-    """Arrangement with like trackers taken together: ``8 of 2x21 | 1x20``."""
-    parts: list[tuple[str, int]] = []
-    for t in option.arrangement:
-        if parts and parts[-1][0] == t.label:
-            parts[-1] = (t.label, parts[-1][1] + 1)
-        else:
-            parts.append((t.label, 1))
-    if len(option.arrangement) <= 3:
-        return option.label
-    return " | ".join(label if n == 1 else f"{n} of {label}" for label, n in parts)
+    """Arrangement with like trackers taken together (``8 of 2x21 | 1x20``), units ahead where there are several."""
+    kinds = [_unit_wiring(u) for u in option.wired]
+    if option.units == 1:
+        return kinds[0]
+    return " + ".join(f"{u.copies} unit{'s' if u.copies > 1 else ''}: {w}" for u, w in zip(option.wired, kinds, strict=True))
+
+
+def _unit_wiring(unit: Unit) -> str:
+    if len(unit.trackers) <= 3:
+        return unit.label
+    labels = [t.label for t in unit.trackers]
+    alike = [(label, len(list(some))) for label, some in groupby(labels)]
+    return " | ".join(label if n == 1 else f"{n} of {label}" for label, n in alike)
 
 
 #: Nowhere on Earth is the air colder (Vostok, 1983: -89.2 degC); an option that holds there holds anywhere.

@@ -29,3 +29,20 @@ def whole_range(text: str, option: str) -> tuple[int, int]:
     if low != int(low) or high != int(high):
         raise CatalogError(f"{option} {text}: write whole numbers, such as 60 or 56..64")
     return int(low), int(high)
+
+
+def strings_of(text: str) -> tuple[tuple[int, int], ...]:
+    """An array written as strings, ``2x11,1x12``: (modules in series, strings) pairs.
+
+    Raises
+    ------
+    CatalogError
+        Where a part is not of this form.
+    """
+    found = []
+    for part in text.replace(" ", "").split(","):
+        strings, x, length = part.lower().partition("x")
+        if not (x and strings.isdigit() and length.isdigit() and int(strings) > 0 and int(length) > 0):
+            raise CatalogError(f"--strings {text}: write strings x modules in series, such as 2x11,1x12")
+        found.append((int(length), int(strings)))
+    return tuple(found)

@@ -205,24 +205,39 @@ def _short_circuit(pair: Pair, trackers: Sequence[Tracker]) -> list[Check]:
     return list(found.values())
 
 
-def _per_tracker(pair: Pair, trackers: Sequence[Tracker]) -> list[Check]:
-    """String inputs and the notes on current and power of a tracker, each by its tightest tracker."""
-    inputs_of, current, power = [], [], []
-    for t in trackers:
-        group = pair.inverter.inputs[t.inputs]
-        if group.strings_per_tracker is not None:
-            inputs_of.append(_maximum(pair, "string-inputs", float(t.strings), float(group.strings_per_tracker), "1"))
-        if group.max_current_a is not None:
-            value = t.strings * pair.points.imp_a
-            held = not _holds_max(value, group.max_current_a)
-            remark = "the tracker limits the current; the loss counts as clipping" if held else None
-            current.append(_maximum(pair, "input-current", value, group.max_current_a, "A", remark=remark))
-        if group.max_power_w is not None:
-            value = t.strings * t.in_series * pair.points.pmax_w
-            power.append(_maximum(pair, "tracker-power", value, group.max_power_w, "W"))
+def _string_inputs(pair: Pair, trackers: Sequence[Tracker]) -> list[Check]:
+    """Strings against the inputs of the tightest tracker; waived with a combiner box."""
     if pair.combiner:
-        inputs_of = []
-    return [_worst(some) for some in (inputs_of, current, power) if some]
+        return []
+    found = [
+        _maximum(pair, "string-inputs", float(t.strings), float(limit), "1")
+        for t in trackers
+        if (limit := pair.inverter.inputs[t.inputs].strings_per_tracker) is not None
+    ]
+    return [_worst(found)] if found else []
+
+
+def _input_current(pair: Pair, trackers: Sequence[Tracker]) -> list[Check]:
+    """Note: operating current against the tightest tracker's limit."""
+    found = []
+    for t in trackers:
+        limit = pair.inverter.inputs[t.inputs].max_current_a
+        if limit is not None:
+            value = t.strings * pair.points.imp_a
+            held = not _holds_max(value, limit)
+            remark = "the tracker limits the current; the loss counts as clipping" if held else None
+            found.append(_maximum(pair, "input-current", value, limit, "A", remark=remark))
+    return [_worst(found)] if found else []
+
+
+def _tracker_power(pair: Pair, trackers: Sequence[Tracker]) -> list[Check]:
+    """Note: STC power against the tightest tracker's stated power."""
+    found = [
+        _maximum(pair, "tracker-power", t.strings * t.in_series * pair.points.pmax_w, limit, "W")
+        for t in trackers
+        if (limit := pair.inverter.inputs[t.inputs].max_power_w) is not None
+    ]
+    return [_worst(found)] if found else []
 
 
 def _string_fuse(pair: Pair, most_strings: int) -> Check:
@@ -262,13 +277,24 @@ def check_option(pair: Pair, trackers: Sequence[Tracker]) -> list[Check]:
     checks.append(_maximum(pair, "mppt-high", longest * points.vmp_25_v, inverter.mppt_high_v, "V"))
     checks.append(_start(pair, shortest))
     checks += _short_circuit(pair, trackers)
+    checks += _string_inputs(pair, trackers)
     modules = sum(t.strings * t.in_series for t in trackers)
     if inverter.max_array_power_w is not None:
         checks.append(_maximum(pair, "array-power", modules * points.pmax_w, inverter.max_array_power_w, "W"))
     checks.append(_maximum(pair, "cold-tracking", longest * points.vmp_cold_v, inverter.mppt_high_v, "V"))
-    checks += _per_tracker(pair, trackers)
+    checks += _input_current(pair, trackers)
+    checks += _tracker_power(pair, trackers)
     checks.append(_string_fuse(pair, max(t.strings for t in trackers)))
     return [c for c in checks if c is not None]
+
+
+def worst_of_each(checks: Sequence[Check]) -> list[Check]:
+    """The deciding one of each check (and of each group of inputs to confirm), in the order of the checks."""
+    found: dict[tuple[str, int | None], list[Check]] = {}
+    for c in checks:
+        group = c.confirm.inputs if c.confirm is not None else None
+        found.setdefault((c.check, group), []).append(c)
+    return [_worst(some) for some in found.values()]
 
 
 def verdict(checks: Sequence[Check]) -> Verdict:

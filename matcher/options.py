@@ -16,12 +16,14 @@ class Options:
     """n options; arrays of shape (n,) unless said otherwise.
 
     ``module`` and ``inverter`` index the records of the search. ``to_confirm`` tells the verdict apart
-    (False: fits). Losses are NaN where they cannot be known. ``strings``, ``in_series`` and ``inputs``
-    have shape (n, trackers), with 0 strings where a tracker is empty or there is none.
+    (False: fits). Losses are NaN where they cannot be known. The last five have shape (n, trackers), with 0
+    strings where a tracker is empty or there is none. With several units the trackers of each different
+    unit stand one after the other: ``kind`` tells these apart, ``copies`` is how many are wired alike.
     """
 
     module: np.ndarray
     inverter: np.ndarray
+    units: np.ndarray
     modules: np.ndarray
     ratio: np.ndarray
     to_confirm: np.ndarray
@@ -33,6 +35,8 @@ class Options:
     strings: np.ndarray
     in_series: np.ndarray
     inputs: np.ndarray
+    copies: np.ndarray
+    kind: np.ndarray
 
     def __len__(self) -> int:
         return len(self.module)
@@ -41,13 +45,41 @@ class Options:
         """The options at these positions, in this order."""
         return Options(*(getattr(self, f.name)[index] for f in fields(self)))
 
-    def trackers(self, k: int) -> tuple[Tracker, ...]:
-        """What the trackers in use carry in option k."""
-        return tuple(
-            Tracker(int(g), int(s), int(n))
-            for g, s, n in zip(self.inputs[k], self.strings[k], self.in_series[k], strict=True)
-            if s
-        )
+    def wired(self, k: int) -> tuple[Unit, ...]:
+        """The different units of option k, each with what its trackers in use carry."""
+        found: dict[int, list[Tracker]] = {}
+        copies: dict[int, int] = {}
+        columns = (self.kind[k], self.copies[k], self.inputs[k], self.strings[k], self.in_series[k])
+        for kind, times, group, s, n in zip(*(c.tolist() for c in columns), strict=True):
+            if s:
+                found.setdefault(kind, []).append(Tracker(group, s, n))
+                copies[kind] = times
+        return tuple(Unit(copies[kind], tuple(trackers)) for kind, trackers in found.items())
+
+
+@dataclass(frozen=True, slots=True)
+class Unit:
+    """Inverters wired alike: how many, and what the trackers in use of each carry."""
+
+    copies: int
+    trackers: tuple[Tracker, ...]
+
+    @property
+    def modules(self) -> int:
+        """Modules on one of them."""
+        return sum(t.strings * t.in_series for t in self.trackers)
+
+    @property
+    def label(self) -> str:
+        """Like ``2x11 | 1x12``: strings x modules in series, trackers parted by a bar."""
+        return " | ".join(t.label for t in self.trackers)
+
+
+def label(wired: Sequence[Unit]) -> str:
+    """Like ``2x11 | 1x12``; where units are unlike, each kind with its number, joined by a plus."""
+    if len(wired) == 1:
+        return wired[0].label
+    return " + ".join(f"{u.copies} of ({u.label})" for u in wired)
 
 
 def build(
@@ -64,7 +96,7 @@ def build(
     voltage_limit_v: np.ndarray,
     losses: Losses,
 ) -> Options:
-    """Options with the columns that follow from the others; arrays (n,) or (n, trackers)."""
+    """Options of one unit each, with the columns that follow from the others; arrays (n,) or (n, trackers)."""
     modules = (strings * in_series).sum(axis=1)
     ordered = np.sort(in_series, axis=1)
     lengths = (np.diff(ordered, axis=1, prepend=0) > 0).sum(axis=1)
@@ -72,6 +104,7 @@ def build(
     return Options(
         module=module,
         inverter=inverter,
+        units=np.ones(len(module), dtype=np.int32),
         modules=modules,
         ratio=modules * pmax_w / ac_power_w,
         to_confirm=to_confirm,
@@ -83,6 +116,8 @@ def build(
         strings=strings,
         in_series=in_series,
         inputs=inputs,
+        copies=np.broadcast_to(np.ones(1, dtype=np.int32), strings.shape),
+        kind=np.broadcast_to(np.zeros(1, dtype=np.int16), strings.shape),
     )
 
 

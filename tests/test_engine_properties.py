@@ -12,6 +12,7 @@ from dataclasses import replace
 import pytest
 
 import matcher.fit
+import matcher.search
 import oracle
 from catalog.records import Inputs, Inverter, Module
 from matcher.checks import Pair, Tracker, check_option, verdict

@@ -1,0 +1,100 @@
+"""The schema version of a catalog, and the way from an older one to this one.
+
+To change a table: change it in `catalog.tables`, add one to `VERSION`, and add to `MIGRATIONS`, under the new
+version, a function that brings a catalog from the version before to it. Migrations are SQL of their time and use
+nothing of `catalog.tables`, which goes on changing. A migration runs in one transaction; for a file, a copy is
+kept beside it first.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from typing import TYPE_CHECKING
+
+from catalog.errors import CatalogError
+
+if TYPE_CHECKING:
+    from sqlmodel import Session
+
+    from catalog.database import Database, Run
+
+VERSION = 1
+
+#: By the version that they lead to.
+MIGRATIONS: Mapping[int, Callable[[Session], None]] = {}
+
+
+def stored_version(run: Run) -> int | None:
+    """Schema version of a catalog; ``None`` if its tables are not there.
+
+    Raises
+    ------
+    CatalogError
+        If the version is no number.
+    """
+    rows = run("SELECT m.value FROM meta m WHERE m.key = 'schema'", {})
+    if not rows:
+        return None
+    if not str(rows[0][0]).isdigit():
+        raise CatalogError(f"the catalog tells no schema version but {rows[0][0]!r}: it is damaged")
+    return int(rows[0][0])
+
+
+def ensure(database: Database, *, create: bool) -> None:
+    """See that a catalog has the tables of this version: make them, or migrate an older catalog.
+
+    Raises
+    ------
+    CatalogError
+        If the catalog is newer than this program, is no catalog, or does not exist and is not to be made.
+    """
+    version = _version(database)
+    if version == VERSION:
+        return
+    if version is None and not create:
+        raise CatalogError(database.missing_line())
+    if version is not None and version > VERSION:
+        raise CatalogError(
+            f"the catalog {database.label} was last used by a newer Ferrule (its schema is {version}, this one knows"
+            f" up to {VERSION}): update with 'pip install --upgrade ferrule'; {_UNCHANGED}"
+        )
+    if version is not None and version + 1 not in MIGRATIONS:
+        raise CatalogError(f"the catalog {database.label} has a schema {version} that no Ferrule has written")
+    with database.writable() as writer, writer.writing() as (session, run):
+        # Another process may have been first.
+        version = stored_version(run) if version is not None else None
+        if version is None and not writer.has_table("meta"):
+            _make(session)
+        elif version is not None and version < VERSION:
+            writer.keep_copy(f"schema-{version}")
+            _migrate(session, version)
+
+
+_UNCHANGED = "nothing in it was changed"
+
+
+def _version(database: Database) -> int | None:
+    """Schema version, where the tables are there."""
+    if not database.has_table("meta"):
+        if database.has_table():
+            raise CatalogError(f"{database.label} is a database, but no catalog of Ferrule's: name another")
+        return None
+    with database.reading() as run:
+        return stored_version(run)
+
+
+def _make(session: Session) -> None:
+    from catalog.tables import MetaRow, SQLModel
+
+    SQLModel.metadata.create_all(session.connection())
+    session.add(MetaRow(key="schema", value=str(VERSION)))
+
+
+def _migrate(session: Session, version: int) -> None:
+    from sqlalchemy import text
+
+    for step in range(version + 1, VERSION + 1):
+        MIGRATIONS[step](session)
+    session.connection().execute(
+        text("UPDATE meta SET value = :value WHERE key = 'schema'"), {"value": str(VERSION)}
+    )

@@ -1,0 +1,278 @@
+"""From the entries of a datasheet file, whatever its form, to records; and from records to entries.
+
+An entry is one row or table with the fields of a record by name, and beside them: ``source`` and
+``source_revision``; ``entered``, ``derived`` and ``assumed``, lists of the fields whose value has that origin;
+``sources``, the documents of single values that come from another one than ``source``.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any
+
+from catalog.errors import CatalogError
+from catalog.inputs_text import EXAMPLE
+from catalog.plausibility import findings_of
+from catalog.records import FieldSpec, Inputs, Inverter, Module, Origin, Source, specs
+from catalog.sheet_values import DecimalSigns, value_of
+
+KINDS: Mapping[str, type] = {"module": Module, "inverter": Inverter}
+MARKED_ORIGINS = (Origin.ENTERED, Origin.DERIVED, Origin.ASSUMED)
+ABOUT = ("source", "source_revision", *(o.value for o in MARKED_ORIGINS), "sources")
+
+_TEXT = {name: FieldSpec(name, str, "", name, False) for name in ("source", "source_revision", "name", "revision")}
+
+
+def fields_of(kind: str) -> tuple[str, ...]:
+    """Fields that an entry of a kind may have, in the order in which they are written."""
+    values = tuple(specs(KINDS[kind]))
+    if kind == "inverter":
+        behind = values.index("max_array_power_w") + 1
+        values = (*values[:behind], "inputs", *values[behind:])
+    return values + ABOUT
+
+
+@dataclass(frozen=True, slots=True)
+class Entry:
+    """One record as a file has it: where it stands there, its kind, and its cells by field name.
+
+    ``meant`` holds names of the file that are not known, by the field that they may mean.
+    """
+
+    where: str
+    kind: str
+    cells: Mapping[str, Any]
+    meant: Mapping[str, str] = field(default_factory=dict)
+
+
+@dataclass(slots=True)
+class Reading:
+    """What is gathered while one file is read."""
+
+    path: Path
+    notes: list[str] = field(default_factory=list)
+    signs: DecimalSigns = field(default_factory=DecimalSigns)
+
+    def fault(self, message: object, *place: str) -> CatalogError:
+        """Error with file and place before its message."""
+        return CatalogError(f"{', '.join((str(self.path), *filter(None, place)))}: {message}")
+
+    def note(self, message: str, *place: str) -> None:
+        """Keep a note with its place."""
+        self.notes.append(f"{', '.join((str(self.path), *filter(None, place)))}: {message}")
+
+    def unknown(self, names: Sequence[str], known: Sequence[str], what: str, place: str = "") -> dict[str, str]:
+        """Note names that are not known; return the likely meant ones, by what was meant."""
+        meant = {}
+        for name in names:
+            near = nearest(name, known)
+            if near:
+                meant[near] = name
+            hint = f"; did you mean {near}?" if near else ""
+            self.note(f"{what} {name!r} is not known and was left out{hint}", place)
+        return meant
+
+
+def nearest(name: str, known: Sequence[str]) -> str | None:
+    """The known field name that a text most likely means; ``None`` if none is near."""
+    from rapidfuzz import fuzz, process, utils
+
+    found = process.extractOne(name, known, scorer=fuzz.ratio, processor=utils.default_process, score_cutoff=70)
+    return found[0] if found else None
+
+
+def records_of(entries: Sequence[Entry], reading: Reading) -> list[Module | Inverter]:
+    """Records of entries, checked; odd values and what is assumed go to the notes of ``reading``.
+
+    Parameters
+    ----------
+    entries : sequence of Entry
+    reading : Reading
+        Of the file.
+
+    Raises
+    ------
+    CatalogError
+        For the first entry that cannot be taken, with its place in the file.
+    """
+    records = []
+    first: dict[tuple[str, str, str], tuple[str, Module | Inverter]] = {}
+    places = []
+    for entry in entries:
+        record = _record(entry, reading)
+        key = (entry.kind, record.maker, record.model)
+        if key in first:
+            _same_or_fault(entry, record, *first[key], reading)
+            continue
+        first[key] = (entry.where, record)
+        records.append(record)
+        places.append(entry.where)
+    try:
+        reading.signs.check()
+    except CatalogError as problem:
+        raise reading.fault(problem) from None
+    if reading.signs.comma:
+        reading.note("decimal commas were read as decimal points")
+    _note_defaults(records, reading)
+    _check(records, places, reading)
+    return records
+
+
+def _record(entry: Entry, reading: Reading) -> Module | Inverter:
+    type_ = KINDS[entry.kind]
+    values: dict[str, Any] = {}
+    for name, spec in specs(type_).items():
+        try:
+            value = value_of(entry.cells.get(name), spec, reading.signs, f"{entry.where}, {name}") if name in entry.cells else None
+        except CatalogError as problem:
+            raise reading.fault(problem, entry.where, name) from None
+        if value is not None:
+            values[name] = value
+        elif spec.required:
+            raise reading.fault(_needed(entry, spec), entry.where, name)
+    origins = _origins(entry, reading, type_)
+    if type_ is Inverter:
+        inputs = _inputs(entry, reading)
+        if inputs:
+            values["inputs"] = inputs
+        else:
+            origins["inputs"] = Origin.ASSUMED
+    for name in origins:
+        if name not in values and name != "inputs":
+            raise reading.fault(f"is marked {origins[name]} and has no value; enter the value or take the mark away", entry.where, name)
+    return type_(**values, source=_source(entry, reading), origins=origins, sources=_sources(entry, reading, type_))
+
+
+def _needed(entry: Entry, spec: FieldSpec) -> str:
+    unit = f" in {spec.unit}" if spec.unit not in ("", "1") else ""
+    kind = {"module": "a module", "inverter": "an inverter"}[entry.kind]
+    what = f"{kind} needs it ({spec.meaning}{unit}{', yes or no' if spec.type is bool else ''})"
+    if spec.name in entry.meant:
+        return f"is missing, {what}; is {entry.meant[spec.name]!r} meant? then rename it to {spec.name}"
+    return f"is blank, {what}" if spec.name in entry.cells else f"is missing, {what}"
+
+
+def _inputs(entry: Entry, reading: Reading) -> tuple[Inputs, ...]:
+    """Groups of inputs of an entry, given as a list of tables; none where nothing is said."""
+    groups = entry.cells.get("inputs") or []
+    if isinstance(groups, tuple):
+        return groups
+    if not isinstance(groups, list) or not all(isinstance(group, Mapping) for group in groups):
+        raise reading.fault("is no list of groups; write inputs = [{trackers = 2, max_current_a = 26}]", entry.where, "inputs")
+    found = []
+    known = specs(Inputs)
+    for group in groups:
+        reading.unknown([name for name in group if name not in known], tuple(known), "key", f"{entry.where}, inputs")
+        values = {}
+        for name, spec in known.items():
+            try:
+                values[name] = value_of(group[name], spec, reading.signs, f"{entry.where}, inputs") if name in group else None
+            except CatalogError as problem:
+                raise reading.fault(f"{name}: {problem}", entry.where, "inputs") from None
+        if values["trackers"] is None:
+            raise reading.fault(f"a group has no trackers; a group reads like {{trackers = 2, max_current_a = 26}}", entry.where, "inputs")
+        found.append(Inputs(**values))
+    return tuple(found)
+
+
+def _origins(entry: Entry, reading: Reading, type_: type) -> dict[str, Origin]:
+    allowed = (*specs(type_), *(("inputs",) if type_ is Inverter else ()))
+    origins: dict[str, Origin] = {}
+    for origin in MARKED_ORIGINS:
+        names = entry.cells.get(origin.value) or []
+        if not isinstance(names, list):
+            raise reading.fault('is no list of fields; write it like ["noct_c"]', entry.where, origin.value)
+        for name in names:
+            if name not in allowed:
+                near = nearest(str(name), allowed)
+                hint = f"did you mean {near}?" if near else "name the fields as the columns are named"
+                raise reading.fault(f"{name!r} is no field of this kind; {hint}", entry.where, origin.value)
+            if name in origins:
+                raise reading.fault(f"{name} is marked {origins[name]} as well; keep one mark", entry.where, origin.value)
+            origins[name] = origin
+    return origins
+
+
+def _text(cells: Mapping[str, Any], name: str, reading: Reading, where: str) -> str:
+    try:
+        return value_of(cells.get(name, ""), _TEXT[name], reading.signs) or ""
+    except CatalogError as problem:
+        raise reading.fault(problem, where, name) from None
+
+
+def _source(entry: Entry, reading: Reading) -> Source:
+    name = _text(entry.cells, "source", reading, entry.where)
+    return Source(name or reading.path.name, _text(entry.cells, "source_revision", reading, entry.where))
+
+
+def _sources(entry: Entry, reading: Reading, type_: type) -> dict[str, Source]:
+    allowed = (*specs(type_), *(("inputs",) if type_ is Inverter else ()))
+    given = entry.cells.get("sources") or {}
+    if not isinstance(given, Mapping):
+        raise reading.fault("is no table of sources by field", entry.where, "sources")
+    found = {}
+    for name, source in given.items():
+        if name not in allowed:
+            near = nearest(name, allowed)
+            hint = f"did you mean {near}?" if near else "name the fields as the columns are named"
+            raise reading.fault(f"{name!r} is no field of this kind; {hint}", entry.where, "sources")
+        if not isinstance(source, Mapping) or not source.get("name"):
+            raise reading.fault(f"{name} has no source with a name", entry.where, "sources")
+        where = f"{entry.where}, sources"
+        found[name] = Source(_text(source, "name", reading, where), _text(source, "revision", reading, where))
+    return found
+
+
+def _same_or_fault(entry: Entry, record: Module | Inverter, earlier: str, first: Module | Inverter, reading: Reading) -> None:
+    """Note a record that stands in the file twice; refuse it where the two differ."""
+    if record == first:
+        reading.note(f"{record.name} stands in {earlier} with the same values; it is taken once", entry.where)
+        return
+    differ = [n for n in fields_of(entry.kind) if n in (*specs(type(record)), "inputs") and getattr(record, n) != getattr(first, n)]
+    what = f"another {', '.join(differ[:3])}" if differ else "other sources or origins"
+    raise reading.fault(f"{record.name} stands in {earlier} already, with {what}; keep the right one", entry.where, "model")
+
+
+def _note_defaults(records: Sequence[Module | Inverter], reading: Reading) -> None:
+    unnamed = sum(r.source.name == reading.path.name for r in records)
+    if unnamed:
+        reading.note(f"no source is named for {_some(unnamed, 'record')}, so the file's name stands for it")
+    blank = sum(r.origins.get("inputs") is Origin.ASSUMED and r.inputs == (Inputs(trackers=1),) for r in records)
+    if blank:
+        reading.note(f"no inputs are stated for {_some(blank, 'inverter')}, so one tracker is assumed; state them like '{EXAMPLE}'")
+
+
+def _some(count: int, what: str) -> str:
+    return f"{count} {what}{'' if count == 1 else 's'}"
+
+
+def _check(records: Sequence[Module | Inverter], places: Sequence[str], reading: Reading) -> None:
+    """Refuse what is impossible, note what is odd."""
+    found = findings_of(records)
+    refused = {k: some[0] for k, some in found.items() if some[0].severity == "impossible"}
+    for k, finding in refused.items():
+        others = f" ({_some(len(refused) - 1, 'more record')} of the file cannot be either)" if len(refused) > 1 else ""
+        raise reading.fault(f"{records[k].name}: {finding.message}{others}", places[k], finding.field)
+    for k, some in found.items():
+        for finding in some:
+            reading.note(f"{records[k].name}: {finding.message}; kept as it is", places[k], finding.field)
+
+
+def cells_of(record: Module | Inverter) -> dict[str, Any]:
+    """What an entry of a record holds, in the order in which it is written; what is not known is left out.
+
+    The id and the revision number belong to a catalog and not to the datasheet, so they are left out too.
+    """
+    kind = "module" if isinstance(record, Module) else "inverter"
+    cells = {}
+    for name in fields_of(kind):
+        if name not in ABOUT and getattr(record, name) is not None:
+            cells[name] = getattr(record, name)
+    cells["source"] = record.source.name
+    cells["source_revision"] = record.source.revision
+    for origin in MARKED_ORIGINS:
+        cells[origin.value] = [name for name in cells if record.origins.get(name) is origin]
+    cells["sources"] = {name: source for name, source in record.sources.items() if name in cells}
+    return {name: cell for name, cell in cells.items() if cell not in ("", [], {})}

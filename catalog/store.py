@@ -1,0 +1,310 @@
+"""The catalog: what is known of modules, inverters and sites, kept in one place.
+
+    with Catalog.open("catalog.sqlite", create=True) as catalog:
+        catalog.load(modules, inverters)
+        module = catalog.module(17)
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from datetime import UTC, datetime
+from pathlib import Path
+from types import TracebackType
+from typing import TYPE_CHECKING, Any
+
+from catalog import revisions, schema
+from catalog.database import Database, open_database
+from catalog.errors import CatalogError
+from catalog.loading import LoadReport, Progress, load
+from catalog.near import nearest
+from catalog.records import Inverter, Module, Site, Source
+from catalog.rows import CURRENT, checked_kind, id_condition, kind_of, read_records, read_sites
+from catalog.sites import checked
+
+if TYPE_CHECKING:
+    from catalog.names import Named
+
+#: How many computed things are kept; the oldest give way.
+_KEPT = 200
+
+
+class Catalog:
+    """An open catalog. Changes are made at once, each in a transaction of its own."""
+
+    def __init__(self, database: Database) -> None:
+        self._database = database
+
+    @classmethod
+    def open(cls, location: str | Path, *, create: bool = False, readonly: bool = False) -> Catalog:
+        """Open a catalog; use it as a context manager, or `close` it.
+
+        Parameters
+        ----------
+        location : str or Path
+            A file, or a URL such as ``postgresql+psycopg://user@host/name``.
+        create : bool
+            Make the catalog if it does not exist.
+        readonly : bool
+            Change nothing, also not by mistake.
+
+        Raises
+        ------
+        CatalogError
+            If it does not exist, is no catalog, is damaged, or of a newer Ferrule.
+        """
+        database = open_database(location, create=create, readonly=readonly)
+        try:
+            schema.ensure(database, create=create)
+        except BaseException:
+            database.close()
+            raise
+        return cls(database)
+
+    def close(self) -> None:
+        """Let go of the file or connection."""
+        self._database.close()
+
+    def __enter__(self) -> Catalog:
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        self.close()
+
+    # Records
+
+    def modules(self, ids: Iterable[int] | None = None) -> list[Module]:
+        """Modules as they count now: all of them, or those of some ids, by id."""
+        return self._records("module", ids)
+
+    def inverters(self, ids: Iterable[int] | None = None) -> list[Inverter]:
+        """Inverters as they count now: all of them, or those of some ids, by id."""
+        return self._records("inverter", ids)
+
+    def module(self, id_: int, revision: int | None = None) -> Module:
+        """A module as it counts now, or as it was at a revision.
+
+        Raises
+        ------
+        CatalogError
+            If there is no such record or revision.
+        """
+        with self._database.reading() as run:
+            return revisions.current_record(run, "module", id_, revision)
+
+    def inverter(self, id_: int, revision: int | None = None) -> Inverter:
+        """An inverter as it counts now, or as it was at a revision; raises as `module` does."""
+        with self._database.reading() as run:
+            return revisions.current_record(run, "inverter", id_, revision)
+
+    def names(self, kind: str) -> list[Named]:
+        """Names of all records of a kind ("module" or "inverter"), by id."""
+        from catalog.names import Named
+
+        sql = 'SELECT r."id", r."maker", r."model" FROM record r WHERE r."kind" = :kind ORDER BY r."id"'
+        with self._database.reading() as run:
+            return [Named(*row) for row in run(sql, {"kind": checked_kind(kind)})]
+
+    def load(
+        self, modules: Iterable[Module], inverters: Iterable[Inverter], progress: Progress | None = None
+    ) -> LoadReport:
+        """Load records in one transaction: all or nothing, and safe to repeat.
+
+        Parameters
+        ----------
+        modules, inverters : iterable
+            Records; their id and revision do not matter.
+        progress : callable, optional
+            Called with the number of records done and their total.
+
+        Raises
+        ------
+        CatalogError
+            If a record is impossible or stands twice; nothing is loaded then.
+        """
+        return load(self._database, modules, inverters, _now(), progress)
+
+    # Revisions
+
+    def enter(self, record: Module | Inverter, note: str = "") -> Module | Inverter:
+        """Add a record that a person entered, and return it with its id.
+
+        Raises
+        ------
+        CatalogError
+            If it is impossible, or a record of that name exists.
+        """
+        with self._database.writing() as (session, run):
+            id_ = revisions.enter(session, run, record, _now(), note)
+            return revisions.current_record(run, kind_of(record), id_)
+
+    def amend(
+        self,
+        kind: str,
+        id_: int,
+        changes: Mapping[str, Any],
+        source: Source,
+        *,
+        note: str = "",
+        expected: int | None = None,
+    ) -> Module | Inverter:
+        """Give some values of a record anew, as a new revision; the others stay as they count at this moment.
+
+        Parameters
+        ----------
+        kind : {"module", "inverter"}
+            Of which kind the record is.
+        id_ : int
+            Its id.
+        changes : mapping
+            Values by field; ``None`` takes a value away. ``inputs`` is a list of `Inputs`.
+        source : Source
+            The document that the values were read from. They are of the origin ``entered``.
+        note : str
+            A remark for the history.
+        expected : int, optional
+            The revision that the change was decided on; if another one counts by now, it is refused.
+
+        Returns
+        -------
+        Module or Inverter
+            The record as it counts now.
+
+        Raises
+        ------
+        CatalogError
+            If there is no such record or field, the result is impossible, or the revision is not the expected one.
+        """
+        with self._database.writing() as (session, run):
+            revisions.amend(
+                session, run, checked_kind(kind), id_, changes, source, _now(), note=note, expected=expected
+            )
+            return revisions.current_record(run, kind, id_)
+
+    def undo(self, kind: str, id_: int, *, expected: int | None = None) -> Module | Inverter:
+        """Make what counted before the last change count again, as a new revision; return the record.
+
+        Repeated, it goes further back. A load is undone as a whole. ``expected`` is as in `amend`.
+
+        Raises
+        ------
+        CatalogError
+            If there is no such record, or nothing before.
+        """
+        with self._database.writing() as (session, run):
+            revisions.undo(session, run, checked_kind(kind), id_, _now(), expected=expected)
+            return revisions.current_record(run, kind, id_)
+
+    def history(self, kind: str, id_: int) -> list[revisions.Revision]:
+        """All revisions of a record, oldest first, each with the fields that it changed.
+
+        Raises
+        ------
+        CatalogError
+            If there is no such record.
+        """
+        with self._database.reading() as run:
+            return revisions.history(run, checked_kind(kind), id_)
+
+    # Sites
+
+    def sites(self) -> list[Site]:
+        """All sites by name."""
+        with self._database.reading() as run:
+            return read_sites(run)
+
+    def site(self, name: str) -> Site:
+        """The site of a name, whatever its case.
+
+        Raises
+        ------
+        CatalogError
+            If there is none; the nearest names are told.
+        """
+        sites = self.sites()
+        key = _site_key(name)
+        for site in sites:
+            if _site_key(site.name) == key:
+                return site
+        if not sites:
+            raise CatalogError(f"no site is called {name!r}, and none is kept: 'ferrule site add' keeps one")
+        raise CatalogError(f"no site is called {name!r}{nearest(name, [site.name for site in sites])}")
+
+    def add_site(self, site: Site, *, replace: bool = False) -> None:
+        """Keep a site; with ``replace``, in the place of one with the same name.
+
+        Raises
+        ------
+        CatalogError
+            If its values are impossible, or the name is taken.
+        """
+        from catalog.tables import SiteRow
+
+        site = checked(site)
+        key = _site_key(site.name)
+        if not key:
+            raise CatalogError("a site needs a name")
+        with self._database.writing() as (session, _):
+            taken = session.get(SiteRow, key)
+            if taken is not None and not replace:
+                raise CatalogError(f"a site is called {taken.name!r} already: drop it first, or choose another name")
+            values = {name: getattr(site, name) for name in SiteRow.model_fields if name != "name_key"}
+            session.merge(SiteRow(name_key=key, **values))
+
+    def drop_site(self, name: str) -> None:
+        """Forget a site; raises as `site` does."""
+        from catalog.tables import SiteRow
+
+        key = _site_key(self.site(name).name)
+        with self._database.writing() as (session, _):
+            row = session.get(SiteRow, key)
+            if row is not None:
+                session.delete(row)
+
+    # What was computed
+
+    def kept(self, key: str) -> bytes | None:
+        """Something computed that was kept; ``None`` if it was not."""
+        with self._database.reading() as run:
+            rows = run('SELECT k."data" FROM kept k WHERE k."key" = :key', {"key": key})
+        return bytes(rows[0][0]) if rows else None
+
+    def keep(self, key: str, data: bytes) -> None:
+        """Keep something that was computed, if that is possible; it can be computed again."""
+        self._database.attempt(
+            [
+                (
+                    'INSERT INTO kept ("key", "data", "made_at") VALUES (:key, :data, :made_at)'
+                    ' ON CONFLICT ("key") DO UPDATE SET "data" = excluded."data", "made_at" = excluded."made_at"',
+                    {"key": key, "data": data, "made_at": datetime.now(UTC).isoformat()},
+                ),
+                (
+                    'DELETE FROM kept WHERE "key" NOT IN'
+                    ' (SELECT k."key" FROM kept k ORDER BY k."made_at" DESC LIMIT :most)',
+                    {"most": _KEPT},
+                ),
+            ]
+        )
+
+    def _records(self, kind: str, ids: Iterable[int] | None) -> list:
+        if ids is None:
+            with self._database.reading() as run:
+                return read_records(run, kind)
+        ids = list(dict.fromkeys(ids))
+        with self._database.reading() as run:
+            found = read_records(run, kind, f"{CURRENT} AND {id_condition(ids)}")
+            if len(found) < len(ids):
+                known = {record.id for record in found}
+                revisions.current_record(run, kind, next(id_ for id_ in ids if id_ not in known))
+        return found
+
+
+def _site_key(name: str) -> str:
+    """Names that differ only in case or blanks are one."""
+    return " ".join(name.split()).casefold()
+
+
+def _now() -> str:
+    return datetime.now(UTC).isoformat(timespec="seconds")
