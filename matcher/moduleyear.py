@@ -140,61 +140,38 @@ def module_year(params: SixParameters, plane: PlaneYear, dc_loss_pct: float = 2.
     return ModuleYear(power, np.where(usable, vmp, 0.0), plane.hours)
 
 
-def condense(year: ModuleYear, classes: int = 300) -> ModuleYear:
-    """The same year in a few hundred classes of like power and like voltage.
+def condense(year: ModuleYear, bound_pct: float = 0.005, *, current_limits: bool = True) -> ModuleYear:
+    """The same year in a few hundred classes of like power and like current.
 
-    Each class carries the sums of its entries' hours and energy and their mean voltage, so energy is exact,
-    and so is every loss that is linear over a class. What is left is the kink where an inverter or a tracker
-    begins to limit, within the classes that it cuts through. For a limit in power, or in current (power over
-    voltage), the error of one class is at most half the sum of hours times the distance from the class mean
-    (Jensen's inequality), so the class where that is largest is cut in two until there are enough of them.
+    Each class carries the sums of its entries' hours and energy and their mean voltage. The year's energy
+    is exact; the clipped energy errs by at most the bound (see `matcher.condensation`).
 
     Parameters
     ----------
     year
         Entry by entry.
-    classes
-        How many classes at most.
+    bound_pct
+        Largest error of the energy that one limit takes, in percent of the year's energy.
+    current_limits
+        Whether trackers may limit the current. Where no inverter that is looked at states a maximum
+        current, ``False`` needs less than half the classes for the same bound.
 
     Returns
     -------
     ModuleYear
-        By falling power.
+        By falling power; intervals without power are left out.
     """
-    import heapq
-
     import numpy as np
+
+    from matcher.condensation import class_labels
 
     lit = year.power_w > 0
     power, vmp, hours = year.power_w[lit], year.vmp_v[lit], year.hours[lit]
-    if power.size <= classes:
+    if not power.size:
         return ModuleYear(power, vmp, hours)
-    current = power / vmp
-
-    def weighed(members: np.ndarray) -> tuple[float, int, np.ndarray, np.ndarray]:
-        """Heap entry of a class: its worst error (negative), a tie breaker, its members, where to cut."""
-        h, p, v = hours[members], power[members], vmp[members]
-        mean_p, mean_v = h @ p / h.sum(), h @ v / h.sum()
-        by_power = h @ np.abs(p - mean_p)
-        ratio = mean_p / mean_v
-        by_current = h @ np.abs(p - ratio * v)
-        if by_power >= by_current:
-            return -by_power, int(members[0]), members, p > mean_p
-        return -by_current, int(members[0]), members, current[members] > ratio
-
-    heap = [weighed(np.arange(power.size))]
-    while len(heap) < classes and heap[0][0] < 0:
-        _, _, members, upper = heapq.heappop(heap)
-        if upper.all() or not upper.any():  # equal up to rounding
-            heapq.heappush(heap, (0.0, int(members[0]), members, upper))
-            continue
-        heapq.heappush(heap, weighed(members[upper]))
-        heapq.heappush(heap, weighed(members[~upper]))
-    label = np.empty(power.size, dtype=int)
-    for number, (_, _, members, _) in enumerate(heap):
-        label[members] = number
+    label = class_labels(power, vmp, hours, bound_pct, current_limits)
     total = np.bincount(label, hours)
     mean_power = np.bincount(label, hours * power) / total
     mean_vmp = np.bincount(label, hours * vmp) / total
-    order = np.argsort(-mean_power)
+    order = np.argsort(-mean_power, kind="stable")
     return ModuleYear(mean_power[order], mean_vmp[order], total[order])
