@@ -113,11 +113,15 @@ def _range_finding(spec: FieldSpec, value: float | None, field: str | None = Non
         return Finding(name, "impossible", f"{spec.name} is missing: every record needs it ({spec.meaning})")
     unit = "" if spec.unit in ("", "1") else f" {spec.unit}"
     if value != value or abs(value) == float("inf"):
-        return Finding(name, "impossible", f"{spec.name} is {value}, which is no number: enter one or leave it blank")
+        return Finding(
+            name, "impossible", f"{spec.name} is {value}, which is no number: enter one or leave it blank"
+        )
     limits = f"below {spec.low or 0:g}{unit}"
     if spec.low is None or value > spec.low:
         limits = f"above {spec.high:g}{unit}"
-    return Finding(name, "impossible", f"{spec.name} {value:g}{unit} cannot be {limits}{_likely(spec, value)}")
+    return Finding(
+        name, "impossible", f"{spec.name} {value:g}{unit} cannot be {limits}{_likely(spec, value)}"
+    )
 
 
 def _likely(spec: FieldSpec, value: float) -> str:

@@ -17,7 +17,11 @@ def odd_inputs(groups: Sequence[Inputs]) -> list[str]:
     """What is odd about groups of inputs, one sentence each."""
     found = []
     for group in groups:
-        if group.max_isc_a is not None and group.max_current_a is not None and group.max_isc_a < group.max_current_a:
+        if (
+            group.max_isc_a is not None
+            and group.max_current_a is not None
+            and group.max_isc_a < group.max_current_a
+        ):
             found.append(
                 f"max_isc_a {group.max_isc_a:g} A of a tracker is below its max_current_a {group.max_current_a:g} A:"
                 " see whether the two are swapped"
@@ -26,7 +30,9 @@ def odd_inputs(groups: Sequence[Inputs]) -> list[str]:
     for rating, times in Counter(ratings).items():
         if times > 1:
             trackers = sum(g.trackers for g, own in zip(groups, ratings) if own == rating)
-            found.append(f"{times} groups of inputs are alike: enter them as one group of {trackers} trackers")
+            found.append(
+                f"{times} groups of inputs are alike: enter them as one group of {trackers} trackers"
+            )
     return found
 
 
@@ -63,7 +69,9 @@ RULES: tuple[Rule, ...] = (
         "mppt_low_v",
         "impossible",
         lambda c: c.mppt_low_v >= c.mppt_high_v,
-        lambda i: f"mppt_low_v {i.mppt_low_v:g} V is not below mppt_high_v {i.mppt_high_v:g} V: see whether the two are swapped",
+        lambda i: (
+            f"mppt_low_v {i.mppt_low_v:g} V is not below mppt_high_v {i.mppt_high_v:g} V: see whether the two are swapped"
+        ),
     ),
     Rule(
         "mppt_high_v",
@@ -78,13 +86,17 @@ RULES: tuple[Rule, ...] = (
         "start_voltage_v",
         "impossible",
         lambda c: c.start_voltage_v > c.max_dc_voltage_v,
-        lambda i: f"start_voltage_v {i.start_voltage_v:g} V is above max_dc_voltage_v {i.max_dc_voltage_v:g} V: check both",
+        lambda i: (
+            f"start_voltage_v {i.start_voltage_v:g} V is above max_dc_voltage_v {i.max_dc_voltage_v:g} V: check both"
+        ),
     ),
     Rule(
         "start_voltage_v",
         "odd",
         lambda c: (c.start_voltage_v > c.mppt_high_v) & ~(c.start_voltage_v > c.max_dc_voltage_v),
-        lambda i: f"start_voltage_v {i.start_voltage_v:g} V is above the MPPT window ({i.mppt_low_v:g} to {i.mppt_high_v:g} V)",
+        lambda i: (
+            f"start_voltage_v {i.start_voltage_v:g} V is above the MPPT window ({i.mppt_low_v:g} to {i.mppt_high_v:g} V)"
+        ),
     ),
     Rule(
         "max_dc_voltage_v",
@@ -104,9 +116,13 @@ RULES: tuple[Rule, ...] = (
     Rule(
         "max_array_power_w",
         "odd",
-        lambda c: ((c.max_array_power_w < c.ac_power_w) & (c.max_array_power_w >= 0.01 * c.ac_power_w))
-        | (c.max_array_power_w > 3 * c.ac_power_w),
-        lambda i: f"max_array_power_w {i.max_array_power_w:g} W is unusual for ac_power_w {i.ac_power_w:g} W (1 to 3 times as much)",
+        lambda c: (
+            ((c.max_array_power_w < c.ac_power_w) & (c.max_array_power_w >= 0.01 * c.ac_power_w))
+            | (c.max_array_power_w > 3 * c.ac_power_w)
+        ),
+        lambda i: (
+            f"max_array_power_w {i.max_array_power_w:g} W is unusual for ac_power_w {i.ac_power_w:g} W (1 to 3 times as much)"
+        ),
     ),
     Rule(
         "inputs",
@@ -127,7 +143,9 @@ RULES: tuple[Rule, ...] = (
         "night_w",
         "odd",
         lambda c: c.night_w > 0.05 * c.ac_power_w,
-        lambda i: f"night_w {i.night_w:g} W is more than 5 % of ac_power_w {i.ac_power_w:g} W: check its unit",
+        lambda i: (
+            f"night_w {i.night_w:g} W is more than 5 % of ac_power_w {i.ac_power_w:g} W: check its unit"
+        ),
     ),
     Rule("Pso", "odd", lambda c: c.some_missing(SANDIA_PARAMETERS), _parts_message),
     Rule(
@@ -142,7 +160,11 @@ RULES: tuple[Rule, ...] = (
     Rule(
         "Paco",
         "odd",
-        lambda c: (abs(c.Paco / c.ac_power_w - 1) > 0.02) & (c.Paco >= 0.5 * c.ac_power_w) & (c.Paco <= 2 * c.ac_power_w),
+        lambda c: (
+            (abs(c.Paco / c.ac_power_w - 1) > 0.02)
+            & (c.Paco >= 0.5 * c.ac_power_w)
+            & (c.Paco <= 2 * c.ac_power_w)
+        ),
         lambda i: (
             f"Paco {i.Paco:g} W and ac_power_w {i.ac_power_w:g} W are {100 * abs(i.Paco / i.ac_power_w - 1):.1f} % apart:"
             " see whether the Sandia parameters belong to another rating"
@@ -152,31 +174,41 @@ RULES: tuple[Rule, ...] = (
         "Pdco",
         "impossible",
         lambda c: c.Pdco <= c.Paco,
-        lambda i: f"Pdco {i.Pdco:g} W is not above Paco {i.Paco:g} W, so more would come out than goes in: check both",
+        lambda i: (
+            f"Pdco {i.Pdco:g} W is not above Paco {i.Paco:g} W, so more would come out than goes in: check both"
+        ),
     ),
     Rule(
         "Pdco",
         "odd",
         lambda c: c.Paco / c.Pdco < 0.8,
-        lambda i: f"Paco over Pdco is {100 * i.Paco / i.Pdco:.1f} % efficiency at rated power, usual is 80 % and more",
+        lambda i: (
+            f"Paco over Pdco is {100 * i.Paco / i.Pdco:.1f} % efficiency at rated power, usual is 80 % and more"
+        ),
     ),
     Rule(
         "Pso",
         "impossible",
         lambda c: c.Pso >= c.Pdco,
-        lambda i: f"Pso {i.Pso:g} W is not below Pdco {i.Pdco:g} W: Pso is the small power at which inversion starts",
+        lambda i: (
+            f"Pso {i.Pso:g} W is not below Pdco {i.Pdco:g} W: Pso is the small power at which inversion starts"
+        ),
     ),
     Rule(
         "Pso",
         "odd",
         lambda c: (c.Pso > 0.1 * c.Pdco) & (c.Pso < c.Pdco),
-        lambda i: f"Pso {i.Pso:g} W is more than 10 % of Pdco {i.Pdco:g} W: it is the small power at which inversion starts",
+        lambda i: (
+            f"Pso {i.Pso:g} W is more than 10 % of Pdco {i.Pdco:g} W: it is the small power at which inversion starts"
+        ),
     ),
     Rule(
         "Vdco",
         "impossible",
         lambda c: (c.Vdco > c.max_dc_voltage_v) | (c.Vdco == 0),
-        lambda i: f"Vdco {i.Vdco:g} V is no voltage that the inverter works at (MPPT window {i.mppt_low_v:g} to {i.mppt_high_v:g} V)",
+        lambda i: (
+            f"Vdco {i.Vdco:g} V is no voltage that the inverter works at (MPPT window {i.mppt_low_v:g} to {i.mppt_high_v:g} V)"
+        ),
     ),
     Rule(
         "Vdco",

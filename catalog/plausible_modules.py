@@ -31,6 +31,7 @@ USUAL_COEFFICIENTS = {
     "vmp_coef_pct": ((-0.65, -0.22), (-0.65, -0.12)),
 }
 
+
 def _usual(field: str, module: Module) -> tuple[float, float]:
     crystalline, other = USUAL_COEFFICIENTS[field]
     return crystalline if module.crystalline else other
@@ -102,7 +103,9 @@ def _parameters_miss(c: Columns) -> np.ndarray:
         diode_v = volt + amp * c.R_s
         return c.I_L_ref - c.I_o_ref * np.expm1(diode_v / c.a_ref) - diode_v / c.R_sh_ref
 
-    at_voc = current(c.voc_v, np.zeros_like(c.voc_v)) * c.a_ref / c.I_L_ref / c.voc_v  # [1] of Voc, linearised
+    at_voc = (
+        current(c.voc_v, np.zeros_like(c.voc_v)) * c.a_ref / c.I_L_ref / c.voc_v
+    )  # [1] of Voc, linearised
     at_mpp = (current(c.vmp_v, c.imp_a) - c.imp_a) / c.imp_a
     return (np.abs(at_voc) > 0.05) | (np.abs(at_mpp) > 0.05)
 
@@ -139,10 +142,16 @@ RULES: tuple[Rule, ...] = (
     Rule(
         "voc_v",
         "odd",
-        lambda c: (c.vmp_v < c.voc_v)
-        & (c.imp_a < c.isc_a)
-        & (_fill_factor(c) >= LEAST_FILL_FACTOR)
-        & ((_fill_factor(c) > 0.86) | ((c.crystalline == 1) & (_fill_factor(c) < 0.67)) | (_fill_factor(c) < 0.53)),
+        lambda c: (
+            (c.vmp_v < c.voc_v)
+            & (c.imp_a < c.isc_a)
+            & (_fill_factor(c) >= LEAST_FILL_FACTOR)
+            & (
+                (_fill_factor(c) > 0.86)
+                | ((c.crystalline == 1) & (_fill_factor(c) < 0.67))
+                | (_fill_factor(c) < 0.53)
+            )
+        ),
         lambda m: (
             f"the fill factor is {_fill_factor(m):.2f}, usual for {m.technology} is"
             f" {'0.67' if m.crystalline else '0.53'} to 0.86: check voc_v, isc_a, vmp_v and imp_a"
@@ -162,25 +171,34 @@ RULES: tuple[Rule, ...] = (
         "noct_c",
         "odd",
         lambda c: (c.noct_c < 40) | (c.noct_c > 56),
-        lambda m: f"noct_c {m.noct_c:g} degC is unusual (40 to 56 degC): it is the cell's temperature at 800 W/m2 and 20 degC",
+        lambda m: (
+            f"noct_c {m.noct_c:g} degC is unusual (40 to 56 degC): it is the cell's temperature at 800 W/m2 and 20 degC"
+        ),
     ),
     Rule(
         "cells_in_series",
         "odd",
-        lambda c: (c.crystalline == 1) & ((c.voc_v / c.cells_in_series < 0.5) | (c.voc_v / c.cells_in_series > 0.78)),
+        lambda c: (
+            (c.crystalline == 1)
+            & ((c.voc_v / c.cells_in_series < 0.5) | (c.voc_v / c.cells_in_series > 0.78))
+        ),
         _cells_message,
     ),
     Rule(
         "bifaciality",
         "odd",
         lambda c: (c.bifacial == 0) & (c.bifaciality > 0),
-        lambda m: f"bifaciality {m.bifaciality:g} is stated, yet the module is not marked bifacial: check which is right",
+        lambda m: (
+            f"bifaciality {m.bifaciality:g} is stated, yet the module is not marked bifacial: check which is right"
+        ),
     ),
     Rule(
         "bifaciality",
         "odd",
         lambda c: (c.bifacial == 1) & ((c.bifaciality < 0.4) | (c.bifaciality > 1.0)),
-        lambda m: f"bifaciality {m.bifaciality:g} is unusual (0.4 to 1.0): it is the rear side's power over the front's",
+        lambda m: (
+            f"bifaciality {m.bifaciality:g} is unusual (0.4 to 1.0): it is the rear side's power over the front's"
+        ),
     ),
     Rule(
         "max_system_voltage_v",
@@ -195,13 +213,17 @@ RULES: tuple[Rule, ...] = (
         "max_system_voltage_v",
         "odd",
         lambda c: c.max_system_voltage_v > 1500,
-        lambda m: f"max_system_voltage_v {m.max_system_voltage_v:g} V is above 1500 V, where low voltage (DC) ends",
+        lambda m: (
+            f"max_system_voltage_v {m.max_system_voltage_v:g} V is above 1500 V, where low voltage (DC) ends"
+        ),
     ),
     Rule(
         "max_series_fuse_a",
         "odd",
         lambda c: c.max_series_fuse_a < c.isc_a,
-        lambda m: f"max_series_fuse_a {m.max_series_fuse_a:g} A is below isc_a {m.isc_a:g} A: such a fuse melts in sunshine",
+        lambda m: (
+            f"max_series_fuse_a {m.max_series_fuse_a:g} A is below isc_a {m.isc_a:g} A: such a fuse melts in sunshine"
+        ),
     ),
     Rule(
         "length_m",
@@ -227,7 +249,9 @@ RULES: tuple[Rule, ...] = (
             name,
             "impossible",
             lambda c, name=name: getattr(c, name) == 0,
-            lambda m, name=name: f"{name} is 0, and the single-diode model needs it above 0: leave it blank where it is not known",
+            lambda m, name=name: (
+                f"{name} is 0, and the single-diode model needs it above 0: leave it blank where it is not known"
+            ),
         )
         for name in ("a_ref", "I_L_ref", "I_o_ref", "R_sh_ref")
     ),

@@ -8,21 +8,22 @@ An entry is one row or table with the fields of a record by name, and beside the
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
-from pathlib import Path
 from typing import Any
 
 from catalog.errors import CatalogError
 from catalog.inputs_text import EXAMPLE
 from catalog.plausibility import findings_of
 from catalog.records import FieldSpec, Inputs, Inverter, Module, Origin, Source, specs
-from catalog.sheet_values import DecimalSigns, value_of
+from catalog.sheet_reading import Entry, Reading, nearest
+from catalog.sheet_values import value_of
 
 KINDS: Mapping[str, type] = {"module": Module, "inverter": Inverter}
 MARKED_ORIGINS = (Origin.ENTERED, Origin.DERIVED, Origin.ASSUMED)
 ABOUT = ("source", "source_revision", *(o.value for o in MARKED_ORIGINS), "sources")
 
-_TEXT = {name: FieldSpec(name, str, "", name, False) for name in ("source", "source_revision", "name", "revision")}
+_TEXT = {
+    name: FieldSpec(name, str, "", name, False) for name in ("source", "source_revision", "name", "revision")
+}
 
 
 def fields_of(kind: str) -> tuple[str, ...]:
@@ -32,55 +33,6 @@ def fields_of(kind: str) -> tuple[str, ...]:
         behind = values.index("max_array_power_w") + 1
         values = (*values[:behind], "inputs", *values[behind:])
     return values + ABOUT
-
-
-@dataclass(frozen=True, slots=True)
-class Entry:
-    """One record as a file has it: where it stands there, its kind, and its cells by field name.
-
-    ``meant`` holds names of the file that are not known, by the field that they may mean.
-    """
-
-    where: str
-    kind: str
-    cells: Mapping[str, Any]
-    meant: Mapping[str, str] = field(default_factory=dict)
-
-
-@dataclass(slots=True)
-class Reading:
-    """What is gathered while one file is read."""
-
-    path: Path
-    notes: list[str] = field(default_factory=list)
-    signs: DecimalSigns = field(default_factory=DecimalSigns)
-
-    def fault(self, message: object, *place: str) -> CatalogError:
-        """Error with file and place before its message."""
-        return CatalogError(f"{', '.join((str(self.path), *filter(None, place)))}: {message}")
-
-    def note(self, message: str, *place: str) -> None:
-        """Keep a note with its place."""
-        self.notes.append(f"{', '.join((str(self.path), *filter(None, place)))}: {message}")
-
-    def unknown(self, names: Sequence[str], known: Sequence[str], what: str, place: str = "") -> dict[str, str]:
-        """Note names that are not known; return the likely meant ones, by what was meant."""
-        meant = {}
-        for name in names:
-            near = nearest(name, known)
-            if near:
-                meant[near] = name
-            hint = f"; did you mean {near}?" if near else ""
-            self.note(f"{what} {name!r} is not known and was left out{hint}", place)
-        return meant
-
-
-def nearest(name: str, known: Sequence[str]) -> str | None:
-    """The known field name that a text most likely means; ``None`` if none is near."""
-    from rapidfuzz import fuzz, process, utils
-
-    found = process.extractOne(name, known, scorer=fuzz.ratio, processor=utils.default_process, score_cutoff=70)
-    return found[0] if found else None
 
 
 def records_of(entries: Sequence[Entry], reading: Reading) -> list[Module | Inverter]:
@@ -125,7 +77,11 @@ def _record(entry: Entry, reading: Reading) -> Module | Inverter:
     values: dict[str, Any] = {}
     for name, spec in specs(type_).items():
         try:
-            value = value_of(entry.cells.get(name), spec, reading.signs, f"{entry.where}, {name}") if name in entry.cells else None
+            value = (
+                value_of(entry.cells.get(name), spec, reading.signs, f"{entry.where}, {name}")
+                if name in entry.cells
+                else None
+            )
         except CatalogError as problem:
             raise reading.fault(problem, entry.where, name) from None
         if value is not None:
@@ -141,8 +97,14 @@ def _record(entry: Entry, reading: Reading) -> Module | Inverter:
             origins["inputs"] = Origin.ASSUMED
     for name in origins:
         if name not in values and name != "inputs":
-            raise reading.fault(f"is marked {origins[name]} and has no value; enter the value or take the mark away", entry.where, name)
-    return type_(**values, source=_source(entry, reading), origins=origins, sources=_sources(entry, reading, type_))
+            raise reading.fault(
+                f"is marked {origins[name]} and has no value; enter the value or take the mark away",
+                entry.where,
+                name,
+            )
+    return type_(
+        **values, source=_source(entry, reading), origins=origins, sources=_sources(entry, reading, type_)
+    )
 
 
 def _needed(entry: Entry, spec: FieldSpec) -> str:
@@ -160,25 +122,51 @@ def _inputs(entry: Entry, reading: Reading) -> tuple[Inputs, ...]:
     if isinstance(groups, tuple):
         return groups
     if not isinstance(groups, list) or not all(isinstance(group, Mapping) for group in groups):
-        raise reading.fault("is no list of groups; write inputs = [{trackers = 2, max_current_a = 26}]", entry.where, "inputs")
+        raise reading.fault(
+            "is no list of groups; write inputs = [{trackers = 2, max_current_a = 26}]", entry.where, "inputs"
+        )
     found = []
     known = specs(Inputs)
     for group in groups:
-        reading.unknown([name for name in group if name not in known], tuple(known), "key", f"{entry.where}, inputs")
+        reading.unknown(
+            [name for name in group if name not in known], tuple(known), "key", f"{entry.where}, inputs"
+        )
         values = {}
         for name, spec in known.items():
             try:
-                values[name] = value_of(group[name], spec, reading.signs, f"{entry.where}, inputs") if name in group else None
+                values[name] = (
+                    value_of(group[name], spec, reading.signs, f"{entry.where}, inputs")
+                    if name in group
+                    else None
+                )
             except CatalogError as problem:
                 raise reading.fault(f"{name}: {problem}", entry.where, "inputs") from None
         if values["trackers"] is None:
-            raise reading.fault(f"a group has no trackers; a group reads like {{trackers = 2, max_current_a = 26}}", entry.where, "inputs")
+            raise reading.fault(
+                "a group has no trackers; a group reads like {trackers = 2, max_current_a = 26}",
+                entry.where,
+                "inputs",
+            )
         found.append(Inputs(**values))
     return tuple(found)
 
 
+def _marked(type_: type) -> tuple[str, ...]:
+    """Fields whose value has an origin and a source: all but the name."""
+    return (
+        *(name for name in specs(type_) if name not in ("maker", "model")),
+        *(["inputs"] if type_ is Inverter else []),
+    )
+
+
+def _not_marked(name: object, allowed: Sequence[str]) -> str:
+    near = nearest(str(name), allowed)
+    hint = f"did you mean {near}?" if near else "name a value as its column is named"
+    return f"{name!r} is no value of this kind of record; {hint}"
+
+
 def _origins(entry: Entry, reading: Reading, type_: type) -> dict[str, Origin]:
-    allowed = (*specs(type_), *(("inputs",) if type_ is Inverter else ()))
+    allowed = _marked(type_)
     origins: dict[str, Origin] = {}
     for origin in MARKED_ORIGINS:
         names = entry.cells.get(origin.value) or []
@@ -186,11 +174,11 @@ def _origins(entry: Entry, reading: Reading, type_: type) -> dict[str, Origin]:
             raise reading.fault('is no list of fields; write it like ["noct_c"]', entry.where, origin.value)
         for name in names:
             if name not in allowed:
-                near = nearest(str(name), allowed)
-                hint = f"did you mean {near}?" if near else "name the fields as the columns are named"
-                raise reading.fault(f"{name!r} is no field of this kind; {hint}", entry.where, origin.value)
+                raise reading.fault(_not_marked(name, allowed), entry.where, origin.value)
             if name in origins:
-                raise reading.fault(f"{name} is marked {origins[name]} as well; keep one mark", entry.where, origin.value)
+                raise reading.fault(
+                    f"{name} is marked {origins[name]} as well; keep one mark", entry.where, origin.value
+                )
             origins[name] = origin
     return origins
 
@@ -208,16 +196,14 @@ def _source(entry: Entry, reading: Reading) -> Source:
 
 
 def _sources(entry: Entry, reading: Reading, type_: type) -> dict[str, Source]:
-    allowed = (*specs(type_), *(("inputs",) if type_ is Inverter else ()))
+    allowed = _marked(type_)
     given = entry.cells.get("sources") or {}
     if not isinstance(given, Mapping):
         raise reading.fault("is no table of sources by field", entry.where, "sources")
     found = {}
     for name, source in given.items():
         if name not in allowed:
-            near = nearest(name, allowed)
-            hint = f"did you mean {near}?" if near else "name the fields as the columns are named"
-            raise reading.fault(f"{name!r} is no field of this kind; {hint}", entry.where, "sources")
+            raise reading.fault(_not_marked(name, allowed), entry.where, "sources")
         if not isinstance(source, Mapping) or not source.get("name"):
             raise reading.fault(f"{name} has no source with a name", entry.where, "sources")
         where = f"{entry.where}, sources"
@@ -225,23 +211,29 @@ def _sources(entry: Entry, reading: Reading, type_: type) -> dict[str, Source]:
     return found
 
 
-def _same_or_fault(entry: Entry, record: Module | Inverter, earlier: str, first: Module | Inverter, reading: Reading) -> None:
+def _same_or_fault(
+    entry: Entry, record: Module | Inverter, earlier: str, first: Module | Inverter, reading: Reading
+) -> None:
     """Note a record that stands in the file twice; refuse it where the two differ."""
     if record == first:
-        reading.note(f"{record.name} stands in {earlier} with the same values; it is taken once", entry.where)
+        reading.note(f"is in {earlier} already, with the same values; taken once", entry.where)
         return
-    differ = [n for n in fields_of(entry.kind) if n in (*specs(type(record)), "inputs") and getattr(record, n) != getattr(first, n)]
+    differ = [name for name in _marked(type(record)) if getattr(record, name) != getattr(first, name)]
     what = f"another {', '.join(differ[:3])}" if differ else "other sources or origins"
-    raise reading.fault(f"{record.name} stands in {earlier} already, with {what}; keep the right one", entry.where, "model")
+    raise reading.fault(f"is in {earlier} already, with {what}; keep the right one", entry.where, "model")
 
 
 def _note_defaults(records: Sequence[Module | Inverter], reading: Reading) -> None:
     unnamed = sum(r.source.name == reading.path.name for r in records)
     if unnamed:
         reading.note(f"no source is named for {_some(unnamed, 'record')}, so the file's name stands for it")
-    blank = sum(r.origins.get("inputs") is Origin.ASSUMED and r.inputs == (Inputs(trackers=1),) for r in records)
+    blank = sum(
+        r.origins.get("inputs") is Origin.ASSUMED and r.inputs == (Inputs(trackers=1),) for r in records
+    )
     if blank:
-        reading.note(f"no inputs are stated for {_some(blank, 'inverter')}, so one tracker is assumed; state them like '{EXAMPLE}'")
+        reading.note(
+            f"no inputs are stated for {_some(blank, 'inverter')}, so one tracker is assumed; state them like '{EXAMPLE}'"
+        )
 
 
 def _some(count: int, what: str) -> str:
@@ -253,11 +245,15 @@ def _check(records: Sequence[Module | Inverter], places: Sequence[str], reading:
     found = findings_of(records)
     refused = {k: some[0] for k, some in found.items() if some[0].severity == "impossible"}
     for k, finding in refused.items():
-        others = f" ({_some(len(refused) - 1, 'more record')} of the file cannot be either)" if len(refused) > 1 else ""
-        raise reading.fault(f"{records[k].name}: {finding.message}{others}", places[k], finding.field)
+        others = (
+            f" ({_some(len(refused) - 1, 'more record')} of the file cannot be either)"
+            if len(refused) > 1
+            else ""
+        )
+        raise reading.fault(f"{finding.message}{others}", places[k], finding.field)
     for k, some in found.items():
         for finding in some:
-            reading.note(f"{records[k].name}: {finding.message}; kept as it is", places[k], finding.field)
+            reading.note(f"{finding.message}; kept as it is", places[k], finding.field)
 
 
 def cells_of(record: Module | Inverter) -> dict[str, Any]:

@@ -21,7 +21,11 @@ _BEGINS_WITH_NUMBER = re.compile(r"([+-]?\d+(?:[.,]\d+)?)\s*(\D.*)")
 _DECIMAL_COMMA = re.compile(r"[+-]?\d+,\d+")
 # Three digits after the sign: it may part thousands as well. "0,125" and "0.125" cannot.
 _MAYBE_THOUSANDS = re.compile(r"[+-]?[1-9]\d{0,2}[.,]\d{3}")
-_UNITS = {"%/k": {"%/k", "%/\u00b0c", "%/degc", "%/c"}, "degc": {"degc", "\u00b0c", "c"}, "ohm": {"ohm", "\u03a9"}}
+_UNITS = {
+    "%/k": {"%/k", "%/\u00b0c", "%/degc", "%/c"},
+    "degc": {"degc", "\u00b0c", "c"},
+    "ohm": {"ohm", "\u03a9"},
+}
 
 
 @dataclass(slots=True)
@@ -75,6 +79,10 @@ def value_of(cell: Any, spec: FieldSpec, signs: DecimalSigns, place: str = "") -
         return _flag(cell)
     if spec.type is str:
         if isinstance(cell, str):
+            if not cell.isprintable():
+                raise CatalogError(
+                    f"{cell!r} holds a line break or another character that cannot be printed; take it out"
+                )
             return cell
         if isinstance(cell, int) and not isinstance(cell, bool):
             return str(cell)
@@ -143,7 +151,9 @@ def _no_number(cell: str, text: str, spec: FieldSpec) -> str:
         factor = {"k": 1e3, "m": 1e-3, "M": 1e6}[other[2].strip()[0]]
         amount = float(other[1].replace(",", ".")) * factor
         return f"{cell!r} is in {other[2].strip()}; write it in {spec.unit} ({amount:.10g})"
-    return f"{cell!r} is no number{_in(spec)}; write the number alone, or leave it blank where it is not known"
+    return (
+        f"{cell!r} is no number{_in(spec)}; write the number alone, or leave it blank where it is not known"
+    )
 
 
 def _in(spec: FieldSpec) -> str:

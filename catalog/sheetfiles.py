@@ -13,7 +13,8 @@ from pathlib import Path
 from catalog import sheets_csv, sheets_toml
 from catalog.errors import CatalogError
 from catalog.records import Inverter, Module
-from catalog.sheet_entries import Reading, records_of
+from catalog.sheet_entries import records_of
+from catalog.sheet_reading import Reading
 
 ENDINGS = (".csv", ".toml")
 
@@ -101,4 +102,6 @@ def _text(path: Path, reading: Reading) -> str:
         return data.decode("utf-8-sig")
     except UnicodeDecodeError as problem:
         line = data.count(b"\n", 0, problem.start) + 1
-        raise reading.fault("has a character that is not UTF-8; save the file in UTF-8", f"line {line}") from None
+        raise reading.fault(
+            "has a character that is not UTF-8; save the file in UTF-8", f"line {line}"
+        ) from None

@@ -17,10 +17,12 @@ from typing import Any
 from catalog.errors import CatalogError
 from catalog.inputs_text import format_inputs, parse_inputs
 from catalog.records import Inverter, Module, Source, specs
-from catalog.sheet_entries import KINDS, MARKED_ORIGINS, Entry, Reading, cells_of, fields_of
+from catalog.sheet_entries import ABOUT, KINDS, MARKED_ORIGINS, cells_of, fields_of
+from catalog.sheet_reading import Entry, Reading
 
 _FIELDS = {kind: fields_of(kind) for kind in KINDS}
-_KNOWN = tuple(dict.fromkeys(("kind", *_FIELDS["module"], *_FIELDS["inverter"])))
+_VALUES = [name for names in _FIELDS.values() for name in names if name not in ABOUT]
+_KNOWN = tuple(dict.fromkeys(("kind", *_VALUES, *ABOUT)))
 _LISTS = tuple(origin.value for origin in MARKED_ORIGINS)
 
 
@@ -61,9 +63,12 @@ def read_entries(text: str, reading: Reading) -> list[Entry]:
             continue
         if len(row) > len(heading) and any(cell.strip() for cell in row[len(heading) :]):
             raise reading.fault(
-                f"has {len(row)} cells, the heading has {len(heading)}; put a cell with the separator in it in quotes", where
+                f"has {len(row)} cells, the heading has {len(heading)}; put a cell with the separator in it in quotes",
+                where,
             )
         cells = {name: cell.strip() for name, cell in zip(columns, row) if name}
+        name = " ".join(f"{cells.get('maker', '')} {cells.get('model', '')}".split())
+        where += f" ({name})" if name else ""
         kind = _kind(cells, where, reading)
         entries.append(Entry(where, kind, _unpacked(cells, where, reading), meant))
     return entries
@@ -72,16 +77,23 @@ def read_entries(text: str, reading: Reading) -> list[Entry]:
 def _rows(text: str, reading: Reading) -> list[list[str]]:
     """Rows by the separator that makes most headings known."""
     line = text.lstrip("\r\n").partition("\n")[0]
-    known = {mark: sum(_key(cell.strip('" \r')) in _BY_KEY for cell in line.split(mark)) for mark in (",", ";", "\t")}
+    known = {
+        mark: sum(_key(cell.strip('" \r')) in _BY_KEY for cell in line.split(mark))
+        for mark in (",", ";", "\t")
+    }
     mark = max(known, key=known.__getitem__)
     if not known[mark]:
-        raise reading.fault("no known column name; name the columns like maker, model, technology, pmax_w, voc_v", "row 1")
+        raise reading.fault(
+            "no known column name; name the columns like maker, model, technology, pmax_w, voc_v", "row 1"
+        )
     rows: list[list[str]] = []
     reader = csv.reader(io.StringIO(text, newline=""), delimiter=mark, strict=True)
     try:
         rows.extend(reader)
     except csv.Error as problem:
-        raise reading.fault(f"the quotes do not match ({problem}); correct the row", f"row {len(rows) + 1}") from None
+        raise reading.fault(
+            f"the quotes do not match ({problem}); correct the row", f"row {len(rows) + 1}"
+        ) from None
     # Blank lines above the heading count as rows below it, so that row numbers stay those of the file.
     first = next(k for k, row in enumerate(rows) if row)
     return [rows[first], *[[]] * first, *rows[first + 1 :]]
@@ -89,17 +101,27 @@ def _rows(text: str, reading: Reading) -> list[list[str]]:
 
 def _kind(cells: Mapping[str, str], where: str, reading: Reading) -> str:
     """Kind of a row: its ``kind`` cell, else told by the fields that only one kind has."""
-    only = {kind: [n for n in names if cells.get(n) and n not in _FIELDS[other]] for kind, names, other in _PAIRS}
+    only = {
+        kind: [n for n in names if cells.get(n) and n not in _FIELDS[other]] for kind, names, other in _PAIRS
+    }
     stated = cells.get("kind", "").casefold().removesuffix("s")
     if stated and stated not in KINDS:
         raise reading.fault(f"{cells['kind']!r} is neither module nor inverter", where, "kind")
-    kind = stated or next((k for k, names in only.items() if names), "")
-    if not kind:
-        raise reading.fault("is neither a module (pmax_w) nor an inverter (ac_power_w); fill in its values", where)
+    kind = stated or max(only, key=lambda k: len(only[k]))
+    if not stated and not only[kind]:
+        raise reading.fault(
+            "is neither a module (pmax_w) nor an inverter (ac_power_w); fill in its values", where
+        )
     (other,) = set(KINDS) - {kind}
     if only[other]:
-        mend = "correct the kind or empty the cell" if stated else "part the two, or say which it is in a column 'kind'"
-        raise reading.fault(f"is a field of {_AN[other]}, and the row has those of {_AN[kind]}; {mend}", where, only[other][0])
+        mend = (
+            "correct the kind or empty the cell"
+            if stated
+            else "part the two, or say which it is in a column 'kind'"
+        )
+        raise reading.fault(
+            f"is a field of {_AN[other]}, and the row has those of {_AN[kind]}; {mend}", where, only[other][0]
+        )
     return kind
 
 
@@ -125,9 +147,13 @@ def _unpacked(cells: Mapping[str, str], where: str, reading: Reading) -> dict[st
 def _parse_sources(text: str) -> dict[str, dict[str, str]]:
     found = {}
     for part in re.findall(r"(?:\\.|[^|\\])+", text):
-        match = re.fullmatch(r"\s*(\w+)\s*=\s*((?:\\.|[^\[\\])+?)\s*(?:\[((?:\\.|[^\]\\])*)\])?\s*", part, re.DOTALL)
+        match = re.fullmatch(
+            r"\s*(\w+)\s*=\s*((?:\\.|[^\[\\])+?)\s*(?:\[((?:\\.|[^\]\\])*)\])?\s*", part, re.DOTALL
+        )
         if not match:
-            raise CatalogError(f"{part.strip()!r} is not understood; write it like 'max_dc_voltage_v = Manual [rev. 3]'")
+            raise CatalogError(
+                f"{part.strip()!r} is not understood; write it like 'max_dc_voltage_v = Manual [rev. 3]'"
+            )
         name, revision = (re.sub(r"\\(.)", r"\1", some or "", flags=re.DOTALL) for some in match.groups()[1:])
         found[match[1]] = {"name": name, "revision": revision}
     return found
@@ -147,7 +173,12 @@ def write_csv(path: Path, records: Sequence[Module | Inverter]) -> None:
     """Write records to a CSV file; columns in which no record has a value are left out."""
     rows = [_packed(record) for record in records]
     used = {name for row in rows for name in row}
-    needed = {name for r in {type(r) for r in records} or {Module} for name, spec in specs(r).items() if spec.required}
+    needed = {
+        name
+        for r in {type(r) for r in records} or {Module}
+        for name, spec in specs(r).items()
+        if spec.required
+    }
     with path.open("w", encoding="utf-8", newline="") as file:
         writer = csv.DictWriter(file, [name for name in _KNOWN if name in used | needed], lineterminator="\n")
         writer.writeheader()

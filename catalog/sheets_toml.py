@@ -14,7 +14,8 @@ from pathlib import Path
 from typing import Any
 
 from catalog.records import Inverter, Module
-from catalog.sheet_entries import KINDS, Entry, Reading, cells_of, fields_of
+from catalog.sheet_entries import KINDS, cells_of, fields_of
+from catalog.sheet_reading import Entry, Reading
 
 _TOP = ("source", "source_revision")
 
@@ -40,9 +41,11 @@ def read_entries(text: str, reading: Reading) -> list[Entry]:
             raise reading.fault(f"{kind} is no array of tables; begin each {kind} with [[{kind}]]", kind)
         known = fields_of(kind)
         for number, table in enumerate(tables, start=1):
-            name = " ".join(str(table[key]) for key in ("maker", "model") if key in table)
+            name = " ".join(f"{table.get('maker', '')} {table.get('model', '')}".split())
             where = f"{kind} {number}" + (f" ({name})" if name else "")
-            meant = reading.unknown([key for key in table if key not in known], [k for k in known if k not in table], "key", where)
+            meant = reading.unknown(
+                [key for key in table if key not in known], [k for k in known if k not in table], "key", where
+            )
             # A record's own source does not take the revision of the file's.
             entries.append(Entry(where, kind, table if "source" in table else top | table, meant))
     if not entries:
