@@ -12,6 +12,7 @@ from catalog.supplier_text import AC_VOLTS, SupplierText, Word, mask
 
 _VOLTS = re.compile(r"\s*[\[(]\s*(\d{3})\s*v(?:ac)?\s*[\])]\s*$")
 
+_SAID = frozenset({"in stock", "ex works", "ex stock", "ab lager", "ab werk", "ac inverter", "dc disconnect", "a grade"})
 _VOLT_UNITS = ("v", "vac", "volt", "volts")
 
 
@@ -34,8 +35,9 @@ class Shape:
 
     @cached_property
     def chunks(self) -> list[str]:
-        """Pieces of the core between separators, longest first."""
-        return sorted(re.findall(r"[^\W_]+", self.verbatim), key=len, reverse=True)
+        """Pieces of the core between separators, decimal numbers whole, longest first."""
+        pieces = re.findall(r"[^\W_]+(?:(?<=\d)\.(?=\d)[^\W_]+)*", self.verbatim)
+        return sorted((p.replace(".", "") for p in pieces), key=len, reverse=True)
 
     @cached_property
     def numbers(self) -> list[str]:
@@ -139,9 +141,9 @@ def match(row: int, shape: Shape, spans: Sequence[tuple[int, int]], text: Suppli
     volts = _volts(shape, text, core)
     told = core | volts
     left = _left_over(text, told)
-    _, left, marks = _named(left, shape.line_words)
+    _, left, marks = _named(left, shape.line_words, text)
     told |= marks
-    maker_level, left, marks = _named(left, shape.maker_words)
+    maker_level, left, marks = _named(left, shape.maker_words, text)
     told |= marks
     line = all(w in shape.maker_words or _is_there(w, text) for w in shape.line_words)
     doubts, strangers = _unexplained(left, core, shape, text)
@@ -190,7 +192,7 @@ def _volts(shape: Shape, text: SupplierText, core: int) -> int:
     return 0
 
 
-def _named(left: list[_Piece], words: list[str]) -> tuple[int, list[_Piece], int]:
+def _named(left: list[_Piece], words: list[str], text: SupplierText) -> tuple[int, list[_Piece], int]:
     """Level (2 named, 1 abbreviated, 0 absent), the pieces that stay unexplained, and marks of telling words."""
     if not words:
         return 0, left, 0
@@ -209,6 +211,8 @@ def _named(left: list[_Piece], words: list[str]) -> tuple[int, list[_Piece], int
             group = left[n : n + 1]
             joined = group[0].folded
         how, common = (2, False) if joined in runs else _likeness(group[0].raw, joined, words)
+        if how == 1 and (not _stands_alone(group[0], text) or tradewords.is_in(group[0].raw, tradewords.CODES)):
+            how = 0  # "HSE-" before a number is rather a part of a model than initials
         common = common or all(p.folded in tradewords.COMMON for p in group)
         if not how:
             rest.extend(group)
@@ -244,6 +248,11 @@ def _likeness(raw: str, piece: str, words: list[str]) -> tuple[int, bool]:
     return 0, False
 
 
+def _stands_alone(p: _Piece, text: SupplierText) -> bool:
+    following = text.following(p.word)
+    return p.word.apart and p.end == p.word.end and (following is None or following.apart)
+
+
 def _is_there(word: str, text: SupplierText) -> bool:
     return word in text.joined or any(_likeness(w.raw, w.folded, [word])[0] == 2 for w in text.words)
 
@@ -265,21 +274,25 @@ def _unexplained(left: list[_Piece], core: int, shape: Shape, text: SupplierText
     """Pieces that may tell another type, and other words that nothing explains."""
     doubts: list[str] = []
     strangers: list[str] = []
+    last = core.bit_length()
+    first = (core & -core).bit_length() - 1
+    scattered = core != mask(first, last)
     for p in left:
         inside = p.start > p.word.start or p.end < p.word.end  # the core takes a part of the same word
         after = bool(p.start and core >> (p.start - 1) & 1)
         beside = after or bool(core >> p.end & 1)
         joined = inside or (beside and not _apart(p, core, text))
+        between = scattered and first < p.start < last
         if p.raw.isdigit():
-            if not _is_number_remark(p, joined, after, shape):
+            if not _is_number_remark(p, joined or between, after, shape) or (scattered and not p.word.remark):
                 doubts.append(p.raw)
         elif tradewords.is_measure(p.raw) or (inside and _is_unit_of_core(p, shape, text)):
             continue
         elif tradewords.is_trade(p.raw):
-            if joined and len(p.raw) < 4:
+            if joined or between:
                 doubts.append(p.raw)
         elif tradewords.is_in(p.raw, tradewords.CODES):
-            if inside or (beside and not _is_remark(p, after, shape, text)):
+            if inside or between or (beside and not _is_remark(p, after, shape, text)):
                 doubts.append(p.raw)
         elif any(c.isdigit() for c in p.raw) or joined or (beside and len(p.raw) <= 3) or len(p.raw) == 1:
             doubts.append(p.raw)
@@ -305,7 +318,7 @@ def _is_number_remark(p: _Piece, joined: bool, after: bool, shape: Shape) -> boo
         return True
     if len(p.raw) >= 3 and any(p.raw in n for n in shape.numbers):
         return True
-    return not joined and not after
+    return not joined and not after and (p.word.apart or p.word.gap in (".", ","))
 
 
 def _is_unit_of_core(p: _Piece, shape: Shape, text: SupplierText) -> bool:
@@ -315,11 +328,11 @@ def _is_unit_of_core(p: _Piece, shape: Shape, text: SupplierText) -> bool:
 
 def _is_remark(p: _Piece, after: bool, shape: Shape, text: SupplierText) -> bool:
     """Whether a short word beside the core belongs to a number or a trade word next to it ("24 x", "A-grade")."""
-    n = text.words.index(p.word)
-    previous = text.words[n - 1] if n else None
-    following = text.words[n + 1] if n + 1 < len(text.words) else None
+    previous, following = text.previous(p.word), text.following(p.word)
     if following is not None and not following.apart and len(following.raw) > 3 and tradewords.is_trade(following.raw):
         return p.word.apart
+    if f"{p.raw} {following.raw if following else ''}" in _SAID:
+        return True
     if p.raw == "x" and following is not None and following.raw.isdigit():
         return True
     if after:  # the unit of a number that the core ends with

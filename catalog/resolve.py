@@ -59,7 +59,12 @@ class TextIndex:
 
     def is_suffix(self, shape: Shape, word: str) -> bool:
         """Whether types of this family, in whatever size, end with this word ("-270P BLK" where "-260P BLK" is known)."""
-        return bool(word) and _sizeless(shape.plain + word) in self.families
+        return bool(word) and any(_sizeless(shape.plain + w) in self.families for w in (word, tradewords.as_letters(word)))
+
+    def is_alone(self, row: int, text: str) -> bool:
+        """Whether no other model has the same core (another AC voltage, say), or the name stands there to the letter."""
+        named = self.index.names[row]
+        return len(self.by_core[self.shape(row).core]) == 1 or " ".join(text.split()) in (named.name, named.model)
 
     def has_longer(self, core: str) -> bool:
         """Whether another model goes on with letters after this core ("AF6K-270P" after "AF6K-270")."""
@@ -142,7 +147,7 @@ def resolve_text(text: str, index: NameIndex, limit: int = 5) -> Resolution:
     for rows in (texts.by_full.get(read.key), texts.by_model.get(read.key)):
         if rows and len(rows) > 1:
             rows = [i for i in rows if index.names[i].name == " ".join(text.split())]
-        if rows and len(rows) == 1:
+        if rows and len(rows) == 1 and texts.is_alone(rows[0], text):
             return Resolution("sure", [Candidate(index.ids[rows[0]], 100.0)])
     likeness = dict(texts.grams.nearest(read.joined, _NEAR))
     matches = _matches(read, texts, likeness)
@@ -210,6 +215,8 @@ def _winner(matches: list[Match], read: SupplierText, texts: TextIndex) -> Match
     best = max(told, key=lambda m: (m.told.bit_count(), *_merit(m)), default=None)
     if best is None or _is_contradicted(best, read, texts):
         return None
+    if any(m.told != best.told and not best.told & ~m.told for m in matches):  # a longer name, with doubts about it
+        return None
     return best if all(m is best or _beats(best, m, read) for m in told) else None
 
 
@@ -246,7 +253,7 @@ def _is_telling(m: Match) -> bool:
 
 def _is_contradicted(m: Match, read: SupplierText, texts: TextIndex) -> bool:
     """Whether the voltage or the power that the text names is another one, or only a remark completes the name."""
-    if m.core & read.remarks and texts.has_longer(m.shape.core):
+    if m.core & read.remarks and (not m.in_order or texts.has_longer(m.shape.core)):
         return True
     if m.in_order and texts.is_suffix(m.shape, read.word_after(m.core)):
         return True

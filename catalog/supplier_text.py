@@ -23,8 +23,13 @@ class Word:
     folded: str
     start: int
     end: int
-    apart: bool  # white space (or the beginning) before it
+    gap: str  # what stands between it and the word before
     remark: bool  # a trade word or a measure: it may be part of a name, or be a remark about it
+
+    @property
+    def apart(self) -> bool:
+        """Whether it begins a new item: after white space, or a mark that parts items of a list."""
+        return _is_apart(self.gap)
 
 
 class SupplierText:
@@ -69,10 +74,21 @@ class SupplierText:
         """AC voltages that the text states [V], as written."""
         return {v for v in _VOLTS.findall(_digits_mended(self.squeezed)) if v in AC_VOLTS}
 
+    def previous(self, word: Word) -> Word | None:
+        """The word before."""
+        n = self.words.index(word)
+        return self.words[n - 1] if n else None
+
+    def following(self, word: Word) -> Word | None:
+        """The word after."""
+        n = self.words.index(word) + 1
+        return self.words[n] if n < len(self.words) else None
+
     def word_after(self, places: int) -> str:
         """The remark, as written, that comes right after the marked places; empty if there is none."""
         end = places.bit_length()
-        return next((w.raw for w in self.words if w.start == end and w.remark and not w.raw[0].isdigit()), "")
+        word = next((w.raw for w in self.words if w.start == end and w.remark), "")
+        return "" if word.isdigit() or tradewords.is_measure(word) else word
 
 
 def mask(start: int, end: int) -> int:
@@ -93,17 +109,29 @@ def _words(squeezed: str) -> list[Word]:
     found = list(_WORD.finditer(squeezed))
     raws = [m.group() for m in found]
     folds = [namekeys.folded(raw) for raw in raws]
-    gaps = [" "] + [squeezed[a.end() : b.start()] for a, b in zip(found, found[1:], strict=False)]
+    gaps = [" "] + [_gap(squeezed, a.end(), b.start()) for a, b in zip(found, found[1:], strict=False)]
     out: list[Word] = []
     place = 0
     for n, raw in enumerate(raws):
-        apart = not n or " " in gaps[n]
+        apart = _is_apart(gaps[n])
         remark = apart and (tradewords.is_trade(raw) or tradewords.is_measure(raw) or _is_count(n, raws, gaps))
         if not apart and gaps[n] in (".", ",") and raw[0].isdigit():  # the decimals of a measure
             remark = out[-1].remark
-        out.append(Word(raw, folds[n], place, place + len(folds[n]), apart, remark))
+        out.append(Word(raw, folds[n], place, place + len(folds[n]), gaps[n], remark))
         place += len(folds[n])
     return out
+
+
+def _gap(squeezed: str, start: int, end: int) -> str:
+    """What stands between two words; a comma that is no decimal comma counts as a list's."""
+    gap = squeezed[start:end]
+    if gap == "," and not (squeezed[start - 1].isdigit() and squeezed[end].isdigit()):
+        return ", "
+    return gap
+
+
+def _is_apart(gap: str) -> bool:
+    return not gap or any(c in " ;:|" for c in gap) or (len(gap) > 1 and "," in gap)
 
 
 def _is_count(n: int, raws: list[str], gaps: list[str]) -> bool:

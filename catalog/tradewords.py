@@ -44,21 +44,21 @@ yr ce cec fire rev us usa eu eea cn de mcs et y e of or for fur zu ab je l sil s
 """
 
 _LEGAL_LONG = """
-inc incorporated corp corporation company ltd limited llc gmbh sarl bhd group holding holdings international intl
+inc incorporated corp corporation company ltd limited llc gmbh sarl bhd group holding holdings
 """
 _LEGAL_SHORT = "co llp lp plc ag kg se sa sas srl spa sl slu bv nv as aps oy oyj kk pty pte pvt sdn"
 
 _COMPANY = """
 solar energy energie energia power technology technologies tech electric electronics electronic electrical new green
 renewable renewables sun pv photovoltaic photovoltaics science industry industries industrial systems system
-semiconductor global modules products enterprise manufacturing
+semiconductor global international intl modules products enterprise manufacturing
 """
 
 _UNITS = """
 w wp watt watts wc wac wdc kw kwp kwac kva v vdc vac volt volts amp amps mm cm kg lb lbs hz cell cells cel zellen pc pcs
 pce st stk stck ea x un uds pz ph phase yr yrs year years mppt mpps mpp pct
 """
-_COUNTED = "pallet pallets plt pal pieces modules module panels panel units unit boxes weeks week days in wk container"
+_COUNTED = "pallet pallets plt pal pieces modules module panels panel units unit boxes weeks week days wk container"
 _ANNOUNCING = "qty quantity menge anz anzahl qte cant cantidad pos nr eur usd gbp chf wk tier order min max art sku eta"
 
 
@@ -89,6 +89,11 @@ _SPECIFICATION = re.compile(
 def is_in(word: str, some: frozenset[str]) -> bool:
     """Whether a case-folded word is one of some folded words; a number never is, though "18" looks like "lb"."""
     return not word.isdigit() and folded(word) in some
+
+
+def as_letters(word: str) -> str:
+    """A word whose letters a scanner took for digits: "8lk" is "blk"."""
+    return word.translate(str.maketrans("0158|", "olsbl"))
 
 
 def is_measure(word: str) -> bool:
