@@ -2,9 +2,11 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from catalog.errors import CatalogError
+from cli.kinds import KINDS, all_names
 
 if TYPE_CHECKING:
     from catalog.records import Inverter, Module
@@ -19,36 +21,30 @@ def choose_module(catalog: Catalog, text: str) -> Module:
     CatalogError
         Where it could be several records, or none; the candidates are listed.
     """
-    return catalog.module(_chosen(catalog, "module", text))
+    return catalog.module(choose(catalog, text, ("module",))[1])
 
 
 def choose_inverter(catalog: Catalog, text: str) -> Inverter:
     """The inverter that a name means; raises as `choose_module` does."""
-    return catalog.inverter(_chosen(catalog, "inverter", text))
+    return catalog.inverter(choose(catalog, text, ("inverter",))[1])
 
 
-def _chosen(catalog: Catalog, kind: str, text: str) -> int:
+def choose(catalog: Catalog, text: str, kinds: Sequence[str] = KINDS) -> tuple[str, int]:
+    """Kind and id of the one record of some kinds that a name means; raises as `choose_module` does."""
     from catalog.names import look_up
 
-    names = catalog.names(kind)
-    if not names:
-        raise CatalogError(
-            f"the catalog holds no {kind}: load a table with 'ferrule sheet load cec' or your own with"
-            " 'ferrule sheet load FILE'"
-        )
-    found = look_up(text, names)
+    known = all_names(catalog, kinds)
+    found = look_up(text, known.names)
     if found.match is not None:
-        return found.match
-    by_id = {n.id: n.name for n in names}
-    near = [f"  {by_id[c.id]}" for c in found.candidates[:10]]
-    if not near:
-        raise CatalogError(f"no {kind} is called {text!r}: search with 'ferrule sheet find'")
+        return known.records[found.match]
+    what = " or ".join(kinds)
+    if not found.candidates:
+        raise CatalogError(f"no {what} is called {text!r}: search with 'ferrule sheet find'")
     if found.ambiguous:
-        head = f"{text!r} could be several {kind}s: write one of these in full"
+        head = f"{text!r} could be several {'s or '.join(kinds)}s: write one of these in full"
     else:
-        head = f"no {kind} is called {text!r}; the nearest names are"
-    return _refuse(head, near)
-
-
-def _refuse(head: str, lines: list[str]) -> int:
-    raise CatalogError("\n".join([head, *lines]))
+        head = f"no {what} is called {text!r}; the nearest names are"
+    near = [known.names[c.id].name for c in found.candidates[:10]]
+    if len(set(near)) < len(near):
+        near = [f"{known.names[c.id].name} (--kind {known.records[c.id][0]})" for c in found.candidates[:10]]
+    raise CatalogError("\n  ".join([head, *near]))

@@ -5,7 +5,7 @@ from __future__ import annotations
 import sys
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from rich.console import Console
@@ -72,6 +72,13 @@ def _wrapped(text: str, indent: int, stderr: bool) -> None:
     pad = " " * indent
     print(textwrap.fill(text, screen.width, initial_indent=pad, subsequent_indent=pad, break_long_words=False,
                         break_on_hyphens=False), file=screen.file)  # fmt: skip
+
+
+def print_json(document: Any) -> None:
+    """Print a document on stdout; what is not finite has no place in it."""
+    import json
+
+    print(json.dumps(document, allow_nan=False, indent=1))
 
 
 def number(value: float | None, digits: int = 0) -> str:

@@ -1,0 +1,5 @@
+"""``python -m cli`` is ``ferrule``."""
+
+from cli.main import main
+
+main()

@@ -1,0 +1,129 @@
+"""``ferrule sheet find``: records by words of their names, with their key ratings."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from typing import TYPE_CHECKING, Annotated, Any
+
+import typer
+
+from cli.kinds import KindOption, all_names, asked_kinds, of_kind
+from cli.opening import CatalogOption, open_catalog
+
+if TYPE_CHECKING:
+    from catalog.records import Inverter, Module
+    from cli.console import Column
+
+SCHEMA = "ferrule.find/1"
+NOTHING_FOUND = 1
+
+
+def find(
+    words: Annotated[list[str], typer.Argument(metavar="WORDS...", help="Words of maker and model, in any order; the last may be unfinished.", show_default=False)],  # noqa: E501
+    kind: KindOption = None,
+    limit: Annotated[int, typer.Option(metavar="N", min=1, help="Records shown.")] = 20,
+    as_json: Annotated[bool, typer.Option("--json", help="Print the result as a document.")] = False,
+    catalog: CatalogOption = None,
+) -> int:
+    """Find records by words of their names, the best first, with their key ratings.
+
+    Exit status: 0 something found, 1 nothing found, 2 bad input.
+
+    Example: ferrule sheet find af6k 270
+    """
+    kinds = asked_kinds(kind)
+    query = " ".join(words)
+    with open_catalog(catalog) as opened:
+        from catalog.names import find as search
+
+        known = all_names(opened, kinds)
+        found = [(*known.records[c.id], c.score) for c in search(query, known.names, limit)]
+        records = {
+            (k, r.id): r
+            for k in kinds
+            for r in of_kind(opened, k, [id_ for kind_, id_, _ in found if kind_ == k])
+        }
+    hits = [(k, records[k, id_], score) for k, id_, score in found]
+    if as_json:
+        from cli.console import print_json
+
+        print_json({"schema": SCHEMA, "query": query, "found": [_entry(*hit) for hit in hits]})
+    elif hits:
+        _show(query, hits, limit)
+    else:
+        from cli.console import say
+
+        what = " or ".join(kinds)
+        say(f"No {what} has a name like {query!r}.")
+    return 0 if hits else NOTHING_FOUND
+
+
+def _show(query: str, hits: Sequence[tuple[str, Module | Inverter, float]], limit: int) -> None:
+    from catalog.namekeys import compact
+    from cli.console import print_table, say
+
+    best = compact(hits[0][1].name)
+    if not all(compact(word) in best for word in query.split()):
+        say(f"No name holds all of {query!r}; the nearest are:")
+    for number, kind in enumerate(dict.fromkeys(k for k, _, _ in hits)):
+        if number:
+            say()
+        columns = _COLUMNS[kind]()
+        records = [r for k, r, _ in hits if k == kind]
+        print_table([c for c, _ in columns], [[text(r) for _, text in columns] for r in records])
+    if len(hits) == limit:
+        say(f"The first {limit}; more words or --limit N show others.")
+
+
+def _module_columns() -> list[tuple[Column, Callable[[Module], str]]]:
+    from cli.console import Column, number
+
+    return [
+        (Column("module", fold=True), lambda m: m.name),
+        (Column("Pmax W", number=True), lambda m: number(m.pmax_w, 1)),
+        (Column("Voc V", number=True), lambda m: number(m.voc_v, 2)),
+        (Column("Isc A", number=True), lambda m: number(m.isc_a, 2)),
+        (Column("Vmp V", number=True), lambda m: number(m.vmp_v, 2)),
+        (Column("Imp A", number=True), lambda m: number(m.imp_a, 2)),
+        (Column("Voc %/K", number=True), lambda m: number(m.voc_coef_pct, 3)),
+        (Column("technology", fold=True), lambda m: m.technology),
+    ]
+
+
+def _inverter_columns() -> list[tuple[Column, Callable[[Inverter], str]]]:
+    from cli.console import Column, number
+
+    return [
+        (Column("inverter", fold=True), lambda i: i.name),
+        (Column("AC kW", number=True), lambda i: number(i.ac_power_w / 1000, 2)),
+        (Column("AC V", number=True), lambda i: number(i.ac_voltage_v)),
+        (Column("MPPT V", number=True), lambda i: f"{i.mppt_low_v:.0f} to {i.mppt_high_v:.0f}"),
+        (Column("max DC V", number=True), lambda i: number(i.max_dc_voltage_v)),
+        (Column("trackers", number=True), _trackers),
+        (Column("eff. %", number=True), lambda i: number(i.weighted_efficiency_pct, 1)),
+    ]
+
+
+def _trackers(inverter: Inverter) -> str:
+    """Number of trackers; in brackets where it is only assumed."""
+    number = sum(group.trackers for group in inverter.inputs)
+    return f"({number})" if inverter.origin("inputs") == "assumed" else str(number)
+
+
+_COLUMNS: dict[str, Callable[[], list[tuple[Column, Callable[[Any], str]]]]] = {
+    "module": _module_columns,
+    "inverter": _inverter_columns,
+}
+
+_RATINGS = {
+    "module": ("technology", "pmax_w", "voc_v", "isc_a", "vmp_v", "imp_a", "voc_coef_pct", "max_system_voltage_v"),
+    "inverter": ("ac_power_w", "ac_voltage_v", "mppt_low_v", "mppt_high_v", "max_dc_voltage_v", "weighted_efficiency_pct"),
+}
+
+
+def _entry(kind: str, record: Module | Inverter, score: float) -> dict[str, Any]:
+    entry = {"kind": kind, "id": record.id, "maker": record.maker, "model": record.model, "score": score}
+    entry |= {name: getattr(record, name) for name in _RATINGS[kind]}
+    if kind == "inverter":
+        entry["trackers"] = sum(group.trackers for group in record.inputs)
+    return entry

@@ -1,0 +1,120 @@
+"""``ferrule sheet load``: the public tables, or files of datasheets, into the catalog."""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated
+
+import typer
+
+from catalog.errors import CatalogError
+from cli.opening import CatalogOption, location, open_catalog
+
+if TYPE_CHECKING:
+    from catalog.loading import Progress
+    from catalog.sheetfiles import SheetFile
+
+PUBLIC_TABLES = "cec"
+
+#: Remarks on a file that are said one by one; the others are counted.
+_REMARKS = 20
+
+
+def load(
+    what: Annotated[list[str], typer.Argument(metavar="cec|FILE...", help="The public CEC tables, or files of datasheets (.csv, .toml).", show_default=False)],  # noqa: E501
+    modules: Annotated[Path | None, typer.Option(metavar="FILE", help="With cec: this table of modules instead of the one that comes with pvlib.")] = None,  # noqa: E501
+    inverters: Annotated[Path | None, typer.Option(metavar="FILE", help="With cec: this table of inverters. With one of the two options, only that table is loaded.")] = None,  # noqa: E501
+    catalog: CatalogOption = None,
+) -> None:
+    """Load the public tables or your own datasheets: all or nothing, and safe to repeat.
+
+    What is loaded again and has not changed stays as it is; what has changed becomes a new revision, and
+    values that you amended yourself are kept. The catalog is made where there is none.
+
+    Example: ferrule sheet load cec
+    """
+    began = time.perf_counter()
+    with _progress() as tell:
+        found = _read(what, modules, inverters)
+        with open_catalog(catalog, create=True) as opened:
+            report = opened.load(found.modules, found.inverters, tell)
+    from cli.console import note, say
+
+    for line in found.notes[:_REMARKS]:
+        note(line)
+    if len(found.notes) > _REMARKS:
+        note(f"... and {len(found.notes) - _REMARKS:,} more remarks")
+    say(
+        f"{_counted(len(found.modules), 'module')} and {_counted(len(found.inverters), 'inverter')}:"
+        f" {report.new:,} new, {report.changed:,} changed, {report.unchanged:,} unchanged,"
+        f" in {time.perf_counter() - began:.1f} s."
+    )
+    say(f"Catalog: {location(catalog)}")
+
+
+def _counted(number: int, what: str) -> str:
+    return f"{number:,} {what}{'' if number == 1 else 's'}"
+
+
+def _read(what: list[str], modules: Path | None, inverters: Path | None) -> SheetFile:
+    from catalog.sheetfiles import SheetFile
+
+    if PUBLIC_TABLES in what:
+        if len(what) > 1:
+            raise CatalogError(f"load {PUBLIC_TABLES} by itself, then the files (a file of that name: ./{PUBLIC_TABLES})")
+        return _public(modules, inverters)
+    if modules or inverters:
+        option = "--modules" if modules else "--inverters"
+        raise CatalogError(f"{option} belongs to 'ferrule sheet load {PUBLIC_TABLES}'; name datasheet files without it")
+    files = [_file(Path(name)) for name in what]
+    return SheetFile(
+        [record for file in files for record in file.modules],
+        [record for file in files for record in file.inverters],
+        [line for file in files for line in file.notes],
+    )
+
+
+def _public(modules: Path | None, inverters: Path | None) -> SheetFile:
+    """The CEC tables: those that are named, or both that pvlib installs."""
+    from catalog.cec import read_cec_inverters, read_cec_modules
+    from catalog.sheetfiles import SheetFile
+
+    both = modules is None and inverters is None
+    return SheetFile(
+        read_cec_modules(modules) if both or modules else [],
+        read_cec_inverters(inverters) if both or inverters else [],
+        [],
+    )
+
+
+def _file(path: Path) -> SheetFile:
+    """A file in one of the project's forms, or a CEC table; its content tells which."""
+    from catalog.cec import cec_kind
+    from catalog.sheetfiles import read_sheets
+
+    kind = cec_kind(path) if path.suffix.casefold() == ".csv" else None
+    if kind is None:
+        if not path.exists() and not path.suffix:
+            raise CatalogError(f"{path}: no such file; write '{PUBLIC_TABLES}' for the public tables, or the path of a file")
+        return read_sheets(path)
+    return _public(path, None) if kind == "module" else _public(None, path)
+
+
+@contextmanager
+def _progress() -> Iterator[Progress | None]:
+    """A bar on stderr where that is a terminal."""
+    from cli.console import console
+
+    screen = console(stderr=True)
+    if not screen.is_terminal:
+        yield None
+        return
+    from rich.progress import BarColumn, MofNCompleteColumn, Progress, TextColumn, TimeElapsedColumn
+
+    columns = (TextColumn("{task.description}"), BarColumn(), MofNCompleteColumn(), TimeElapsedColumn())
+    with Progress(*columns, console=screen, transient=True) as bar:
+        task = bar.add_task("reading", total=None)
+        yield lambda done, total: bar.update(task, description="loading", completed=done, total=total)
