@@ -106,6 +106,9 @@ def placed_share(shape: Shape, text: SupplierText) -> float:
             taken |= mask(*span)
         elif namekeys.folded(chunk) in text.joined:
             told += 0.8 * weight
+        else:
+            runs = [r for r in namekeys.runs(chunk) if len(r) > 1 and r in text.joined_raw]
+            told += 0.6 * weight * sum(map(len, runs)) / len(chunk)
     return told / total if total else 0.0
 
 
@@ -211,8 +214,8 @@ def _named(left: list[_Piece], words: list[str], text: SupplierText) -> tuple[in
             group = left[n : n + 1]
             joined = group[0].folded
         how, common = (2, False) if joined in runs else _likeness(group[0].raw, joined, words)
-        if how == 1 and (not _stands_alone(group[0], text) or tradewords.is_in(group[0].raw, tradewords.CODES)):
-            how = 0  # "HSE-" before a number is rather a part of a model than initials
+        if joined not in runs and not _may_be_short(group[0], how, text):
+            how = 0
         common = common or all(p.folded in tradewords.COMMON for p in group)
         if not how:
             rest.extend(group)
@@ -248,9 +251,17 @@ def _likeness(raw: str, piece: str, words: list[str]) -> tuple[int, bool]:
     return 0, False
 
 
-def _stands_alone(p: _Piece, text: SupplierText) -> bool:
+def _may_be_short(p: _Piece, how: int, text: SupplierText) -> bool:
+    """Whether a piece can be a maker's name cut short: a whole word, and if very short then one that stands alone.
+
+    What the core leaves of a word is no abbreviation ("Lumo" of "Lumos ST215" read as "SST215"), and "HSE-" before a
+    number is rather a part of a model than initials.
+    """
+    if p.start > p.word.start or p.end < p.word.end:
+        return False
     following = text.following(p.word)
-    return p.word.apart and p.end == p.word.end and (following is None or following.apart)
+    alone = p.word.apart and (following is None or following.apart)
+    return how == 2 or (alone and not tradewords.is_in(p.raw, tradewords.CODES))
 
 
 def _is_there(word: str, text: SupplierText) -> bool:
@@ -286,7 +297,7 @@ def _unexplained(left: list[_Piece], core: int, shape: Shape, text: SupplierText
         if p.raw.isdigit():
             if not _is_number_remark(p, joined or between, after, shape) or (scattered and not p.word.remark):
                 doubts.append(p.raw)
-        elif tradewords.is_measure(p.raw) or (inside and _is_unit_of_core(p, shape, text)):
+        elif (tradewords.is_measure(p.raw) and not between) or (inside and _is_unit_of_core(p, shape, text)):
             continue
         elif tradewords.is_trade(p.raw):
             if joined or between:

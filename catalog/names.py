@@ -235,8 +235,8 @@ def _digits_agree(text: str, name: str) -> bool:
 def _pattern(word: str, *, unfinished: bool = False) -> str:
     """Pattern that finds a typed word in a squeezed name.
 
-    Separators may stand anywhere in the name and be missing in the word, but a decimal point or
-    comma between digits only where the word has a separator there too. A number is found whole, and
+    Separators may stand anywhere in the name and be missing in the word, but digits with a decimal point or comma
+    between them are another number than the same digits without. A number is found whole, and
     letters from the beginning of a run of letters on; ``unfinished`` words, still being typed, may begin inside
     a run and their last number may go on.
     """
@@ -245,9 +245,13 @@ def _pattern(word: str, *, unfinished: bool = False) -> str:
         if not (char.isalnum() or char == "+"):
             continue
         if parts:
-            joined = word[i - 1].isalnum()
-            between_digits = char.isdigit() and joined and word[i - 1].isdigit()
-            parts.append(r"[^\w.,+]*" if between_digits else r"[^\w+]*_*")
+            before = word[i - 1]
+            if char.isdigit() and before.isdigit():
+                parts.append(r"[^\w.,+]*")
+            elif char.isdigit() and before in ".," and word[i - 2 : i - 1].isdigit():
+                parts.append(r"(?:[^\w+]|_)+")
+            else:
+                parts.append(r"(?:[^\w+]|_)*")
         parts.append(re.escape(char))
     if word[:1].isdigit():
         begin = r"(?<!\d)"
