@@ -55,13 +55,13 @@ def add(
 
     if low is None or high is None:
         raise CatalogError(_missing_temperatures(low, high, weather))
-    site = checked(
-        Site(
-            name=" ".join(name.split()), design_low_c=low, design_high_c=high, mounting=mounting or Site.mounting,
-            voltage_cap_v=voltage_cap, rear_share=rear_share, lat=lat, lon=lon, tilt=tilt, azimuth=azimuth,
-            weather=None if weather is None else os.path.abspath(os.path.expanduser(weather)),
-        )  # fmt: skip
-    )
+    given = {
+        "voltage_cap_v": voltage_cap, "rear_share": rear_share, "lat": lat, "lon": lon, "tilt": tilt, "azimuth": azimuth,
+        "weather": None if weather is None else os.path.abspath(os.path.expanduser(weather)),
+    }  # fmt: skip
+    if mounting is not None:
+        given["mounting"] = mounting
+    site = checked(Site(name=" ".join(name.split()), design_low_c=low, design_high_c=high, **given))
     facts = weather_facts(site)
     with open_catalog(catalog, create=True) as opened:
         _refuse_taken(opened.sites(), site, replace)
