@@ -1,4 +1,4 @@
-"""Measure names: texts of suppliers over the public CEC tables resolved, and how long look-up and search take.
+"""Measure names: suppliers' texts over the public CEC tables resolved; time of look-up and search.
 
 Run from the root of the project: ``python benchmarks/names.py [--count 1000] [--seed 1] [--show 20]``.
 """
@@ -70,7 +70,10 @@ def _resolve(names, records, count, show, rng, left_out) -> None:
     print(f"  sure given {100 * sure / count:.1f} %, of these wrong {len(wrong)}; none {none}")
     if not left_out:
         print(f"  right record among the first five {100 * first_five / count:.1f} %")
-    print(f"  median {1000 * statistics.median(times):.1f} ms, 95 % under {1000 * sorted(times)[int(0.95 * count)]:.1f} ms")
+    print(
+        f"  median {1000 * statistics.median(times):.1f} ms,"
+        f" 95 % under {1000 * sorted(times)[int(0.95 * count)]:.1f} ms"
+    )
     for title, cases in (("WRONG", wrong), ("missed", missed[:show]), ("not sure", not_sure[:show])):
         for case in cases:
             print(f"  {title}: {case}")
@@ -90,7 +93,10 @@ def _command_line(names, rng) -> None:
             begin = time.perf_counter()
             ask(n, NameIndex(names))
             times.append(time.perf_counter() - begin)
-        print(f"{title}, index included: median {1000 * statistics.median(times):.0f} ms, worst {1000 * max(times):.0f} ms")
+        print(
+            f"{title}, index included: median {1000 * statistics.median(times):.0f} ms,"
+            f" worst {1000 * max(times):.0f} ms"
+        )
 
 
 if __name__ == "__main__":

@@ -1,8 +1,8 @@
 """Names of records: what a person types, found; what a supplier wrote, resolved.
 
 `look_up` takes a name that is meant to be one record (a command line), `find` serves a search as one
-types, `resolve` reads suppliers' free text, `twins` lists models that several makers sell. All are pure functions
-over a list of `Named`; a `NameIndex` in its place keeps the work on the names for the next call.
+types, `resolve` reads suppliers' free text, `twins` lists models that several makers sell. All are pure
+functions over a list of `Named`; a `NameIndex` in its place keeps the work on the names for the next call.
 
 A name that could be two records is never decided here, and digits decide: a 270 W type is no typing
 error for a 275 W type.
@@ -17,7 +17,7 @@ from functools import cached_property
 from typing import Literal
 
 from catalog import namekeys
-from catalog.typing_errors import slips
+from catalog.typed_names import exact, holding, is_model_with_part_of_maker, pattern, slips
 
 
 @dataclass(frozen=True, slots=True)
@@ -103,7 +103,7 @@ class NameIndex:
     @cached_property
     def text_index(self):
         """What `resolve` needs: letter groups of all names (built in some tenths of a second)."""
-        from catalog.resolve import TextIndex
+        from catalog.text_index import TextIndex
 
         return TextIndex(self)
 
@@ -145,13 +145,13 @@ def look_up(query: str, names: Names, limit: int = 10) -> LookUp:
     if not key or not len(index):
         return LookUp(None, [])
     typed = " ".join(query.split())
-    for rows in _exact(typed, text, key, index):
+    for rows in exact(typed, text, key, index):
         if len(rows) == 1:
             return _match(rows[0], index)
         if rows:
             return _ambiguous(rows, key, index, limit)
-    rows = _holding(text, key, index)
-    whole = [i for i in rows if _is_model_with_part_of_maker(text, i, index)]
+    rows = holding(text, key, index)
+    whole = [i for i in rows if is_model_with_part_of_maker(text, i, index)]
     for some in (whole, rows, slips(text, index)):
         if len(some) == 1:
             return _match(some[0], index)
@@ -161,10 +161,10 @@ def look_up(query: str, names: Names, limit: int = 10) -> LookUp:
 
 
 def find(query: str, names: Names, limit: int = 20) -> list[Candidate]:
-    """Records for a search as one types: all words must be in the name, in any order, the last may be unfinished.
+    """Records for a search as one types: the name holds all words, in any order, the last perhaps unfinished.
 
-    Ranked: the name or model itself, names that begin with the query, words found at the beginning of words, words
-    found inside; shorter names first. Where no name holds all words, names with small typing errors in
+    Ranked: the name or model itself, names that begin with the query, words found at the beginning of words,
+    words found inside; shorter names first. Where no name holds all words, names with small typing errors in
     their letters, then the nearest names that hold the query's digits.
     """
     index = as_index(names)
@@ -172,7 +172,7 @@ def find(query: str, names: Names, limit: int = 20) -> list[Candidate]:
     key = namekeys.compact(query)
     if not key or not len(index) or limit < 1:
         return []
-    rows = _holding(text, key, index, unfinished=True)
+    rows = holding(text, key, index, unfinished=True)
     if rows:
         return _ranked(rows, text, key, index)[:limit]
     rows = slips(text, index)
@@ -212,86 +212,9 @@ def _ambiguous(rows: list[int], key: str, index: NameIndex, limit: int) -> LookU
     return LookUp(None, _ranked(rows, key, key, index)[:limit], ambiguous=True)
 
 
-def _exact(typed: str, text: str, key: str, index: NameIndex) -> Iterable[list[int]]:
-    """Rows whose full name, then whose model is the query, ever more loosely."""
-    for i, name in enumerate(index.full):
-        if name == text and " ".join(index.names[i].name.split()) == typed:
-            yield [i]
-    yield [i for i, name in enumerate(index.full) if name == text]
-    yield [i for i, k in enumerate(index.full_keys) if k == key and _digits_agree(text, index.full[i])]
-    rows = [i for i, name in enumerate(index.models) if name == text]
-    same_case = [i for i in rows if " ".join(index.names[i].model.split()) == typed]
-    # With a full name that differs in case only there are still two records, but the one as typed is meant.
-    yield same_case or rows
-    yield [i for i, k in enumerate(index.model_keys) if k == key and _digits_agree(text, index.models[i])]
-
-
-def _digits_agree(text: str, name: str) -> bool:
-    """Whether no decimal point is lost or won: "6.0" may be typed "6 0" and "6,0", but "60" is another number."""
-    pattern = _pattern(text)
-    return re.search(pattern, name) is not None or re.search(_pattern(name), text) is not None
-
-
-def _pattern(word: str, *, unfinished: bool = False) -> str:
-    """Pattern that finds a typed word in a squeezed name.
-
-    Separators may stand anywhere in the name and be missing in the word, but digits with a decimal point or comma
-    between them are another number than the same digits without. A number is found whole, and
-    letters from the beginning of a run of letters on; ``unfinished`` words, still being typed, may begin inside
-    a run and their last number may go on.
-    """
-    parts = []
-    for i, char in enumerate(word):
-        if not (char.isalnum() or char == "+"):
-            continue
-        if parts:
-            before = word[i - 1]
-            if char.isdigit() and before.isdigit():
-                parts.append(r"[^\w.,+]*")
-            elif char.isdigit() and before in ".," and word[i - 2 : i - 1].isdigit():
-                parts.append(r"(?:[^\w+]|_)+")
-            else:
-                parts.append(r"(?:[^\w+]|_)*")
-        parts.append(re.escape(char))
-    if word[:1].isdigit():
-        begin = r"(?<!\d)"
-    else:
-        begin = "" if unfinished else r"(?<![^\W\d_])"
-    end = r"(?!\d)" if word[-1:].isdigit() and not unfinished else ""
-    return begin + "".join(parts) + end
-
-
-def _holding(text: str, key: str, index: NameIndex, *, unfinished: bool = False) -> list[int]:
-    """Rows whose full name holds the query in one piece, or else all its words."""
-    whole = re.compile(_pattern(text, unfinished=unfinished))
-    rows = [i for i, k in enumerate(index.full_keys) if key in k and whole.search(index.full[i])]
-    if rows and not unfinished:
-        return rows
-    parts = namekeys.words(text)
-    if len(parts) < 2:
-        return rows
-    known = set(rows)
-    left: Iterable[int] = [i for i in range(len(index)) if i not in known]
-    for n, part in enumerate(parts):
-        part_key = namekeys.compact(part)
-        pattern = re.compile(_pattern(part, unfinished=unfinished and n == len(parts) - 1))
-        left = [i for i in left if part_key in index.full_keys[i] and pattern.search(index.full[i])]
-    return rows + list(left)
-
-
-def _is_model_with_part_of_maker(text: str, row: int, index: NameIndex) -> bool:
-    """Whether the query is the whole model and otherwise only words, or beginnings of words, of the maker."""
-    found = re.search(_pattern(index.models[row]), text)
-    if not found:
-        return False
-    maker = namekeys.words(index.makers[row])
-    rest = namekeys.words(text[: found.start()]) + namekeys.words(text[found.end() :])
-    return all(any(m.startswith(word) for m in maker) for word in rest)
-
-
 def _ranked(rows: Iterable[int], text: str, key: str, index: NameIndex) -> list[Candidate]:
     """Rows that hold the query, best first; the score is the share of the name that the query tells."""
-    starts = [re.compile(rf"(?<![^\W_]){_pattern(word, unfinished=True)}") for word in namekeys.words(text)]
+    starts = [re.compile(rf"(?<![^\W_]){pattern(word, unfinished=True)}") for word in namekeys.words(text)]
 
     def rank(i: int) -> tuple:
         full, model = index.full_keys[i], index.model_keys[i]

@@ -1,4 +1,4 @@
-"""A supplier's free text, taken apart: words, their places in the text without separators, what they measure."""
+"""A supplier's free text, taken apart: its words, their places without separators, what they measure."""
 
 from __future__ import annotations
 
@@ -12,7 +12,9 @@ _WATTS = re.compile(r"(\d+(?:[.,]\d+)?) ?(kwp?|kva|kwac|wp?|watts?|wc)(?![^\W_])
 _VOLTS = re.compile(r"(?<![^\W_])(\d{3}) ?v(?:ac|olts?)?(?![^\W_])")
 
 #: Nominal AC voltages of grids and their common readings [V]; other voltages in a text are DC limits.
-AC_VOLTS = frozenset({"110", "115", "120", "127", "208", "220", "230", "240", "277", "347", "380", "400", "415", "480"})
+AC_VOLTS = frozenset(
+    {"110", "115", "120", "127", "208", "220", "230", "240", "277", "347", "380", "400", "415", "480"}
+)
 
 
 @dataclass(frozen=True, slots=True)
@@ -114,7 +116,9 @@ def _words(squeezed: str) -> list[Word]:
     place = 0
     for n, raw in enumerate(raws):
         apart = _is_apart(gaps[n])
-        remark = apart and (tradewords.is_trade(raw) or tradewords.is_measure(raw) or _is_count(n, raws, gaps))
+        remark = apart and (
+            tradewords.is_trade(raw) or tradewords.is_measure(raw) or _is_count(n, raws, gaps)
+        )
         if not apart and gaps[n] in (".", ",") and raw[0].isdigit():  # the decimals of a measure
             remark = out[-1].remark
         out.append(Word(raw, folds[n], place, place + len(folds[n]), gaps[n], remark))

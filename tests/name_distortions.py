@@ -1,7 +1,7 @@
 """Names as suppliers write them: a generator of distorted article texts for tests and measurements.
 
-Common practice, no source: each distortion is one that price lists, delivery notes and scans show. Seeded, so that
-a figure can be had again.
+Common practice, no source: each distortion is one that price lists, delivery notes and scans show. Seeded, so
+that a figure can be had again.
 """
 
 from __future__ import annotations
@@ -11,24 +11,100 @@ import re
 from collections.abc import Sequence
 
 SCAN = {
-    "0": "O", "O": "0", "o": "0", "1": "lI", "I": "1l", "l": "1I", "i": "1", "5": "S", "S": "5", "s": "5", "8": "B", "B": "8"
-}  # fmt: skip
-BEFORE = ["PV module", "Solar panel", "Modul", "Art. 4711", "Pos. 3", "12 x", "24x", "qty 60", "1 pallet", "NEW", "Solarmodul", "2 Stk."]
+    "0": "O",
+    "O": "0",
+    "o": "0",
+    "1": "lI",
+    "I": "1l",
+    "l": "1I",
+    "i": "1",
+    "5": "S",
+    "S": "5",
+    "s": "5",
+    "8": "B",
+    "B": "8",
+}
+BEFORE = [
+    "PV module",
+    "Solar panel",
+    "Modul",
+    "Art. 4711",
+    "Pos. 3",
+    "12 x",
+    "24x",
+    "qty 60",
+    "1 pallet",
+    "NEW",
+    "Solarmodul",
+    "2 Stk.",
+]
 AFTER = {
     "module": [
-        "poly", "mono", "monocrystalline", "polykristallin", "blk frame", "black frame", "silver frame", "slv/wht", "60 cells",
-        "72 cell", "60c", "full black", "MC4", "1000V", "35mm frame", "tier 1", "A-grade", "25 yr warranty", "backsheet white",
-        "multi", "PV module", "panel", "UL listed", "IEC 61215", "cable 1m",
+        "poly",
+        "mono",
+        "monocrystalline",
+        "polykristallin",
+        "blk frame",
+        "black frame",
+        "silver frame",
+        "slv/wht",
+        "60 cells",
+        "72 cell",
+        "60c",
+        "full black",
+        "MC4",
+        "1000V",
+        "35mm frame",
+        "tier 1",
+        "A-grade",
+        "25 yr warranty",
+        "backsheet white",
+        "multi",
+        "PV module",
+        "panel",
+        "UL listed",
+        "IEC 61215",
+        "cable 1m",
     ],
     "inverter": [
-        "inverter", "string inverter", "3ph", "single phase", "grid-tie", "transformerless", "WR", "UL 1741", "10 yr warranty",
-        "wifi", "IP65", "incl. DC disconnect", "NEW", "outdoor", "Wechselrichter", "AFCI",
+        "inverter",
+        "string inverter",
+        "3ph",
+        "single phase",
+        "grid-tie",
+        "transformerless",
+        "WR",
+        "UL 1741",
+        "10 yr warranty",
+        "wifi",
+        "IP65",
+        "incl. DC disconnect",
+        "NEW",
+        "outdoor",
+        "Wechselrichter",
+        "AFCI",
     ],
-}  # fmt: skip
+}
 ANYWHERE = [
-    "pallet 31 pcs", "qty 120", "qty: 8", "2 pallets", "24 pcs", "in stock", "ex works", "EUR 89.50", "USD 112", "ETA wk 34",
-    "ab Lager Hamburg", "Rotterdam", "overstock", "surplus", "delivery 2 weeks", "min. order 10", "promo", "per piece",
-]  # fmt: skip
+    "pallet 31 pcs",
+    "qty 120",
+    "qty: 8",
+    "2 pallets",
+    "24 pcs",
+    "in stock",
+    "ex works",
+    "EUR 89.50",
+    "USD 112",
+    "ETA wk 34",
+    "ab Lager Hamburg",
+    "Rotterdam",
+    "overstock",
+    "surplus",
+    "delivery 2 weeks",
+    "min. order 10",
+    "promo",
+    "per piece",
+]
 
 
 def distorted(maker: str, model: str, kind: str, power_w: float, rng: random.Random) -> str:
@@ -50,7 +126,9 @@ def distorted(maker: str, model: str, kind: str, power_w: float, rng: random.Ran
     parts = [p for p in (_maker(maker, rng), _model(core, rng)) if p]
     if volts and rng.random() < 0.95:
         v = volts.group(1)
-        parts.append(rng.choice([f"{v}V", f"{v} V", f"{v}Vac", f"[{v}V]", f"({v}V)", f"{v} VAC", f"@{v}V", v]))
+        parts.append(
+            rng.choice([f"{v}V", f"{v} V", f"{v}Vac", f"[{v}V]", f"({v}V)", f"{v} VAC", f"@{v}V", v])
+        )
     if rng.random() < 0.2:
         parts.reverse()
     if rng.random() < 0.55:
@@ -60,7 +138,9 @@ def distorted(maker: str, model: str, kind: str, power_w: float, rng: random.Ran
         parts.insert(0, rng.choice(BEFORE))
     if rng.random() < 0.35:
         parts.append(rng.choice(ANYWHERE))
-    text = rng.choice([" ", " ", " ", ", ", " - ", "  "]).join(parts) if rng.random() < 0.9 else "; ".join(parts)
+    text = (
+        rng.choice([" ", " ", " ", ", ", " - ", "  "]).join(parts) if rng.random() < 0.9 else "; ".join(parts)
+    )
     if rng.random() < 0.25:
         spaces = [m.start() for m in re.finditer(" ", text)]
         if spaces:
@@ -76,13 +156,17 @@ def _maker(maker: str, rng: random.Random) -> str:
         return ""
     if way < 0.35:
         return maker
-    short = [w for w in words if w.lower() not in {"co", "ltd", "inc", "llc", "gmbh", "corporation", "corp", "sa"}] or words
+    short = [
+        w for w in words if w.lower() not in {"co", "ltd", "inc", "llc", "gmbh", "corporation", "corp", "sa"}
+    ] or words
     if way < 0.60:
         return " ".join(short)
     if way < 0.75:
         return short[0]
     if way < 0.92:
-        return " ".join(w if len(w) < 5 or rng.random() < 0.4 else w[: rng.choice([3, 4, 5])] + "." for w in short)
+        return " ".join(
+            w if len(w) < 5 or rng.random() < 0.4 else w[: rng.choice([3, 4, 5])] + "." for w in short
+        )
     if way < 0.96:
         return "".join(short)
     return _typo(" ".join(short), rng)
@@ -93,7 +177,13 @@ def _typo(text: str, rng: random.Random) -> str:
     if not at:
         return text
     i = rng.choice(at)
-    return rng.choice([text[:i] + text[i + 1 :], text[:i] + text[i + 1] + text[i] + text[i + 2 :], text[:i] + text[i] + text[i:]])
+    return rng.choice(
+        [
+            text[:i] + text[i + 1 :],
+            text[:i] + text[i + 1] + text[i] + text[i + 2 :],
+            text[:i] + text[i] + text[i:],
+        ]
+    )
 
 
 def _model(model: str, rng: random.Random) -> str:
@@ -125,6 +215,8 @@ def _model(model: str, rng: random.Random) -> str:
 def _power(power_w: float, kind: str, rng: random.Random) -> str:
     watts = round(power_w)
     if kind == "module":
-        return rng.choice([f"{watts}Wp", f"{watts} Wp", f"{watts}W", f"{watts} W", f"{watts / 1000:g} kWp", f"{watts}Watt"])
+        return rng.choice(
+            [f"{watts}Wp", f"{watts} Wp", f"{watts}W", f"{watts} W", f"{watts / 1000:g} kWp", f"{watts}Watt"]
+        )
     kilo = f"{power_w / 1000:.1f}".rstrip("0").rstrip(".")
     return rng.choice([f"{kilo}kW", f"{kilo} kW", f"{watts}W", f"{watts} W"])

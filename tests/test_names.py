@@ -40,7 +40,9 @@ def cec_modules():
 def cec_inverters():
     """Names of the CEC inverter table, with the rated powers [W]."""
     records = read_cec_inverters()
-    return NameIndex([Named(i, r.maker, r.model) for i, r in enumerate(records)]), [r.ac_power_w for r in records]
+    return NameIndex([Named(i, r.maker, r.model) for i, r in enumerate(records)]), [
+        r.ac_power_w for r in records
+    ]
 
 
 @pytest.mark.parametrize(
@@ -170,12 +172,16 @@ def test_resolve_leaves_the_choice(text):
     assert found.candidates
 
 
-@pytest.mark.parametrize("text", ["Alderfell AF6K-265P", "Candlewick BM-Q305", "Brightmoor Helder 3.0-1 240V"])
+@pytest.mark.parametrize(
+    "text", ["Alderfell AF6K-265P", "Candlewick BM-Q305", "Brightmoor Helder 3.0-1 240V"]
+)
 def test_a_type_that_is_not_in_the_catalog_is_never_sure(text):
     assert resolve(text, INVENTED).confidence != "sure"
 
 
-@pytest.mark.parametrize("text", ["mounting rail 4.2 m, anodised", "MC4 connectors, 100 pcs", "freight and packing"])
+@pytest.mark.parametrize(
+    "text", ["mounting rail 4.2 m, anodised", "MC4 connectors, 100 pcs", "freight and packing"]
+)
 def test_resolve_knows_what_is_no_record(text, cec_modules):
     assert resolve(text, INVENTED).confidence == "none"
     assert resolve(text, cec_modules[0]).confidence != "sure"
