@@ -7,7 +7,8 @@ cuts through err, and always to the same side (Jensen's inequality): a limit at 
 ``sum(h max(0, p - t))`` from the entries, never less than from their class means, and the difference of
 one class is at most half of ``sum(h |p - mean|)``. So the class where that is largest is cut in two, until
 the difference over the whole year is below the bound for every t; for current limits in the same way with
-``sum(h v max(0, i - c))``.
+``sum(h v max(0, i - c))``. Where both limits act, power at the current limit follows the voltage and the
+power limit cuts through that, so the classes are cut by voltage too.
 """
 
 from __future__ import annotations
@@ -35,7 +36,7 @@ def class_labels(
     bound_pct
         Largest error of the clipped energy, in percent of the year's energy.
     current_limits
-        Whether the bound must hold for current limits too, which takes two to three times as many classes.
+        Whether the bound must hold for each of the two limits; takes two to three times as many classes.
 
     Returns
     -------
@@ -51,13 +52,17 @@ def class_labels(
         total = h.sum()
         mean = h @ p / total
         weight = _LOW_WEIGHT if mean < low else 1.0
-        by_power = float(h @ np.abs(p - mean))
+        error, upper = h @ np.abs(p - mean), p > mean
         if current_limits:
-            ratio = (h @ p) / (h @ v)
-            by_current = float(h @ np.abs(p - ratio * v))
-            if by_current > by_power:
-                return -by_current * weight, int(members[0]), members, current[members] > ratio
-        return -by_power * weight, int(members[0]), members, p > mean
+            mean_v = h @ v / total
+            ratio = mean / mean_v
+            by_current = h @ np.abs(p - ratio * v)
+            if by_current > error:
+                error, upper = by_current, current[members] > ratio
+            by_voltage = ratio * (h @ np.abs(v - mean_v))
+            if by_voltage > error:
+                error, upper = by_voltage, v > mean_v
+        return -float(error) * weight, int(members[0]), members, upper
 
     heap = [weighed(np.arange(power.size))]
     done: list[np.ndarray] = []  # classes of equal entries
@@ -88,7 +93,7 @@ def class_labels(
             return label
         # The error falls with the number of classes, or its square; a step that seldom has to be repeated.
         more = worst * 100 / (bound_pct * energy)
-        classes = int(len(total) * min(2.0, max(1.1, more ** (0.9 if current_limits else 0.5)))) + 1
+        classes = int(len(total) * min(1.4, max(1.1, more ** (0.9 if current_limits else 0.5)))) + 1
 
 
 def _largest_gap(x: np.ndarray, weight: np.ndarray, x_class: np.ndarray, weight_class: np.ndarray) -> float:
