@@ -36,7 +36,7 @@ def fit(
     why: Annotated[bool, typer.Option("--why", help="Say of the records without option what stops them and what would change that.")] = False,
     limit: Annotated[int, typer.Option(metavar="N", min=1, help="Options shown on screen.")] = 20,
     json: Annotated[bool, typer.Option("--json", help="Print the document ferrule.fit/1 instead of tables.")] = False,
-    out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file: .csv or .json.")] = None,
+    out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file; its ending decides the form: .csv, .xlsx, .json or .html.")] = None,
     site: SiteOption = None,
     low: LowOption = None,
     high: HighOption = None,
@@ -84,7 +84,7 @@ def fit(
     from cli import fit_screen, fit_files
 
     if out is not None:
-        fit_files.write(found, out, year.weather, with_checks=checks or not request.every, why=why)
+        fit_files.write(found, out, year, with_checks=checks or not request.every, why=why)
     if json:
         fit_files.print_document(found, year.weather, with_checks=checks or not request.every, why=why)
     elif out is None or fit_screen.on_terminal():

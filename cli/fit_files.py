@@ -16,14 +16,17 @@ from cli.documents import inverter_key, module_key, write_fit
 from matcher.options import label
 
 if TYPE_CHECKING:
+    from cli.years import SiteYear
     from matcher.fit import Fit
     from matcher.options import Options
 
-FORMS = (".csv", ".json")
+FORMS = (".csv", ".json", ".xlsx", ".html")
 
 
-def write(fit: Fit, out: str, weather: str | None, *, with_checks: bool, why: bool) -> None:
+def write(fit: Fit, out: str, year: SiteYear, *, with_checks: bool, why: bool) -> None:
     """Write all options to a file.
+
+    Options may be gone through only once where an inverter has very many: a result is written to one file.
 
     Raises
     ------
@@ -33,10 +36,18 @@ def write(fit: Fit, out: str, weather: str | None, *, with_checks: bool, why: bo
     path = Path(out)
     form = path.suffix.lower()
     if form not in FORMS:
-        raise CatalogError(f"--out {out}: the ending decides the form, {' or '.join(FORMS)}")
-    with replacing(path) as stream:
-        if form == ".json":
-            write_fit(fit, stream, weather=weather, with_checks=with_checks, rejected=_rejected(fit, why))
+        raise CatalogError(f"--out {out}: the ending decides the form, {', '.join(FORMS[:-1])} or {FORMS[-1]}")
+    with replacing(path, binary=form == ".xlsx") as stream:
+        if form == ".xlsx":
+            from cli.workbook import write_workbook
+
+            write_workbook(fit, stream, year, with_checks=with_checks)
+        elif form == ".html":
+            from cli.report import write_report
+
+            write_report(fit, stream, year, why=why)
+        elif form == ".json":
+            write_fit(fit, stream, weather=year.weather, with_checks=with_checks, rejected=_rejected(fit, why))
         else:
             write_csv(fit, stream)
 
@@ -47,15 +58,15 @@ def print_document(fit: Fit, weather: str | None, *, with_checks: bool, why: boo
 
 
 @contextmanager
-def replacing(path: Path) -> Iterator[IO[str]]:
-    """A text file that takes the place of ``path`` only once it is whole."""
+def replacing(path: Path, binary: bool = False) -> Iterator[IO[Any]]:
+    """A file of UTF-8 text (or bytes) that takes the place of ``path`` only once it is whole."""
     folder = path.parent if str(path.parent) else Path()
     try:
         handle, name = tempfile.mkstemp(dir=folder, prefix=f".{path.name}.", suffix=".part")
     except OSError as error:
         raise CatalogError(f"{path}: {error.strerror}; choose another place with --out") from None
     try:
-        with os.fdopen(handle, "w", encoding="utf-8", newline="") as stream:
+        with os.fdopen(handle, "wb") if binary else os.fdopen(handle, "w", encoding="utf-8", newline="") as stream:
             yield stream
         os.chmod(name, 0o666 & ~_umask())
         os.replace(name, path)

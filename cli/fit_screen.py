@@ -24,10 +24,28 @@ def on_terminal() -> bool:
 
 def show(fit: Fit, year: SiteYear, *, limit: int, checks: bool, why: bool) -> None:
     """Print the answer."""
+    options = show_options(fit, year, limit)
+    if checks or fit.is_pair:
+        for option in options if checks else options[:1]:
+            say()
+            checks_table(fit, option)
+    if fit.is_pair and not options:
+        (_, reason), *_ = fit.rejections()
+        say(f"Stopped by {', '.join(reason.failed)}: {reason.nearest}.")
+    elif why:
+        _why_table(fit, limit)
+    elif not options:
+        say("--why says what stops each of them, and what would change that.")
+    say()
+    show_grounds(fit, year)
+
+
+def show_options(fit: Fit, year: SiteYear, limit: int) -> list[Option]:
+    """Print question, answer, the first options and what to confirm of them; return these options."""
     say(question(fit))
     say()
     options = list(fit.options(limit))
-    say(_answer(fit, options))
+    say(answer(fit, options))
     if options:
         say(f"Order: {fit.order}.")
         say()
@@ -37,18 +55,11 @@ def show(fit: Fit, year: SiteYear, *, limit: int, checks: bool, why: bool) -> No
             say(f"... and {more:,} more (--limit N shows more, --out FILE.csv holds all of them).")
             say()
         _confirm_lines(fit, options)
-        if checks or fit.is_pair:
-            for option in options if checks else options[:1]:
-                say()
-                _checks_table(fit, option)
-    if fit.is_pair and not options:
-        (_, reason), *_ = fit.rejections()
-        say(f"Stopped by {', '.join(reason.failed)}: {reason.nearest}.")
-    elif why:
-        _why_table(fit, limit)
-    elif not options:
-        say("--why says what stops each of them, and what would change that.")
-    say()
+    return options
+
+
+def show_grounds(fit: Fit, year: SiteYear) -> None:
+    """Print what the answer rests on, and the cautions."""
     for line in year.notes or (f"No clipping figure: {year.why_not}.",):
         say(line)
     if year.year is not None:
@@ -86,19 +97,20 @@ def _span(counts: tuple[int, int]) -> str:
     return str(counts[0]) if counts[0] == counts[1] else f"{counts[0]} to {counts[1]}"
 
 
-def _answer(fit: Fit, options: Sequence[Option]) -> str:
+def answer(fit: Fit, options: Sequence[Option]) -> str:
+    """What came out, as a sentence; ``options`` are the first ones."""
     t = fit.totals
     if not t.arrangements:
         return "Nothing fits."
     ways = f"{t.arrangements:,} arrangement{'s' if t.arrangements != 1 else ''}"
     if fit.is_pair:
-        answer = f"In {ways}."
+        words = f"In {ways}."
     else:
         side = "inverters" if fit.lists_inverters else "modules"
-        answer = f"{t.records_with_option:,} of {t.records_considered:,} {side}, in {ways}."
+        words = f"{t.records_with_option:,} of {t.records_considered:,} {side}, in {ways}."
     if options and options[0].verdict is Verdict.TO_CONFIRM:
-        answer += " None is proven by the ratings on record: each waits for the values named below the table."
-    return answer
+        words += " None is proven by the ratings on record: each waits for the values named below the table."
+    return words
 
 
 def _number_listed(fit: Fit) -> int:
@@ -224,7 +236,8 @@ def _shared(fit: Fit, waiting: Sequence[Option]) -> list[str]:
     return [f"{name}: {confirm_words(c)} (for all of the above)" for c in need.values()]
 
 
-def _checks_table(fit: Fit, option: Option) -> None:
+def checks_table(fit: Fit, option: Option) -> None:
+    """Print every check of one option."""
     say(f"Checks of #{option.rank}: {fit.modules[option.module].name}, {option.label} on"
         f" {fit.inverters[option.inverter].name}")  # fmt: skip
     columns = [Column("check"), Column("value", number=True), Column("limit", number=True), Column("unit"),
