@@ -1,0 +1,159 @@
+"""``ferrule demo``: an invented distributor's question, answered end to end on a catalog of its own."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING, Annotated
+
+import typer
+
+from catalog.errors import CatalogError
+
+if TYPE_CHECKING:
+    from catalog.records import Site
+    from catalog.store import Catalog
+    from matcher.fit import Fit, Option
+
+#: The question: modules that are left in the hall, for an order from this place.
+MODULE = "Marzipan Photovoltaik Klassik 270P"
+SITE = "Butterfield Barn"
+COUNT = "24"
+UNITS = "1..3"
+RATIO = "0.8..1.5"
+CLIP_CAP_PCT = 2.0
+RULES = "iec-62548"
+ORDER = "least-inverter"
+
+SHEETS = ("modules.toml", "inverters.csv")
+SITES = "sites.toml"
+
+
+def demo(
+    keep: Annotated[str | None, typer.Option(metavar="FILE", help="Make the demo's catalog here; it must not exist yet.")] = None,
+) -> None:
+    """Show what Ferrule does, on an invented distributor's shelf.
+
+    Makes a catalog of its own (anew each time; your own catalog is not touched), loads invented datasheets and
+    sites, and answers a buyer's question.
+
+    Example: ferrule demo
+    """
+    path = _fresh(keep)
+    from catalog.store import Catalog
+
+    with Catalog.open(path, create=True) as catalog:
+        _stock_shelf(catalog)
+        _answer(catalog, path)
+
+
+def _fresh(keep: str | None) -> Path:
+    """Where the demo's catalog is made; one that an earlier demo has made there gives way."""
+    if keep is not None:
+        path = Path(keep).expanduser()
+        if path.exists():
+            raise CatalogError(f"--keep {keep}: this file exists; name one that does not, the demo overwrites nothing")
+        return path
+    from platformdirs import user_data_dir
+
+    path = Path(user_data_dir("ferrule", appauthor=False), "demo.sqlite")
+    path.unlink(missing_ok=True)
+    return path
+
+
+def _stock_shelf(catalog: Catalog) -> None:
+    """Load the demo's datasheets and sites."""
+    import seed_catalog
+    from catalog.sheetfiles import read_sheets
+
+    files = [read_sheets(seed_catalog.path(name)) for name in SHEETS]
+    catalog.load([m for f in files for m in f.modules], [i for f in files for i in f.inverters])
+    for site in _sites(seed_catalog.path(SITES)):
+        catalog.add_site(site)
+
+
+def _sites(path: Path) -> list[Site]:
+    import tomllib
+
+    from catalog.records import Site
+
+    with path.open("rb") as file:
+        return [Site(**entry) for entry in tomllib.load(file)["site"]]
+
+
+def _answer(catalog: Catalog, path: Path) -> None:
+    """Search as ``ferrule fit`` does, and say it all."""
+    from cli import fit_screen
+    from cli.asking import request_of
+    from cli.choosing import choose_module
+    from cli.console import say
+    from cli.years import site_year
+    from matcher.fit import fit as search
+
+    site = catalog.site(SITE)
+    module = choose_module(catalog, MODULE)
+    inverters = catalog.inverters()
+    request = request_of(site, RATIO, COUNT, CLIP_CAP_PCT, RULES, False, ORDER, False, UNITS)
+    year = site_year(catalog, site, module)
+    found = search([module], inverters, request, year.year)
+
+    say(
+        f"The demo: an invented distributor, with {len(catalog.names('module'))} types of modules and {len(inverters)} of"
+        f" inverters on the shelf. {COUNT} {module.name} are left in the hall, and a customer at {site.name} would take"
+        " them all. The buyer asks:"
+    )
+    say()
+    options = fit_screen.show_options(found, year, limit=10)
+    say()
+    say(_in_short(found, options))
+    say()
+    fit_screen.checks_table(found, options[0])
+    _say_misses(found)
+    say()
+    fit_screen.show_grounds(found, year)
+    say()
+    _say_next(path)
+
+
+def _in_short(found: Fit, options: Sequence[Option]) -> str:
+    """The answer as one would give it on the telephone."""
+    best = options[0]
+    steady = min(options, key=lambda o: (o.verdict is not best.verdict, o.units, o.rank))
+    said = f"In short: order {_ordered(found, best)}, the least inverter that does the work"
+    if steady is not best:
+        said += f"; or {_ordered(found, steady)}, if it is to be a single one"
+    waiting = next((o for o in options if o.confirm), None)
+    if waiting is not None:
+        said += f". Pay for #{waiting.rank} only once its datasheet gives the values above"
+    return f"{said}."
+
+
+def _ordered(found: Fit, option: Option) -> str:
+    from cli.fit_screen import wiring
+
+    wired = wiring(option).rpartition(": ")[2]
+    loss = "" if option.clipping_loss_pct is None else f", {option.clipping_loss_pct:.2f} % clipped"
+    return f"{option.units} x {found.inverters[option.inverter].name} with {wired}{' each' * (option.units > 1)}{loss}"
+
+
+def _say_misses(found: Fit) -> None:
+    """Why the others are not in the list: the nearest that a rating stops."""
+    from cli.console import say
+
+    stopped = [(found.inverters[k].name, r) for k, r in found.rejections() if r.failed[0] != "ratio-window"]
+    for name, reason in stopped[:1]:
+        say(f"Not in the list, for example: {name}, stopped by {', '.join(reason.failed)}: {reason.nearest}.")
+
+
+def _say_next(path: Path) -> None:
+    """Commands to go on with, ready to be copied: not wrapped."""
+    from cli.console import say
+
+    where = f'--catalog "{path}"'
+    say("Go on from here; 'ferrule sheet load cec' loads the public tables into a catalog of your own:")
+    for line in (
+        f'ferrule fit -m "klassik 270p" --site "{SITE}" --count {COUNT} --units {UNITS} --why {where}',
+        f'ferrule fit -m "klassik 270p" -i "viola 5" --low -12 --high 37 {where}',
+        f'ferrule sheet show "old faithful 4.6" {where}',
+    ):
+        print(f"  {line}")
