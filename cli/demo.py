@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
@@ -27,6 +28,7 @@ ORDER = "least-inverter"
 
 SHEETS = ("modules.toml", "inverters.csv")
 SITES = "sites.toml"
+STOCK = "stock.csv"
 
 
 def demo(
@@ -97,15 +99,17 @@ def _answer(catalog: Catalog, path: Path) -> None:
     year = site_year(catalog, site, module)
     found = search([module], inverters, request, year.year)
 
+    shelf = _shelf()
+    left = shelf[MODULE]
     say(
-        f"The demo: an invented distributor, with {len(catalog.names('module'))} types of modules and {len(inverters)} of"
-        f" inverters on the shelf. {COUNT} {module.name} are left in the hall, and a customer at {site.name} would take"
-        " them all. The buyer asks:"
+        f"The demo: Loam & Lantern, an invented distributor, has {len(catalog.names('module'))} types of modules and"
+        f" {len(inverters)} of inverters. {left.quantity} {module.name} are left ({left.place}), and a customer at"
+        f" {site.name} would take {COUNT} of them. The buyer asks:"
     )
     say()
     options = fit_screen.show_options(found, year, limit=10)
     say()
-    say(_in_short(found, options))
+    say(_in_short(found, options, shelf))
     say()
     fit_screen.checks_table(found, options[0])
     _say_misses(found)
@@ -115,25 +119,59 @@ def _answer(catalog: Catalog, path: Path) -> None:
     _say_next(path)
 
 
-def _in_short(found: Fit, options: Sequence[Option]) -> str:
-    """The answer as one would give it on the telephone."""
-    best = options[0]
-    steady = min(options, key=lambda o: (o.verdict is not best.verdict, o.units, o.rank))
-    said = f"In short: order {_ordered(found, best)}, the least inverter that does the work"
-    if steady is not best:
-        said += f"; or {_ordered(found, steady)}, if it is to be a single one"
-    waiting = next((o for o in options if o.confirm), None)
-    if waiting is not None:
-        said += f". Pay for #{waiting.rank} only once its datasheet gives the values above"
-    return f"{said}."
+@dataclass(frozen=True, slots=True)
+class _Lot:
+    """How many of a type lie where, at what price."""
+
+    quantity: int
+    unit_price: float
+    currency: str
+    place: str
 
 
-def _ordered(found: Fit, option: Option) -> str:
-    from cli.fit_screen import wiring
+def _shelf() -> dict[str, _Lot]:
+    """The demo's stock by name of the record; what could not be read has none."""
+    import csv
 
-    wired = wiring(option).rpartition(": ")[2]
-    loss = "" if option.clipping_loss_pct is None else f", {option.clipping_loss_pct:.2f} % clipped"
-    return f"{option.units} x {found.inverters[option.inverter].name} with {wired}{' each' * (option.units > 1)}{loss}"
+    import seed_catalog
+
+    with seed_catalog.path(STOCK).open(encoding="utf-8", newline="") as file:
+        return {
+            row["record"]: _Lot(int(row["quantity"]), float(row["unit_price"]), row["currency"], row["place"])
+            for row in csv.DictReader(file)
+            if row["record"]
+        }
+
+
+def _in_short(found: Fit, options: Sequence[Option], shelf: Mapping[str, _Lot]) -> str:
+    """The answer as one would give it on the telephone: the least inverter, the least money, the doubtful bargain."""
+    in_stock = [o for o in options if o.units <= shelf[_name(found, o)].quantity]
+    proven = [o for o in in_stock if not o.confirm]
+    least = min(proven, key=lambda o: _cost(found, o, shelf))
+    said = f"In short: the least inverter that does the work is {_ordered(found, options[0], shelf)}."
+    if least is not options[0]:
+        said += f" The least money is {_ordered(found, least, shelf)}."
+    bargain = min(in_stock, key=lambda o: _cost(found, o, shelf))
+    if bargain.confirm:
+        said += (
+            f" Cheaper still is {_ordered(found, bargain, shelf)}: do not pay before its datasheet has given the values"
+            " above, a wrong guess burns it."
+        )
+    return said
+
+
+def _name(found: Fit, option: Option) -> str:
+    return found.inverters[option.inverter].name
+
+
+def _cost(found: Fit, option: Option, shelf: Mapping[str, _Lot]) -> float:
+    return option.units * shelf[_name(found, option)].unit_price
+
+
+def _ordered(found: Fit, option: Option, shelf: Mapping[str, _Lot]) -> str:
+    lot = shelf[_name(found, option)]
+    price = f"{_cost(found, option, shelf):,.0f} {lot.currency}"
+    return f"#{option.rank}, {option.units} x {_name(found, option)} ({price}, {lot.quantity} on the shelf)"
 
 
 def _say_misses(found: Fit) -> None:
