@@ -32,6 +32,7 @@ import io
 import json
 import re
 import tempfile
+import warnings
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -84,7 +85,9 @@ def raw_year(content: bytes, where: str) -> RawYear:
             f"line 1 begins {text.lstrip().splitlines()[0][:40]!r}"
         )
     try:
-        raw = read(text)
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")  # of pandas about pvlib's readers; what is wrong is found below
+            raw = read(text)
     except MatcherError as error:
         raise MatcherError(f"{where}: {error}") from None
     except Exception as error:  # whatever the reader stumbles over: the file is not what its head says

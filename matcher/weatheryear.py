@@ -32,7 +32,12 @@ def year_of(raw: RawYear, where: str) -> Weather:
     MatcherError
         One line, with what to mend.
     """
+    import numpy as np
+
     data, notes = raw.data, list(raw.notes)
+    if data.index.hasnans:
+        row = int(np.flatnonzero(data.index.isna())[0])
+        raise MatcherError(f"{where}: row {row + 1} of the data has no time; the file is cut, fetch it again")
     data.index = _calendar(data.index)
     _check_order(data.index, raw.interval_hours, where)
     _check_temperature(data["temp_air"].to_numpy(), where)
