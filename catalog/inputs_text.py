@@ -1,7 +1,8 @@
-"""Groups of inputs as one line that reads like a datasheet: ``2 trackers: 2 strings, 26 A, Isc 32 A | 1 tracker: 13 A``.
+"""Groups of inputs as one line that reads like a datasheet.
 
-Groups are parted by ``|``. After the number of trackers stands what is known of one tracker: strings, operating
-current, short-circuit current (with ``Isc`` before it), power. What is left out is not known.
+``2 trackers: 2 strings, 26 A, Isc 32 A | 1 tracker: 13 A``: groups are parted by ``|``. After the number of
+trackers stands what is known of one tracker: strings, operating current, short-circuit current (with ``Isc``
+before it), power. What is left out is not known.
 """
 
 from __future__ import annotations
@@ -16,7 +17,7 @@ EXAMPLE = "2 trackers: 2 strings, 26 A, Isc 32 A | 1 tracker: 1 string, 13 A"
 
 _NUMBER = r"(\d+(?:\.\d+)?(?:e[+-]?\d+)?)"
 _ITEMS = (
-    ("strings_per_tracker", re.compile(r"(\d+) ?strings?"), int),
+    ("strings_per_tracker", re.compile(r"(\d{1,9}) ?strings?"), int),
     ("max_isc_a", re.compile(rf"isc {_NUMBER} ?a"), float),
     ("max_current_a", re.compile(rf"{_NUMBER} ?a"), float),
     ("max_power_w", re.compile(rf"{_NUMBER} ?w"), float),
@@ -64,7 +65,7 @@ def parse_inputs(text: str) -> tuple[Inputs, ...]:
 
 def _parse_group(text: str) -> Inputs:
     head, _, tail = text.partition(":")
-    trackers = re.fullmatch(r"(\d+) ?trackers?", head.strip().casefold())
+    trackers = re.fullmatch(r"(\d{1,9}) ?trackers?", head.strip().casefold())
     if not trackers:
         raise CatalogError(f"{text!r} does not begin with a number of trackers; write it like '{EXAMPLE}'")
     found: dict[str, float] = {}

@@ -1,8 +1,8 @@
-"""Plausibility of a record's values: what is impossible is refused on every way in, what is odd is kept and flagged.
+"""Plausibility of a record's values: what is impossible is refused, what is odd is kept and flagged.
 
-The possible range of a single value stands with the field (`catalog.records`); how values go together stands in
-`catalog.plausible_modules` and `catalog.plausible_inverters`, one rule each. Rules work on columns, so that a whole
-table is checked in a fraction of a second; one record is a table of one row.
+The possible range of a single value stands with the field (`catalog.records`); how values go together
+stands in `catalog.plausible_modules` and `catalog.plausible_inverters`, one rule each. Rules work on columns,
+so that a whole table is checked in a fraction of a second; one record is a table of one row.
 """
 
 from __future__ import annotations
@@ -17,7 +17,10 @@ from catalog.records import FieldSpec, Inputs, Inverter, Module, specs
 
 @dataclass(frozen=True, slots=True)
 class Finding:
-    """One value, or one set of values, that cannot be or is unusual. ``message`` names values and a likely mend."""
+    """A value, or a set of values, that cannot be or is unusual.
+
+    ``message`` names the values and a likely mend.
+    """
 
     field: str
     severity: Severity

@@ -45,9 +45,9 @@ class Columns:
 class Rule:
     """How values go together.
 
-    ``broken`` marks the rows that break the rule; a comparison with a value that is not stated is false, so an
-    unknown value breaks none, and neither does one that is impossible by itself. ``message`` is asked for the marked
-    rows only.
+    ``broken`` marks the rows that break the rule; a comparison with a value that is not stated is false, so
+    an unknown value breaks none, and neither does one that is impossible by itself. ``message`` is asked for
+    the marked rows only.
     """
 
     field: str

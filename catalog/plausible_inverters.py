@@ -1,4 +1,7 @@
-"""How the values of an inverter go together. The bounds of what is usual hold for the CEC inverter table of 2019."""
+"""How the values of an inverter go together.
+
+The bounds of what is usual hold for the CEC inverter table of 2019.
+"""
 
 from __future__ import annotations
 
@@ -23,7 +26,8 @@ def odd_inputs(groups: Sequence[Inputs]) -> list[str]:
             and group.max_isc_a < group.max_current_a
         ):
             found.append(
-                f"max_isc_a {group.max_isc_a:g} A of a tracker is below its max_current_a {group.max_current_a:g} A:"
+                f"max_isc_a {group.max_isc_a:g} A of a tracker is below its max_current_a"
+                f" {group.max_current_a:g} A:"
                 " see whether the two are swapped"
             )
     ratings = [(g.strings_per_tracker, g.max_current_a, g.max_isc_a, g.max_power_w) for g in groups]
@@ -38,7 +42,10 @@ def odd_inputs(groups: Sequence[Inputs]) -> list[str]:
 
 def _parts_message(i: Inverter) -> str:
     missing = [name for name in SANDIA_PARAMETERS if getattr(i, name) is None]
-    return f"the Sandia parameters are incomplete, {', '.join(missing)} missing: they serve only together; enter all or none"
+    return (
+        f"the Sandia parameters are incomplete, {', '.join(missing)} missing:"
+        " they serve only together; enter all or none"
+    )
 
 
 def _highest_efficiency(x: Columns | Inverter) -> np.ndarray | float:
@@ -70,7 +77,8 @@ RULES: tuple[Rule, ...] = (
         "impossible",
         lambda c: c.mppt_low_v >= c.mppt_high_v,
         lambda i: (
-            f"mppt_low_v {i.mppt_low_v:g} V is not below mppt_high_v {i.mppt_high_v:g} V: see whether the two are swapped"
+            f"mppt_low_v {i.mppt_low_v:g} V is not below mppt_high_v {i.mppt_high_v:g} V: see whether the"
+            " two are swapped"
         ),
     ),
     Rule(
@@ -87,7 +95,8 @@ RULES: tuple[Rule, ...] = (
         "impossible",
         lambda c: c.start_voltage_v > c.max_dc_voltage_v,
         lambda i: (
-            f"start_voltage_v {i.start_voltage_v:g} V is above max_dc_voltage_v {i.max_dc_voltage_v:g} V: check both"
+            f"start_voltage_v {i.start_voltage_v:g} V is above max_dc_voltage_v {i.max_dc_voltage_v:g} V:"
+            " check both"
         ),
     ),
     Rule(
@@ -95,7 +104,8 @@ RULES: tuple[Rule, ...] = (
         "odd",
         lambda c: (c.start_voltage_v > c.mppt_high_v) & ~(c.start_voltage_v > c.max_dc_voltage_v),
         lambda i: (
-            f"start_voltage_v {i.start_voltage_v:g} V is above the MPPT window ({i.mppt_low_v:g} to {i.mppt_high_v:g} V)"
+            f"start_voltage_v {i.start_voltage_v:g} V is above the MPPT window ({i.mppt_low_v:g} to"
+            f" {i.mppt_high_v:g} V)"
         ),
     ),
     Rule(
@@ -109,7 +119,8 @@ RULES: tuple[Rule, ...] = (
         "impossible",
         lambda c: c.max_array_power_w < 0.01 * c.ac_power_w,
         lambda i: (
-            f"max_array_power_w {i.max_array_power_w:g} W is next to nothing against ac_power_w {i.ac_power_w:g} W:"
+            f"max_array_power_w {i.max_array_power_w:g} W is next to nothing against ac_power_w"
+            f" {i.ac_power_w:g} W:"
             " both are in W, not kW"
         ),
     ),
@@ -121,7 +132,8 @@ RULES: tuple[Rule, ...] = (
             | (c.max_array_power_w > 3 * c.ac_power_w)
         ),
         lambda i: (
-            f"max_array_power_w {i.max_array_power_w:g} W is unusual for ac_power_w {i.ac_power_w:g} W (1 to 3 times as much)"
+            f"max_array_power_w {i.max_array_power_w:g} W is unusual for ac_power_w {i.ac_power_w:g} W (1"
+            " to 3 times as much)"
         ),
     ),
     Rule(
@@ -129,7 +141,8 @@ RULES: tuple[Rule, ...] = (
         "odd",
         lambda c: c.each(_power_taken) < c.ac_power_w,
         lambda i: (
-            f"all trackers together take {_power_taken(i):.0f} W at most, less than ac_power_w {i.ac_power_w:g} W:"
+            f"all trackers together take {_power_taken(i):.0f} W at most, less than ac_power_w"
+            f" {i.ac_power_w:g} W:"
             " check the number of trackers and their limits"
         ),
     ),
@@ -166,7 +179,8 @@ RULES: tuple[Rule, ...] = (
             & (c.Paco <= 2 * c.ac_power_w)
         ),
         lambda i: (
-            f"Paco {i.Paco:g} W and ac_power_w {i.ac_power_w:g} W are {100 * abs(i.Paco / i.ac_power_w - 1):.1f} % apart:"
+            f"Paco {i.Paco:g} W and ac_power_w {i.ac_power_w:g} W are"
+            f" {100 * abs(i.Paco / i.ac_power_w - 1):.1f} % apart:"
             " see whether the Sandia parameters belong to another rating"
         ),
     ),
@@ -175,7 +189,8 @@ RULES: tuple[Rule, ...] = (
         "impossible",
         lambda c: c.Pdco <= c.Paco,
         lambda i: (
-            f"Pdco {i.Pdco:g} W is not above Paco {i.Paco:g} W, so more would come out than goes in: check both"
+            f"Pdco {i.Pdco:g} W is not above Paco {i.Paco:g} W, so more would come out than goes in: check"
+            " both"
         ),
     ),
     Rule(
@@ -183,7 +198,8 @@ RULES: tuple[Rule, ...] = (
         "odd",
         lambda c: c.Paco / c.Pdco < 0.8,
         lambda i: (
-            f"Paco over Pdco is {100 * i.Paco / i.Pdco:.1f} % efficiency at rated power, usual is 80 % and more"
+            f"Paco over Pdco is {100 * i.Paco / i.Pdco:.1f} % efficiency at rated power, usual is 80 % and"
+            " more"
         ),
     ),
     Rule(
@@ -191,7 +207,8 @@ RULES: tuple[Rule, ...] = (
         "impossible",
         lambda c: c.Pso >= c.Pdco,
         lambda i: (
-            f"Pso {i.Pso:g} W is not below Pdco {i.Pdco:g} W: Pso is the small power at which inversion starts"
+            f"Pso {i.Pso:g} W is not below Pdco {i.Pdco:g} W: Pso is the small power at which inversion"
+            " starts"
         ),
     ),
     Rule(
@@ -199,7 +216,8 @@ RULES: tuple[Rule, ...] = (
         "odd",
         lambda c: (c.Pso > 0.1 * c.Pdco) & (c.Pso < c.Pdco),
         lambda i: (
-            f"Pso {i.Pso:g} W is more than 10 % of Pdco {i.Pdco:g} W: it is the small power at which inversion starts"
+            f"Pso {i.Pso:g} W is more than 10 % of Pdco {i.Pdco:g} W: it is the small power at which"
+            " inversion starts"
         ),
     ),
     Rule(
@@ -207,7 +225,8 @@ RULES: tuple[Rule, ...] = (
         "impossible",
         lambda c: (c.Vdco > c.max_dc_voltage_v) | (c.Vdco == 0),
         lambda i: (
-            f"Vdco {i.Vdco:g} V is no voltage that the inverter works at (MPPT window {i.mppt_low_v:g} to {i.mppt_high_v:g} V)"
+            f"Vdco {i.Vdco:g} V is no voltage that the inverter works at (MPPT window {i.mppt_low_v:g} to"
+            f" {i.mppt_high_v:g} V)"
         ),
     ),
     Rule(

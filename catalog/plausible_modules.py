@@ -1,7 +1,7 @@
 """How the values of a module go together.
 
-The bounds of what is usual were set so that they hold for about 99 % of the CEC module table of 2019 within each
-technology, and widened for cells that came after it (higher voltage per cell, lower coefficients).
+The bounds of what is usual were set so that they hold for about 99 % of the CEC module table of 2019 within
+each technology, and widened for cells that came after it (higher voltage per cell, lower coefficients).
 """
 
 from __future__ import annotations
@@ -14,16 +14,16 @@ from catalog.records import SIX_PARAMETERS, Module
 if TYPE_CHECKING:
     import numpy as np
 
-# Vmp * Imp against Pmax. Rounding of Vmp to 0.1 V and of Imp to 0.01 A explains 1 %; the widest power tolerance that
-# datasheets print is 10 %. Beyond twice that, the values are of different conditions or types: values at 800 W/m2 and
-# NOCT, printed beside those at STC, make about 25 % less power.
+# Vmp * Imp against Pmax. Rounding of Vmp to 0.1 V and of Imp to 0.01 A explains 1 %; the widest tolerance
+# of power that datasheets print is 10 % (common practice, no source). Beyond twice that, the values are of different
+# conditions or types: values at 800 W/m2 and NOCT, printed beside those at STC, make about 25 % less power.
 POWER_ODD, POWER_IMPOSSIBLE = 0.03, 0.20
 
 # Fill factor of a straight line from Isc to Voc; the curve of a cell bulges outwards, so it cannot have less.
 LEAST_FILL_FACTOR = 0.25
 
-# Usual temperature coefficients in %/K, crystalline silicon and other cells. A negative coefficient of Isc is rare
-# (223 rows of the CEC table) and worth a second look with either.
+# Usual temperature coefficients in %/K, crystalline silicon and other cells. A negative coefficient of Isc is
+# rare (223 rows of the CEC table) and worth a second look with either.
 USUAL_COEFFICIENTS = {
     "voc_coef_pct": ((-0.45, -0.20), (-0.50, -0.15)),
     "isc_coef_pct": ((0.0, 0.15), (0.0, 0.20)),
@@ -74,7 +74,8 @@ def _efficiency(x: Columns | Module) -> np.ndarray | float:
 def _power_message(m: Module) -> str:
     product = m.vmp_v * m.imp_a
     return (
-        f"vmp_v * imp_a is {product:.4g} W and pmax_w is {m.pmax_w:g} W, {100 * abs(_power_gap(m)):.1f} % apart:"
+        f"vmp_v * imp_a is {product:.4g} W and pmax_w is {m.pmax_w:g} W, {100 * abs(_power_gap(m)):.1f} %"
+        " apart:"
         " take all three from the STC column of one type"
     )
 
@@ -96,7 +97,7 @@ def _parts_message(m: Module) -> str:
 
 
 def _parameters_miss(c: Columns) -> np.ndarray:
-    """Whether the single-diode parameters of a row miss its own Voc or maximum power point by more than 5 %."""
+    """Whether single-diode parameters miss Voc or the maximum power point of their row by more than 5 %."""
     import numpy as np
 
     def current(volt: np.ndarray, amp: np.ndarray) -> np.ndarray:
@@ -135,7 +136,8 @@ RULES: tuple[Rule, ...] = (
         "impossible",
         lambda c: _fill_factor(c) < LEAST_FILL_FACTOR,
         lambda m: (
-            f"vmp_v * imp_a over voc_v * isc_a is {_fill_factor(m):.2f}, less than a straight line from Isc to Voc"
+            f"vmp_v * imp_a over voc_v * isc_a is {_fill_factor(m):.2f}, less than a straight line from Isc"
+            " to Voc"
             f" has ({LEAST_FILL_FACTOR:g}): check voc_v {m.voc_v:g} V and isc_a {m.isc_a:g} A"
         ),
     ),
@@ -163,7 +165,8 @@ RULES: tuple[Rule, ...] = (
         "odd",
         lambda c: c.vmp_coef_pct > c.voc_coef_pct,
         lambda m: (
-            f"vmp_coef_pct {m.vmp_coef_pct:.4g} %/K is smaller in size than voc_coef_pct {m.voc_coef_pct:.4g} %/K,"
+            f"vmp_coef_pct {m.vmp_coef_pct:.4g} %/K is smaller in size than voc_coef_pct"
+            f" {m.voc_coef_pct:.4g} %/K,"
             " in percent Vmp falls faster than Voc: check which is which"
         ),
     ),
@@ -172,7 +175,8 @@ RULES: tuple[Rule, ...] = (
         "odd",
         lambda c: (c.noct_c < 40) | (c.noct_c > 56),
         lambda m: (
-            f"noct_c {m.noct_c:g} degC is unusual (40 to 56 degC): it is the cell's temperature at 800 W/m2 and 20 degC"
+            f"noct_c {m.noct_c:g} degC is unusual (40 to 56 degC): it is the cell's temperature at 800 W/m2"
+            " and 20 degC"
         ),
     ),
     Rule(
@@ -189,7 +193,8 @@ RULES: tuple[Rule, ...] = (
         "odd",
         lambda c: (c.bifacial == 0) & (c.bifaciality > 0),
         lambda m: (
-            f"bifaciality {m.bifaciality:g} is stated, yet the module is not marked bifacial: check which is right"
+            f"bifaciality {m.bifaciality:g} is stated, yet the module is not marked bifacial: check which"
+            " is right"
         ),
     ),
     Rule(
@@ -197,7 +202,8 @@ RULES: tuple[Rule, ...] = (
         "odd",
         lambda c: (c.bifacial == 1) & ((c.bifaciality < 0.4) | (c.bifaciality > 1.0)),
         lambda m: (
-            f"bifaciality {m.bifaciality:g} is unusual (0.4 to 1.0): it is the rear side's power over the front's"
+            f"bifaciality {m.bifaciality:g} is unusual (0.4 to 1.0): it is the rear side's power over the"
+            " front's"
         ),
     ),
     Rule(
@@ -222,7 +228,8 @@ RULES: tuple[Rule, ...] = (
         "odd",
         lambda c: c.max_series_fuse_a < c.isc_a,
         lambda m: (
-            f"max_series_fuse_a {m.max_series_fuse_a:g} A is below isc_a {m.isc_a:g} A: such a fuse melts in sunshine"
+            f"max_series_fuse_a {m.max_series_fuse_a:g} A is below isc_a {m.isc_a:g} A: such a fuse melts"
+            " in sunshine"
         ),
     ),
     Rule(
@@ -230,7 +237,8 @@ RULES: tuple[Rule, ...] = (
         "impossible",
         lambda c: _efficiency(c) > 0.5,
         lambda m: (
-            f"pmax_w over length_m * width_m is {100 * _efficiency(m):.0f} % efficiency, more than any cell has:"
+            f"pmax_w over length_m * width_m is {100 * _efficiency(m):.0f} % efficiency, more than any cell"
+            " has:"
             " check pmax_w and both lengths"
         ),
     ),
@@ -250,7 +258,8 @@ RULES: tuple[Rule, ...] = (
             "impossible",
             lambda c, name=name: getattr(c, name) == 0,
             lambda m, name=name: (
-                f"{name} is 0, and the single-diode model needs it above 0: leave it blank where it is not known"
+                f"{name} is 0, and the single-diode model needs it above 0: leave it blank where it is not"
+                " known"
             ),
         )
         for name in ("a_ref", "I_L_ref", "I_o_ref", "R_sh_ref")

@@ -1,8 +1,8 @@
 """From the entries of a datasheet file, whatever its form, to records; and from records to entries.
 
 An entry is one row or table with the fields of a record by name, and beside them: ``source`` and
-``source_revision``; ``entered``, ``derived`` and ``assumed``, lists of the fields whose value has that origin;
-``sources``, the documents of single values that come from another one than ``source``.
+``source_revision``; ``entered``, ``derived`` and ``assumed``, lists of the fields whose value has that
+origin; ``sources``, the documents of single values that come from another one than ``source``.
 """
 
 from __future__ import annotations
@@ -232,7 +232,8 @@ def _note_defaults(records: Sequence[Module | Inverter], reading: Reading) -> No
     )
     if blank:
         reading.note(
-            f"no inputs are stated for {_some(blank, 'inverter')}, so one tracker is assumed; state them like '{EXAMPLE}'"
+            f"no inputs are stated for {_some(blank, 'inverter')}, so one tracker is assumed; state them"
+            f" like '{EXAMPLE}'"
         )
 
 

@@ -1,4 +1,4 @@
-"""What is gathered while a file of datasheets is read: its entries, its notes, and the place of every error."""
+"""What is gathered while a file of datasheets is read: entries, notes, and the place of every error."""
 
 from __future__ import annotations
 

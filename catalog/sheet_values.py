@@ -5,8 +5,10 @@ A number that can be read in two ways is refused and not guessed.
 
 from __future__ import annotations
 
+import math
 import re
 from dataclasses import dataclass
+from datetime import date
 from typing import Any
 
 from catalog.errors import CatalogError
@@ -32,8 +34,8 @@ _UNITS = {
 class DecimalSigns:
     """Which decimal signs the cells of one file have shown so far.
 
-    ``comma`` is the place of a decimal comma; ``point`` that of a number such as 1.500, which in a file with decimal
-    commas may be 1500 as well.
+    ``comma`` is the place of a decimal comma; ``point`` that of a number such as 1.500, which in a file with
+    decimal commas may be 1500 as well.
     """
 
     comma: str | None = None
@@ -48,7 +50,8 @@ class DecimalSigns:
         """
         if self.comma and self.point:
             raise CatalogError(
-                f"{self.point} may be thousands, as there are decimal commas ({self.comma}); use decimal points throughout"
+                f"{self.point} may be thousands, as there are decimal commas ({self.comma}); use decimal"
+                " points throughout"
             )
 
 
@@ -84,7 +87,7 @@ def value_of(cell: Any, spec: FieldSpec, signs: DecimalSigns, place: str = "") -
                     f"{cell!r} holds a line break or another character that cannot be printed; take it out"
                 )
             return cell
-        if isinstance(cell, int) and not isinstance(cell, bool):
+        if isinstance(cell, (int, date)) and not isinstance(cell, bool):
             return str(cell)
         raise CatalogError(f"{cell!r} is no text; put it in quotes")
     number = _number(cell, spec, signs, place)
@@ -106,7 +109,7 @@ def _flag(cell: Any) -> bool:
 
 def _number(cell: Any, spec: FieldSpec, signs: DecimalSigns, place: str) -> float:
     if isinstance(cell, (int, float)) and not isinstance(cell, bool):
-        return _finite(float(cell), cell)
+        return _finite(float(cell) if abs(cell) < 1e300 else math.inf, cell)
     if not isinstance(cell, str):
         raise CatalogError(f"{cell!r} is no number{_in(spec)}; write one or leave it out")
     text = _without_unit(cell.replace("\u2212", "-"), spec)
@@ -116,10 +119,8 @@ def _number(cell: Any, spec: FieldSpec, signs: DecimalSigns, place: str) -> floa
         return _finite(float(text), cell)
     if _DECIMAL_COMMA.fullmatch(text):
         if _MAYBE_THOUSANDS.fullmatch(text):
-            plain = text.replace(",", "")
-            raise CatalogError(
-                f"{cell!r} may be {text.replace(',', '.').rstrip('0').rstrip('.')} or {plain}; write one of them, without a comma"
-            )
+            plain, decimal = text.replace(",", ""), f"{float(text.replace(',', '.')):g}"
+            raise CatalogError(f"{cell!r} may be {decimal} or {plain}; write one of them, without a comma")
         signs.comma = signs.comma or f"{place}: {cell!r}"
         return float(text.replace(",", "."))
     raise CatalogError(_no_number(cell, text, spec))

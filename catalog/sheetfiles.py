@@ -1,7 +1,7 @@
 """Files of datasheets that a person can read and edit: CSV and TOML, to records and back.
 
-The ending of the file decides the form; the forms are described in `catalog.sheets_csv` and `catalog.sheets_toml`,
-the fields in `catalog.records`.
+The ending of the file decides the form; the forms are described in `catalog.sheets_csv` and
+`catalog.sheets_toml`, the fields in `catalog.records`.
 """
 
 from __future__ import annotations
@@ -43,8 +43,8 @@ def read_sheets(path: str | Path) -> SheetFile:
     Raises
     ------
     CatalogError
-        If the file cannot be read, or one of its values is missing, unreadable or impossible: one line with file,
-        row and field, and how to mend it.
+        If the file cannot be read, or one of its values is missing, unreadable or impossible: one line with
+        file, row and field, and how to mend it.
     """
     path = Path(path)
     ending = _ending(path, "reads")
@@ -97,7 +97,7 @@ def _text(path: Path, reading: Reading) -> str:
     if not data.strip():
         raise reading.fault("is empty; enter at least one module or inverter")
     if data.startswith((b"\xff\xfe", b"\xfe\xff")) or b"\0" in data:
-        raise reading.fault("is no UTF-8 text; save it as CSV in UTF-8")
+        raise reading.fault("is no UTF-8 text; save the file in UTF-8")
     try:
         return data.decode("utf-8-sig")
     except UnicodeDecodeError as problem:

@@ -1,8 +1,8 @@
 """Datasheets in a CSV file: one row per record, one column per field.
 
 Cells that hold more than one value: ``inputs`` (see `catalog.inputs_text`); ``entered``, ``derived`` and
-``assumed``, field names with blanks between; ``sources``, like ``max_dc_voltage_v = Installation manual [rev. 3]``,
-parted by ``|``. A backslash takes its meaning from a mark in a source's name.
+``assumed``, field names with blanks between; ``sources``, like ``max_dc_voltage_v = Installation manual
+[rev. 3]``, parted by ``|``. A backslash takes its meaning from a mark in a source's name.
 """
 
 from __future__ import annotations
@@ -63,7 +63,8 @@ def read_entries(text: str, reading: Reading) -> list[Entry]:
             continue
         if len(row) > len(heading) and any(cell.strip() for cell in row[len(heading) :]):
             raise reading.fault(
-                f"has {len(row)} cells, the heading has {len(heading)}; put a cell with the separator in it in quotes",
+                f"has {len(row)} cells, the heading has {len(heading)}; put a cell with the separator in it"
+                " in quotes",
                 where,
             )
         cells = {name: cell.strip() for name, cell in zip(columns, row) if name}

@@ -1,8 +1,8 @@
 """Datasheets in a TOML file: a table ``[[module]]`` or ``[[inverter]]`` per record, one key per field.
 
-``source`` and ``source_revision`` at the top of the file stand for records that name none. An inverter's ``inputs``
-are an array of tables; ``entered``, ``derived`` and ``assumed`` are arrays of field names; ``sources`` is a table of
-``{name, revision}`` by field name.
+``source`` and ``source_revision`` at the top of the file stand for records that name none. An inverter's
+``inputs`` are an array of tables; ``entered``, ``derived`` and ``assumed`` are arrays of field names;
+``sources`` is a table of ``{name, revision}`` by field name.
 """
 
 from __future__ import annotations

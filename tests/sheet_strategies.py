@@ -55,8 +55,8 @@ def _values(draw, base, free):
 def modules(draw):
     """Modules: the values at STC of one type, everything else free."""
     base = Module(
-        maker="a", model="b", technology=draw(words), bifacial=draw(st.booleans()), pmax_w=400.0, voc_v=45.6, isc_a=11.2,
-        vmp_v=37.9, imp_a=draw(st.floats(10.3, 10.8)),
+        maker="a", model="b", technology=draw(words), bifacial=draw(st.booleans()), pmax_w=400.0, voc_v=45.6,
+        isc_a=11.2, vmp_v=37.9, imp_a=draw(st.floats(10.3, 10.8)),
     )  # fmt: skip
     free = (
         "cells_in_series",

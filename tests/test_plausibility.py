@@ -1,4 +1,4 @@
-"""What is impossible is refused, what is odd is flagged, and what real tables hold is neither refused nor drowned in flags."""
+"""The impossible is refused, the odd is flagged, and real tables are neither refused nor drowned in flags."""
 
 from __future__ import annotations
 

@@ -1,4 +1,4 @@
-"""The demo's files: they read without a remark, their numbers hold together, and each bundle is what it is meant to be."""
+"""The demo: files read without a remark, numbers hold together, bundles teach what they should."""
 
 from __future__ import annotations
 

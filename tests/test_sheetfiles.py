@@ -1,4 +1,4 @@
-"""Datasheet files: nothing is lost on the way out and back, and what is wrong in them is told in one line that helps."""
+"""Datasheet files: nothing is lost on the way out and back, and every fault is told in one helpful line."""
 
 from __future__ import annotations
 
@@ -132,7 +132,8 @@ def test_csv_of_inverters(read):
 
 
 def test_both_kinds_in_one_table(read):
-    text = "kind,maker,model,technology,bifacial,pmax_w,voc_v,isc_a,vmp_v,imp_a,ac_power_w,mppt_low_v,mppt_high_v,source,assumed\n"
+    text = "kind,maker,model,technology,bifacial,pmax_w,voc_v,isc_a,vmp_v,imp_a,"
+    text += "ac_power_w,mppt_low_v,mppt_high_v,source,assumed\n"
     text += "module,Paper Sun,P-400,Mono-c-Si,no,400,45.6,11.2,37.9,10.56,,,,List,\n"
     text += ",Paper Grid,G-10,,,,,,,,10000,180,850,List,mppt_low_v\n"
     sheet = read(text)
@@ -222,6 +223,21 @@ def test_rows_are_numbered_as_a_spreadsheet_shows_them(refused):
 # ---- what is refused
 
 
+@settings(max_examples=150, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@given(st.data())
+def test_damaged_files_are_read_or_refused_in_one_line(tmp_path, data):
+    text, name = data.draw(st.sampled_from(((MODULES, "a.csv"), (INVERTERS, "a.csv"), (TOML, "a.toml"))))
+    letters = list(text)
+    for _ in range(data.draw(st.integers(1, 4))):
+        k = data.draw(st.integers(0, len(letters) - 1))
+        letters[k : k + data.draw(st.integers(0, 2))] = data.draw(st.text(max_size=2))
+    (tmp_path / name).write_bytes("".join(letters).encode("utf-8", "surrogatepass"))
+    try:
+        read_sheets(tmp_path / name)
+    except CatalogError as problem:
+        assert str(problem).startswith(str(tmp_path / name)) and "\n" not in str(problem)
+
+
 @pytest.mark.parametrize(
     ("old", "new", "place", "says"),
     [
@@ -283,6 +299,7 @@ def test_bad_inverters(refused, old, new, place, says):
     [
         ("10_000", "10,000", "a.toml", "no valid TOML"),
         ("10_000", '"ten"', "inverter 1 (Paper Grid G-10), ac_power_w", "is no number in W"),
+        ("10_000", "1" + "0" * 400, "ac_power_w", "is no number"),
         ("10_000", "true", "ac_power_w", "is no number in W"),
         ("trackers = 1", "trackers = 1.5", "inputs", "trackers: 1.5 is no whole number"),
         ("  trackers = 1\n", "", "inputs", "a group has no trackers"),
@@ -320,7 +337,7 @@ def test_several_impossible_rows_are_counted(refused):
         (b"", "is empty"),
         (b" \n\n", "is empty"),
         (MODULES.splitlines()[0].encode(), "no rows"),
-        (MODULES.encode("utf-16"), "save it as CSV in UTF-8"),
+        (MODULES.encode("utf-16"), "save the file in UTF-8"),
         (
             changed(MODULES, "Paper Sun,P-405", "Papier Sonne \u00dc,P-405").encode("latin-1"),
             "line 3: has a character that is not UTF-8",
