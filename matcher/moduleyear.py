@@ -106,7 +106,7 @@ def plane_year(weather: Weather, tilt: float, azimuth: float) -> PlaneYear:
         total = get_total_irradiance(
             tilt, azimuth, zenith, sun_azimuth,
             dni=weather.dni[rows], ghi=weather.ghi[rows], dhi=weather.dhi[rows],
-            dni_extra=get_extra_radiation(weather.times[rows].dayofyear.to_numpy()),
+            dni_extra=get_extra_radiation(weather.times[rows].day_of_year.to_numpy()),
             albedo=ALBEDO, model="haydavies",
         )["poa_global"]  # fmt: skip
         total = np.asarray(total)
