@@ -14,9 +14,9 @@ from catalog.records import SIX_PARAMETERS, Module
 if TYPE_CHECKING:
     import numpy as np
 
-# Vmp * Imp against Pmax. Rounding of Vmp to 0.1 V and of Imp to 0.01 A explains 1 %; the widest tolerance
-# of power that datasheets print is 10 % (common practice, no source). Beyond twice that, the values are of different
-# conditions or types: values at 800 W/m2 and NOCT, printed beside those at STC, make about 25 % less power.
+# Vmp * Imp against Pmax. Rounding of Vmp to 0.1 V and of Imp to 0.01 A explains 1 %; the widest tolerance of
+# power that datasheets print is 10 % (common practice, no source). Beyond twice that, the values are of
+# different conditions or types: values at 800 W/m2 and NOCT, printed beside those at STC, make about 25 % less.
 POWER_ODD, POWER_IMPOSSIBLE = 0.03, 0.20
 
 # Fill factor of a straight line from Isc to Voc; the curve of a cell bulges outwards, so it cannot have less.

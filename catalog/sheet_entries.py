@@ -8,6 +8,7 @@ origin; ``sources``, the documents of single values that come from another one t
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from functools import cache
 from typing import Any
 
 from catalog.errors import CatalogError
@@ -151,6 +152,7 @@ def _inputs(entry: Entry, reading: Reading) -> tuple[Inputs, ...]:
     return tuple(found)
 
 
+@cache
 def _marked(type_: type) -> tuple[str, ...]:
     """Fields whose value has an origin and a source: all but the name."""
     return (

@@ -112,7 +112,9 @@ def _number(cell: Any, spec: FieldSpec, signs: DecimalSigns, place: str) -> floa
         return _finite(float(cell) if abs(cell) < 1e300 else math.inf, cell)
     if not isinstance(cell, str):
         raise CatalogError(f"{cell!r} is no number{_in(spec)}; write one or leave it out")
-    text = _without_unit(cell.replace("\u2212", "-"), spec)
+    text = cell.replace("\u2212", "-")
+    if not _NUMBER.fullmatch(text):
+        text = _without_unit(text, spec)
     if _NUMBER.fullmatch(text):
         if _MAYBE_THOUSANDS.fullmatch(text):
             signs.point = signs.point or f"{place}: {cell!r}"
