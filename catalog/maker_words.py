@@ -47,7 +47,8 @@ def named(left: list[Piece], words: list[str], text: SupplierText) -> tuple[int,
         for count in (4, 3, 2):  # words that the text splits or joins
             group = left[n : n + count]
             joined = "".join(p.folded for p in group)
-            if len(group) == count and len(joined) > 3 and joined in runs:
+            whole = not any("." in p.word.gap for p in group[1:])  # "Heli. Ene." is no "Heliene"
+            if whole and len(group) == count and len(joined) > 3 and joined in runs:
                 break
         else:
             count = 1

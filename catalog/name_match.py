@@ -170,7 +170,8 @@ def _unexplained(
             if joined or between:
                 doubts.append(p.raw)
         elif tradewords.is_in(p.raw, tradewords.CODES):
-            if inside or between or (beside and not _is_remark(p, after, shape, text)):
+            lone = scattered and len(p.raw) == 1
+            if inside or between or ((beside or lone) and not _is_remark(p, after, shape, text)):
                 doubts.append(p.raw)
         elif any(c.isdigit() for c in p.raw) or joined or (beside and len(p.raw) <= 3) or len(p.raw) == 1:
             doubts.append(p.raw)

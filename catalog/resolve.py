@@ -14,7 +14,7 @@ from typing import TYPE_CHECKING
 from catalog import namekeys
 from catalog.name_match import Match, match, place, placed_share
 from catalog.name_shape import Shape
-from catalog.supplier_text import AC_VOLTS, SupplierText
+from catalog.supplier_text import AC_VOLTS, SupplierText, mask
 from catalog.text_index import TextIndex
 
 if TYPE_CHECKING:
@@ -116,7 +116,7 @@ def _winner(matches: list[Match], read: SupplierText, texts: TextIndex) -> Match
 
 def _beats(a: Match, b: Match, read: SupplierText) -> bool:
     """Whether the text speaks for one match and not for the other."""
-    if b.told & ~a.told:
+    if b.told & ~a.told or (b.in_order and not a.in_order):
         return False
     more = a.told & ~b.told
     if more:
@@ -148,6 +148,9 @@ def _is_telling(m: Match) -> bool:
 def _is_contradicted(m: Match, read: SupplierText, texts: TextIndex) -> bool:
     """Whether the text names another voltage or power, or only a remark completes the name."""
     if m.core & read.remarks and (not m.in_order or texts.has_longer(m.shape.core)):
+        return True
+    untold = [w for w in read.words if not w.remark and not mask(w.start, w.end) & m.told]
+    if any(m.shape.core + w.folded in texts.by_core for w in untold):  # a suffix that strayed
         return True
     if m.in_order and texts.is_suffix(m.shape, read.word_after(m.core)):
         return True

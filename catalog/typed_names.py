@@ -133,8 +133,8 @@ def _is_slip(parts: Sequence[str], digits: str, model_key: str, maker: str) -> b
 def same_but_for_slips(typed: str, meant: str) -> bool:
     """Whether two compact words differ at most by small slips in their runs of letters, digits being equal.
 
-    A run of one letter must be the same (it tells types apart). In a run of two or three, two neighbours may be
-    turned ("fa" for "af"); in longer ones one slip of any kind is allowed, from eight letters on two.
+    A run of one letter must be the same (it tells types apart). In a run of two or three, two neighbours may
+    be turned ("fa" for "af"); in longer ones one slip of any kind, from eight letters on two.
     """
     from rapidfuzz.distance import OSA
 
