@@ -2,11 +2,21 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from pathlib import Path
+from typing import NamedTuple
 
 import pandas as pd
 import pvlib
 import pytest
+
+
+class Ran(NamedTuple):
+    """What a command did: exit status, stdout and stderr."""
+
+    status: int
+    out: str
+    err: str
 
 
 @pytest.fixture(scope="session")
@@ -35,3 +45,53 @@ def cec_inverters_csv(cec_inverters_path: Path) -> pd.DataFrame:
 
 def _cec_path(kind: str) -> Path:
     return max((Path(pvlib.__file__).parent / "data").glob(f"sam-library-cec-{kind}-*.csv"))
+
+
+@pytest.fixture(scope="session")
+def cec_catalog(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """A catalog with both public tables. It is shared: open it for reading, or copy it."""
+    from catalog.cec import read_cec_inverters, read_cec_modules
+    from catalog.store import Catalog
+
+    path = tmp_path_factory.mktemp("cec") / "cec.sqlite"
+    with Catalog.open(path, create=True) as catalog:
+        catalog.load(read_cec_modules(), read_cec_inverters())
+    return path
+
+
+@pytest.fixture
+def small_catalog(tmp_path: Path) -> Path:
+    """A catalog with two modules, two inverters and a site, all invented; the test may change it."""
+    from catalog_records import INVERTERS, MODULES, SITE
+
+    from catalog.store import Catalog
+
+    path = tmp_path / "small.sqlite"
+    with Catalog.open(path, create=True) as catalog:
+        catalog.load(MODULES, INVERTERS)
+        catalog.add_site(SITE)
+    return path
+
+
+@pytest.fixture
+def store_location(tmp_path: Path) -> str:
+    """Where a test of the store may make its catalog."""
+    return str(tmp_path / "catalog.sqlite")
+
+
+@pytest.fixture
+def ferrule(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
+) -> Callable[..., Ran]:
+    """Run a command line in this process; its catalog is that of `small_catalog`, if the test asks for one."""
+    from cli.main import run
+
+    monkeypatch.setenv("FERRULE_CATALOG", str(tmp_path / "small.sqlite"))
+    monkeypatch.setenv("XDG_DATA_HOME", str(tmp_path / "data"))
+
+    def ferrule(*arguments: object) -> Ran:
+        capsys.readouterr()
+        status = run([str(argument) for argument in arguments])
+        return Ran(status, *capsys.readouterr())
+
+    return ferrule

@@ -1,0 +1,159 @@
+"""The command as a whole: help, start-up, refusals, catalogs that cannot be used."""
+
+from __future__ import annotations
+
+import ctypes
+import os
+import re
+import shlex
+import subprocess
+import sys
+import tempfile
+from collections.abc import Iterator
+from pathlib import Path
+
+import pytest
+import typer
+
+from catalog.store import Catalog
+from cli.main import app
+
+ROOT = Path(__file__).parents[1]
+HEAVY = ("pvlib", "pandas", "scipy", "sqlmodel", "sqlalchemy", "numpy", "rapidfuzz")
+
+
+def in_a_shell(*arguments: object, python: tuple[str, ...] = (), **options) -> subprocess.CompletedProcess[str]:
+    """Run the command in a process of its own."""
+    command = [sys.executable, *python, "-m", "cli", *map(str, arguments)]
+    return subprocess.run(command, capture_output=True, text=True, cwd=ROOT, timeout=120, **options)
+
+
+def leaves(command=None, path: tuple[str, ...] = ()) -> Iterator[tuple[tuple[str, ...], object]]:
+    """Every command with its words."""
+    command = command or typer.main.get_command(app)
+    for name, sub in getattr(command, "commands", {}).items():
+        yield from leaves(sub, (*path, name))
+    if not hasattr(command, "commands"):
+        yield path, command
+
+
+LEAVES = dict(leaves())
+
+
+def imported(importtime: str) -> set[str]:
+    """Top-level packages in what ``python -X importtime`` tells."""
+    return {m[1] for m in re.finditer(r"\|\s+([\w]+)\S*$", importtime, re.MULTILINE)}
+
+
+def test_help_names_the_commands_and_imports_nothing_heavy():
+    ran = in_a_shell("--help", python=("-X", "importtime"))
+    assert ran.returncode == 0
+    assert all(command in ran.stdout for command in ("fit", "sheet", "site", "demo"))
+    assert imported(ran.stderr).isdisjoint(HEAVY)
+    assert "typer" in imported(ran.stderr), "the list of imports was not understood"
+
+
+def test_finding_a_record_waits_for_no_table_library(small_catalog):
+    ran = in_a_shell("sheet", "find", "af6k", "--catalog", small_catalog, python=("-X", "importtime"))
+    assert "AF6K-270P" in ran.stdout
+    assert imported(ran.stderr).isdisjoint({"pvlib", "pandas", "scipy", "sqlmodel", "sqlalchemy"})
+
+
+@pytest.mark.parametrize("words", LEAVES, ids=" ".join)
+def test_every_command_has_a_help_with_an_example_that_parses(words):
+    command = LEAVES[words]
+    example = re.search(r"Example: (ferrule .+?)(?:\n\n|\Z)", command.help or "", re.DOTALL)
+    assert example, "the help has no line 'Example: ferrule ...'"
+    typed = shlex.split(example[1])
+    assert tuple(typed[1 : 1 + len(words)]) == words
+    command.make_context(" ".join(words), typed[1 + len(words) :])
+
+
+@pytest.mark.parametrize(
+    ("typed", "near"),
+    [
+        (("sit", "list"), "site"),
+        (("sheet", "lod"), "load"),
+        (("fitt",), "fit"),
+        (("sheet", "find", "x", "--lmit", "3"), "--limit"),
+        (("fit", "--modul", "x"), "--module"),
+    ],
+)
+def test_an_unknown_word_names_the_near_one(ferrule, typed, near):
+    ran = ferrule(*typed)
+    assert ran.status == 2
+    assert near in ran.err
+    assert ran.err.startswith("ferrule: ") and ran.err.count("\n") == 1
+    assert not ran.out
+
+
+@pytest.mark.parametrize("typed", [("sheet", "show"), ("site", "add"), ("sheet", "find", "x", "--limit", "0")])
+def test_a_missing_or_impossible_argument_is_one_line(ferrule, typed):
+    ran = ferrule(*typed)
+    assert ran.status == 2
+    assert ran.err.startswith("ferrule: ") and ran.err.count("\n") == 1
+
+
+READING = [("sheet", "find", "x"), ("sheet", "show", "x"), ("site", "list"), ("site", "show", "x"), ("site", "drop", "x")]
+
+
+@pytest.mark.parametrize("typed", [*READING, ("fit", "-m", "x", "--low", "-5", "--high", "35")])
+def test_a_catalog_that_does_not_exist_is_named_and_not_made(ferrule, tmp_path, typed):
+    ran = ferrule(*typed)
+    assert ran.status == 2
+    assert "small.sqlite does not exist" in ran.err and "ferrule sheet load cec" in ran.err
+    assert not list(tmp_path.iterdir())
+
+
+@pytest.mark.parametrize("typed", [*READING, ("site", "add", "x", "--low", "-5", "--high", "35")])
+def test_a_damaged_catalog_is_one_line_and_left_alone(ferrule, tmp_path, typed):
+    damaged = tmp_path / "small.sqlite"
+    damaged.write_bytes(b"no catalog at all " * 300)
+    ran = ferrule(*typed)
+    assert ran.status == 2
+    assert "small.sqlite" in ran.err and "damaged" in ran.err and ran.err.count("\n") == 1
+    assert damaged.read_bytes() == b"no catalog at all " * 300
+
+
+@pytest.fixture
+def read_only_catalog(small_catalog) -> Iterator[Path]:
+    """A catalog that nobody may write, in a folder that nobody may write but root."""
+    with tempfile.TemporaryDirectory() as folder:
+        path = Path(folder, "catalog.sqlite")
+        path.write_bytes(small_catalog.read_bytes())
+        path.chmod(0o444)
+        Path(folder).chmod(0o555)
+        yield path
+        Path(folder).chmod(0o755)
+
+
+def heed_permissions() -> None:
+    """Take from root, in a new process, the power to write what is write-protected (Linux: capabilities(7))."""
+    if os.geteuid() == 0:
+        drop_from_bounding_set, dac_override = 24, 1  # of <linux/prctl.h> and <linux/capability.h>
+        assert ctypes.CDLL(None).prctl(drop_from_bounding_set, dac_override, 0, 0, 0) == 0
+
+
+def test_a_read_only_catalog_can_be_read_and_refuses_changes(read_only_catalog):
+    before = read_only_catalog.read_bytes()
+    found = in_a_shell("sheet", "find", "af6k", "--catalog", read_only_catalog, preexec_fn=heed_permissions)
+    assert found.returncode == 0, found.stderr
+    assert "AF6K-270P" in found.stdout
+    added = in_a_shell("site", "add", "x", "--low", "-5", "--high", "35", "--catalog", read_only_catalog, preexec_fn=heed_permissions)
+    assert added.returncode == 2
+    assert "read-only" in added.stderr and added.stderr.count("\n") == 1
+    assert read_only_catalog.read_bytes() == before
+
+
+def test_the_option_wins_over_the_environment(ferrule, small_catalog, tmp_path):
+    other = tmp_path / "other.sqlite"
+    with Catalog.open(other, create=True):
+        pass
+    assert ferrule("site", "list").out.count("Low Wharf") == 1
+    assert "No site is kept" in ferrule("site", "list", "--catalog", other).out
+
+
+def test_a_reader_that_closes_the_pipe_hears_no_complaint(small_catalog):
+    code = f"{shlex.quote(sys.executable)} -m cli sheet show af6k270p --catalog {shlex.quote(str(small_catalog))}"
+    ran = subprocess.run(["sh", "-c", f"{code} | true"], capture_output=True, text=True, cwd=ROOT, timeout=120)
+    assert ran.stderr == ""
