@@ -29,7 +29,8 @@ def check_records(records: Sequence[Module | Inverter]) -> None:
     refused = dict(_of_wrong_type(records))
     if not refused:
         for k, finding in by_severity(findings_of(records), "impossible"):
-            refused.setdefault(k, f"{finding.field}: {finding.message}")
+            named = finding.field in finding.message
+            refused.setdefault(k, finding.message if named else f"{finding.field}: {finding.message}")
     if refused:
         k = min(refused)
         more = len(refused) - 1

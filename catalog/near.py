@@ -20,11 +20,12 @@ def nearest(text: str, names: Iterable[str], limit: int = 3) -> str:
     from rapidfuzz import fuzz, process, utils
 
     names = list(names)
-    found = process.extract(
-        text, names, scorer=fuzz.WRatio, processor=utils.default_process, limit=limit, score_cutoff=60
+    alike = process.extract(
+        text, names, scorer=fuzz.WRatio, processor=utils.default_process, limit=None, score_cutoff=60
     )
+    found = sorted((name for name, _, _ in alike), key=lambda name: -fuzz.ratio(text, name))[:limit]
     if found:
-        return "; near to it: " + ", ".join(name for name, _, _ in found)
+        return "; near to it: " + ", ".join(found)
     if not names:
         return ""
     return "; there is " + ", ".join(names[:10]) + (", ..." if len(names) > 10 else "")
