@@ -32,12 +32,14 @@ STOCK = "stock.csv"
 
 
 def demo(
-    keep: Annotated[str | None, typer.Option(metavar="FILE", help="Make the demo's catalog here; it must not exist yet.")] = None,
+    keep: Annotated[
+        str | None, typer.Option(metavar="FILE", help="Make the demo's catalog here; it must not exist yet.")
+    ] = None,
 ) -> None:
     """Show what Ferrule does, on an invented distributor's shelf.
 
-    Makes a catalog of its own (anew each time; your own catalog is not touched), loads invented datasheets and
-    sites, and answers a buyer's question.
+    Makes a catalog of its own (anew each time; your own catalog is not touched), loads invented datasheets
+    and sites, and answers a buyer's question.
 
     Example: ferrule demo
     """
@@ -54,7 +56,9 @@ def _fresh(keep: str | None) -> Path:
     if keep is not None:
         path = Path(keep).expanduser()
         if path.exists():
-            raise CatalogError(f"--keep {keep}: this file exists; name one that does not, the demo overwrites nothing")
+            raise CatalogError(
+                f"--keep {keep}: this file exists; name one that does not, the demo overwrites nothing"
+            )
         return path
     from platformdirs import user_data_dir
 
@@ -102,9 +106,9 @@ def _answer(catalog: Catalog, path: Path) -> None:
     shelf = _shelf()
     left = shelf[MODULE]
     say(
-        f"The demo: Loam & Lantern, an invented distributor, has {len(catalog.names('module'))} types of modules and"
-        f" {len(inverters)} of inverters. {left.quantity} {module.name} are left ({left.place}), and a customer at"
-        f" {site.name} would take {COUNT} of them. The buyer asks:"
+        f"The demo: Loam & Lantern, an invented distributor, has {len(catalog.names('module'))} types of"
+        f" modules and {len(inverters)} of inverters. {left.quantity} {module.name} are left ({left.place}),"
+        f" and a customer at {site.name} would take {COUNT} of them. The buyer asks:"
     )
     say()
     options = fit_screen.show_options(found, year, limit=10)
@@ -144,7 +148,7 @@ def _shelf() -> dict[str, _Lot]:
 
 
 def _in_short(found: Fit, options: Sequence[Option], shelf: Mapping[str, _Lot]) -> str:
-    """The answer as one would give it on the telephone: the least inverter, the least money, the doubtful bargain."""
+    """The answer as one gives it on the telephone: least inverter, least money, doubtful bargain."""
     in_stock = [o for o in options if o.units <= shelf[_name(found, o)].quantity]
     proven = [o for o in in_stock if not o.confirm]
     least = min(proven, key=lambda o: _cost(found, o, shelf))
@@ -154,8 +158,8 @@ def _in_short(found: Fit, options: Sequence[Option], shelf: Mapping[str, _Lot]) 
     bargain = min(in_stock, key=lambda o: _cost(found, o, shelf))
     if bargain.confirm:
         said += (
-            f" Cheaper still is {_ordered(found, bargain, shelf)}: do not pay before its datasheet has given the values"
-            " above, a wrong guess burns it."
+            f" Cheaper still is {_ordered(found, bargain, shelf)}: do not pay before its datasheet has given"
+            " the values above, a wrong guess burns it."
         )
     return said
 

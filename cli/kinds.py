@@ -17,7 +17,9 @@ if TYPE_CHECKING:
 
 KINDS = ("module", "inverter")
 
-KindOption = Annotated[str | None, typer.Option("--kind", metavar="KIND", help="Only of this kind: module or inverter.")]
+KindOption = Annotated[
+    str | None, typer.Option("--kind", metavar="KIND", help="Only of this kind: module or inverter.")
+]
 
 
 @dataclass(frozen=True, slots=True)
@@ -59,8 +61,8 @@ def all_names(catalog: Catalog, kinds: Sequence[str]) -> AllNames:
     found = [(kind, named) for kind in kinds for named in catalog.names(kind)]
     if not found:
         raise CatalogError(
-            f"the catalog holds no {' and no '.join(kinds)}: load the public tables with 'ferrule sheet load cec', or"
-            " your own with 'ferrule sheet load FILE'"
+            f"the catalog holds no {' and no '.join(kinds)}: load the public tables with 'ferrule sheet load"
+            " cec', or your own with 'ferrule sheet load FILE'"
         )
     return AllNames(
         [Named(place, named.maker, named.model) for place, (_, named) in enumerate(found)],

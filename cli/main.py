@@ -16,6 +16,8 @@ app = typer.Typer(
     name="ferrule",
     help="Which PV modules and inverters go together, in which strings, how sure that is, and what it costs in clipping.",
     no_args_is_help=True,
+    # Plain help: markup would take a unit such as [degC] for a tag and drop it.
+    rich_markup_mode=None,
     context_settings={"help_option_names": ["--help", "-h"], "max_content_width": 100},
     pretty_exceptions_enable=False,
 )

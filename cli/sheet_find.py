@@ -19,7 +19,14 @@ NOTHING_FOUND = 1
 
 
 def find(
-    words: Annotated[list[str], typer.Argument(metavar="WORDS...", help="Words of maker and model, in any order; the last may be unfinished.", show_default=False)],  # noqa: E501
+    words: Annotated[
+        list[str],
+        typer.Argument(
+            metavar="WORDS...",
+            help="Words of maker and model, in any order; the last may be unfinished.",
+            show_default=False,
+        ),
+    ],
     kind: KindOption = None,
     limit: Annotated[int, typer.Option(metavar="N", min=1, help="Records shown.")] = 20,
     as_json: Annotated[bool, typer.Option("--json", help="Print the result as a document.")] = False,
@@ -116,8 +123,24 @@ _COLUMNS: dict[str, Callable[[], list[tuple[Column, Callable[[Any], str]]]]] = {
 }
 
 _RATINGS = {
-    "module": ("technology", "pmax_w", "voc_v", "isc_a", "vmp_v", "imp_a", "voc_coef_pct", "max_system_voltage_v"),
-    "inverter": ("ac_power_w", "ac_voltage_v", "mppt_low_v", "mppt_high_v", "max_dc_voltage_v", "weighted_efficiency_pct"),
+    "module": (
+        "technology",
+        "pmax_w",
+        "voc_v",
+        "isc_a",
+        "vmp_v",
+        "imp_a",
+        "voc_coef_pct",
+        "max_system_voltage_v",
+    ),
+    "inverter": (
+        "ac_power_w",
+        "ac_voltage_v",
+        "mppt_low_v",
+        "mppt_high_v",
+        "max_dc_voltage_v",
+        "weighted_efficiency_pct",
+    ),
 }
 
 

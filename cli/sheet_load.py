@@ -24,9 +24,27 @@ _REMARKS = 20
 
 
 def load(
-    what: Annotated[list[str], typer.Argument(metavar="cec|FILE...", help="The public CEC tables, or files of datasheets (.csv, .toml).", show_default=False)],  # noqa: E501
-    modules: Annotated[Path | None, typer.Option(metavar="FILE", help="With cec: this table of modules instead of the one that comes with pvlib.")] = None,  # noqa: E501
-    inverters: Annotated[Path | None, typer.Option(metavar="FILE", help="With cec: this table of inverters. With one of the two options, only that table is loaded.")] = None,  # noqa: E501
+    what: Annotated[
+        list[str],
+        typer.Argument(
+            metavar="cec|FILE...",
+            help="The public CEC tables, or files of datasheets (.csv, .toml).",
+            show_default=False,
+        ),
+    ],
+    modules: Annotated[
+        Path | None,
+        typer.Option(
+            metavar="FILE", help="With cec: this table of modules instead of the one that comes with pvlib."
+        ),
+    ] = None,
+    inverters: Annotated[
+        Path | None,
+        typer.Option(
+            metavar="FILE",
+            help="With cec: this table of inverters. With one of the two options, only that table is loaded.",
+        ),
+    ] = None,
     catalog: CatalogOption = None,
 ) -> None:
     """Load the public tables or your own datasheets: all or nothing, and safe to repeat.
@@ -64,11 +82,15 @@ def _read(what: list[str], modules: Path | None, inverters: Path | None) -> Shee
 
     if PUBLIC_TABLES in what:
         if len(what) > 1:
-            raise CatalogError(f"load {PUBLIC_TABLES} by itself, then the files (a file of that name: ./{PUBLIC_TABLES})")
+            raise CatalogError(
+                f"load {PUBLIC_TABLES} by itself, then the files (a file of that name: ./{PUBLIC_TABLES})"
+            )
         return _public(modules, inverters)
     if modules or inverters:
         option = "--modules" if modules else "--inverters"
-        raise CatalogError(f"{option} belongs to 'ferrule sheet load {PUBLIC_TABLES}'; name datasheet files without it")
+        raise CatalogError(
+            f"{option} belongs to 'ferrule sheet load {PUBLIC_TABLES}'; name datasheet files without it"
+        )
     files = [_file(Path(name)) for name in what]
     return SheetFile(
         [record for file in files for record in file.modules],
@@ -98,7 +120,9 @@ def _file(path: Path) -> SheetFile:
     kind = cec_kind(path) if path.suffix.casefold() == ".csv" else None
     if kind is None:
         if not path.exists() and not path.suffix:
-            raise CatalogError(f"{path}: no such file; write '{PUBLIC_TABLES}' for the public tables, or the path of a file")
+            raise CatalogError(
+                f"{path}: no such file; write '{PUBLIC_TABLES}' for the public tables, or the path of a file"
+            )
         return read_sheets(path)
     return _public(path, None) if kind == "module" else _public(None, path)
 

@@ -19,7 +19,9 @@ NOT_STATED = "not stated"
 
 
 def show(
-    name: Annotated[str, typer.Argument(metavar="NAME", help="Name of the module or inverter.", show_default=False)],
+    name: Annotated[
+        str, typer.Argument(metavar="NAME", help="Name of the module or inverter.", show_default=False)
+    ],
     kind: KindOption = None,
     at: Annotated[int | None, typer.Option(metavar="REV", min=1, help="As it was at this revision.")] = None,
     as_json: Annotated[bool, typer.Option("--json", help="Print the record as a document.")] = False,
@@ -35,7 +37,11 @@ def show(
 
         found, id_ = choose(opened, name, kinds)
         record = opened.module(id_, at) if found == "module" else opened.inverter(id_, at)
-        current = (opened.module(id_) if found == "module" else opened.inverter(id_)).revision if at else record.revision
+        current = (
+            (opened.module(id_) if found == "module" else opened.inverter(id_)).revision
+            if at
+            else record.revision
+        )
     from catalog.plausibility import findings
 
     remarks = findings(record)
@@ -47,7 +53,9 @@ def show(
         _print(found, record, current, remarks)
 
 
-def document(kind: str, record: Module | Inverter, current: int, remarks: Sequence[Finding]) -> dict[str, Any]:
+def document(
+    kind: str, record: Module | Inverter, current: int, remarks: Sequence[Finding]
+) -> dict[str, Any]:
     """The record as the document ``ferrule.sheet/1``; a value that no source states is null."""
     entry: dict[str, Any] = {
         "schema": SCHEMA,
@@ -59,14 +67,21 @@ def document(kind: str, record: Module | Inverter, current: int, remarks: Sequen
         "current_revision": current,
         "source": _source(record, None),
         "values": {
-            spec.name: {"value": getattr(record, spec.name), "unit": spec.unit, **_provenance(record, spec.name)}
+            spec.name: {
+                "value": getattr(record, spec.name),
+                "unit": spec.unit,
+                **_provenance(record, spec.name),
+            }
             for spec in _specs(record)
         },
     }
     if kind == "inverter":
         from dataclasses import asdict
 
-        entry["inputs"] = {"groups": [asdict(group) for group in record.inputs], **_provenance(record, "inputs")}
+        entry["inputs"] = {
+            "groups": [asdict(group) for group in record.inputs],
+            **_provenance(record, "inputs"),
+        }
     entry["remarks"] = [{"field": f.field, "severity": f.severity, "message": f.message} for f in remarks]
     return entry
 
@@ -79,7 +94,11 @@ def _specs(record: Module | Inverter) -> list[FieldSpec]:
 
 def _provenance(record: Module | Inverter, name: str) -> dict[str, Any]:
     origin = record.origin(name)
-    return {"origin": None, "source": None} if origin is None else {"origin": origin, "source": _source(record, name)}
+    return (
+        {"origin": None, "source": None}
+        if origin is None
+        else {"origin": origin, "source": _source(record, name)}
+    )
 
 
 def _source(record: Module | Inverter, name: str | None) -> dict[str, str]:
@@ -96,8 +115,14 @@ def _print(kind: str, record: Module | Inverter, current: int, remarks: Sequence
     say(f"{record.name} ({kind}, {revision})")
     numbers = _numbered_sources(record)
     say()
-    columns = [Column("field"), Column("value", number=True), Column("unit"), Column("origin"), Column("src", number=True),
-               Column("meaning", fold=True)]  # fmt: skip
+    columns = [
+        Column("field"),
+        Column("value", number=True),
+        Column("unit"),
+        Column("origin"),
+        Column("src", number=True),
+        Column("meaning", fold=True),
+    ]
     print_table(columns, [_row(record, spec, numbers) for spec in _specs(record)])
     if kind == "inverter":
         say()
@@ -130,15 +155,12 @@ def _print_inputs(record: Inverter, numbers: dict[str, int]) -> None:
 
     source = numbers[str(record.source_of("inputs"))]
     say(f"inputs: tracker groups ({record.origin('inputs')}, src {source})")
-    columns = [Column("group", number=True), Column("trackers", number=True), Column("strings/tracker", number=True),
-               Column("max current A", number=True), Column("max Isc A", number=True), Column("max power W", number=True)]  # fmt: skip
-    rows = [
-        [str(number), *(value_text(value) or NOT_STATED for value in (
-            group.trackers, group.strings_per_tracker, group.max_current_a, group.max_isc_a, group.max_power_w
-        ))]
-        for number, group in enumerate(record.inputs, start=1)
-    ]  # fmt: skip
-    print_table(columns, rows)
+    headers = ("group", "trackers", "strings/tracker", "max current A", "max Isc A", "max power W")
+    rows = []
+    for number, g in enumerate(record.inputs, start=1):
+        values = (g.trackers, g.strings_per_tracker, g.max_current_a, g.max_isc_a, g.max_power_w)
+        rows.append([str(number), *(value_text(value) or NOT_STATED for value in values)])
+    print_table([Column(header, number=True) for header in headers], rows)
 
 
 def value_text(value: Any) -> str:

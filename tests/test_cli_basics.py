@@ -22,7 +22,9 @@ ROOT = Path(__file__).parents[1]
 HEAVY = ("pvlib", "pandas", "scipy", "sqlmodel", "sqlalchemy", "numpy", "rapidfuzz")
 
 
-def in_a_shell(*arguments: object, python: tuple[str, ...] = (), **options) -> subprocess.CompletedProcess[str]:
+def in_a_shell(
+    *arguments: object, python: tuple[str, ...] = (), **options
+) -> subprocess.CompletedProcess[str]:
     """Run the command in a process of its own."""
     command = [sys.executable, *python, "-m", "cli", *map(str, arguments)]
     return subprocess.run(command, capture_output=True, text=True, cwd=ROOT, timeout=120, **options)
@@ -51,6 +53,12 @@ def test_help_names_the_commands_and_imports_nothing_heavy():
     assert all(command in ran.stdout for command in ("fit", "sheet", "site", "demo"))
     assert imported(ran.stderr).isdisjoint(HEAVY)
     assert "typer" in imported(ran.stderr), "the list of imports was not understood"
+
+
+def test_help_keeps_units_and_examples_whole(ferrule):
+    out = ferrule("site", "add", "--help").out
+    assert "Design low ambient temperature [degC]" in out
+    assert "Example: ferrule site add Wharf --low -12 --high 36 --lat 52.1 --lon 4.3\n" in out
 
 
 def test_finding_a_record_waits_for_no_table_library(small_catalog):
@@ -87,14 +95,22 @@ def test_an_unknown_word_names_the_near_one(ferrule, typed, near):
     assert not ran.out
 
 
-@pytest.mark.parametrize("typed", [("sheet", "show"), ("site", "add"), ("sheet", "find", "x", "--limit", "0")])
+@pytest.mark.parametrize(
+    "typed", [("sheet", "show"), ("site", "add"), ("sheet", "find", "x", "--limit", "0")]
+)
 def test_a_missing_or_impossible_argument_is_one_line(ferrule, typed):
     ran = ferrule(*typed)
     assert ran.status == 2
     assert ran.err.startswith("ferrule: ") and ran.err.count("\n") == 1
 
 
-READING = [("sheet", "find", "x"), ("sheet", "show", "x"), ("site", "list"), ("site", "show", "x"), ("site", "drop", "x")]
+READING = [
+    ("sheet", "find", "x"),
+    ("sheet", "show", "x"),
+    ("site", "list"),
+    ("site", "show", "x"),
+    ("site", "drop", "x"),
+]
 
 
 @pytest.mark.parametrize("typed", [*READING, ("fit", "-m", "x", "--low", "-5", "--high", "35")])
@@ -128,7 +144,7 @@ def read_only_catalog(small_catalog) -> Iterator[Path]:
 
 
 def heed_permissions() -> None:
-    """Take from root, in a new process, the power to write what is write-protected (Linux: capabilities(7))."""
+    """Take from root, in a new process, the power to write what is write-protected (capabilities(7))."""
     if os.geteuid() == 0:
         drop_from_bounding_set, dac_override = 24, 1  # of <linux/prctl.h> and <linux/capability.h>
         assert ctypes.CDLL(None).prctl(drop_from_bounding_set, dac_override, 0, 0, 0) == 0
@@ -139,7 +155,18 @@ def test_a_read_only_catalog_can_be_read_and_refuses_changes(read_only_catalog):
     found = in_a_shell("sheet", "find", "af6k", "--catalog", read_only_catalog, preexec_fn=heed_permissions)
     assert found.returncode == 0, found.stderr
     assert "AF6K-270P" in found.stdout
-    added = in_a_shell("site", "add", "x", "--low", "-5", "--high", "35", "--catalog", read_only_catalog, preexec_fn=heed_permissions)
+    added = in_a_shell(
+        "site",
+        "add",
+        "x",
+        "--low",
+        "-5",
+        "--high",
+        "35",
+        "--catalog",
+        read_only_catalog,
+        preexec_fn=heed_permissions,
+    )
     assert added.returncode == 2
     assert "read-only" in added.stderr and added.stderr.count("\n") == 1
     assert read_only_catalog.read_bytes() == before
@@ -154,6 +181,8 @@ def test_the_option_wins_over_the_environment(ferrule, small_catalog, tmp_path):
 
 
 def test_a_reader_that_closes_the_pipe_hears_no_complaint(small_catalog):
-    code = f"{shlex.quote(sys.executable)} -m cli sheet show af6k270p --catalog {shlex.quote(str(small_catalog))}"
-    ran = subprocess.run(["sh", "-c", f"{code} | true"], capture_output=True, text=True, cwd=ROOT, timeout=120)
+    command = [sys.executable, "-m", "cli", "sheet", "show", "af6k270p", "--catalog", str(small_catalog)]
+    ran = subprocess.run(
+        ["sh", "-c", f"{shlex.join(command)} | true"], capture_output=True, text=True, cwd=ROOT, timeout=120
+    )
     assert ran.stderr == ""

@@ -33,7 +33,10 @@ def screen(tmp_path_factory) -> tuple[str, Path]:
 
 def test_the_demo_tells_question_answer_reasons_doubts_cautions_and_what_next(screen):
     said = " ".join(screen[0].split())
-    assert "24 of them. The buyer asks: Which inverters take Marzipan Photovoltaik Klassik 270P at Butterfield Barn" in said
+    assert (
+        "24 of them. The buyer asks: Which inverters take Marzipan Photovoltaik Klassik 270P at Butterfield"
+        in said
+    )
     assert "fits: every rating is on record" in said
     assert "to-confirm:" in said and "To confirm on the datasheets before ordering" in said
     assert "In short: the least inverter" in said
@@ -51,8 +54,8 @@ def test_the_demo_fits_about_a_screen_and_a_half(screen):
 
 
 def test_the_strings_of_the_demo_hold_by_hand(screen):
-    # Voc in the cold and Vmp by the module's datasheet coefficient of Voc; the method of the worked examples in Global
-    # Sustainable Energy Solutions, "Calculating Module Voltages", 2011: STC value plus coefficient times difference to 25 degC.
+    # Voc in the cold by the datasheet's coefficient: STC value plus coefficient times difference to 25 degC, as in
+    # the worked examples of Global Sustainable Energy Solutions, "Calculating Module Voltages", 2011.
     modules = tomllib.loads(seed_catalog.path("modules.toml").read_text(encoding="utf-8"))["module"]
     module = next(m for m in modules if m["model"] in demo.MODULE)
     cold = 8 * module["voc_v"] * (1 + module["voc_coef_pct"] / 100 * (-12 - 25))
@@ -66,7 +69,10 @@ def test_the_least_money_is_the_least_of_the_proven(screen):
     # Prices and stock of the demo: 3 Fiddle 1.5 cost 867 EUR, one Viola 5 649 EUR, one Old Faithful 150 EUR.
     said = " ".join(screen[0].split())
     assert "The least money is #2, 1 x Sinewright Viola 5 (649 EUR, 9 on the shelf)" in said
-    assert "Cheaper still is #6, 1 x Humdrum Electric Old Faithful 4.6 (150 EUR, 6 on the shelf): do not pay before" in said
+    assert (
+        "Cheaper still is #6, 1 x Humdrum Electric Old Faithful 4.6 (150 EUR, 6 on the shelf): do not pay"
+        in said
+    )
 
 
 def test_the_demo_leaves_its_catalog_and_touches_no_other(screen):

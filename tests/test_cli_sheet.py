@@ -70,7 +70,9 @@ def test_load_again_changes_nothing_and_a_new_value_makes_a_revision(ferrule, sh
     assert "0 new, 0 changed, 1 unchanged" in ferrule("sheet", "load", sheet).out
     sheet.write_text(MODULE_SHEET.replace("38.2", "38.4"))
     assert "0 new, 1 changed, 0 unchanged" in ferrule("sheet", "load", sheet).out
-    values = {rev: json.loads(ferrule("sheet", "show", "af6k270p", "--at", rev, "--json").out) for rev in (1, 2)}
+    values = {
+        rev: json.loads(ferrule("sheet", "show", "af6k270p", "--at", rev, "--json").out) for rev in (1, 2)
+    }
     assert [values[rev]["values"]["voc_v"]["value"] for rev in (1, 2)] == [38.2, 38.4]
 
 
@@ -85,7 +87,10 @@ def test_load_takes_several_files_all_or_nothing(ferrule, sheet, tmp_path):
 
 def test_load_cec_with_one_table_loads_only_that(ferrule, few_modules, few_inverters):
     assert "5 modules and 0 inverters: 5 new" in ferrule("sheet", "load", "cec", "--modules", few_modules).out
-    assert "0 modules and 4 inverters: 4 new" in ferrule("sheet", "load", "cec", "--inverters", few_inverters).out
+    assert (
+        "0 modules and 4 inverters: 4 new"
+        in ferrule("sheet", "load", "cec", "--inverters", few_inverters).out
+    )
     both = ferrule("sheet", "load", "cec", "--modules", few_modules, "--inverters", few_inverters).out
     assert "5 modules and 4 inverters: 0 new, 0 changed, 9 unchanged" in both
 
@@ -171,7 +176,9 @@ def test_find_takes_words_in_any_order_and_unfinished(ferrule, small_catalog):
 
 def test_find_ranks_the_name_itself_first(ferrule, cec_catalog):
     # SunPower SPR-E20-327 stands in the CEC table beside longer names that begin like it.
-    found = json.loads(ferrule("sheet", "find", "spr-e20-327", "--json", "--catalog", cec_catalog).out)["found"]
+    found = json.loads(ferrule("sheet", "find", "spr-e20-327", "--json", "--catalog", cec_catalog).out)[
+        "found"
+    ]
     assert found[0]["model"] == "SPR-E20-327"
     assert len(found) > 3
     assert all("SPR-E20-327" in entry["model"] for entry in found)
@@ -246,7 +253,10 @@ def test_show_as_a_document_holds_null_for_what_is_not_known(ferrule, small_cata
     assert document["schema"] == "ferrule.sheet/1"
     assert set(document["values"]) == set(specs(Inverter)) - {"maker", "model"}
     assert document["values"]["ac_voltage_v"] == {"value": None, "unit": "V", "origin": None, "source": None}
-    assert document["values"]["start_voltage_v"]["source"] == {"name": "datasheet rev C, page 2", "revision": ""}
+    assert document["values"]["start_voltage_v"]["source"] == {
+        "name": "datasheet rev C, page 2",
+        "revision": "",
+    }
     assert [set(group) for group in document["inputs"]["groups"]] == [set(specs(Inputs))] * 2
     assert document["inputs"]["groups"][0]["max_power_w"] is None
 
@@ -283,7 +293,8 @@ def test_show_an_ambiguous_name_lists_the_candidates_and_guesses_none(ferrule, s
 def test_show_asks_for_the_kind_where_both_have_the_name(ferrule, sheet):
     inverter = sheet.with_name("inverter.toml")
     inverter.write_text(
-        '[[inverter]]\nmaker = "Alderfell Solar"\nmodel = "AF6K-270P"\nac_power_w = 250\nmppt_low_v = 22\nmppt_high_v = 48\n'
+        '[[inverter]]\nmaker = "Alderfell Solar"\nmodel = "AF6K-270P"\n'
+        "ac_power_w = 250\nmppt_low_v = 22\nmppt_high_v = 48\n"
         'inputs = [{trackers = 1}]\nsource = "a leaflet"\n'
     )
     assert ferrule("sheet", "load", sheet, inverter).status == 0

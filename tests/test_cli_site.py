@@ -9,7 +9,7 @@ import pandas as pd
 import pvlib
 import pytest
 
-#: A TMY3 file (Wilcox and Marion 2008, NREL/TP-581-43156; from memory) that pvlib installs: Greensboro, North Carolina.
+#: A TMY3 file that pvlib installs, of Greensboro, North Carolina (form: NREL/TP-581-43156; from memory).
 TMY3 = Path(pvlib.__file__).parent / "data" / "723170TYA.CSV"
 
 
@@ -26,11 +26,14 @@ FULL = (
 
 
 def test_a_site_is_kept_with_all_its_values(ferrule):
-    assert ferrule("site", "add", "Mill  Lane", *FULL).out.startswith("Kept: Mill Lane, -12 to 36.5 degC, gap-roof")
+    assert ferrule("site", "add", "Mill  Lane", *FULL).out.startswith(
+        "Kept: Mill Lane, -12 to 36.5 degC, gap-roof"
+    )
     site = json.loads(ferrule("site", "show", "mill lane", "--json").out)["site"]
     assert site == {
-        "name": "Mill Lane", "design_low_c": -12, "design_high_c": 36.5, "mounting": "gap-roof", "voltage_cap_v": 600,
-        "rear_share": 0.1, "lat": 47.6, "lon": 1.4, "tilt": 30, "azimuth": 205, "weather": None,
+        "name": "Mill Lane", "design_low_c": -12, "design_high_c": 36.5, "mounting": "gap-roof",
+        "voltage_cap_v": 600, "rear_share": 0.1, "lat": 47.6, "lon": 1.4, "tilt": 30, "azimuth": 205,
+        "weather": None,
     }  # fmt: skip
 
 
@@ -49,7 +52,10 @@ def test_list_and_drop(ferrule, small_catalog):
     ferrule("site", "add", "Mill Lane", *FULL)
     ran = ferrule("site", "list")
     assert "Low Wharf" in ran.out and "Mill Lane" in ran.out and "47.6, 1.4" in ran.out
-    assert [s["name"] for s in json.loads(ferrule("site", "list", "--json").out)["sites"]] == ["Low Wharf", "Mill Lane"]
+    assert [s["name"] for s in json.loads(ferrule("site", "list", "--json").out)["sites"]] == [
+        "Low Wharf",
+        "Mill Lane",
+    ]
     assert json.loads(ferrule("site", "drop", "MILL LANE", "--json").out)["dropped"] == "Mill Lane"
     assert ferrule("site", "drop", "low wharf").out == "Dropped: Low Wharf.\n"
     assert "No site is kept" in ferrule("site", "list").out
@@ -65,7 +71,22 @@ def test_a_site_is_replaced_only_when_asked(ferrule, small_catalog):
 
 
 def test_the_weather_file_is_read_and_reported(ferrule, tmy3):
-    ran = ferrule("site", "add", "Greens", "--low", -20, "--high", 40, "--weather", TMY3, "--tilt", 0, "--azimuth", 180, "--json")
+    ran = ferrule(
+        "site",
+        "add",
+        "Greens",
+        "--low",
+        -20,
+        "--high",
+        40,
+        "--weather",
+        TMY3,
+        "--tilt",
+        0,
+        "--azimuth",
+        180,
+        "--json",
+    )
     weather = json.loads(ran.out)["weather"]
     temperature = tmy3["Dry-bulb (C)"]
     assert (weather["lowest_c"], weather["highest_c"]) == (temperature.min(), temperature.max())
@@ -78,7 +99,9 @@ def test_the_weather_file_is_read_and_reported(ferrule, tmy3):
 
 
 def test_weather_beyond_the_design_temperatures_is_said(ferrule):
-    ran = ferrule("site", "add", "Greens", "--low", -5, "--high", 30, "--weather", TMY3, "--lat", 10, "--lon", 10)
+    ran = ferrule(
+        "site", "add", "Greens", "--low", -5, "--high", 30, "--weather", TMY3, "--lat", 10, "--lon", 10
+    )
     said = " ".join(ran.out.split())
     assert ran.status == 0
     assert "colder (-16.7 degC) than the design low of -5 degC" in said
@@ -92,7 +115,9 @@ def test_a_weather_file_offers_its_extremes_with_a_warning_only(ferrule, tmy3, t
     assert f"--low {tmy3['Dry-bulb (C)'].min():g} --high {tmy3['Dry-bulb (C)'].max():g}" in ran.err
     assert "a typical year is not an extreme one" in ran.err
     assert not (tmp_path / "small.sqlite").exists()
-    taken = ferrule("site", "add", "Greens", "--low", tmy3["Dry-bulb (C)"].min(), "--high", 40, "--weather", TMY3)
+    taken = ferrule(
+        "site", "add", "Greens", "--low", tmy3["Dry-bulb (C)"].min(), "--high", 40, "--weather", TMY3
+    )
     assert "a typical year is not an extreme one" in " ".join(taken.out.split())
 
 
