@@ -48,6 +48,7 @@ def named(left: list[Piece], words: list[str], text: SupplierText) -> tuple[int,
             group = left[n : n + count]
             joined = "".join(p.folded for p in group)
             whole = not any("." in p.word.gap for p in group[1:])  # "Heli. Ene." is no "Heliene"
+            whole = whole and all(a.end == b.start for a, b in zip(group, group[1:], strict=False))
             if whole and len(group) == count and len(joined) > 3 and joined in runs:
                 break
         else:
@@ -57,6 +58,8 @@ def named(left: list[Piece], words: list[str], text: SupplierText) -> tuple[int,
         how, common = (2, False) if joined in runs else _likeness(group[0].raw, joined, words)
         if joined not in runs and not _may_be_short(group[0], how, text):
             how = 0
+        if len(joined) < 3 and not _stands_alone(group[0], text):
+            how = 0  # the "Q" of "-320Q" is not the one of a maker "Q Cells"
         common = common or all(p.folded in tradewords.COMMON for p in group)
         if not how:
             rest.extend(group)
@@ -100,9 +103,14 @@ def _may_be_short(p: Piece, how: int, text: SupplierText) -> bool:
     """
     if p.start > p.word.start or p.end < p.word.end:
         return False
+    return how == 2 or (_stands_alone(p, text) and not tradewords.is_in(p.raw, tradewords.CODES))
+
+
+def _stands_alone(p: Piece, text: SupplierText) -> bool:
+    """Whether a piece is a whole word with nothing joined to it."""
     following = text.following(p.word)
-    alone = p.word.apart and (following is None or following.apart)
-    return how == 2 or (alone and not tradewords.is_in(p.raw, tradewords.CODES))
+    whole = p.start == p.word.start and p.end == p.word.end
+    return whole and p.word.apart and (following is None or following.apart)
 
 
 def is_there(word: str, text: SupplierText) -> bool:

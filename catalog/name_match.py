@@ -171,7 +171,11 @@ def _unexplained(
                 doubts.append(p.raw)
         elif tradewords.is_in(p.raw, tradewords.CODES):
             lone = scattered and len(p.raw) == 1
-            if inside or between or ((beside or lone) and not _is_remark(p, after, shape, text)):
+            if (
+                inside
+                or between
+                or ((beside or lone) and not p.word.remark and not _is_remark(p, after, shape, text))
+            ):
                 doubts.append(p.raw)
         elif any(c.isdigit() for c in p.raw) or joined or (beside and len(p.raw) <= 3) or len(p.raw) == 1:
             doubts.append(p.raw)

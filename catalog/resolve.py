@@ -132,6 +132,8 @@ def _is_told(m: Match, texts: TextIndex) -> bool:
     """Whether so much of a record stands in the text that the text may mean it, and names no other maker."""
     if not m.line or (not _is_telling(m) and m.maker < 2):
         return False
+    if m.strangers and not any(c.isdigit() for c in m.shape.plain):
+        return False
     if m.strangers and not (m.in_order and (m.maker or m.shape.line_words)):
         return False
     return not any(namekeys.folded(word) in texts.maker_vocabulary for word in m.strangers)
@@ -149,7 +151,8 @@ def _is_contradicted(m: Match, read: SupplierText, texts: TextIndex) -> bool:
     """Whether the text names another voltage or power, or only a remark completes the name."""
     if m.core & read.remarks and (not m.in_order or texts.has_longer(m.shape.core)):
         return True
-    untold = [w for w in read.words if not w.remark and not mask(w.start, w.end) & m.told]
+    free = [w for w in read.words if not mask(w.start, w.end) & m.told]
+    untold = [w for w in free if not w.remark or w.raw.isdigit()]
     if any(m.shape.core + w.folded in texts.by_core for w in untold):  # a suffix that strayed
         return True
     if m.in_order and texts.is_suffix(m.shape, read.word_after(m.core)):

@@ -119,6 +119,7 @@ def _words(squeezed: str) -> list[Word]:
         remark = apart and (
             tradewords.is_trade(raw) or tradewords.is_measure(raw) or _is_count(n, raws, gaps)
         )
+        remark = remark or (raw in ("a", "b") and n > 0 and raws[n - 1] in ("class", "grade", "klasse"))
         if not apart and gaps[n] in (".", ",") and raw[0].isdigit():  # the decimals of a measure
             remark = out[-1].remark
         out.append(Word(raw, folds[n], place, place + len(folds[n]), gaps[n], remark))
