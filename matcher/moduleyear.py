@@ -94,8 +94,9 @@ def plane_year(weather: Weather, tilt: float, azimuth: float) -> PlaneYear:
         turned = abs((given.azimuth - azimuth + 180) % 360 - 180)
         if abs(given.tilt - tilt) > 0.5 or (turned > 0.5 and given.tilt > 0.5):
             raise MatcherError(
-                f"the {weather.kind} file of {weather.name} holds irradiance on a plane of tilt {given.tilt:g}, azimuth "
-                f"{given.azimuth:g} deg only; ask for that plane, or fetch the file with slope 0 and its components"
+                f"the {weather.kind} file of {weather.name} holds irradiance on a plane of tilt "
+                f"{given.tilt:g}, azimuth {given.azimuth:g} deg only; ask for that plane, or fetch the file "
+                "with slope 0 and its components"
             )
         total, rows = given.global_, np.arange(given.global_.size)
     else:
@@ -143,7 +144,7 @@ def module_year(params: SixParameters, plane: PlaneYear, dc_loss_pct: float = 2.
     return ModuleYear(power, np.where(usable, vmp, 0.0), plane.hours)
 
 
-def condense_plane(plane: PlaneYear, bound_pct: float = 0.005) -> PlaneYear:
+def condense_plane(plane: PlaneYear, bound_pct: float = 0.004) -> PlaneYear:
     """The year of a plane in classes of like irradiance and cell temperature, for many modules at once.
 
     The classes are those of a module that loses 0.4 % of its power and 0.35 % of its voltage per kelvin, with
@@ -202,7 +203,7 @@ def module_years(params: SixParameters, plane: PlaneYear, dc_loss_pct: float = 2
     return ModuleYear(power, vmp, plane.hours)
 
 
-def condense(year: ModuleYear, bound_pct: float = 0.005, *, current_limits: bool = True) -> ModuleYear:
+def condense(year: ModuleYear, bound_pct: float = 0.004, *, current_limits: bool = True) -> ModuleYear:
     """The same year in a few hundred classes of like power and like current.
 
     Each class carries the sums of its entries' hours and energy and their mean voltage. The year's energy

@@ -88,7 +88,7 @@ class Weather:
 
     @property
     def horizontal_kwh_m2(self) -> float | None:
-        """Yearly global horizontal irradiation [kWh/m2]; ``None`` where the file gives a tilted plane only."""
+        """Yearly global horizontal irradiation [kWh/m2]; ``None`` for a file of a tilted plane."""
         return None if self.ghi is None else float(self.ghi @ self.hours) / 1000
 
     @cached_property
@@ -126,13 +126,13 @@ def read_weather(path: str | Path) -> Weather:
     try:
         content = path.read_bytes()
     except OSError as error:
-        raise MatcherError(f"{path}: cannot be read ({error.strerror or error}); give the path of a weather file") from None
+        raise MatcherError(
+            f"{path}: cannot be read ({error.strerror or error}); give the path of a weather file"
+        ) from None
     return year_of(raw_year(content, str(path)), str(path))
 
 
-def clear_sky_weather(
-    lat: float, lon: float, design_low_c: float, design_high_c: float
-) -> Weather:
+def clear_sky_weather(lat: float, lon: float, design_low_c: float, design_high_c: float) -> Weather:
     """A year without clouds, to bound clipping from above where there is no weather file.
 
     Irradiance: the model of Ineichen by ``pvlib.location.Location.get_clearsky`` with the monthly Linke
@@ -164,7 +164,7 @@ def clear_sky_weather(
     """
     if not (-90 <= lat <= 90 and -180 <= lon <= 180):
         raise MatcherError(
-            f"latitude {lat:g}, longitude {lon:g}: give -90..90 (north positive) and -180..180 (east positive)"
+            f"latitude {lat:g}, longitude {lon:g}: give -90..90 (north positive), -180..180 (east positive)"
         )
     if not design_low_c <= design_high_c:
         raise MatcherError(

@@ -44,7 +44,8 @@ if TYPE_CHECKING:
 
 COLUMNS = ("ghi", "dni", "dhi", "temp_air", "wind_speed")
 _TMY2_HEADER = re.compile(
-    r"\s*(\d{5})\s+(\S.*?)\s+([A-Z]{2})\s+(-?\d+)\s+([NS])\s*(\d+)\s+(\d+)\s+([EW])\s*(\d+)\s+(\d+)\s+(-?\d+)\s*$"
+    r"\s*(\d{5})\s+(\S.*?)\s+([A-Z]{2})\s+(-?\d+)"  # station, city, state, hours from UTC
+    r"\s+([NS])\s*(\d+)\s+(\d+)\s+([EW])\s*(\d+)\s+(\d+)\s+(-?\d+)\s*$"  # degrees and minutes, metres
 )
 
 
@@ -77,12 +78,14 @@ def raw_year(content: bytes, where: str) -> RawYear:
     """
     text = _text(content)
     if not text.strip():
-        raise MatcherError(f"{where}: the file is empty; give a weather file (EPW, TMY3, TMY2, PVGIS CSV or JSON)")
+        raise MatcherError(
+            f"{where}: the file is empty; give a weather file (EPW, TMY3, TMY2, PVGIS CSV or JSON)"
+        )
     kind, read = _recognise(text)
     if read is None:
         raise MatcherError(
-            f"{where}: not a weather file that Ferrule knows (EPW, TMY3, TMY2, PVGIS hourly or TMY as CSV or JSON); "
-            f"line 1 begins {text.lstrip().splitlines()[0][:40]!r}"
+            f"{where}: not a weather file that Ferrule knows (EPW, TMY3, TMY2, PVGIS hourly or TMY as CSV or "
+            f"JSON); line 1 begins {text.lstrip().splitlines()[0][:40]!r}"
         )
     try:
         with warnings.catch_warnings():
@@ -90,11 +93,11 @@ def raw_year(content: bytes, where: str) -> RawYear:
             raw = read(text)
     except MatcherError as error:
         raise MatcherError(f"{where}: {error}") from None
-    except Exception as error:  # whatever the reader stumbles over: the file is not what its head says
+    except Exception as error:  # noqa: BLE001 - whatever the reader stumbles over
         reason = str(error).strip().splitlines()[0] if str(error).strip() else type(error).__name__
         raise MatcherError(
-            f"{where}: looks like {kind} but cannot be read as such ({reason[:120]}); the file is cut or was edited, "
-            "fetch it again"
+            f"{where}: looks like {kind} but cannot be read as such ({reason[:120]}); the file is cut or was "
+            "edited, fetch it again"
         ) from None
     if len(raw.data) < 2:
         raise MatcherError(f"{where}: {kind} without rows of data; fetch it again")
@@ -146,7 +149,13 @@ def _epw(text: str) -> RawYear:
     frame = _columns(data, {name: name for name in COLUMNS}, end - interval / 2)
     _blank(frame, irradiance=9999, temp_air=99.9, wind_speed=999)
     return RawYear(
-        "EPW", meta["city"].strip(), meta["latitude"], meta["longitude"], meta["altitude"], frame, 1 / per_hour
+        "EPW",
+        meta["city"].strip(),
+        meta["latitude"],
+        meta["longitude"],
+        meta["altitude"],
+        frame,
+        1 / per_hour,
     )
 
 
@@ -208,7 +217,9 @@ def _pvgis_json(text: str) -> RawYear:
         place = meta["inputs"]["location"]
         return _pvgis_tmy(data, place, _offset(meta["inputs"]))
     if "hourly" not in outputs:
-        raise MatcherError("JSON, but neither PVGIS hourly nor PVGIS TMY (outputs.hourly, outputs.tmy_hourly)")
+        raise MatcherError(
+            "JSON, but neither PVGIS hourly nor PVGIS TMY (outputs.hourly, outputs.tmy_hourly)"
+        )
     data, meta = read_pvgis_hourly(io.StringIO(text), pvgis_format="json")
     mounting = meta["inputs"].get("mounting_system", {})
     fixed = mounting.get("fixed")
@@ -229,7 +240,9 @@ def _pvgis_hourly_csv(text: str) -> RawYear:
 
     data, meta = read_pvgis_hourly(io.StringIO(text.replace("\r\n", "\n")), pvgis_format="csv")
     inputs = meta["inputs"]
-    return _pvgis_hourly(data, inputs, _leading_number(inputs.get("Slope")), _leading_number(inputs.get("Azimuth")))
+    return _pvgis_hourly(
+        data, inputs, _leading_number(inputs.get("Slope")), _leading_number(inputs.get("Azimuth"))
+    )
 
 
 def _pvgis_tmy(data: pd.DataFrame, place: dict, offset: float | None) -> RawYear:
@@ -306,7 +319,9 @@ def _columns(data: pd.DataFrame, names: dict[str, str], middle: pd.DatetimeIndex
     missing = [name for column, name in names.items() if name not in data]
     if missing:
         raise MatcherError(f"the column {missing[0]} is missing; fetch the file again with all columns")
-    found = {column: pd.to_numeric(data[name], errors="coerce").to_numpy(float) for column, name in names.items()}
+    found = {
+        column: pd.to_numeric(data[name], errors="coerce").to_numpy(float) for column, name in names.items()
+    }
     return pd.DataFrame(found, index=pd.DatetimeIndex(middle))
 
 

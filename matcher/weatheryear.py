@@ -46,7 +46,10 @@ def year_of(raw: RawYear, where: str) -> Weather:
         _check_irradiance_unit(data[column].to_numpy(), column, where)
         data[column] = data[column].clip(lower=0.0)
     if not -90 <= raw.latitude <= 90 or not -180 <= raw.longitude <= 180:
-        raise MatcherError(f"{where}: the place {raw.latitude:g}, {raw.longitude:g} is not on Earth; mend the head of the file")
+        raise MatcherError(
+            f"{where}: the place {raw.latitude:g}, {raw.longitude:g} is not on Earth; mend the head of "
+            "the file"
+        )
 
     _fill(data, "temp_air", raw.interval_hours, notes, where)
     _fill(data, "wind_speed", raw.interval_hours, notes, where)
@@ -111,8 +114,9 @@ def _check_order(times: pd.DatetimeIndex, interval_hours: float, where: str) -> 
     if wrong.size:
         row = int(wrong[0])
         raise MatcherError(
-            f"{where}: row {row + 2} of the data ({times[row + 1]:%d %b %H:%M}) is not later than the row before "
-            f"({times[row]:%d %b %H:%M}); the rows are shuffled or doubled, sort them by time or fetch the file again"
+            f"{where}: row {row + 2} of the data ({times[row + 1]:%d %b %H:%M}) is not later than the row "
+            f"before ({times[row]:%d %b %H:%M}); the rows are shuffled or doubled, sort them by time or "
+            "fetch the file again"
         )
 
 
@@ -125,15 +129,17 @@ def _check_temperature(temp_air: np.ndarray, where: str) -> None:
     low, mean, high = known.min(), known.mean(), known.max()
     if low > 150:
         raise MatcherError(
-            f"{where}: air temperature from {low:.0f} to {high:.0f}: that is kelvin; subtract 273.15 to get degC"
+            f"{where}: air temperature from {low:.0f} to {high:.0f}: that is kelvin; subtract 273.15 for degC"
         )
     if mean > 36 or high > 60:
         raise MatcherError(
-            f"{where}: air temperature up to {high:.0f}, {mean:.0f} in the mean: that looks like degrees Fahrenheit; "
-            "convert to degC, (F - 32) / 1.8"
+            f"{where}: air temperature up to {high:.0f}, {mean:.0f} in the mean: that looks like degrees "
+            "Fahrenheit; convert to degC, (F - 32) / 1.8"
         )
     if low < -95:
-        raise MatcherError(f"{where}: air temperature of {low:.0f} degC; mend the column of the air temperature")
+        raise MatcherError(
+            f"{where}: air temperature of {low:.0f} degC; mend the column of the air temperature"
+        )
 
 
 def _check_irradiance_unit(values: np.ndarray, column: str, where: str) -> None:
@@ -144,7 +150,9 @@ def _check_irradiance_unit(values: np.ndarray, column: str, where: str) -> None:
         return
     high = known.max()
     if known.min() < -50:
-        raise MatcherError(f"{where}: {column} of {known.min():.0f} W/m2; irradiance is never negative, mend the column")
+        raise MatcherError(
+            f"{where}: {column} of {known.min():.0f} W/m2; irradiance is never negative, mend the column"
+        )
     if high > 50_000:
         unit, mend = "J/m2 per hour", "divide by 3,600"
     elif high > 2_200:
@@ -153,7 +161,9 @@ def _check_irradiance_unit(values: np.ndarray, column: str, where: str) -> None:
         unit, mend = "kW/m2 or MJ/m2 per hour", "multiply by 1,000, or by 1,000 / 3.6"
     else:
         return
-    raise MatcherError(f"{where}: {column} reaches {high:,.4g}: that looks like {unit}; convert to W/m2 ({mend})")
+    raise MatcherError(
+        f"{where}: {column} reaches {high:,.4g}: that looks like {unit}; convert to W/m2 ({mend})"
+    )
 
 
 def _fill(data: pd.DataFrame, column: str, interval_hours: float, notes: list[str], where: str) -> None:
@@ -191,7 +201,8 @@ def _complete_components(data: pd.DataFrame, zenith: np.ndarray, where: str) -> 
     absent = [c for c in ("ghi", "dni", "dhi") if data[c].isna().all()]
     if len(absent) > 1:
         raise MatcherError(
-            f"{where}: {' and '.join(absent)} missing in all rows; two of ghi, dni, dhi are needed, fetch the file again"
+            f"{where}: {' and '.join(absent)} missing in all rows; two of ghi, dni, dhi are needed, fetch "
+            "the file again"
         )
     above = np.maximum(cosine, 0.0)
     data["ghi"] = data["ghi"].fillna(data["dni"] * above + data["dhi"])
@@ -220,8 +231,8 @@ def _hours(times: pd.DatetimeIndex, interval_hours: float, where: str) -> tuple[
             want = 28 * there.size * per_day  # a typical year leaves 29 February out
         if rows < _MIN_COVERAGE * want or not count[m].all():
             raise MatcherError(
-                f"{where}: {calendar.month_name[m + 1]} has {rows:,} of {want:,} intervals; the file is cut or has "
-                "gaps, fetch a whole year"
+                f"{where}: {calendar.month_name[m + 1]} has {rows:,} of {want:,} intervals; the file is cut "
+                "or has gaps, fetch a whole year"
             )
         gaps += max(0, want - rows)
     weight = np.array(_DAYS)[:, None] * interval_hours / count
@@ -230,7 +241,9 @@ def _hours(times: pd.DatetimeIndex, interval_hours: float, where: str) -> tuple[
     return hours, gaps
 
 
-def _check_sun(irradiance: np.ndarray, hours: np.ndarray, zenith: np.ndarray, raw: RawYear, where: str) -> None:
+def _check_sun(
+    irradiance: np.ndarray, hours: np.ndarray, zenith: np.ndarray, raw: RawYear, where: str
+) -> None:
     """The sun must be up when it shines, and the year neither darker nor brighter than Earth's years are."""
     import numpy as np
 
@@ -242,8 +255,8 @@ def _check_sun(irradiance: np.ndarray, hours: np.ndarray, zenith: np.ndarray, ra
     night = energy[zenith > 92 + 7.5 * raw.interval_hours].sum() / total
     if night > 0.01:
         raise MatcherError(
-            f"{where}: {night:.0%} of the irradiance falls while the sun is down at {raw.latitude:g}, {raw.longitude:g}; "
-            "the place or time zone in the head is wrong, or the rows are shuffled"
+            f"{where}: {night:.0%} of the irradiance falls while the sun is down at {raw.latitude:g}, "
+            f"{raw.longitude:g}; the place or time zone in the head is wrong, or the rows are shuffled"
         )
     if raw.plane and raw.plane[0] > 0:
         return
@@ -251,6 +264,6 @@ def _check_sun(irradiance: np.ndarray, hours: np.ndarray, zenith: np.ndarray, ra
     clearness = total / (sky @ hours)
     if not 0.2 < clearness < 0.9:
         raise MatcherError(
-            f"{where}: the year has {total / 1000:,.0f} kWh/m2 on the horizontal, {clearness:.0%} of what reaches the top "
-            "of the atmosphere (20 to 90 % is possible); check the unit, it must be W/m2"
+            f"{where}: the year has {total / 1000:,.0f} kWh/m2 on the horizontal, {clearness:.0%} of what "
+            "reaches the top of the atmosphere (20 to 90 % is possible); check the unit, it must be W/m2"
         )

@@ -49,12 +49,12 @@ def one(rows: pd.DataFrame, k: int) -> SixParameters:
     return SixParameters(*(float(rows[f.name].iloc[k]) for f in fields(SixParameters)))
 
 
-# -- plane -----------------------------------------------------------------------------------------------------
+# -- plane -----------------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize(("tilt", "azimuth"), [(30.0, 180.0), (15.0, 270.0), (0.0, 0.0), (90.0, 90.0)])
 def test_plane_year_agrees_with_pvlib(tmy3, tilt, azimuth):
-    # Source: pvlib's solar position, Hay-Davies transposition and Faiman model, called one by one on the file.
+    # Source: pvlib's solar position, Hay-Davies transposition and Faiman model, called one by one.
     data, meta = pvlib.iotools.read_tmy3(DATA / "723170TYA.CSV", coerce_year=2021)
     data.index = data.index - pd.Timedelta(minutes=30)
     place = pvlib.location.Location(meta["latitude"], meta["longitude"], altitude=meta["altitude"])
@@ -86,14 +86,16 @@ def test_plane_that_the_file_holds_and_another(tmy3):
     assert plane_year(flat, 0.0, 90.0).hours.size == same.hours.size  # the horizontal faces nowhere
 
 
-# -- module ----------------------------------------------------------------------------------------------------
+# -- module ----------------------------------------------------------------------------------------------
 
 
 def test_module_year_agrees_with_pvlib(planes, cec_modules_csv):
     # Source: pvlib.singlediode.bishop88_mpp on pvlib.pvsystem.calcparams_cec.
     plane, params = planes["Greensboro"], one(cec_modules_csv, 9000)
     order = ("alpha_sc", "a_ref", "I_L_ref", "I_o_ref", "R_sh_ref", "R_s", "Adjust")
-    curve = pvlib.pvsystem.calcparams_cec(plane.irradiance, plane.cell_c, *(getattr(params, n) for n in order))
+    curve = pvlib.pvsystem.calcparams_cec(
+        plane.irradiance, plane.cell_c, *(getattr(params, n) for n in order)
+    )
     _, vmp, pmp = pvlib.singlediode.bishop88_mpp(*curve)
     year = module_year(params, plane, dc_loss_pct=3.0)
     np.testing.assert_allclose(year.power_w, 0.97 * pmp, rtol=1e-8)
@@ -102,13 +104,15 @@ def test_module_year_agrees_with_pvlib(planes, cec_modules_csv):
 
 
 def test_an_entry_without_a_maximum_counts_as_no_power(cec_modules_csv):
-    plane = PlaneYear(np.array([500.0, np.nan, 800.0]), np.array([20.0, 20.0, np.nan]), np.ones(3), np.arange(3))
+    plane = PlaneYear(
+        np.array([500.0, np.nan, 800.0]), np.array([20.0, 20.0, np.nan]), np.ones(3), np.arange(3)
+    )
     year = module_year(one(cec_modules_csv, 0), plane)
     assert year.power_w[0] > 0 and list(year.power_w[1:]) == [0, 0]
     assert condense(year).hours.sum() == 1
 
 
-# -- classes ---------------------------------------------------------------------------------------------------
+# -- classes ---------------------------------------------------------------------------------------------
 
 
 def losses(
@@ -135,7 +139,9 @@ def pairs(modules: pd.DataFrame, inverters: pd.DataFrame, n: int):
     while n:
         k = int(rng.integers(len(modules)))
         module, inverter = modules.iloc[k], inverters.iloc[rng.integers(len(inverters))]
-        lengths = [s for s in range(1, 60) if inverter.Mppt_low < 0.9 * s * module.V_mp_ref < inverter.Mppt_high]
+        lengths = [
+            s for s in range(1, 60) if inverter.Mppt_low < 0.9 * s * module.V_mp_ref < inverter.Mppt_high
+        ]
         if not lengths:
             continue
         in_series = int(rng.choice(lengths))
@@ -148,13 +154,13 @@ def pairs(modules: pd.DataFrame, inverters: pd.DataFrame, n: int):
 
 
 def test_condensed_year_clips_like_the_year_itself(planes, cec_modules_csv, cec_inverters_csv):
-    drawn = list(pairs(cec_modules_csv, cec_inverters_csv, 16))
+    drawn = list(pairs(cec_modules_csv, cec_inverters_csv, 9))
     seen = []
     for plane in planes.values():
         for k, inverter, in_series, counts, current in drawn:
             year = module_year(one(cec_modules_csv, k), plane)
             both, power_only = condense(year), condense(year, current_limits=False)
-            assert power_only.hours.size < 250 and both.hours.size < 1500
+            assert power_only.hours.size < 250 and both.hours.size < 900
             for short in (both, power_only):
                 assert short.energy_kwh == pytest.approx(year.energy_kwh, rel=1e-12)
                 assert short.hours.sum() == pytest.approx(year.hours.sum())
@@ -197,7 +203,7 @@ def test_years_too_small_to_condense():
     assert same.hours.sum() == 900 and np.all(same.power_w == 80)
 
 
-# -- many modules ----------------------------------------------------------------------------------------------
+# -- many modules ----------------------------------------------------------------------------------------
 
 
 def test_many_modules_on_common_classes(planes, cec_modules_csv, cec_inverters_csv):
@@ -205,7 +211,7 @@ def test_many_modules_on_common_classes(planes, cec_modules_csv, cec_inverters_c
     chosen = parameters(cec_modules_csv.iloc[[k for k, *_ in drawn]])
     for plane in planes.values():
         short = condense_plane(plane)
-        assert short.hours.size < 700
+        assert short.hours.size < 600
         assert short.hours.sum() == pytest.approx(plane.hours.sum())
         assert short.irradiation_kwh_m2 == pytest.approx(plane.irradiation_kwh_m2)
         many = module_years(chosen, short)

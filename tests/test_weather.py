@@ -35,7 +35,7 @@ def assert_sun_agrees(weather, sky: pd.DataFrame) -> None:
     assert weather.hours.sum() == pytest.approx(8760)
 
 
-# -- the files that pvlib installs -----------------------------------------------------------------------------
+# -- the files that pvlib installs -----------------------------------------------------------------------
 
 
 @pytest.mark.parametrize(("file", "city"), [("723170TYA.CSV", "Greensboro"), ("703165TY.csv", "Sand Point")])
@@ -55,7 +55,7 @@ def test_tmy3_file_of_pvlib(file, city, tmp_path):
 
 
 def test_tmy2_file_of_pvlib():
-    # Source: the columns of Table 3-2 of Marion and Urban 1995 (from memory): irradiance in W/m2, tenths of degC, m/s.
+    # Source: the columns of Table 3-2 of Marion and Urban 1995 (from memory): W/m2, tenths of degC, m/s.
     weather = read_weather(DATA / "12839.tm2")
     rows = (DATA / "12839.tm2").read_text().splitlines()[1:]
 
@@ -71,7 +71,7 @@ def test_tmy2_file_of_pvlib():
     assert weather.times[0].strftime("%m-%d %H:%M %z") == "01-01 00:30 -0500"
 
 
-# -- each format, written here --------------------------------------------------------------------------------
+# -- each format, written here ---------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize("minutes", [60, 30])
@@ -177,7 +177,9 @@ def test_a_few_missing_hours_are_filled_and_said(tmp_path):
     noon = 2 + 24 * 180 + 12
     del lines[noon : noon + 3]
     row = 2 + 24 * 200 + 12
-    lines[row] = ",".join(lines[row].split(",")[:2] + ["-9900"] * 5)  # the mark of a missing value (from memory)
+    lines[row] = ",".join(
+        lines[row].split(",")[:2] + ["-9900"] * 5
+    )  # the mark of a missing value (from memory)
     weather = read_weather(written(tmp_path, "\n".join(lines)))
     assert weather.times.size == 8756 and weather.hours.sum() == pytest.approx(8760)
     assert any("4 missing intervals" in note for note in weather.notes)
@@ -192,7 +194,7 @@ def test_the_third_component_follows_from_the_other_two(tmp_path):
     np.testing.assert_allclose(weather.dhi, sky["dhi"], atol=2)
 
 
-# -- files that are wrong ---------------------------------------------------------------------------------------
+# -- files that are wrong --------------------------------------------------------------------------------
 
 
 @pytest.fixture(scope="module")
@@ -255,7 +257,8 @@ def test_wrong_place_or_time_zone(tmp_path, good):
 
 
 @pytest.mark.parametrize(
-    ("factor", "said"), [(3600, "J/m2"), (3.6, "kJ/m2"), (0.0036, "MJ/m2"), (0.001, "kW/m2"), (0.0929, "check the unit")]
+    ("factor", "said"),
+    [(3600, "J/m2"), (3.6, "kJ/m2"), (0.0036, "MJ/m2"), (0.001, "kW/m2"), (0.0929, "check the unit")],
 )
 def test_irradiance_in_other_units(tmp_path, good, factor, said):
     middle, sky = good
@@ -275,7 +278,9 @@ def test_missing_column_and_negative_irradiance(tmp_path, good):
     middle, sky = good
     text = samples.tmy3(NORTH_WEST, middle, sky)
     assert "wind_speed is missing" in refused(written(tmp_path, text.replace("Wspd (m/s)", "Gust (m/s)")))
-    assert "never negative" in refused(written(tmp_path, samples.epw(NORTH_WEST, middle, sky.assign(dhi=-60))))
+    assert "never negative" in refused(
+        written(tmp_path, samples.epw(NORTH_WEST, middle, sky.assign(dhi=-60)))
+    )
     dark = sky.assign(ghi=0, dni=0, dhi=0)
     assert "0 in all rows" in refused(written(tmp_path, samples.epw(NORTH_WEST, middle, dark)))
 
@@ -288,7 +293,7 @@ def test_tracked_plane_of_pvgis_is_refused(tmp_path):
     assert "tracked plane" in refused(written(tmp_path, text))
 
 
-# -- clear sky -------------------------------------------------------------------------------------------------
+# -- clear sky -------------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize(("lat", "lon", "warm_month"), [(48.0, 11.0, 7), (-33.0, 151.0, 1), (0.0, -78.0, 7)])

@@ -40,21 +40,26 @@ def sky(place: Place, middle: pd.DatetimeIndex) -> pd.DataFrame:
 def local_year(place: Place, minutes: int = 60, year: int = 2021) -> pd.DatetimeIndex:
     """Middle of each interval of a year in local standard time."""
     end = f"{year + 1}-01-01"
-    start = pd.date_range(f"{year}-01-01", end, freq=f"{minutes}min", inclusive="left", tz=int(place.utc_offset * 3600))
+    start = pd.date_range(
+        f"{year}-01-01", end, freq=f"{minutes}min", inclusive="left", tz=int(place.utc_offset * 3600)
+    )
     return start + pd.Timedelta(minutes=minutes / 2)
 
 
 def epw(place: Place, middle: pd.DatetimeIndex, data: pd.DataFrame, minutes: int = 60) -> str:
     """EPW: the label is the end of the interval, hour 1..24."""
     head = [
-        f"LOCATION,Samplecity,-,XXX,invented,000000,{place.latitude},{place.longitude},{place.utc_offset},{place.altitude}",
+        f"LOCATION,Samplecity,-,XXX,invented,000000,{place.latitude},{place.longitude},"
+        f"{place.utc_offset},{place.altitude}",
         "DESIGN CONDITIONS,0", "TYPICAL/EXTREME PERIODS,0", "GROUND TEMPERATURES,0",
         "HOLIDAYS/DAYLIGHT SAVINGS,No,0,0,0", "COMMENTS 1,invented", "COMMENTS 2,",
         f"DATA PERIODS,1,{60 // minutes},Data,Sunday,1/1,12/31",
     ]  # fmt: skip
     end = middle + pd.Timedelta(minutes=minutes / 2)
     minute = np.where(end.minute == 0, 60, end.minute)
-    table = pd.DataFrame({"year": middle.year, "month": middle.month, "day": middle.day, "hour": middle.hour + 1})
+    table = pd.DataFrame(
+        {"year": middle.year, "month": middle.month, "day": middle.day, "hour": middle.hour + 1}
+    )
     table[["minute", "source"]] = np.column_stack([minute, np.full(len(end), "?9")])
     table["temp_air"] = data["temp_air"].to_numpy()
     table[["dew", "humidity", "pressure", "etr", "etrn", "infrared"]] = (5, 50, 101325, 0, 0, 300)
@@ -65,7 +70,9 @@ def epw(place: Place, middle: pd.DatetimeIndex, data: pd.DataFrame, minutes: int
     return "\n".join(head) + "\n" + table.to_csv(index=False, header=False, lineterminator="\n")
 
 
-def tmy3(place: Place, middle: pd.DatetimeIndex, data: pd.DataFrame, minutes: int = 60, label: str = "end") -> str:
+def tmy3(
+    place: Place, middle: pd.DatetimeIndex, data: pd.DataFrame, minutes: int = 60, label: str = "end"
+) -> str:
     """TMY3, with the columns that matter."""
     shift = {"end": minutes / 2, "start": -minutes / 2, "middle": 0}[label]
     head = [
@@ -121,7 +128,12 @@ def pvgis_tmy(place: Place, stamps: pd.DatetimeIndex, data: pd.DataFrame, offset
         })  # fmt: skip
     head = _pvgis_head(place) + [f"Irradiance Time Offset (h): {offset}", "month,year"]
     head += [f"{m['month']},{m['year']}" for m in months]
-    return "\r\n".join(head) + "\r\n" + table.to_csv(index=False, lineterminator="\r\n") + "\r\nT2m: invented\r\n"
+    return (
+        "\r\n".join(head)
+        + "\r\n"
+        + table.to_csv(index=False, lineterminator="\r\n")
+        + "\r\nT2m: invented\r\n"
+    )
 
 
 def pvgis_hourly(
@@ -136,14 +148,23 @@ def pvgis_hourly(
         fixed = {"slope": {"value": slope, "optimal": False}, "azimuth": {"value": aspect, "optimal": False}}
         return json.dumps({
             "inputs": {
-                "location": {"latitude": place.latitude, "longitude": place.longitude, "elevation": place.altitude},
+                "location": {
+                    "latitude": place.latitude,
+                    "longitude": place.longitude,
+                    "elevation": place.altitude,
+                },
                 "mounting_system": {"fixed": fixed},
             },
             "outputs": {"hourly": table.to_dict("records")}, "meta": {"inputs": {}},
         })  # fmt: skip
     head = _pvgis_head(place) + ["Radiation database:\tinvented", "", ""]
     head += [f"Slope: {slope:g} deg. ", f"Azimuth: {aspect:g} deg. "]
-    return "\r\n".join(head) + "\r\n" + table.to_csv(index=False, lineterminator="\r\n") + "\r\nInt: invented\r\n"
+    return (
+        "\r\n".join(head)
+        + "\r\n"
+        + table.to_csv(index=False, lineterminator="\r\n")
+        + "\r\nInt: invented\r\n"
+    )
 
 
 def _pvgis_head(place: Place) -> list[str]:
