@@ -45,11 +45,12 @@ def run(arguments: list[str] | None = None) -> int:
     command = typer.main.get_command(app)
     try:
         status = command.main(arguments, prog_name="ferrule", standalone_mode=False)
+        if status == INTERRUPTED:
+            # Typer has caught the KeyboardInterrupt and made this status of it.
+            return _refused("interrupted; nothing was left half-written", INTERRUPTED)
         return status if isinstance(status, int) else 0
     except (CatalogError, MatcherError) as error:
         return _refused(str(error))
-    except KeyboardInterrupt:
-        return _refused("interrupted; nothing was left half-written", INTERRUPTED)
     except BrokenPipeError:
         # The reader of a pipe has seen enough (ferrule ... | head).
         sys.stdout = None  # type: ignore[assignment]

@@ -21,7 +21,7 @@ from cli.siting import (
     RearOption,
     TiltOption,
     WeatherOption,
-)  # fmt: skip
+)
 
 if TYPE_CHECKING:
     from catalog.records import Site

@@ -54,8 +54,8 @@ def test_the_demo_fits_about_a_screen_and_a_half(screen):
 
 
 def test_the_strings_of_the_demo_hold_by_hand(screen):
-    # Voc in the cold by the datasheet's coefficient: STC value plus coefficient times difference to 25 degC, as in
-    # the worked examples of Global Sustainable Energy Solutions, "Calculating Module Voltages", 2011.
+    # Voc in the cold by the datasheet's coefficient: STC value plus coefficient times difference to 25 degC,
+    # as in the worked examples of Global Sustainable Energy Solutions, "Calculating Module Voltages", 2011.
     modules = tomllib.loads(seed_catalog.path("modules.toml").read_text(encoding="utf-8"))["module"]
     module = next(m for m in modules if m["model"] in demo.MODULE)
     cold = 8 * module["voc_v"] * (1 + module["voc_coef_pct"] / 100 * (-12 - 25))

@@ -157,6 +157,26 @@ def test_load_of_a_cut_table_loads_nothing(ferrule, few_modules, few_inverters, 
     assert not (tmp_path / "small.sqlite").exists()
 
 
+def test_an_interrupted_load_leaves_nothing(ferrule, sheet, monkeypatch, tmp_path):
+    from contextlib import contextmanager
+
+    from cli import sheet_load
+
+    def interrupt(done: int, total: int) -> None:
+        if done == total:
+            raise KeyboardInterrupt
+
+    @contextmanager
+    def progress():
+        yield interrupt
+
+    monkeypatch.setattr(sheet_load, "_progress", progress)
+    ran = ferrule("sheet", "load", sheet)
+    assert ran.status == 130 and "interrupted" in ran.err and ran.err.count("\n") == 1
+    with Catalog.open(tmp_path / "small.sqlite") as catalog:
+        assert catalog.modules() == []
+
+
 # Finding
 
 
