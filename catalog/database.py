@@ -71,14 +71,12 @@ def open_database(location: str | Path, *, create: bool, readonly: bool) -> Data
     CatalogError
         If it cannot be opened.
     """
-    text = str(location)
-    scheme, separator, rest = text.partition("://")
-    if not separator or isinstance(location, Path):
+    path = file_of(location)
+    if path is not None:
         from catalog.sqlitefile import SqliteFile
 
-        return SqliteFile.open(Path(text), create=create, readonly=readonly)
-    if scheme.partition("+")[0] == "sqlite":
-        return open_database(Path(rest.removeprefix("/")), create=create, readonly=readonly)
+        return SqliteFile.open(path, create=create, readonly=readonly)
+    scheme, _, rest = str(location).partition("://")
     if scheme.partition("+")[0] in ("postgresql", "postgres"):
         from catalog.server import Server
 
@@ -86,3 +84,11 @@ def open_database(location: str | Path, *, create: bool, readonly: bool) -> Data
     raise CatalogError(
         f"a catalog is a file or a PostgreSQL database (postgresql+psycopg://user@host/name), not {scheme}://..."
     )
+
+
+def file_of(location: str | Path) -> Path | None:
+    """The file that a location names; ``None`` for the URL of a server."""
+    scheme, separator, rest = str(location).partition("://")
+    if isinstance(location, Path) or not separator:
+        return Path(location).expanduser()
+    return Path(rest.removeprefix("/")).expanduser() if scheme.partition("+")[0] == "sqlite" else None

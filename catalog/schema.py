@@ -12,6 +12,7 @@ from collections.abc import Callable, Mapping
 from typing import TYPE_CHECKING
 
 from catalog.errors import CatalogError
+from catalog.faults import UNCHANGED
 
 if TYPE_CHECKING:
     from sqlmodel import Session
@@ -48,18 +49,11 @@ def ensure(database: Database, *, create: bool) -> None:
     CatalogError
         If the catalog is newer than this program, is no catalog, or does not exist and is not to be made.
     """
-    version = _version(database)
+    version = checked_version(database)
     if version == VERSION:
         return
     if version is None and not create:
         raise CatalogError(database.missing_line())
-    if version is not None and version > VERSION:
-        raise CatalogError(
-            f"the catalog {database.label} was last used by a newer Ferrule (its schema is {version}, this one knows"
-            f" up to {VERSION}): update with 'pip install --upgrade ferrule'; {_UNCHANGED}"
-        )
-    if version is not None and version + 1 not in MIGRATIONS:
-        raise CatalogError(f"the catalog {database.label} has a schema {version} that no Ferrule has written")
     with database.writable() as writer, writer.writing() as (session, run):
         # Another process may have been first.
         version = stored_version(run) if version is not None else None
@@ -70,17 +64,30 @@ def ensure(database: Database, *, create: bool) -> None:
             _migrate(session, version)
 
 
-_UNCHANGED = "nothing in it was changed"
+def checked_version(database: Database) -> int | None:
+    """Schema version of a catalog that this program can use or migrate; ``None`` if there are no tables yet.
 
-
-def _version(database: Database) -> int | None:
-    """Schema version, where the tables are there."""
+    Raises
+    ------
+    CatalogError
+        If the catalog is of a newer program, or it is another database.
+    """
     if not database.has_table("meta"):
         if database.has_table():
             raise CatalogError(f"{database.label} is a database, but no catalog of Ferrule's: name another")
         return None
     with database.reading() as run:
-        return stored_version(run)
+        version = stored_version(run)
+    if version is None:
+        raise CatalogError(f"{database.label} is a database, but no catalog of Ferrule's: name another")
+    if version > VERSION:
+        raise CatalogError(
+            f"the catalog {database.label} was last used by a newer Ferrule (its schema is {version}, this one knows"
+            f" up to {VERSION}): update with 'pip install --upgrade ferrule'; {UNCHANGED}"
+        )
+    if any(step not in MIGRATIONS for step in range(version + 1, VERSION + 1)):
+        raise CatalogError(f"the catalog {database.label} has a schema {version} that no Ferrule has written")
+    return version
 
 
 def _make(session: Session) -> None:

@@ -24,9 +24,6 @@ if TYPE_CHECKING:
 
     from catalog.database import Run
 
-#: Marks a file as a catalog in its header, for programs that tell files apart ("FERR").
-APPLICATION_ID = 0x46455252
-
 _ATTEMPT_S = 0.2
 
 
@@ -42,7 +39,6 @@ class SqliteFile:
     @classmethod
     def open(cls, path: Path, *, create: bool, readonly: bool) -> SqliteFile:
         """Open a file, or make an empty one."""
-        path = path.expanduser()
         with told(str(path)):
             try:
                 there = path.exists()
@@ -112,13 +108,9 @@ class SqliteFile:
         return bool(names) if name is None else name in names
 
     def keep_copy(self, tag: str) -> None:
-        from catalog.backup import copy_file
+        from catalog.filecopy import copy_file, free_name
 
-        number, target = 1, self.path.with_name(f"{self.path.stem}.{tag}{self.path.suffix}")
-        while target.exists():
-            number += 1
-            target = self.path.with_name(f"{self.path.stem}.{tag}-{number}{self.path.suffix}")
-        copy_file(self.path, target)
+        copy_file(self.path, free_name(self.path, tag))
 
     def missing_line(self) -> str:
         return _missing_line(self.path)

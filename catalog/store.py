@@ -288,6 +288,24 @@ class Catalog:
             ]
         )
 
+    # Copies
+
+    def backup(self, path: str | Path) -> Path:
+        """Write a copy of the whole catalog to a new file, as of this moment, and return its path.
+
+        It is a catalog of its own. `catalog.backup.restore` brings it back.
+
+        Raises
+        ------
+        CatalogError
+            If the file exists or cannot be written.
+        """
+        from catalog.backup import backup
+
+        path = Path(path).expanduser()
+        backup(self._database, path)
+        return path
+
     def _records(self, kind: str, ids: Iterable[int] | None) -> list:
         if ids is None:
             with self._database.reading() as run:

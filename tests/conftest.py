@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from pathlib import Path
-from typing import NamedTuple
+from typing import TYPE_CHECKING, NamedTuple
 
 import pandas as pd
 import pvlib
 import pytest
+
+if TYPE_CHECKING:
+    from postgres_server import PostgresServer
 
 
 class Ran(NamedTuple):
@@ -73,10 +76,24 @@ def small_catalog(tmp_path: Path) -> Path:
     return path
 
 
-@pytest.fixture
-def store_location(tmp_path: Path) -> str:
-    """Where a test of the store may make its catalog."""
-    return str(tmp_path / "catalog.sqlite")
+@pytest.fixture(scope="session")
+def postgres_server() -> Iterator[PostgresServer]:
+    """A PostgreSQL server of the tests' own."""
+    from postgres_server import PostgresServer, why_not
+
+    reason = why_not()
+    if reason:
+        pytest.skip(reason)
+    with PostgresServer() as server:
+        yield server
+
+
+@pytest.fixture(params=["sqlite", "postgresql"])
+def store_location(request: pytest.FixtureRequest, tmp_path: Path) -> str:
+    """Where a test of the store may make its catalog: a file, then an empty schema of a database."""
+    if request.param == "sqlite":
+        return str(tmp_path / "catalog.sqlite")
+    return request.getfixturevalue("postgres_server").new_schema()
 
 
 @pytest.fixture
