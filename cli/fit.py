@@ -67,16 +67,15 @@ def fit(
             lat=lat, lon=lon, tilt=tilt, azimuth=azimuth, weather=weather,
         )  # fmt: skip
         from cli.asking import request_of
-        from cli.years import no_year, site_year, site_years
+        from cli.years import site_year, site_years
         from matcher.fit import fit as search
 
         pair = module is not None and inverter is not None
         request = request_of(place, ratio, count, clip_cap, rules, combiner, by, every or pair, units, strings)
         modules, inverters = _records(opened, module, inverter)
         if len(modules) == 1:
-            year = site_year(opened, place, modules[0])
-        elif place.weather is None and place.lat is None:
-            year = no_year(place)
+            limited = any(g.max_current_a is not None for i in inverters for g in i.inputs)
+            year = site_year(opened, place, modules[0], current_limits=limited)
         else:
             year = site_years(opened, place, modules)
         found = search(modules, inverters, request, year.year)

@@ -181,10 +181,18 @@ def _unit_wiring(unit: Unit) -> str:
 #: Nowhere on Earth is the air colder (Vostok, 1983: -89.2 degC); an option that holds there holds anywhere.
 _COLDEST_ON_EARTH_C = -90.0
 
+_VOLTAGE_MAXIMA = ("max_dc_voltage_v", "max_system_voltage_v")
+
 
 def climate_window(option: Option) -> str:
-    """Coldest to hottest ambient temperature at which the option holds; ``any`` where nothing bounds it."""
-    low = "any" if option.coldest_c is None or option.coldest_c < _COLDEST_ON_EARTH_C else f"{option.coldest_c:.0f}"
+    """Coldest to hottest ambient temperature at which the option holds.
+
+    ``any`` where nothing bounds it; ``?`` where the maximum that would bound it is not on record.
+    """
+    if option.coldest_c is None:
+        low = "?" if any(c.field in _VOLTAGE_MAXIMA for c in option.confirm) else "any"
+    else:
+        low = "any" if option.coldest_c < _COLDEST_ON_EARTH_C else f"{option.coldest_c:.0f}"
     high = "any" if option.hottest_c is None else f"{option.hottest_c:.0f}"
     return f"{low} to {high}"
 

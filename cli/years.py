@@ -6,28 +6,39 @@ import hashlib
 import io
 import json
 import os
+from collections.abc import Mapping, Sequence
 from dataclasses import astuple, dataclass
 from typing import TYPE_CHECKING
 
 from catalog.errors import CatalogError
 
 if TYPE_CHECKING:
+    import numpy as np
+
     from catalog.records import Module, Site
     from catalog.store import Catalog
-    from matcher.moduleyear import ModuleYear
-    from matcher.singlediode import SixParameters
+    from matcher.moduleyear import ModuleYear, PlaneYear
     from matcher.weather import Weather
+
+#: DC losses from the modules to the inverter [% of power] (common practice: 1 to 5 %, no source).
+DC_LOSS_PCT = 2.0
+
+NO_PLACE = "the site has no place: give --lat and --lon, or a --weather file"
 
 #: Stands in where neither site nor weather file says how the array is tilted.
 ASSUMED_TILT = 30.0
 
 #: Goes into the key of a kept year; to be raised when the calculation changes.
-_EDITION = 1
+_EDITION = 2
 
 
 @dataclass(frozen=True, slots=True)
 class SiteYear:
-    """The year of a module, where it comes from, and what must be said about it; no year says why in ``why_not``."""
+    """The year of modules at a site, where it comes from, and what must be said about it.
+
+    ``year`` has arrays (classes,) for one module or (modules, classes) for several; where it is ``None``,
+    ``why_not`` says why.
+    """
 
     year: ModuleYear | None
     weather: str | None = None
@@ -35,37 +46,84 @@ class SiteYear:
     why_not: str | None = None
 
 
-def site_year(catalog: Catalog, site: Site, module: Module, dc_loss_pct: float = 2.0) -> SiteYear:
+def site_year(
+    catalog: Catalog, site: Site, module: Module, *, current_limits: bool = True, dc_loss_pct: float = DC_LOSS_PCT
+) -> SiteYear:
     """Condensed year of one module at a site.
+
+    Without ``current_limits`` the year serves inverters only of which no tracker states a maximum current,
+    and is smaller.
 
     Raises
     ------
     CatalogError, MatcherError
         Where the weather file cannot be read.
     """
-    if site.weather is None and site.lat is None:
-        return SiteYear(None, why_not="the site has no place: give --lat and --lon, or a --weather file")
+    if not _has_weather(site):
+        return SiteYear(None, why_not=NO_PLACE)
     from matcher.electrical import diode_parameters
 
     diode = diode_parameters(module)
     if diode is None:
         return SiteYear(None, why_not=f"the coefficients of {module.name} do not allow a model of its power")
-    key = _key(site, diode, dc_loss_pct)
+    key = _key("year", site, dc_loss_pct, current_limits, [float(v) for v in astuple(diode)])
     kept = catalog.kept(key)
     if kept is not None:
-        return _unpacked(kept)
-    found = _worked_out(site, diode, dc_loss_pct)
-    catalog.keep(key, _packed(found))
-    return found
+        arrays, weather, notes = _unpacked(kept)
+    else:
+        from matcher.moduleyear import condense, module_year
+
+        plane, weather, notes = _plane(site)
+        year = condense(module_year(diode, plane, dc_loss_pct), current_limits=current_limits)
+        arrays = {"power_w": year.power_w, "vmp_v": year.vmp_v, "hours": year.hours}
+        catalog.keep(key, _packed(arrays, weather, notes))
+    from matcher.moduleyear import ModuleYear
+
+    return SiteYear(ModuleYear(**arrays), weather, notes)
 
 
-def _worked_out(site: Site, diode: SixParameters, dc_loss_pct: float) -> SiteYear:
-    from matcher.moduleyear import condense, module_year, plane_year
+def site_years(
+    catalog: Catalog, site: Site, modules: Sequence[Module], dc_loss_pct: float = DC_LOSS_PCT
+) -> SiteYear:
+    """Years of several modules at a site, on classes of irradiance and cell temperature that all share.
+
+    A module whose record does not allow a model of its power has NaN. Raises as `site_year` does.
+    """
+    if not _has_weather(site):
+        return SiteYear(None, why_not=NO_PLACE)
+    import numpy as np
+
+    from matcher.electrical import diodes_of
+    from matcher.moduleyear import PlaneYear, condense_plane, module_years
+
+    key = _key("plane", site)
+    kept = catalog.kept(key)
+    if kept is not None:
+        arrays, weather, notes = _unpacked(kept)
+    else:
+        whole, weather, notes = _plane(site)
+        condensed = condense_plane(whole)
+        arrays = {"irradiance": condensed.irradiance, "cell_c": condensed.cell_c, "hours": condensed.hours}
+        catalog.keep(key, _packed(arrays, weather, notes))
+    plane = PlaneYear(**arrays, rows=np.empty(0, dtype=int))
+    year = module_years(diodes_of(modules), plane, dc_loss_pct)
+    # Without a model there is no power, which is not the same as none.
+    unknown = ~(year.power_w > 0).any(axis=1)
+    year.power_w[unknown] = np.nan
+    return SiteYear(year, weather, notes)
+
+
+def _has_weather(site: Site) -> bool:
+    return site.weather is not None or site.lat is not None
+
+
+def _plane(site: Site) -> tuple[PlaneYear, str, tuple[str, ...]]:
+    """The site's year on its array, what it is called, and what must be said about it."""
+    from matcher.moduleyear import plane_year
 
     weather = weather_of(site)
     tilt, azimuth, assumed = plane_of(site, weather)
     plane = plane_year(weather, tilt, azimuth)
-    year = condense(module_year(diode, plane, dc_loss_pct))
     label = "clear-sky year" if site.weather is None else f"{weather.kind} {os.path.basename(site.weather)}"
     notes = [
         f"Weather: {label}, {weather.lowest_c:.1f} to {weather.highest_c:.1f} degC in the air,"
@@ -73,7 +131,7 @@ def _worked_out(site: Site, diode: SixParameters, dc_loss_pct: float) -> SiteYea
         f"{', assumed' if assumed else ''})."
     ]
     notes += [f"{n[0].upper()}{n[1:].rstrip('.')}." for n in weather.notes]
-    return SiteYear(year, label, tuple(notes))
+    return plane, label, tuple(notes)
 
 
 def weather_of(site: Site) -> Weather:
@@ -101,8 +159,9 @@ def plane_of(site: Site, weather: Weather) -> tuple[float, float, bool]:
     )
 
 
-def _key(site: Site, diode: SixParameters, dc_loss_pct: float) -> str:
-    made_from: list[object] = [_EDITION, site.tilt, site.azimuth, dc_loss_pct, [float(v) for v in astuple(diode)]]
+def _key(kind: str, site: Site, *more: object) -> str:
+    """Key of what is kept: everything that it was made from."""
+    made_from: list[object] = [_EDITION, site.tilt, site.azimuth, *more]
     if site.weather is not None:
         try:
             status = os.stat(site.weather)
@@ -111,25 +170,21 @@ def _key(site: Site, diode: SixParameters, dc_loss_pct: float) -> str:
         made_from += [os.path.abspath(site.weather), status.st_size, status.st_mtime_ns]
     else:
         made_from += [site.lat, site.lon, site.design_low_c, site.design_high_c]
-    return "year:" + hashlib.sha256(json.dumps(made_from).encode()).hexdigest()
+    return f"{kind}:" + hashlib.sha256(json.dumps(made_from).encode()).hexdigest()
 
 
-def _packed(found: SiteYear) -> bytes:
+def _packed(arrays: Mapping[str, np.ndarray], weather: str, notes: tuple[str, ...]) -> bytes:
     import numpy as np
 
-    assert found.year is not None
-    text = json.dumps({"weather": found.weather, "notes": found.notes})
     data = io.BytesIO()
-    np.savez(data, power_w=found.year.power_w, vmp_v=found.year.vmp_v, hours=found.year.hours, text=np.array(text))
+    np.savez(data, text=np.array(json.dumps({"weather": weather, "notes": notes})), **arrays)
     return data.getvalue()
 
 
-def _unpacked(data: bytes) -> SiteYear:
+def _unpacked(data: bytes) -> tuple[dict[str, np.ndarray], str, tuple[str, ...]]:
     import numpy as np
 
-    from matcher.moduleyear import ModuleYear
-
-    with np.load(io.BytesIO(data), allow_pickle=False) as arrays:
-        text = json.loads(str(arrays["text"]))
-        year = ModuleYear(arrays["power_w"], arrays["vmp_v"], arrays["hours"])
-    return SiteYear(year, text["weather"], tuple(text["notes"]))
+    with np.load(io.BytesIO(data), allow_pickle=False) as file:
+        text = json.loads(str(file["text"]))
+        arrays = {name: file[name] for name in file.files if name != "text"}
+    return arrays, text["weather"], tuple(text["notes"])

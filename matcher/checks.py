@@ -176,7 +176,7 @@ def _start(pair: Pair, shortest: int) -> Check | None:
 
 def _worst(checks: Sequence[Check]) -> Check:
     """The check that decides: failing before unstated before the smallest margin."""
-    rank = {Verdict.DOES_NOT_FIT: 0, Verdict.TO_CONFIRM: 1, Verdict.NOTE: 2, Verdict.FITS: 3}
+    rank = {Verdict.DOES_NOT_FIT: 0, Verdict.NOTE: 1, Verdict.TO_CONFIRM: 2, Verdict.FITS: 3}
     # Among unstated limits the one with the largest value asks for most.
     return min(
         checks,
@@ -218,12 +218,15 @@ def _string_inputs(pair: Pair, trackers: Sequence[Tracker]) -> list[Check]:
 
 
 def _input_current(pair: Pair, trackers: Sequence[Tracker]) -> list[Check]:
-    """Note: operating current against the tightest tracker's limit."""
+    """Note: operating current against the tightest tracker's limit; an unstated one is said."""
     found = []
     for t in trackers:
         limit = pair.inverter.inputs[t.inputs].max_current_a
-        if limit is not None:
-            value = t.strings * pair.points.imp_a
+        value = t.strings * pair.points.imp_a
+        if limit is None:
+            confirm = Confirm("inverter", "max_current_a", value, "A", inputs=t.inputs)
+            found.append(_check(pair, "input-current", value, None, "A", Verdict.TO_CONFIRM, confirm=confirm))
+        else:
             held = not _holds_max(value, limit)
             remark = "the tracker limits the current; the loss counts as clipping" if held else None
             found.append(_maximum(pair, "input-current", value, limit, "A", remark=remark))

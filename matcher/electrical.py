@@ -12,9 +12,12 @@ from dataclasses import dataclass
 import numpy as np
 
 from catalog.records import MOUNTINGS, SIX_PARAMETERS, Module, Site
+from matcher.columns import column
 from matcher.errors import MatcherError
 from matcher.rules import RuleSet, cold_factor
-from matcher.singlediode import SixParameters, max_power_point, six_parameters
+from matcher.singlediode import (
+    FITTED_FROM, SixParameters, fit_six_parameters, max_power_point, six_parameters,
+)  # fmt: skip
 
 #: NOCT [degC] that stands in where a record has none.
 ASSUMED_NOCT_C = 45.0
@@ -41,14 +44,6 @@ class Points:
     reasons: tuple[str | None, ...]
 
 
-def is_crystalline(module: Module) -> bool:
-    """Whether the module's cells are crystalline silicon, by the words of its technology."""
-    words = module.technology.casefold()
-    if any(w in words for w in ("thin", "cdte", "cigs", "cis", "amorph", "a-si", "tandem", "organic", "perovskite")):
-        return False
-    return any(w in words for w in ("c-si", "mono", "multi", "poly", "perc", "topcon", "crystal", "hjt", "heterojunction"))
-
-
 def hot_adder(module: Module, site: Site) -> float:
     """Rise of the cell over ambient [K] at 1000 W/m2: NOCT, and the adder of the mounting.
 
@@ -62,7 +57,7 @@ def hot_adder(module: Module, site: Site) -> float:
 
 def uses_cold_table(module: Module, rules: RuleSet) -> bool:
     """Whether the cold Voc comes from NEC Table 690.7(A) and not from the datasheet's coefficient."""
-    return module.voc_coef_pct is None or (rules.cold_voltage == "table" and is_crystalline(module))
+    return module.voc_coef_pct is None or (rules.cold_voltage == "table" and module.crystalline)
 
 
 def diode_parameters(module: Module) -> SixParameters | None:
@@ -95,7 +90,7 @@ def _cold_voc(module: Module, site: Site, rules: RuleSet) -> float | str:
     if not uses_cold_table(module, rules):
         assert module.voc_coef_pct is not None
         return module.voc_v * (1.0 + module.voc_coef_pct / 100.0 * (site.design_low_c - 25.0))
-    if not is_crystalline(module):
+    if not module.crystalline:
         return "voc_coef_pct is not stated, and no table replaces it for this technology"
     factor = cold_factor(site.design_low_c)
     if factor is None:
@@ -113,34 +108,34 @@ def _isc_design(module: Module, site: Site, rules: RuleSet) -> float | str:
     return current
 
 
-def _table_diodes(modules: Sequence[Module], wanted: Sequence[int]) -> SixParameters:
-    """Six-parameter models of several table records at once, as arrays."""
-    columns = {p: np.array([getattr(modules[k], p) for k in wanted], dtype=float) for p in SIX_PARAMETERS}
-    alpha = np.array([modules[k].isc_coef_pct / 100.0 * modules[k].isc_a for k in wanted], dtype=float)
-    return SixParameters(alpha_sc=alpha, **columns)
+def diodes_of(modules: Sequence[Module]) -> SixParameters:
+    """Six-parameter models of several modules as arrays, shape (modules,); NaN where there is none."""
+    columns = {p: column(modules, p) for p in SIX_PARAMETERS}
+    alpha = column(modules, "isc_coef_pct") / 100.0 * column(modules, "isc_a")
+    columns["alpha_sc"] = alpha
+    gaps = np.flatnonzero(np.isnan(np.array(list(columns.values()))).any(axis=0))
+    if len(gaps):
+        fitted = fit_six_parameters(*(column([modules[k] for k in gaps], name) for name in FITTED_FROM))
+        for name, values in columns.items():
+            values[gaps] = getattr(fitted, name)
+    return SixParameters(**columns)
 
 
 def _vmp_at(modules: Sequence[Module], temperatures: np.ndarray) -> np.ndarray:
     """Vmp [V] of n modules at their own temperatures, shape (n, 3); NaN rows where it cannot be had."""
     out = np.full(temperatures.shape, np.nan)
-    table: list[int] = []
-    for k, module in enumerate(modules):
-        if (
-            module.vmp_coef_pct is None
-            and module.isc_coef_pct is not None
-            and all(getattr(module, p) is not None for p in SIX_PARAMETERS)
-        ):
-            table.append(k)
-            continue
-        needs_model = module.vmp_coef_pct is None
-        found = vmp(module, temperatures[k], diode_parameters(module) if needs_model else None)
+    stated = ~np.isnan(column(modules, "vmp_coef_pct"))
+    modelled = np.flatnonzero(~stated)
+    if len(modelled):
+        diodes = diodes_of([modules[k] for k in modelled])
+        for c in range(temperatures.shape[1]):
+            t = temperatures[modelled, c]
+            out[modelled, c] = max_power_point(diodes, np.full_like(t, 1000.0), t)[0]
+    # What is left has a coefficient of Vmp, or no model and perhaps the coefficients of Pmax and Isc.
+    for k in np.flatnonzero(stated | np.isnan(out).any(axis=1)):
+        found = vmp(modules[k], temperatures[k], None)
         if found is not None:
             out[k] = found
-    if table:
-        diodes = _table_diodes(modules, table)
-        for column in range(temperatures.shape[1]):
-            t = temperatures[table, column]
-            out[table, column] = max_power_point(diodes, np.full_like(t, 1000.0), t)[0]
     return out
 
 

@@ -65,7 +65,7 @@ def leading_keys(
     if order is Order.ENERGY:
         return [-np.nan_to_num(yearly_kwh, nan=-np.inf), -ratio]
     stage = phase(clipping_pct, clip_cap_pct)
-    return [stage, np.where(stage == 2, clipping, -ratio), np.where(stage == 2, -ratio, 0.0)]
+    return [stage, np.where(stage == 2, clipping, -ratio)]
 
 
 def sort_keys(options: Options, order: Order, clip_cap_pct: float, name_rank: np.ndarray) -> list[np.ndarray]:

@@ -100,7 +100,7 @@ def test_same_arrangements_best_first(monkeypatch):
 
         eager = options()
         with monkeypatch.context() as patch:
-            patch.setattr(matcher.fit, "WHOLE", 0)
+            patch.setattr(matcher.search, "WHOLE", 0)
             patch.setattr(matcher.fit, "WHOLE_EVERY", 0)
             lazy, best = options(), options(every=False)
         assert {form(o, case.inverter) for o in lazy} == {form(o, case.inverter) for o in eager}
@@ -247,9 +247,9 @@ def random_year(module: Module, rng: random.Random, entries: int = 25):
 
 
 def in_order(option: Option, case: Case) -> tuple:
-    """The oracle's sort key of an option; of equal losses over the cap the engine puts more modules first."""
+    """The oracle's sort key of an option."""
     arrangement = form(option, case.inverter)
-    key = oracle.order_key(
+    return oracle.order_key(
         str(option.verdict),
         oracle.modules_of(arrangement) * case.module.pmax_w / case.inverter.ac_power_w,
         option.clipping_loss_pct,
@@ -258,7 +258,6 @@ def in_order(option: Option, case: Case) -> tuple:
         case.inverter.maker,
         case.inverter.model,
     )
-    return (*key[:3], -oracle.modules_of(arrangement), *key[3:])
 
 
 def with_sandia(inverter: Inverter) -> Inverter:
