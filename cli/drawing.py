@@ -12,8 +12,8 @@ from xml.etree import ElementTree
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
-# Blue, amber and vermilion of Okabe and Ito, "Color Universal Design", 2008, the last one darker so that it can
-# be read as text; the greys differ in lightness.
+# Blue, amber and vermilion of Okabe and Ito, "Color Universal Design", 2008, the last one darker so that it
+# can be read as text; the greys differ in lightness.
 ACCENT = "#0072B2"
 AMBER = "#E69F00"
 VERMILION = "#B34700"
@@ -77,7 +77,7 @@ def spread(wanted: Sequence[float], gap: float, low: float, high: float) -> list
 
 
 def svg_of(fig: Figure, key: str, title: str, words: str) -> str:
-    """The figure as an SVG element for a page: a picture with title and description, names begun with ``key``.
+    """The figure as an SVG element for a page: an image with title and description, ids begun with ``key``.
 
     The page's own type is used (sizes stay), and the size is left to the page.
     """
@@ -104,7 +104,7 @@ def svg_of(fig: Figure, key: str, title: str, words: str) -> str:
 
 
 def _own_names(root: ElementTree.Element, key: str) -> None:
-    """Keep only the ids that something refers to, and make them unlike those of other pictures in the page."""
+    """Keep only the ids that something refers to, and make them unlike those of other pictures."""
     text = ElementTree.tostring(root, encoding="unicode")
     used = set(re.findall(r"url\(#([^)]+)\)", text)) | set(re.findall(r'href="#([^"]+)"', text))
     for element in root.iter():

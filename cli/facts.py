@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING
 
+from catalog.records import Inputs, Inverter, Module, specs
 from cli.cautions import HOURLY_MEANS
 from cli.fit_screen import assumptions
 
@@ -16,13 +17,7 @@ if TYPE_CHECKING:
 #: Nowhere on Earth is the air colder (Vostok, 1983: -89.2 degC).
 COLDEST_ON_EARTH_C = -90.0
 
-_FIELDS = {
-    "max_dc_voltage_v": "maximum DC voltage",
-    "max_system_voltage_v": "maximum system voltage",
-    "max_isc_a": "maximum short-circuit current of one tracker",
-    "max_series_fuse_a": "maximum series fuse rating",
-    "voc_coef_pct": "temperature coefficient of Voc",
-}
+_VOLTAGE_MAXIMA = ("max_dc_voltage_v", "max_system_voltage_v")
 
 
 def number_of_options(fit: Fit) -> int:
@@ -32,8 +27,10 @@ def number_of_options(fit: Fit) -> int:
 
 def field_words(confirm: Confirm) -> str:
     """The value to confirm in words, with its group of inputs where it is not the first."""
-    group = f" (inputs {confirm.inputs + 1})" if confirm.inputs else ""
-    return _FIELDS.get(confirm.field, confirm.field) + group
+    if confirm.field in specs(Inputs):
+        group = f", inputs {confirm.inputs + 1}" if confirm.inputs else ""
+        return f"{specs(Inputs)[confirm.field].meaning}{group}"
+    return specs(Module if confirm.record == "module" else Inverter)[confirm.field].meaning
 
 
 def at_least(confirm: Confirm) -> float | None:
@@ -44,7 +41,11 @@ def at_least(confirm: Confirm) -> float | None:
 def confirm_words(confirm: Confirm) -> str:
     """Like "maximum DC voltage of at least 561.3 V"."""
     least = at_least(confirm)
-    return field_words(confirm) if least is None else f"{field_words(confirm)} of at least {least:.1f} {confirm.unit}"
+    return (
+        field_words(confirm)
+        if least is None
+        else f"{field_words(confirm)} of at least {least:,.1f} {confirm.unit}"
+    )
 
 
 def confirm_line(option: Option) -> str:
@@ -52,20 +53,42 @@ def confirm_line(option: Option) -> str:
     return "; ".join(f"{c.record}: {confirm_words(c)}" for c in option.confirm)
 
 
-def coldest(option: Option) -> float | None:
-    """Coldest ambient temperature at which the option holds [degC]; ``None`` where no place is too cold."""
-    return None if option.coldest_c is None or option.coldest_c < COLDEST_ON_EARTH_C else option.coldest_c
+def holds_from(option: Option) -> float | str | None:
+    """Coldest air temperature at which the option holds [degC]; "any" where no place on Earth is colder.
+
+    ``None`` while a voltage maximum is to be confirmed: what is not known bounds it.
+    """
+    if any(c.field in _VOLTAGE_MAXIMA for c in option.confirm):
+        return None
+    return "any" if option.coldest_c is None or option.coldest_c < COLDEST_ON_EARTH_C else option.coldest_c
+
+
+def holds_to(option: Option) -> float | str | None:
+    """Hottest air temperature at which the option holds [degC], "any", or ``None`` as for `holds_from`."""
+    if any(c.field == "voc_coef_pct" for c in option.confirm):
+        return None
+    return "any" if option.hottest_c is None else option.hottest_c
+
+
+def climate_words(option: Option, low_c: float, high_c: float) -> str:
+    """The climate window in words; where a value to confirm bounds it, the design temperatures stand in."""
+    low, high = holds_from(option), holds_to(option)
+    if low == high == "any":
+        return "any temperature"
+    waits = ", once confirmed" if low is None or high is None else ""
+    ends = (low_c if low is None else low, high_c if high is None else high)
+    return f"{' to '.join(e if isinstance(e, str) else f'{e:.0f}' for e in ends)} °C{waits}"
 
 
 def rests_on(fit: Fit, year: SiteYear) -> list[str]:
-    """What the result rests on: design values, weather, and defaults that stand in for values not on record."""
+    """What the result rests on: design values, weather, and defaults for values not on record."""
     r, site = fit.request, fit.request.site
     hot = "the hot cell is at 1000 W/m2"
     if len(fit.modules) == 1:
         hot = f"the hot cell at {fit.module_points(0).cell_hot_c:.1f} degC (1000 W/m2, {site.mounting})"
     lines = [
-        f"Design temperatures: {site.design_low_c:g} and {site.design_high_c:g} degC in the air; the cold cell is at"
-        f" the air's temperature, {hot}.",
+        f"Design temperatures: {site.design_low_c:g} and {site.design_high_c:g} degC in the air; the"
+        f" cold cell is at the air's temperature, {hot}.",
         f"Rule set {r.rules.name}: the design short-circuit current is {r.rules.isc_factor:g} times Isc.",
     ]
     if r.combiner:

@@ -14,12 +14,12 @@ from typing import IO, TYPE_CHECKING, Any
 from cli import facts
 from cli.cautions import CAUTIONS
 from cli.console import number
-from cli.fit_screen import answer, climate_window, question, wiring
+from cli.fit_screen import answer, question, wiring
 
 if TYPE_CHECKING:
     from cli.pictures import Picture
     from cli.years import SiteYear
-    from matcher.checks import Check
+    from matcher.checks import Check, Confirm
     from matcher.fit import Fit, Option
 
 #: Rows of a table that a browser still sorts at once.
@@ -50,7 +50,7 @@ CHECK_WORDS = {
 
 @dataclass(frozen=True, slots=True)
 class Column:
-    """A column of the options' table; its kind is ``n`` (number), ``word`` (verdict), ``name`` or ``text``."""
+    """A column of the options' table; its kind is n (number), word (verdict), name or text."""
 
     header: str
     kind: str = "n"
@@ -69,7 +69,11 @@ def write_report(fit: Fit, stream: IO[str], year: SiteYear, *, why: bool) -> Non
     from jinja2 import Environment, PackageLoader, StrictUndefined
 
     pages = Environment(
-        loader=PackageLoader("cli"), autoescape=True, undefined=StrictUndefined, trim_blocks=True, lstrip_blocks=True
+        loader=PackageLoader("cli"),
+        autoescape=True,
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
     )
     pages.get_template("report.html.j2").stream(_content(fit, year, why)).dump(stream)
 
@@ -79,7 +83,9 @@ def _content(fit: Fit, year: SiteYear, why: bool) -> dict[str, Any]:
     options = list(fit.options(ROWS))
     total = facts.number_of_options(fit)
     columns = _columns(fit, year)
-    script, style = (files("cli").joinpath(f"templates/report.{kind}").read_text("utf-8") for kind in ("js", "css"))
+    script, style = (
+        files("cli").joinpath(f"templates/report.{kind}").read_text("utf-8") for kind in ("js", "css")
+    )
     digest = base64.b64encode(hashlib.sha256(script.encode()).digest()).decode()
     best = options[0] if options else None
     confirm, confirm_more = _confirm(fit, options)
@@ -101,6 +107,7 @@ def _content(fit: Fit, year: SiteYear, why: bool) -> dict[str, Any]:
         "rows": [{"verdict": str(o.verdict), "cells": _cells(fit, o, columns)} for o in options],
         "verdicts": sorted({str(o.verdict) for o in options}),
         "shown": _shown(len(options), total),
+        "waits": any(facts.holds_from(o) is None or facts.holds_to(o) is None for o in options),
         "rejected": rejected,
         "rejected_words": f"{missed:,} without option; the nearest misses first"
         + (f", {len(rejected):,} of them listed." if len(rejected) < missed else "."),
@@ -117,8 +124,8 @@ def _content(fit: Fit, year: SiteYear, why: bool) -> dict[str, Any]:
 def _shown(listed: int, total: int) -> str:
     if listed < total:
         return (
-            f"The first {listed:,} of {total:,} options; a .csv or .xlsx file holds all of them, and a narrower"
-            " DC/AC window or module count makes fewer."
+            f"The first {listed:,} of {total:,} options; a .csv or .xlsx file holds all of them, and a"
+            " narrower DC/AC window or module count makes fewer."
         )
     return f"{total:,} option{'s' if total != 1 else ''}."
 
@@ -129,7 +136,8 @@ def _best(fit: Fit, o: Option) -> dict[str, Any]:
         shown.append(("clipped", f"{o.clipping_loss_pct:.2f} %"))
     if o.yearly_kwh is not None:
         shown.append(("a year", f"{o.yearly_kwh:,.0f} kWh"))
-    shown.append(("holds in air of", f"{climate_window(o)} °C".replace("-", "\u2212")))
+    site = fit.request.site
+    shown.append(("holds in air of", typeset(facts.climate_words(o, site.design_low_c, site.design_high_c))))
     margins = [c for c in o.checks if c.stop and c.margin_pct is not None and c.unit != "1"]
     if margins:
         tightest = min(margins, key=lambda c: c.margin_pct or 0.0)
@@ -144,9 +152,9 @@ def _check(c: Check) -> dict[str, str]:
     digits = 0 if c.unit in ("W", "1") else 1
     unit = "" if c.unit == "1" else f" {c.unit}"
     limit = "not on record" if c.limit is None else number(c.limit, digits) + unit
-    if c.confirm is not None and c.limit is None:
-        least = facts.at_least(c.confirm)
-        limit += "" if least is None else f", at least {least:.1f} {c.confirm.unit} needed"
+    remarks = [c.rule, *([c.remark] if c.remark else [])]
+    if c.confirm is not None:
+        remarks.append(f"settled by a {facts.confirm_words(c.confirm)}")
     return {
         "words": CHECK_WORDS.get(c.check, c.check),
         "name": c.check,
@@ -154,28 +162,36 @@ def _check(c: Check) -> dict[str, str]:
         "value": "" if c.value is None else number(c.value, digits) + unit,
         "limit": limit,
         "margin": "" if c.margin_pct is None else f"{c.margin_pct:.1f} %".replace("-", "\u2212"),
-        "rule": c.rule + (f"; {c.remark}" if c.remark else ""),
+        "rule": "; ".join(remarks),
     }
 
 
 def _confirm(fit: Fit, options: Sequence[Option]) -> tuple[list[dict[str, str]], str]:
     """What to read on which datasheet, each record once: the largest value that its options ask for."""
     waiting = [o for o in options if o.confirm]
-    shared = "module" if fit.lists_inverters else "inverter"
-    lines: dict[tuple[str, int, str, int | None], tuple[float, str, list[int]]] = {}
+    asked: dict[tuple[str, int], dict[tuple[str, int | None], Confirm]] = {}
+    ranks: dict[tuple[str, int], list[int]] = {}
     for o in waiting[:CONFIRM_LISTED]:
         for c in o.confirm:
-            record = o.module if c.record == "module" else o.inverter
-            key = (c.record, record, c.field, c.inputs)
-            least, words, ranks = lines.get(key, (-1.0, "", []))
-            if (c.at_least or 0.0) > least:
-                least, words = c.at_least or 0.0, facts.confirm_words(c)
-            lines[key] = (least, words, [*ranks, o.rank])
+            record = (c.record, o.module if c.record == "module" else o.inverter)
+            values, value = asked.setdefault(record, {}), (c.field, c.inputs)
+            if value not in values or (c.at_least or 0.0) > (values[value].at_least or 0.0):
+                values[value] = c
+            if o.rank not in ranks.setdefault(record, []):
+                ranks[record].append(o.rank)
+    shared = "module" if fit.lists_inverters else "inverter"
     found = []
-    for (kind, record, _, _), (_, words, ranks) in sorted(lines.items(), key=lambda e: (e[0][0] != shared, e[1][2])):
-        name = (fit.modules if kind == "module" else fit.inverters)[record].name
-        where = f"option {ranks[0]}" if len(ranks) == 1 else f"the highest of options {ranks[0]} to {ranks[-1]}"
-        found.append({"who": f"{name} ({kind})", "what": words, "where": where})
+    for (kind, k), values in sorted(asked.items(), key=lambda entry: entry[0][0] != shared):
+        of = ranks[kind, k]
+        found.append(
+            {
+                "who": f"{(fit.modules if kind == 'module' else fit.inverters)[k].name} ({kind})",
+                "what": "; ".join(facts.confirm_words(c) for c in values.values()),
+                "where": f"option {of[0]}"
+                if len(of) == 1
+                else f"the most that options {of[0]} to {of[-1]} need",
+            }
+        )
     more = len(waiting) - CONFIRM_LISTED
     return found, f"The table names them for {more:,} more options." if more > 0 else ""
 
@@ -221,7 +237,6 @@ def _columns(fit: Fit, year: SiteYear) -> list[Column]:
 
 def _cells(fit: Fit, o: Option, columns: Sequence[Column]) -> list[Cell]:
     module, inverter = fit.modules[o.module], fit.inverters[o.inverter]
-    coldest = facts.coldest(o)
     known = {
         "#": Cell(str(o.rank), o.rank),
         "verdict": Cell(str(o.verdict)),
@@ -235,12 +250,18 @@ def _cells(fit: Fit, o: Option, columns: Sequence[Column]) -> list[Cell]:
         "DC/AC": Cell(f"{o.dc_ac_ratio:.2f}", o.dc_ac_ratio),
         "clipped %": Cell(number(o.clipping_loss_pct, 2), o.clipping_loss_pct),
         "kWh a year": Cell(number(o.yearly_kwh), o.yearly_kwh),
-        # Any cold and any heat sort beyond every number.
-        "holds from °C": Cell("any", -999.0) if coldest is None else Cell(f"{coldest:.0f}", coldest),
-        "holds to °C": Cell("any", 999.0) if o.hottest_c is None else Cell(f"{o.hottest_c:.0f}", o.hottest_c),
+        "holds from °C": _end(facts.holds_from(o), -999.0),
+        "holds to °C": _end(facts.holds_to(o), 999.0),
         "to confirm": Cell(facts.confirm_line(o)),
     }
     return [known[c.header] for c in columns]
+
+
+def _end(value: float | str | None, beyond: float) -> Cell:
+    """One end of the climate window; any temperature sorts beyond every number."""
+    if value is None:
+        return Cell("?")
+    return Cell(value, beyond) if isinstance(value, str) else Cell(typeset(f"{value:.0f}"), value)
 
 
 def _rejected(fit: Fit) -> list[dict[str, str]]:

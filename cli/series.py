@@ -1,4 +1,4 @@
-"""What the pictures of a report show, worked out by the engine: a string in the climate, wirings, module counts."""
+"""What the pictures of a report show, worked out by the engine: one string, like strings, module counts."""
 
 from __future__ import annotations
 
@@ -15,10 +15,10 @@ from matcher.electrical import design_points, diode_parameters, hot_adder, vmp
 from matcher.limits import TOLERANCE, voltage_cap
 from matcher.moduleyear import ModuleYear
 from matcher.search import Search
-from matcher.shared import with_strings
 
 if TYPE_CHECKING:
     from catalog.records import Module, Site
+    from matcher.arrangements import Space
     from matcher.fit import Fit, Option
     from matcher.rules import RuleSet
 
@@ -26,7 +26,7 @@ if TYPE_CHECKING:
 _COLDEST_SHOWN, _HOTTEST_SHOWN = -60.0, 75.0
 
 #: Rows and columns of the grid, and module counts, that a picture shows at most.
-_ROWS, _COLUMNS, _COUNTS = 26, 28, 60
+_ROWS, _COLUMNS, _COUNTS = 26, 24, 41
 
 #: Stands for "any DC/AC ratio".
 _ANY_RATIO = (1e-9, 1e9)
@@ -101,7 +101,8 @@ def string_in_climate(fit: Fit, option: Option) -> StringInClimate:
     points = fit.module_points(option.module)
     lengths = [t.in_series for unit in option.wired for t in unit.trackers]
     longest, shortest = max(lengths), min(lengths)
-    coldest, hottest = option.coldest_c, option.hottest_c
+    ends = (facts.holds_from(option), facts.holds_to(option))
+    coldest, hottest = (end if isinstance(end, float) else None for end in ends)
     low = min(site.design_low_c - 8, site.design_low_c if coldest is None else coldest - 4)
     high = max(site.design_high_c + 8, site.design_high_c if hottest is None else hottest + 4)
     ambient = np.arange(np.floor(max(low, _COLDEST_SHOWN)), np.ceil(min(high, _HOTTEST_SHOWN)) + 0.5, 1.0)
@@ -109,11 +110,23 @@ def string_in_climate(fit: Fit, option: Option) -> StringInClimate:
     assert noon is not None  # a module without Vmp in the heat is never matched
     voc_cold, vmp_hot = longest * points.voc_cold_v, shortest * points.vmp_hot_v
     found = StringInClimate(
-        ambient, longest * _dawn_voc(module, site, fit.request.rules, ambient), shortest * noon, longest, shortest,
-        site.design_low_c, site.design_high_c, voc_cold, vmp_hot, coldest, hottest,
-        (inverter.mppt_low_v, inverter.mppt_high_v), tuple(_limits(fit, option)), "",
-    )  # fmt: skip
-    return replace(found, words=_climate_words(found))
+        ambient,
+        longest * _dawn_voc(module, site, fit.request.rules, ambient),
+        shortest * noon,
+        longest,
+        shortest,
+        site.design_low_c,
+        site.design_high_c,
+        voc_cold,
+        vmp_hot,
+        coldest,
+        hottest,
+        (inverter.mppt_low_v, inverter.mppt_high_v),
+        tuple(_limits(fit, option)),
+        "",
+    )
+    holds = facts.climate_words(option, site.design_low_c, site.design_high_c)
+    return replace(found, words=_climate_words(found, holds))
 
 
 def _dawn_voc(module: Module, site: Site, rules: RuleSet, ambient: np.ndarray) -> np.ndarray:
@@ -121,38 +134,41 @@ def _dawn_voc(module: Module, site: Site, rules: RuleSet, ambient: np.ndarray) -
     # A coefficient of Vmp only spares the engine the single-diode model, whose Vmp is not asked for here.
     plain = replace(module, vmp_coef_pct=module.vmp_coef_pct or -0.4)
     return np.array(
-        [design_points([plain], replace(site, design_low_c=t, design_high_c=t), rules).voc_cold_v[0]
-         for t in ambient.tolist()]
-    )  # fmt: skip
+        [
+            design_points([plain], replace(site, design_low_c=t, design_high_c=t), rules).voc_cold_v[0]
+            for t in ambient.tolist()
+        ]
+    )
 
 
 def _limits(fit: Fit, option: Option) -> list[Limit]:
     module, inverter = fit.modules[option.module], fit.inverters[option.inverter]
     cap = voltage_cap(fit.request.site, fit.request.rules)
     stated = (
-        ("max DC voltage", inverter.max_dc_voltage_v, True), ("module system voltage", module.max_system_voltage_v, True),
-        ("voltage cap", None if np.isnan(cap) else cap, True), ("MPPT window, top", inverter.mppt_high_v, True),
-        ("MPPT window, bottom", inverter.mppt_low_v, False), ("start voltage", inverter.start_voltage_v, False),
-    )  # fmt: skip
+        ("max DC voltage", inverter.max_dc_voltage_v, True),
+        ("module system voltage", module.max_system_voltage_v, True),
+        ("voltage cap", None if np.isnan(cap) else cap, True),
+        ("MPPT window, top", inverter.mppt_high_v, True),
+        ("MPPT window, bottom", inverter.mppt_low_v, False),
+        ("start voltage", inverter.start_voltage_v, False),
+    )
     found = [Limit(name, volts, maximum) for name, volts, maximum in stated if volts is not None]
     asked = {"max_dc_voltage_v": "max DC voltage", "max_system_voltage_v": "system voltage"}
     for c in option.confirm:
         least = facts.at_least(c)
         if c.field in asked and least is not None:
-            found.append(Limit(f"to confirm: {asked[c.field]} at least", least, recorded=False))
+            found.append(Limit(f"to confirm: {asked[c.field]}", least, recorded=False))
     return found
 
 
-def _climate_words(s: StringInClimate) -> str:
-    parts = [
-        f"Open-circuit voltage of {s.longest} modules in series is {s.voc_cold_v:.0f} V at the design low of"
-        f" {s.design_low_c:g} °C; voltage at maximum power of {s.shortest} in series is {s.vmp_hot_v:.0f} V at the design"
-        f" high of {s.design_high_c:g} °C in full sun."
-    ]
-    parts.append("Limits: " + ", ".join(f"{lim.name} {lim.volts:,.0f} V" for lim in s.limits) + ".")
-    cold = "in any cold" if s.coldest_c is None or s.coldest_c < facts.COLDEST_ON_EARTH_C else f"from {s.coldest_c:.0f} °C"
-    hot = "in any heat" if s.hottest_c is None else f"up to {s.hottest_c:.0f} °C"
-    return " ".join([*parts, f"The wiring holds {cold} {hot} in the air."])
+def _climate_words(s: StringInClimate, holds: str) -> str:
+    limits = ", ".join(f"{lim.name} {lim.volts:,.0f} V" for lim in s.limits)
+    return (
+        f"{s.longest} modules in series have {s.voc_cold_v:,.0f} V open-circuit at the design low of"
+        f" {s.design_low_c:g} °C; {s.shortest} in series have {s.vmp_hot_v:,.0f} V at maximum power at the"
+        f" design high of {s.design_high_c:g} °C in full sun. Limits: {limits}. The wiring holds in air of"
+        f" {holds}."
+    )
 
 
 def _one_inverter(fit: Fit, module: int, inverter: int, ratio: tuple[float, float]) -> Search:
@@ -164,16 +180,18 @@ def _one_inverter(fit: Fit, module: int, inverter: int, ratio: tuple[float, floa
     request = replace(fit.request, ratio=ratio, counts=None, strings=None, units=(1, 1), every=False)
     points = design_points(fit.modules[module : module + 1], request.site, request.rules)
     return Search(
-        fit.modules[module : module + 1], InverterColumns.of(fit.inverters[inverter : inverter + 1]), request, points,
+        fit.modules[module : module + 1],
+        InverterColumns.of(fit.inverters[inverter : inverter + 1]),
+        request,
+        points,
         year,
-    )  # fmt: skip
+    )
 
 
 def wiring_grid(fit: Fit, module: int, inverter: int, option: Option | None) -> WiringGrid:
     """Which numbers of like strings, of which length, one inverter takes, whatever else was asked for."""
-    search = _one_inverter(fit, module, inverter, _ANY_RATIO)
-    limits = search.limits(np.array([0]), np.array([0]))
-    shortest, longest = int(limits.shortest[0]), int(limits.longest[0])
+    space = _one_inverter(fit, module, inverter, _ANY_RATIO).space(0, 0)
+    shortest, longest = space.shortest, space.longest
     pmax, ac = fit.modules[module].pmax_w, fit.inverters[inverter].ac_power_w
     unit = option.wired[0] if option is not None else None
     uniform = unit is not None and len({t.in_series for t in unit.trackers}) == 1
@@ -186,9 +204,12 @@ def wiring_grid(fit: Fit, module: int, inverter: int, option: Option | None) -> 
     pair = fit.pair(module, inverter)
     cells, notes = [], []
     for n in rows:
-        cells.append(tuple(_outcome(search, n, s, fit.request.ratio) for s in columns))
-        failing = [c for c in check_option(pair, (Tracker(0, 1, n),)) if c.stop and c.verdict is Verdict.DOES_NOT_FIT]
-        notes.append("; ".join(f"{c.check} {c.value:,.0f} of {c.limit:,.0f} {c.unit}" for c in failing[:2]))
+        inside = [_inside(n * s * pmax / ac, fit.request.ratio) for s in columns]
+        cells.append(tuple(_outcome(space, n, s, i) for s, i in zip(columns, inside, strict=True)))
+        failing = [
+            c for c in check_option(pair, (Tracker(0, 1, n),)) if c.stop and c.verdict is Verdict.DOES_NOT_FIT
+        ]
+        notes.append("".join(f"{c.check} {c.value:,.0f} of {c.limit:,.0f} {c.unit}" for c in failing[:1]))
     chosen = None
     if uniform and length in rows and strings in columns:
         chosen = (columns.index(strings), rows.index(length))
@@ -203,18 +224,34 @@ def _span(low: int, high: int, around: int, most: int) -> tuple[int, ...]:
     return tuple(range(low, high + 1))
 
 
-def _outcome(search: Search, in_series: int, strings: int, ratio: tuple[float, float]) -> str:
-    table, _ = with_strings(search, ((in_series, strings),))
-    if not len(table):
+def _inside(ratio: float, window: tuple[float, float]) -> bool:
+    return window[0] * (1 - TOLERANCE) <= ratio <= window[1] * (1 + TOLERANCE)
+
+
+def _outcome(space: Space, in_series: int, strings: int, inside: bool) -> str:
+    """Outcome of like strings spread over the trackers, those that leave nothing to confirm first."""
+    taken = sum(g.trackers * g.max_strings for g in space.groups)
+    if (
+        not space.shortest <= in_series <= space.longest
+        or strings > taken
+        or in_series * strings > space.most
+    ):
         return "no"
-    if not ratio[0] * (1 - TOLERANCE) <= table.ratio[0] <= ratio[1] * (1 + TOLERANCE):
+    if not inside:
         return "ratio"
-    return "to-confirm" if table.to_confirm[0] else "fits"
+    sure = sum(g.trackers * g.max_strings for g in space.groups if not g.to_confirm)
+    return "fits" if space.sure_from <= in_series <= space.sure_to and strings <= sure else "to-confirm"
 
 
 def _grid_words(rows: Sequence[int], columns: Sequence[int], cells: Sequence[Sequence[str]]) -> str:
-    parts = [f"Strings of {rows[0]} to {rows[-1]} modules, {columns[0]} to {columns[-1]} of them on one inverter."]
-    for outcome, name in (("fits", "Fits"), ("to-confirm", "To confirm"), ("ratio", "Outside the DC/AC window only")):
+    parts = [
+        f"Strings of {rows[0]} to {rows[-1]} modules, {columns[0]} to {columns[-1]} of them on one inverter."
+    ]
+    for outcome, name in (
+        ("fits", "Fits"),
+        ("to-confirm", "To confirm"),
+        ("ratio", "Outside the DC/AC window only"),
+    ):
         some = []
         for n, row in zip(rows, cells, strict=True):
             counts = [s for s, cell in zip(columns, row, strict=True) if cell == outcome]
@@ -236,7 +273,7 @@ def _runs(numbers: Sequence[int]) -> str:
 
 
 def energy_by_count(fit: Fit, option: Option) -> EnergyByCount | None:
-    """Energy and clipping of each module count inside the ratio window; ``None`` where there is no such figure."""
+    """Energy and clipping of each module count inside the ratio window; ``None`` without a year."""
     if option.yearly_kwh is None or option.clipping_loss_pct is None:
         return None
     search = _one_inverter(fit, option.module, option.inverter, fit.request.ratio)
@@ -251,12 +288,17 @@ def energy_by_count(fit: Fit, option: Option) -> EnergyByCount | None:
         return None
     kwh, clipping = [float(t.yearly_kwh[0]) for t in best], [float(t.clipping_pct[0]) for t in best]
     words = (
-        f"From {reachable[0]} modules, {kwh[0]:,.0f} kWh a year with {clipping[0]:.2f} % clipped, to {reachable[-1]}"
-        f" modules, {kwh[-1]:,.0f} kWh with {clipping[-1]:.2f} % clipped, each in its best wiring on one inverter."
-        f" The cap on clipping is {fit.request.clip_cap_pct:g} %."
+        f"From {reachable[0]:,} modules, {kwh[0]:,.0f} kWh a year with {clipping[0]:.2f} % clipped, to"
+        f" {reachable[-1]:,} modules, {kwh[-1]:,.0f} kWh with {clipping[-1]:.2f} % clipped, each in its"
+        f" best wiring on one inverter. The cap on clipping is {fit.request.clip_cap_pct:g} %."
     )
     sure = tuple(not bool(t.to_confirm[0]) for t in best)
     return EnergyByCount(
-        tuple(reachable), tuple(kwh), tuple(clipping), sure, chosen if chosen in reachable else None,
-        fit.request.clip_cap_pct, words,
-    )  # fmt: skip
+        tuple(reachable),
+        tuple(kwh),
+        tuple(clipping),
+        sure,
+        chosen if chosen in reachable else None,
+        fit.request.clip_cap_pct,
+        words,
+    )

@@ -12,10 +12,22 @@ from pathlib import Path
 import numpy as np
 import pytest
 from report_cases import (
-    DUO, HOSTILE, HOSTILE_MAKER, HOSTILE_MODEL, MODULE, NARROW, NO_YEAR, SITE, SITE_YEAR, TABLED, listing, pair,
-)  # fmt: skip
+    DUO,
+    HOSTILE,
+    HOSTILE_MAKER,
+    HOSTILE_MODEL,
+    MODULE,
+    NARROW,
+    NO_YEAR,
+    SITE,
+    SITE_YEAR,
+    TABLED,
+    listing,
+    pair,
+)
 
-from cli import fit_files, report, series
+from catalog.records import Inputs
+from cli import facts, fit_files, report, series
 from cli.cautions import CAUTIONS
 from cli.drawing import spread
 from cli.fit_screen import question, wiring
@@ -104,7 +116,11 @@ def test_values_to_confirm_are_named_and_never_rounded_down(tmp_path: Path) -> N
 def test_hostile_names_stay_text(tmp_path: Path) -> None:
     module = replace(MODULE, maker=HOSTILE_MAKER, model=HOSTILE_MODEL)
     hostile_site = replace(SITE, name="</title><script>alert(2)</script>")
-    for fit in (listing(), pair(HOSTILE, module), listing(inverters=(HOSTILE, replace(NARROW, maker=HOSTILE_MAKER)))):
+    for fit in (
+        listing(),
+        pair(HOSTILE, module),
+        listing(inverters=(HOSTILE, replace(NARROW, maker=HOSTILE_MAKER))),
+    ):
         fit.request = replace(fit.request, site=hostile_site)
         page = Page(written(fit, tmp_path))
         tags = [tag for tag, _, _ in page.found]
@@ -142,12 +158,19 @@ def test_pictures_have_words_and_names_that_are_unique(tmp_path: Path) -> None:
     assert len(pictures) == 3
     ids = [attrs["id"] for _, attrs, _ in page.found if attrs.get("id")]
     assert len(ids) == len(set(ids))
-    words = {attrs["id"]: "".join(t) for tag, attrs, t in page.found if tag in ("title", "desc") and "id" in attrs}
+    words = {
+        attrs["id"]: "".join(t) for tag, attrs, t in page.found if tag in ("title", "desc") and "id" in attrs
+    }
     for attrs in pictures:
         assert attrs["role"] == "img"
         title, desc = str(attrs["aria-labelledby"]).split()
         assert words[title] and len(words[desc]) > 60
-    used = {u for _, attrs, _ in page.found for v in attrs.values() for u in re.findall(r"url\(#([^)]+)\)", v or "")}
+    used = {
+        u
+        for _, attrs, _ in page.found
+        for v in attrs.values()
+        for u in re.findall(r"url\(#([^)]+)\)", v or "")
+    }
     used |= {str(attrs["xlink:href"])[1:] for _, attrs, _ in page.found if "xlink:href" in attrs}
     assert used <= set(ids)
 
@@ -159,7 +182,9 @@ def test_without_a_year_the_page_says_why_there_is_no_energy(tmp_path: Path) -> 
     assert page.texts("td", data_label="kWh a year") == []
 
 
-def test_more_options_than_a_browser_sorts_are_cut_and_said(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_more_options_than_a_browser_sorts_are_cut_and_said(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
     monkeypatch.setattr(report, "ROWS", 4)
     fit = pair()
     page = Page(written(fit, tmp_path))
@@ -184,7 +209,9 @@ def test_several_units_are_shown(tmp_path: Path) -> None:
     assert len([tag for tag, _, _ in page.found if tag == "svg"]) == 3
 
 
-@pytest.mark.parametrize("inverter", [TABLED, replace(TABLED, max_dc_voltage_v=500.0, max_array_power_w=6000.0)])
+@pytest.mark.parametrize(
+    "inverter", [TABLED, replace(TABLED, max_dc_voltage_v=500.0, max_array_power_w=6000.0)]
+)
 def test_the_grid_agrees_with_the_checks(inverter: object) -> None:
     fit = pair(inverter)  # type: ignore[arg-type]
     (option,) = fit.options(1)
@@ -203,6 +230,21 @@ def test_the_grid_agrees_with_the_checks(inverter: object) -> None:
     assert f"{grid.strings[column]}x{grid.lengths[line]}" == option.label
 
 
+@pytest.mark.parametrize("groups", [DUO.inputs, (DUO.inputs[0], replace(DUO.inputs[1], max_isc_a=None))])
+def test_the_grid_agrees_with_hosting_the_strings(groups: tuple[Inputs, ...]) -> None:
+    inverter = replace(DUO, inputs=groups)
+    grid = series.wiring_grid(pair(inverter), 0, 0, None)
+    seen = set()
+    for n, row in zip(grid.lengths, grid.cells, strict=True):
+        for s, cell in zip(grid.strings, row, strict=True):
+            hosted = pair(inverter, strings=((n, s),), ratio=(1e-6, 1e6))
+            found = [str(o.verdict) for o in hosted.options(1)]
+            ratio = s * n * MODULE.pmax_w / DUO.ac_power_w
+            assert cell == ("no" if not found else found[0] if 0.8 <= ratio <= 1.5 else "ratio"), (n, s)
+            seen.add(cell)
+    assert seen >= {"no", "ratio", "fits"}
+
+
 def test_the_climate_picture_meets_limit_and_window() -> None:
     fit = pair(TABLED)
     (option,) = fit.options(1)
@@ -215,14 +257,18 @@ def test_the_climate_picture_meets_limit_and_window() -> None:
     assert s.vmp_v == pytest.approx(vmp)
     assert option.hottest_c is not None
     assert np.interp(option.hottest_c, s.ambient_c, s.vmp_v) == pytest.approx(TABLED.mppt_low_v, abs=0.05)
-    assert {"MPPT window, top", "MPPT window, bottom", "module system voltage"} == {lim.name for lim in s.limits}
+    assert {"MPPT window, top", "MPPT window, bottom", "module system voltage"} == {
+        lim.name for lim in s.limits
+    }
 
 
 def test_a_voltage_to_confirm_is_drawn_as_one() -> None:
     fit = pair(replace(TABLED, mppt_high_v=450.0), counts=(14, 14), ratio=(0.7, 1.5))
     (option,) = (o for o in fit.options() if o.label == "1x14")
+    assert facts.holds_from(option) is None
+    assert facts.climate_words(option, -12, 36).startswith("-12 to ")
     (limit,) = (lim for lim in series.string_in_climate(fit, option).limits if not lim.recorded)
-    assert limit.name == "to confirm: max DC voltage at least"
+    assert limit.name == "to confirm: max DC voltage"
     assert 14 * 38.2 * (1 + 0.31 / 100 * 37) <= limit.volts < 14 * 38.2 * (1 + 0.31 / 100 * 37) + 0.1
 
 

@@ -1,4 +1,4 @@
-"""The report in a real browser without network: errors, requests, sorting, filtering, text alternatives, widths."""
+"""The report in a real browser without network: errors, requests, sorting, text alternatives, widths."""
 
 from __future__ import annotations
 
@@ -22,9 +22,16 @@ pytestmark = pytest.mark.skipif(
 )
 
 FLAGS = (
-    "--headless", "--no-sandbox", "--disable-gpu", "--disable-quic", "--no-first-run",
-    "--disable-background-networking", "--disable-component-update", "--disable-sync", "--window-size=1200,900",
-)  # fmt: skip
+    "--headless",
+    "--no-sandbox",
+    "--disable-gpu",
+    "--disable-quic",
+    "--no-first-run",
+    "--disable-background-networking",
+    "--disable-component-update",
+    "--disable-sync",
+    "--window-size=1200,900",
+)
 
 SIZES = (2500.0, 3100.0, 3900.0, 4600.0, 7000.0, 12000.0)
 
@@ -67,7 +74,9 @@ def page(browser: Any, report: str) -> Iterator[Any]:
 def column(page: Any, name: str) -> list[str]:
     """Texts of a column of the rows that are shown, in the order shown."""
     cells = f'#table tbody tr:not([hidden]) td[data-label="{name}"]'
-    return page.execute_script(f"return Array.from(document.querySelectorAll({cells!r}), c => c.innerText.trim())")
+    return page.execute_script(
+        f"return Array.from(document.querySelectorAll({cells!r}), c => c.innerText.trim())"
+    )
 
 
 def click_head(page: Any, name: str) -> None:
@@ -133,7 +142,11 @@ def test_the_table_filters_by_word_and_by_verdict(page: Any) -> None:
 
 def test_pictures_have_names_and_descriptions_for_those_who_do_not_see_them(page: Any) -> None:
     tree = page.execute_cdp_cmd("Accessibility.getFullAXTree", {})["nodes"]
-    names = [n["name"]["value"] for n in tree if n.get("role", {}).get("value") in ("img", "image") and not n["ignored"]]
+    names = [
+        n["name"]["value"]
+        for n in tree
+        if n.get("role", {}).get("value") in ("img", "image") and not n["ignored"]
+    ]
     assert len(names) == 3
     assert all(len(name) > 60 for name in names)
 

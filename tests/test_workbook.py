@@ -10,7 +10,18 @@ from pathlib import Path
 
 import pytest
 from openpyxl import Workbook, load_workbook
-from report_cases import DUO, HOSTILE, HOSTILE_MAKER, HOSTILE_MODEL, MODULE, NO_YEAR, SITE_YEAR, TABLED, listing, pair
+from report_cases import (
+    DUO,
+    HOSTILE,
+    HOSTILE_MAKER,
+    HOSTILE_MODEL,
+    MODULE,
+    NO_YEAR,
+    SITE_YEAR,
+    TABLED,
+    listing,
+    pair,
+)
 
 from catalog.errors import CatalogError
 from cli import fit_files, workbook
@@ -20,7 +31,9 @@ from matcher.fit import Fit
 
 def written(fit: Fit, folder: Path, *, with_checks: bool = True) -> Workbook:
     path = folder / "result.xlsx"
-    fit_files.write(fit, str(path), SITE_YEAR if fit.year is not None else NO_YEAR, with_checks=with_checks, why=False)
+    fit_files.write(
+        fit, str(path), SITE_YEAR if fit.year is not None else NO_YEAR, with_checks=with_checks, why=False
+    )
     return load_workbook(path)
 
 
@@ -49,6 +62,16 @@ def test_unknown_numbers_are_blank(tmp_path: Path) -> None:
         assert row["clipping loss [%]"] is None and row["yearly energy [kWh]"] is None
 
 
+def test_a_climate_window_that_waits_for_a_value_is_blank(tmp_path: Path) -> None:
+    # 14 in series reach 596 V in the cold: above the window's top, and no maximum DC voltage is on record.
+    fit = pair(replace(TABLED, mppt_high_v=450.0), strings=((14, 1),), ratio=(0.7, 1.5))
+    (row,) = rows(written(fit, tmp_path), "Options")
+    assert row["holds down to [degC]"] is None
+    assert "inverter: maximum DC input voltage of at least" in str(row["to confirm"])
+    (row,) = rows(written(listing(inverters=(DUO,)), tmp_path), "Options")
+    assert row["holds down to [degC]"] == "any"
+
+
 def test_every_table_has_a_frozen_header_and_filters(tmp_path: Path) -> None:
     book = written(listing(), tmp_path)
     assert book.sheetnames == ["Options", "To confirm", "Checks", "Assumptions"]
@@ -72,7 +95,11 @@ def test_text_that_begins_like_a_formula_is_text(tmp_path: Path) -> None:
     assert {r["inverter model"] for r in rows(book, "Options")} == {HOSTILE_MODEL, *models}
     assert HOSTILE_MAKER in {r["inverter maker"] for r in rows(book, "Options")}
     formulas = [
-        (sheet.title, c.column_letter) for sheet in book for line in sheet for c in line if c.data_type == "f" or c.hyperlink
+        (sheet.title, c.column_letter)
+        for sheet in book
+        for line in sheet
+        for c in line
+        if c.data_type == "f" or c.hyperlink
     ]
     assert set(formulas) == {("To confirm", "I")}
 
@@ -104,7 +131,11 @@ def test_checks_carry_value_limit_margin_and_rule(tmp_path: Path) -> None:
 
 
 def test_assumptions_and_cautions_stand_in_the_workbook(tmp_path: Path) -> None:
-    text = [str(c) for line in written(listing(), tmp_path)["Assumptions"].iter_rows(values_only=True) for c in line]
+    text = [
+        str(c)
+        for line in written(listing(), tmp_path)["Assumptions"].iter_rows(values_only=True)
+        for c in line
+    ]
     assert all(line in text for line in CAUTIONS)
     assert any("one tracker, for 2 of 4 inverters" in line for line in text)
     assert any("1.25 times Isc" in line for line in text)
@@ -118,16 +149,21 @@ def test_only_the_first_options_are_explained_where_there_are_many(
     book = written(fit, tmp_path, with_checks=False)
     assert len(rows(book, "Options")) == fit.totals.arrangements > 5
     assert "holds up to [degC]" not in rows(book, "Options")[0]
-    assert book["Checks"]["A1"].value == f"Of {fit.totals.arrangements} options, the checks of the first 5 are listed."
+    assert (
+        book["Checks"]["A1"].value
+        == f"Of {fit.totals.arrangements} options, the checks of the first 5 are listed."
+    )
     assert {r["rank"] for r in rows(book, "Checks", header=2)} == {1, 2, 3, 4, 5}
     assert book["Checks"].freeze_panes == "B3"
     book = written(pair(), tmp_path, with_checks=True)
-    assert [r["holds up to [degC]"] for r in rows(book, "Options")] == pytest.approx(
-        [o.hottest_c for o in pair().options()]
-    )
+    assert [r["holds up to [degC]"] for r in rows(book, "Options")] == [
+        pytest.approx(o.hottest_c) if o.hottest_c is not None else "any" for o in pair().options()
+    ]
 
 
-def test_more_options_than_a_sheet_has_rows_is_one_line(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_more_options_than_a_sheet_has_rows_is_one_line(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
     monkeypatch.setattr(workbook, "ROWS_OF_A_SHEET", 4)
     (tmp_path / "result.xlsx").write_text("as before")
     with pytest.raises(CatalogError, match=r"^\d+ options are more than a sheet .* \(3\): .*\.csv.*--ratio"):
@@ -148,10 +184,21 @@ def converted(path: Path, form: str) -> str:
         pytest.skip("LibreOffice (Debian package libreoffice-calc) is not installed")
     home = path.parent / "office"
     done = subprocess.run(
-        [soffice, f"-env:UserInstallation={home.as_uri()}", "--headless", "--convert-to", form, "--outdir",
-         str(path.parent), str(path)],
-        capture_output=True, text=True, timeout=180, check=False,
-    )  # fmt: skip
+        [
+            soffice,
+            f"-env:UserInstallation={home.as_uri()}",
+            "--headless",
+            "--convert-to",
+            form,
+            "--outdir",
+            str(path.parent),
+            str(path),
+        ],
+        capture_output=True,
+        text=True,
+        timeout=180,
+        check=False,
+    )
     assert done.returncode == 0, done.stderr
     return done.stdout
 
@@ -163,7 +210,10 @@ def test_libreoffice_recalculates_what_was_filled_in(tmp_path: Path) -> None:
     sheet["H2"], sheet["H3"] = sheet["F2"].value, sheet["F3"].value - 0.1
     book.save(tmp_path / "filled.xlsx")
     # Filter options: comma, double quote, UTF-8, from row 1, ... , all sheets (-1).
-    converted(tmp_path / "filled.xlsx", "csv:Text - txt - csv (StarCalc):44,34,76,1,,0,false,true,false,false,false,-1")
+    converted(
+        tmp_path / "filled.xlsx",
+        "csv:Text - txt - csv (StarCalc):44,34,76,1,,0,false,true,false,false,false,-1",
+    )
     with (tmp_path / "filled-To confirm.csv").open(newline="", encoding="utf-8") as file:
         answers = [row["settled?"] for row in csv.DictReader(file)]
     assert answers[:2] == ["settled", "too low: does not fit"]
