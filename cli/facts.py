@@ -7,7 +7,6 @@ from typing import TYPE_CHECKING
 
 from catalog.records import Inputs, Inverter, Module, specs
 from cli.cautions import HOURLY_MEANS
-from cli.fit_screen import assumptions
 
 if TYPE_CHECKING:
     from cli.years import SiteYear
@@ -99,3 +98,18 @@ def rests_on(fit: Fit, year: SiteYear) -> list[str]:
     if year.year is not None:
         lines.append(HOURLY_MEANS)
     return [*lines, *assumptions(fit)]
+
+
+def assumptions(fit: Fit) -> list[str]:
+    """Values that a default stands in for, said wherever a result rests on them."""
+    from matcher.electrical import ASSUMED_NOCT_C
+
+    lines = []
+    if any(m.noct_c is None for m in fit.modules[:1]) and len(fit.modules) == 1:
+        lines.append(f"Assumed: NOCT {ASSUMED_NOCT_C:g} degC, which the module's record does not state.")
+    assumed = sum(1 for i in fit.inverters if i.origin("inputs") == "assumed")
+    if assumed:
+        lines.append(
+            f"Assumed: one tracker, for {assumed:,} of {len(fit.inverters):,} inverters whose source says nothing of trackers."
+        )
+    return lines

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
+from cli.facts import assumptions, at_least, confirm_words
 from matcher.checks import Check, Confirm, Verdict
 
 if TYPE_CHECKING:
@@ -109,7 +110,7 @@ def answer(fit: Fit, options: Sequence[Option]) -> str:
         side = "inverters" if fit.lists_inverters else "modules"
         words = f"{t.records_with_option:,} of {t.records_considered:,} {side}, in {ways}."
     if options and options[0].verdict is Verdict.TO_CONFIRM:
-        words += " None is proven by the ratings on record: each waits for the values named below the table."
+        words += " None is proven by the ratings on record: each waits for values to confirm."
     return words
 
 
@@ -197,24 +198,6 @@ def climate_window(option: Option) -> str:
     return f"{low} to {high}"
 
 
-_FIELDS = {
-    "max_dc_voltage_v": "maximum DC voltage",
-    "max_system_voltage_v": "maximum system voltage",
-    "max_isc_a": "maximum short-circuit current of a tracker",
-    "voc_coef_pct": "temperature coefficient of Voc",
-}
-
-
-def confirm_words(confirm: Confirm) -> str:
-    """A value to confirm in words: "maximum DC voltage of at least 561 V"."""
-    what = _FIELDS.get(confirm.field, confirm.field)
-    if confirm.inputs is not None:
-        what += f" (inputs {confirm.inputs + 1})" if confirm.inputs else ""
-    if confirm.at_least is None:
-        return what
-    return f"{what} of at least {confirm.at_least:.1f} {confirm.unit}"
-
-
 def _confirm_lines(fit: Fit, options: Sequence[Option]) -> None:
     waiting = [o for o in options if o.confirm]
     if not waiting:
@@ -256,7 +239,7 @@ def checks_table(fit: Fit, option: Option) -> None:
 def _check_row(c: Check) -> list[str]:
     rule = c.rule + (f"; {c.remark}" if c.remark else "")
     if c.confirm is not None and c.confirm.at_least is not None:
-        rule += f"; to confirm: at least {c.confirm.at_least:.1f} {c.confirm.unit}"
+        rule += f"; to confirm: at least {at_least(c.confirm):,.1f} {c.confirm.unit}"
     digits = 0 if c.unit == "W" or c.unit == "1" else 1
     unit = "" if c.unit == "1" else c.unit
     return [c.check, number(c.value, digits), number(c.limit, digits), unit, number(c.margin_pct, 1), str(c.verdict), rule]
@@ -272,18 +255,3 @@ def _why_table(fit: Fit, limit: int) -> None:
     columns = [Column("inverter" if fit.lists_inverters else "module", fold=True), Column("stopped by", fold=True),
                Column("nearest", fold=True)]  # fmt: skip
     print_table(columns, [[records[k].name, ", ".join(r.failed), r.nearest] for k, r in missed[:limit]])
-
-
-def assumptions(fit: Fit) -> list[str]:
-    """Values that a default stands in for, said wherever a result rests on them."""
-    from matcher.electrical import ASSUMED_NOCT_C
-
-    lines = []
-    if any(m.noct_c is None for m in fit.modules[:1]) and len(fit.modules) == 1:
-        lines.append(f"Assumed: NOCT {ASSUMED_NOCT_C:g} degC, which the module's record does not state.")
-    assumed = sum(1 for i in fit.inverters if i.origin("inputs") == "assumed")
-    if assumed:
-        lines.append(
-            f"Assumed: one tracker, for {assumed:,} of {len(fit.inverters):,} inverters whose source says nothing of trackers."
-        )
-    return lines
