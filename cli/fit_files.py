@@ -41,7 +41,7 @@ def write(fit: Fit, out: str, year: SiteYear, *, with_checks: bool, why: bool) -
         if form == ".xlsx":
             from cli.workbook import write_workbook
 
-            write_workbook(fit, stream, year, with_checks=with_checks)
+            write_workbook(fit, stream, year, with_checks=with_checks, why=why)
         elif form == ".html":
             from cli.report import write_report
 

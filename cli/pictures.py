@@ -11,7 +11,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from cli.drawing import ACCENT, AMBER, INK, MUTED, RULE, VERMILION, figure, spread, styled, svg_of
-from cli.series import EnergyByCount, Limit, StringInClimate, WiringGrid
+from cli.series import EnergyByCount, Limit, StringInClimate, WiringGrid, volts_words
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -32,7 +32,7 @@ def draw_climate(s: StringInClimate) -> Picture:
     """Voc and Vmp of the string against air temperature, inside the limits that hold for it."""
     with styled():
         fig = figure(7.2, 4.3)
-        ax = fig.add_axes((0.085, 0.12, 0.635, 0.83))
+        ax = fig.add_axes((0.085, 0.12, 0.605, 0.83))
         limits = _near(s)
         ax.set_xlim(s.ambient_c[0], s.ambient_c[-1])
         ax.set_ylim(*_heights(s, limits))
@@ -41,8 +41,7 @@ def draw_climate(s: StringInClimate) -> Picture:
         for limit in limits:
             colour = VERMILION if limit.maximum and not limit.name.startswith("MPPT") else MUTED
             ax.axhline(limit.volts, color=colour, lw=1.2, ls="-" if limit.recorded else (0, (2, 2)))
-            volts = f"{'' if limit.recorded else '≥ '}{limit.volts:,.0f} V"
-            notes.append((limit.volts, f"{limit.name} {volts}", colour))
+            notes.append((limit.volts, f"{limit.name} {volts_words(limit)}", colour))
         ax.plot(s.ambient_c, s.voc_v, color=ACCENT, lw=2)
         ax.plot(s.ambient_c, s.vmp_v, color=INK, lw=2, ls=(0, (5, 1.6)))
         _outside(ax, s)

@@ -25,6 +25,9 @@ if TYPE_CHECKING:
 #: Rows of a table that a browser still sorts at once.
 ROWS = 4_000
 
+#: Rows of it that go to paper.
+PRINTED = 100
+
 #: Options whose values to confirm are listed ahead of the table.
 CONFIRM_LISTED = 10
 
@@ -115,7 +118,8 @@ def _content(fit: Fit, year: SiteYear, why: bool) -> dict[str, Any]:
         "rests_on": facts.rests_on(fit, year),
         "cautions": CAUTIONS,
         "marks": MARKS,
-        "style": style,
+        "printed": PRINTED,
+        "style": style.replace("{{ printed + 1 }}", str(PRINTED + 1)),
         "script": script,
         "script_hash": f"sha256-{digest}",
     }

@@ -157,15 +157,24 @@ def _limits(fit: Fit, option: Option) -> list[Limit]:
     for c in option.confirm:
         least = facts.at_least(c)
         if c.field in asked and least is not None:
-            found.append(Limit(f"to confirm: {asked[c.field]}", least, recorded=False))
+            found.append(Limit(f"confirm {asked[c.field]}", least, recorded=False))
     return found
 
 
+def volts_words(limit: Limit) -> str:
+    """Like "850 V"; a value to confirm with its tenth, which is rounded up already."""
+    return f"{limit.volts:,.0f} V" if limit.recorded else f"≥ {limit.volts:,.1f} V"
+
+
+def _string(in_series: int) -> str:
+    return f"{in_series} modules in series have" if in_series > 1 else "1 module has"
+
+
 def _climate_words(s: StringInClimate, holds: str) -> str:
-    limits = ", ".join(f"{lim.name} {lim.volts:,.0f} V" for lim in s.limits)
+    limits = ", ".join(f"{lim.name} {volts_words(lim)}" for lim in s.limits)
     return (
-        f"{s.longest} modules in series have {s.voc_cold_v:,.0f} V open-circuit at the design low of"
-        f" {s.design_low_c:g} °C; {s.shortest} in series have {s.vmp_hot_v:,.0f} V at maximum power at the"
+        f"{_string(s.longest)} {s.voc_cold_v:,.0f} V open-circuit at the design low of"
+        f" {s.design_low_c:g} °C; {_string(s.shortest)} {s.vmp_hot_v:,.0f} V at maximum power at the"
         f" design high of {s.design_high_c:g} °C in full sun. Limits: {limits}. The wiring holds in air of"
         f" {holds}."
     )

@@ -24,11 +24,14 @@ ROWS_OF_A_SHEET = 1_048_576
 EXPLAINED = 1_000
 
 
-def write_workbook(fit: Fit, stream: IO[bytes], year: SiteYear, *, with_checks: bool) -> None:
+def write_workbook(
+    fit: Fit, stream: IO[bytes], year: SiteYear, *, with_checks: bool, why: bool = False
+) -> None:
     """Write the workbook.
 
     Checks and values to confirm are written for the first `EXPLAINED` options. The climate window and the
-    values to confirm stand beside every option where there are no more than that, or with ``with_checks``.
+    values to confirm stand beside every option where there are no more than that, or with ``with_checks``;
+    the records without option on a sheet of their own with ``why``.
 
     Raises
     ------
@@ -52,7 +55,10 @@ def write_workbook(fit: Fit, stream: IO[bytes], year: SiteYear, *, with_checks: 
     }
     book = xlsxwriter.Workbook(stream, options)
     book.set_properties({"title": question(fit), "comments": "Made by Ferrule. Ratings only: no design."})
-    _Sheets(book, fit, year, with_checks or number <= EXPLAINED, number).fill()
+    sheets = _Sheets(book, fit, year, with_checks or number <= EXPLAINED, number)
+    sheets.fill()
+    if why:
+        sheets.fill_rejected()
     try:
         book.close()
     except xlsxwriter.exceptions.FileCreateError as error:
@@ -87,6 +93,14 @@ class _Sheets:
         for table in (self.options, self.confirm, self.checks):
             table.close()
         self._fill_basis(first)
+
+    def fill_rejected(self) -> None:
+        """A sheet of the records without option, the nearest misses first."""
+        records = self.fit.inverters if self.fit.lists_inverters else self.fit.modules
+        table = Table(self.formats.book, "Without option", _REJECTED_COLUMNS, self.formats)
+        for k, reason in self.fit.rejections()[: ROWS_OF_A_SHEET - 1]:
+            table.row([records[k].maker, records[k].model, ", ".join(reason.failed), reason.nearest])
+        table.close()
 
     def _all(self) -> Iterator[Option]:
         rank = 0
@@ -221,6 +235,13 @@ _CONFIRM_COLUMNS = (
     Column("unit", 6),
     Column("datasheet says", 12, 1),
     Column("settled?", 24),
+)
+
+_REJECTED_COLUMNS = (
+    Column("maker", 22),
+    Column("model", 28),
+    Column("stopped by", 30),
+    Column("nearest", 110),
 )
 
 _CHECK_COLUMNS = (

@@ -34,6 +34,7 @@ class Formats:
     """Cell formats of a workbook, made once."""
 
     def __init__(self, book: Workbook) -> None:
+        self.book = book
         self.header = book.add_format(
             {"bold": True, "text_wrap": True, "valign": "top", "bottom": 1, "bg_color": "#F1EFE9"}
         )

@@ -268,7 +268,7 @@ def test_a_voltage_to_confirm_is_drawn_as_one() -> None:
     assert facts.holds_from(option) is None
     assert facts.climate_words(option, -12, 36).startswith("-12 to ")
     (limit,) = (lim for lim in series.string_in_climate(fit, option).limits if not lim.recorded)
-    assert limit.name == "to confirm: max DC voltage"
+    assert limit.name == "confirm max DC voltage"
     assert 14 * 38.2 * (1 + 0.31 / 100 * 37) <= limit.volts < 14 * 38.2 * (1 + 0.31 / 100 * 37) + 0.1
 
 

@@ -33,6 +33,7 @@ FLAGS = (
     "--window-size=1200,900",
 )
 
+# AC powers [W] of inverters that are otherwise alike.
 SIZES = (2500.0, 3100.0, 3900.0, 4600.0, 7000.0, 12000.0)
 
 
@@ -176,6 +177,16 @@ def test_it_works_without_script(browser: Any, report: str) -> None:
 
 
 # Paper sizes in inches: ISO 216 A4 and ANSI letter; margins as in the style sheet, 14 mm left and right.
+def test_a_long_table_is_printed_as_far_as_is_said(page: Any) -> None:
+    page.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": "print"})
+    printed = """
+        const rows = Array.from(document.querySelectorAll('#table tbody tr'));
+        rows.slice(1).forEach(row => { for (let k = 0; k < 20; k++) row.after(row.cloneNode(true)); });
+        const all = Array.from(document.querySelectorAll('#table tbody tr'));
+        return all.filter(r => r.offsetHeight > 0).length"""
+    assert page.execute_script(printed) == 100
+
+
 @pytest.mark.parametrize(("paper", "width", "height"), [("A4", 8.27, 11.69), ("letter", 8.5, 11.0)])
 def test_nothing_is_cut_off_in_print(page: Any, paper: str, width: float, height: float) -> None:
     printed = page.execute_cdp_cmd("Page.printToPDF", {"paperWidth": width, "paperHeight": height})["data"]

@@ -16,6 +16,7 @@ from report_cases import (
     HOSTILE_MAKER,
     HOSTILE_MODEL,
     MODULE,
+    NARROW,
     NO_YEAR,
     SITE_YEAR,
     TABLED,
@@ -29,10 +30,10 @@ from cli.cautions import CAUTIONS
 from matcher.fit import Fit
 
 
-def written(fit: Fit, folder: Path, *, with_checks: bool = True) -> Workbook:
+def written(fit: Fit, folder: Path, *, with_checks: bool = True, why: bool = False) -> Workbook:
     path = folder / "result.xlsx"
     fit_files.write(
-        fit, str(path), SITE_YEAR if fit.year is not None else NO_YEAR, with_checks=with_checks, why=False
+        fit, str(path), SITE_YEAR if fit.year is not None else NO_YEAR, with_checks=with_checks, why=why
     )
     return load_workbook(path)
 
@@ -170,6 +171,12 @@ def test_more_options_than_a_sheet_has_rows_is_one_line(
         written(pair(), tmp_path)
     assert [p.name for p in tmp_path.iterdir()] == ["result.xlsx"]
     assert (tmp_path / "result.xlsx").read_text() == "as before"
+
+
+def test_records_without_option_have_a_sheet_where_asked_for(tmp_path: Path) -> None:
+    (row,) = rows(written(listing(), tmp_path, why=True), "Without option")
+    assert (row["maker"], row["model"]) == (NARROW.maker, NARROW.model)
+    assert "mppt-low" in str(row["stopped by"])
 
 
 def test_nothing_fits_is_a_workbook_too(tmp_path: Path) -> None:
