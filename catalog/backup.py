@@ -76,7 +76,11 @@ def restore(location: str | Path, path: Path) -> Path | None:
         with closing(SqliteFile.open(target, create=False, readonly=True)) as file:
             schema.checked_version(file)
         copy_file(target, kept)
-        copy_over(path, target)
+        try:
+            copy_over(path, target)
+        except BaseException:
+            kept.unlink()
+            raise
         return kept
     try:
         shutil.copyfile(target, kept)

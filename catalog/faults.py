@@ -10,9 +10,13 @@ from catalog.errors import CatalogError
 
 UNCHANGED = "nothing in it was changed"
 
+BUSY = (
+    "the catalog {0} is in use by another program that is writing to it: wait until that is done and try again; "
+    + UNCHANGED
+)
+
 _LINES = {
-    "SQLITE_BUSY": "the catalog {0} is in use by another program that is writing to it: wait until that is done and"
-    " try again; " + UNCHANGED,
+    "SQLITE_BUSY": BUSY,
     "SQLITE_LOCKED": "the catalog {0} is in use by another program: try again; " + UNCHANGED,
     "SQLITE_FULL": "no room is left for the catalog {0}: free some space on its disk and try again; " + UNCHANGED,
     "SQLITE_READONLY": "the catalog {0}, or the folder that holds it, is read-only: make both writable, or name"
@@ -30,9 +34,9 @@ _LINES = {
 
 #: PostgreSQL's error classes and codes (its manual, appendix A) that have a line of their own.
 _STATES = {
-    "55P03": _LINES["SQLITE_BUSY"],
-    "40001": _LINES["SQLITE_BUSY"],
-    "40P01": _LINES["SQLITE_BUSY"],
+    "55P03": BUSY,
+    "40001": BUSY,
+    "40P01": BUSY,
     "53100": _LINES["SQLITE_FULL"],
     "25006": "the database {0} is read-only; " + UNCHANGED,
     "42501": "you have no permission to do this in the database {0}: {1}",

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import os
-import sqlite3
 import time
 from collections.abc import Iterator
 from contextlib import closing, contextmanager, suppress
@@ -11,7 +10,7 @@ from pathlib import Path
 
 from catalog import database
 from catalog.errors import CatalogError
-from catalog.faults import told
+from catalog.faults import BUSY, told
 from catalog.sqlitefile import connect
 
 
@@ -41,7 +40,7 @@ def copy_over(source: Path, target: Path) -> None:
 
     def waited(_status: int, _remaining: int, _total: int) -> None:
         if time.monotonic() - started > database.WAIT_S:
-            raise sqlite3.OperationalError("in use by another program")
+            raise CatalogError(BUSY.format(target))
 
     with told(str(source)), closing(connect(source, "rw", readonly=True)) as old:
         # Reading first tells a damaged source from a target that cannot be written.
@@ -66,6 +65,7 @@ def finished(target: Path) -> Iterator[Path]:
     try:
         with _os_told(target):
             target.parent.mkdir(parents=True, exist_ok=True)
+            unfinished.touch()
         yield unfinished
         with _os_told(target):
             os.replace(unfinished, target)

@@ -86,7 +86,12 @@ def read_records(run: Run, kind: str, where: str = CURRENT, params: dict[str, An
     if not rows:
         return []
     inputs = _read_inputs(run, where, params) if kind == "inverter" else None
-    return _records(kind, rows, read_sources(run), inputs)
+    try:
+        return _records(kind, rows, read_sources(run), inputs)
+    except (LookupError, ValueError, TypeError, AttributeError) as error:
+        raise CatalogError(
+            f"the catalog is damaged, some {kind}s cannot be read: bring back a copy with 'ferrule sheet restore'"
+        ) from error
 
 
 def read_sources(run: Run) -> dict[int, Source]:
