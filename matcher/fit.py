@@ -21,13 +21,14 @@ from matcher.climate import ClimateWindow
 from matcher.columns import InverterColumns
 from matcher.electrical import Points, design_points
 from matcher.errors import MatcherError
+from matcher.limits import UNLIMITED
 from matcher.moduleyear import ModuleYear
 from matcher.near import Rejection, rejection
 from matcher.options import Options, Unit, join, label
 from matcher.order import in_words
 from matcher.request import Request
 from matcher.search import WHOLE_EVERY, Lazy, Search
-from matcher.shared import on_several_units, with_strings
+from matcher.shared import free_space, on_several_units, with_strings
 
 __all__ = ["Fit", "Option", "Request", "Totals", "fit", "module_points"]
 
@@ -140,8 +141,8 @@ class Fit:
             confirm = tuple(to_confirm(checks))
             assert verdict(checks) is outcome, f"{wired}: the search and the checks disagree"
             lengths = [t.in_series for unit in wired for t in unit.trackers]
-            coldest = self._window(m).coldest(self.inverters[i], max(lengths))
-            hottest = self._window(m).hottest(self.inverters[i], min(lengths))
+            coldest = self.window(m).coldest(self.inverters[i], max(lengths))
+            hottest = self.window(m).hottest(self.inverters[i], min(lengths))
         return Option(
             rank, outcome, m, i, int(table.modules[row]), wired, float(table.ratio[row]),
             _number(table.clipping_pct[row]), _number(table.current_clipping_pct[row]),
@@ -166,16 +167,15 @@ class Fit:
             if reason is not None:
                 missed.append((int(k), Rejection((), f"cannot be matched: {reason}", np.inf)))
                 continue
-            limits = self.search.limits(np.array([m]), np.array([i]))
-            space = self.search.space(m, i, limits)
-            missed.append((int(k), rejection(self.pair(m, i), space, self._window(m), self.request.ratio)))
+            space = free_space(self.search, m, i, UNLIMITED)
+            missed.append((int(k), rejection(self.pair(m, i), space, self.window(m), self.request)))
         return sorted(missed, key=lambda entry: entry[1].distance)
 
     @cached_property
     def _windows(self) -> dict[int, ClimateWindow]:
         return {}
 
-    def _window(self, m: int) -> ClimateWindow:
+    def window(self, m: int) -> ClimateWindow:
         if m not in self._windows:
             self._windows[m] = ClimateWindow(
                 self.modules[m], self.module_points(m), self.request.site, self.request.rules

@@ -1,29 +1,53 @@
-"""Why an inverter takes no arrangement at all, and what would change that."""
+"""Why an inverter takes no arrangement at all, and what would change that.
+
+The cause that is named is a check that fails for the arrangement which misses least: the limits are given way
+one after the other (longer strings, shorter ones, more strings on a tracker, more power), and the checks
+themselves say what is then wrong and by how much.
+"""
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 
+from matcher import reach
 from matcher.arrangements import Space
-from matcher.checks import Pair
+from matcher.checks import Check, Pair, Verdict, check_option, worst_of_each
 from matcher.climate import ClimateWindow
 from matcher.limits import TOLERANCE, voltage_cap
+from matcher.options import Unit, label
+from matcher.request import Request
+from matcher.several import even_split
+
+#: Where counts below and above can be wired, a count whose nearest arrangement misses a limit by more than
+#: this share, or only with what is left over, is called the wrong count: it is the count that wants changing.
+MISS = 0.10
+
+#: A limit that is missed by more than this share is not a near miss any more.
+FAR = 1.0
+
+
+#: A way of wiring, and its checks.
+Nearest = tuple[tuple[Unit, ...], list[Check]]
 
 
 @dataclass(frozen=True, slots=True)
 class Rejection:
     """One inverter without option: the checks that stop it, and the nearest thing that would not.
 
-    ``distance`` is how far the nearest is from fitting, as a share of the limit that is missed; it ranks
-    the near misses.
+    ``failed`` begins with the check that stops the nearest arrangement (``module-count`` where no rating is to
+    blame, ``ratio-window`` where only the asked DC/AC ratios are). ``distance`` is how far the nearest is from
+    fitting, as a share of the limit that is missed; it ranks the near misses. ``checks`` and ``wired`` are those
+    of the nearest arrangement, where there is one.
     """
 
     failed: tuple[str, ...]
     nearest: str
     distance: float
+    checks: tuple[Check, ...] = ()
+    wired: tuple[Unit, ...] = ()
 
 
 def voltage_maxima(pair: Pair) -> dict[str, float]:
@@ -37,13 +61,20 @@ def voltage_maxima(pair: Pair) -> dict[str, float]:
     return {check: limit for check, limit in stated.items() if limit is not None}
 
 
-def rejection(pair: Pair, space: Space, window: ClimateWindow, ratio: tuple[float, float]) -> Rejection:
-    """Why a pair has no option, by the first of: string length, strings, module count."""
+def rejection(pair: Pair, space: Space, window: ClimateWindow, request: Request) -> Rejection:
+    """Why a pair has no option: string length, strings, the asked strings or count, then the asked ratio.
+
+    ``space`` holds what the ratings allow, whatever count and DC/AC ratio are asked for; its ``most`` is bound
+    by the array power at most.
+    """
     if space.shortest > space.longest:
         return _no_length(pair, space, window)
     if all(g.max_strings < 1 for g in space.groups):
         return _no_string(pair)
-    return _no_count(pair, space, ratio)
+    if request.strings is not None:
+        stopped = strings_stopped(pair, space, request.strings, request.units)
+        return stopped or _outside_ratio(pair, [request.modules_in_strings], request)
+    return _no_count(pair, space, request)
 
 
 def _no_length(pair: Pair, space: Space, window: ClimateWindow) -> Rejection:
@@ -64,15 +95,20 @@ def _no_length(pair: Pair, space: Space, window: ClimateWindow) -> Rejection:
     over.sort(reverse=True)
     excess, check, value, limit = over[0]
     fewer = n - 1
-    words = [
-        f"{_in_series(n)} would be needed to reach {low_limit:g} V in the heat, and"
-        f" {'make' if n > 1 else 'makes'} {value:.1f} V of {limit:g} V {_when(check)}"
-    ]
+    if not fewer:
+        words = [f"a single module makes {value:.1f} V of {limit:g} V {_when(check)}"]
+    else:
+        words = [f"{n} in series would be needed to reach {low_limit:g} V in the heat, and make {value:.1f} V of"
+                 f" {limit:g} V {_when(check)}"]  # fmt: skip
     ways = list(_ways_out_of_length(pair, window, n, fewer, [o[1] for o in over], low, low_limit, each))
     if ways:
         words.append("it would take " + " or ".join(ways))
     short = (low_limit - fewer * each) / low_limit if fewer else np.inf
-    return Rejection((low, *(o[1] for o in over)), "; ".join(words), float(min(excess, short)))
+    failed = [o[1] for o in over]
+    if fewer:
+        # One module fewer misses the lower limit; what is missed by less stands first.
+        failed = [low, *failed] if short < excess else [*failed, low]
+    return Rejection(tuple(failed), "; ".join(words), float(min(excess, short)))
 
 
 def _ways_out_of_length(
@@ -102,48 +138,234 @@ def _no_string(pair: Pair) -> Rejection:
     )
 
 
-def _no_count(pair: Pair, space: Space, ratio: tuple[float, float]) -> Rejection:
+def _no_count(pair: Pair, space: Space, request: Request) -> Rejection:
     """The lengths and strings are there, but no module count that is asked for can be made of them."""
     pmax, ac = pair.points.pmax_w, pair.inverter.ac_power_w
-    least = space.shortest
-    most = sum(g.trackers * g.max_strings for g in space.groups) * space.longest
-    array = pair.inverter.max_array_power_w
-    if array is not None and least * pmax > array * (1.0 + TOLERANCE):
+    if space.most < space.shortest:
+        array = pair.inverter.max_array_power_w or 0.0
+        least = space.shortest * pmax
         return Rejection(
             ("array-power",),
-            f"the shortest string of {least} modules has {least * pmax:,.0f} W, the inverter takes {array:,.0f} W",
-            least * pmax / array - 1.0,
+            f"the shortest string of {space.shortest} modules has {least:,.0f} W, the inverter takes {array:,.0f} W",
+            least / array - 1.0,
         )
-    if least * pmax > ratio[1] * ac * (1.0 + TOLERANCE):
-        over = least * pmax / ac
-        words = f"the shortest string of {least} gives DC/AC {over:.3f}: it would take a larger inverter"
-        return Rejection(("ratio-window",), words, over / ratio[1] - 1.0)
-    if most * pmax < ratio[0] * ac * (1.0 - TOLERANCE):
-        under = most * pmax / ac
-        words = f"its trackers take {most} modules, DC/AC {under:.3f}: it would take a smaller inverter"
-        return Rejection(("ratio-window",), words, 1.0 - under / ratio[0])
-    nearest = _nearest_counts(space)
-    bounds = (max(space.fewest, 1), max(space.most, 1))
-    distance = min((abs(c - b) / b for c in nearest for b in bounds), default=1.0)
-    counts = " or ".join(f"{c} (DC/AC {c * pmax / ac:.3f})" for c in nearest)
+    low_units, high_units = request.units
+    if request.counts is None:
+        return _outside_ratio(pair, _counts_near_window(pair, space, request), request)
+    low, high = request.counts
+    reachable: list[int] = []
+    misses: list[Rejection] = []
+    for units in range(low_units, high_units + 1):
+        one = _one_unit(space, high)
+        bits = reach.on_units(one, units, high) if units > 1 else one
+        inside = reach.members(bits >> low << low)
+        if inside:
+            reachable += [c for c in inside if not _in_ratio(pair, c, units, request)]
+            continue
+        # Of a range of counts the ends are nearest to what can be wired.
+        misses += [count_stopped(pair, space, count, units) for count in sorted({low, high})]
+    if reachable:
+        units = low_units
+        nearest = sorted(set(reachable), key=lambda c: _ratio_miss(c * pmax / (units * ac), request.ratio))[:2]
+        return _outside_ratio(pair, sorted(nearest), request)
+    return min(misses, key=lambda r: r.distance)
+
+
+def _in_ratio(pair: Pair, count: int, units: int, request: Request) -> bool:
+    ratio = count * pair.points.pmax_w / (units * pair.inverter.ac_power_w)
+    return _ratio_miss(ratio, request.ratio) <= TOLERANCE
+
+
+def _ratio_miss(ratio: float, window: tuple[float, float]) -> float:
+    return max(window[0] / ratio - 1.0, ratio / window[1] - 1.0, 0.0)
+
+
+def _counts_near_window(pair: Pair, space: Space, request: Request) -> list[int]:
+    """Reachable counts next to the window of DC/AC ratios, below and above."""
+    each = pair.points.pmax_w / pair.inverter.ac_power_w
+    low, high = int(np.ceil(request.ratio[0] / each)), int(np.floor(request.ratio[1] / each))
+    bits = _one_unit(space, max(low, high) + 2 * space.longest)
+    found = [reach.below(bits, max(low, high + 1)), reach.above(bits, min(low - 1, high))]
+    return [c for c in found if c is not None]
+
+
+def _outside_ratio(pair: Pair, counts: Sequence[int], request: Request) -> Rejection:
+    """Counts that can be wired, at a DC/AC ratio that is not asked for."""
+    each = pair.points.pmax_w / pair.inverter.ac_power_w / request.units[0]
+    misses = [_ratio_miss(c * each, request.ratio) for c in counts]
+    said = " or ".join(f"{c} modules (DC/AC {c * each:.3f})" for c in counts)
+    low, high = request.ratio
+    words = f"it can be wired with {said}, outside the asked DC/AC ratio of {low:g} to {high:g}"
+    sizes = [c * each for c in counts]
+    if min(sizes) > high:
+        words += ": it would take a larger inverter"
+    elif max(sizes) < low:
+        words += ": it would take a smaller inverter"
+    return Rejection(("ratio-window",), words, min(misses))
+
+
+def _one_unit(space: Space, most: int) -> int:
+    """Counts up to ``most`` that one unit takes."""
+    return reach.one_unit(replace(space, fewest=1, most=max(0, min(space.most, most))))
+
+
+def count_stopped(pair: Pair, space: Space, total: int, units: int) -> Rejection:
+    """What stops ``total`` modules on ``units`` inverters, some of whose string lengths can be had.
+
+    ``space`` is that of `rejection`, with a string length and a string that the ratings allow.
+    """
+    smaller, larger = counts_around(space, total, units)
+    held = max(space.longest * sum(g.trackers * g.max_strings for g in space.groups), 1)
+    found = [] if total < units else list(_given_way(pair, space, total, units))
+    best = min(found, key=_miss, default=None)
+    single = space.longest == 1 and total > units * held
+    between = smaller is not None and larger is not None
+    if best is None or single or (between and (_miss(best) > MISS or _is_rest(best, space))):
+        return _wrong_count(pair, space, total, units, smaller, larger)
+    wired, checks = best
+    failed = _failing(checks)
+    said = "; ".join(describe(c, pair) for c in failed)
     return Rejection(
-        ("module-count",) if space.fewest <= space.most else ("ratio-window",),
-        f"no arrangement has {_range(space.fewest, space.most)} modules; the nearest have {counts}"
-        if space.fewest <= space.most
-        else f"no module count is inside the window; the nearest are {counts}",
-        distance,
+        tuple(c.check for c in failed), f"the nearest way, {label(wired)}: {said}{_counts_that_work(smaller, larger)}",
+        _miss(best), tuple(checks), wired,
+    )  # fmt: skip
+
+
+def _is_rest(nearest: Nearest, space: Space) -> bool:
+    """Whether only the rest of a division misses: some strings have a length that the ratings allow, others not."""
+    inside = {space.shortest <= t.in_series <= space.longest for unit in nearest[0] for t in unit.trackers}
+    return len(inside) == 2
+
+
+def counts_around(space: Space, total: int, units: int) -> tuple[int | None, int | None]:
+    """Module counts next below and next above ``total`` that the units can take."""
+    most = total + units * max(space.longest, 1) * 2
+    one = _one_unit(space, most)
+    bits = reach.on_units(one, units, most) if units > 1 else one
+    return reach.below(bits, total), reach.above(bits, total)
+
+
+def _given_way(pair: Pair, space: Space, total: int, units: int) -> Iterator[Nearest]:
+    """Arrangements that hold the count once one limit gives way by as little as it takes, with their checks."""
+    whole = replace(space, fewest=1, most=total)
+    farthest = int(space.longest * (1.0 + FAR))
+    ways = [
+        [whole],
+        (replace(whole, longest=n) for n in range(space.longest + 1, min(total, farthest) + 1)),
+        (replace(whole, shortest=n) for n in range(space.shortest - 1, 0, -1)),
+        (replace(whole, groups=_with_more_strings(space, extra)) for extra in (1, 2, 4)),
+    ]
+    found = False
+    for way in ways:
+        for relaxed in way:
+            nearest = _wired(pair, relaxed, total, units)
+            if nearest is not None:
+                found = True
+                yield nearest
+                break
+    if found:
+        return
+    for n in range(space.longest + 1, min(total, farthest) + 1):
+        for extra in (0, 1, 2, 4):
+            relaxed = replace(whole, shortest=max(1, 2 * space.shortest - n), longest=n,
+                              groups=_with_more_strings(space, extra))  # fmt: skip
+            nearest = _wired(pair, relaxed, total, units)
+            if nearest is not None:
+                yield nearest
+                return
+
+
+def _with_more_strings(space: Space, extra: int) -> tuple:
+    return tuple(replace(g, max_strings=g.max_strings + extra) for g in space.groups)
+
+
+def _wired(pair: Pair, space: Space, total: int, units: int) -> Nearest | None:
+    """One way of wiring the count in a space, and its checks; ``None`` where there is none."""
+    bits = reach.one_unit(space)
+    if units == 1:
+        split = (total,) if bits >> total & 1 else None
+    else:
+        split = even_split(reach.members(bits), total, units)
+    if split is None:
+        return None
+    wired = reach.any_wiring(space, pair.inverter, split)
+    return wired, checks_of(pair, wired)
+
+
+def checks_of(pair: Pair, wired: Sequence[Unit]) -> list[Check]:
+    """The deciding checks of all units together."""
+    return worst_of_each([c for unit in wired for c in check_option(pair, unit.trackers)])
+
+
+def _failing(checks: Sequence[Check]) -> list[Check]:
+    """Failing checks, the one that is missed by most first: it has to be mended in any case."""
+    failed = [c for c in checks if c.stop and c.verdict is Verdict.DOES_NOT_FIT]
+    return sorted(failed, key=lambda c: c.margin_pct if c.margin_pct is not None else 0.0)
+
+
+def _miss(nearest: Nearest) -> float:
+    """How far the worst check of an arrangement is from passing, as a share of its limit."""
+    return max((-(c.margin_pct or 0.0) / 100.0 for c in _failing(nearest[1])), default=0.0)
+
+
+def _wrong_count(
+    pair: Pair, space: Space, total: int, units: int, smaller: int | None, larger: int | None
+) -> Rejection:
+    trackers = units * sum(g.trackers for g in space.groups)
+    shared = f" on {units} units" if units > 1 else ""
+    lengths = f"{space.shortest} to {space.longest}" if space.shortest < space.longest else str(space.longest)
+    words = f"no strings of {lengths} on {trackers} tracker{'s' if trackers > 1 else ''} add up to {total} modules"
+    near = [c for c in (smaller, larger) if c is not None]
+    distance = min((abs(c - total) / total for c in near), default=1.0)
+    return Rejection(("module-count",), f"{words}{shared}{_counts_that_work(smaller, larger)}", distance)
+
+
+def _counts_that_work(smaller: int | None, larger: int | None) -> str:
+    near = [str(c) for c in (smaller, larger) if c is not None]
+    return f"; {' or '.join(near)} modules can be wired" if near else ""
+
+
+def strings_stopped(
+    pair: Pair, space: Space, strings: Sequence[tuple[int, int]], units: tuple[int, int]
+) -> Rejection | None:
+    """What stops an array given as (modules in series, strings) pairs; ``None`` where nothing does."""
+    lengths = [n for n, _ in strings]
+    whole = replace(space, fewest=1, most=sum(n * s for n, s in strings))
+    for count in range(units[0], units[1] + 1):
+        for extra in (0, 1, 2, 4, sum(s for _, s in strings)):
+            relaxed = replace(whole, shortest=min(*lengths, space.shortest), longest=max(*lengths, space.longest),
+                              groups=_with_more_strings(space, extra))  # fmt: skip
+            wired = reach.any_hosting(relaxed, pair.inverter, strings, count)
+            if wired is None:
+                continue
+            checks = checks_of(pair, wired)
+            failed = _failing(checks)
+            if not failed:
+                return None
+            said = "; ".join(describe(c, pair) for c in failed)
+            return Rejection(tuple(c.check for c in failed), f"wired as {label(wired)}: {said}",
+                             _miss((wired, checks)), tuple(checks), wired)  # fmt: skip
+    return Rejection(("module-count",), "these strings cannot be shared by so many units", 1.0)
+
+
+_WHERE = {
+    "max-dc-voltage": "{value:.1f} V in the cold ({low:g} degC), the inverter takes {limit:g} V",
+    "system-voltage": "{value:.1f} V in the cold ({low:g} degC), the modules take {limit:g} V",
+    "voltage-cap": "{value:.1f} V in the cold ({low:g} degC), the cap is {limit:g} V",
+    "mppt-low": "{value:.1f} V in the heat ({high:g} degC), tracking begins at {limit:g} V",
+    "mppt-high": "{value:.1f} V at 25 degC, tracking ends at {limit:g} V",
+    "start": "{value:.1f} V in the heat ({high:g} degC), the inverter starts at {limit:g} V",
+    "short-circuit": "{value:.1f} A of design short-circuit current on a tracker that takes {limit:g} A",
+    "string-inputs": "{value:.0f} strings on a tracker with {limit:.0f} inputs",
+    "array-power": "{value:,.0f} W of modules on an inverter that allows {limit:,.0f} W",
+}
+
+
+def describe(check: Check, pair: Pair) -> str:
+    """A failing stop check in words and numbers."""
+    return _WHERE[check.check].format(
+        value=check.value, limit=check.limit, low=pair.site.design_low_c, high=pair.site.design_high_c
     )
-
-
-def _nearest_counts(space: Space) -> list[int]:
-    """Reachable module counts next to the window, below and above."""
-    low, high = sorted((space.fewest, space.most))
-    reach = 2 * space.longest
-    counts = replace(space, fewest=max(1, low - reach), most=high + reach).reachable
-    if space.fewest > space.most:
-        # The window lies between two whole numbers: no count is inside.
-        return [c for c in counts if c <= low][-1:] + [c for c in counts if c >= high][:1]
-    return [c for c in counts if c < low][-1:] + [c for c in counts if c > high][:1]
 
 
 def _in_series(n: int) -> str:
@@ -152,7 +374,3 @@ def _in_series(n: int) -> str:
 
 def _when(check: str) -> str:
     return "at 25 degC" if check == "mppt-high" else "in the cold"
-
-
-def _range(low: int, high: int) -> str:
-    return str(low) if low == high else f"{low} to {high}"

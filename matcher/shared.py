@@ -12,6 +12,7 @@ from matcher.arrangements import ByStrings, Space
 from matcher.errors import MatcherError
 from matcher.limits import TOLERANCE, at_most
 from matcher.options import Options, join
+from matcher.reach import share_of
 from matcher.search import Search
 from matcher.several import even_split, even_strings, together
 
@@ -30,7 +31,7 @@ def on_several_units(search: Search) -> tuple[Options, list[int]]:
     parts: list[Options] = []
     arrangements: list[int] = []
     for m, i in _pairs(search):
-        space = _free_space(search, m, i, request.counts[1])
+        space = free_space(search, m, i, request.counts[1])
         ways: dict[int, int] = {}
         for units, total in _wanted(search, m, i):
             split = even_split(space.reachable, total, units)
@@ -62,7 +63,7 @@ def with_strings(search: Search, strings: Sequence[tuple[int, int]]) -> tuple[Op
     parts: list[Options] = []
     arrangements: list[int] = []
     for m, i in _pairs(search):
-        space = _free_space(search, m, i, total)
+        space = free_space(search, m, i, total)
         ways = 0
         for units in range(search.request.units[0], search.request.units[1] + 1):
             if not _inside(search, m, i, total, units):
@@ -90,7 +91,7 @@ def _hosted(
             return list(tables), ways[-1]
         first = next(tables)
         return [first.take(search.rank(first)[:1])], ways[-1]
-    shares = {_share(tally, state): state for state, w in enumerate(ways) if w and state}
+    shares = {share_of(tally, state): state for state, w in enumerate(ways) if w and state}
     hosted = frozenset(s for s in shares if sum(n * c for n, c in zip(lengths, s, strict=True)) <= space.most)
     split = even_strings(hosted, lengths, tuple(count for _, count in tally.wanted), units)
     if split is None:
@@ -103,22 +104,13 @@ def _hosted(
     return [_joined(search, rows, list(copies.values()))], sum(ways[shares[s]] for s in copies)
 
 
-def _share(tally: ByStrings, state: int) -> tuple[int, ...]:
-    """Strings of each length in a state."""
-    digits = []
-    for _, count in tally.wanted:
-        state, digit = divmod(state, count + 1)
-        digits.append(digit)
-    return tuple(digits)
-
-
 def _pairs(search: Search) -> Iterator[tuple[int, int]]:
     for m in range(len(search.modules)):
         for i in range(len(search.inverters.records)):
             yield m, i
 
 
-def _free_space(search: Search, m: int, i: int, most: int) -> Space:
+def free_space(search: Search, m: int, i: int, most: int) -> Space:
     """Arrangements of one unit with up to ``most`` modules, whatever its own DC/AC ratio."""
     limits = search.limits(np.array([m]), np.array([i]))
     held = at_most(search.inverters.max_array_power_w[i : i + 1], search.points.pmax_w[m : m + 1])

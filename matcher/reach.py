@@ -1,0 +1,121 @@
+"""Which module counts can be reached at all: sets of counts as bits of one whole number.
+
+Bit m says whether m modules can be placed. That is less than `matcher.arrangements` knows (no number of ways,
+no verdicts) and comes at a small part of the time, which is what going through neighbours of a question needs.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from catalog.records import Inverter
+from matcher.arrangements import ByStrings, Space, distinct_lengths
+from matcher.checks import Tracker
+from matcher.options import Unit
+from matcher.several import even_strings
+
+
+def one_unit(space: Space) -> int:
+    """Module counts that one inverter can take, 1 to the space's ``most``."""
+    mask = (1 << (space.most + 1)) - 1
+    bits = 1
+    for group, choices in zip(space.groups, space.choices, strict=True):
+        steps = set(choices.modules.tolist())
+        for _ in range(group.trackers):
+            grown = bits
+            for step in steps:
+                grown |= bits << step
+            grown &= mask
+            if grown == bits:
+                break
+            bits = grown
+    return bits & ~1
+
+
+def on_units(one: int, units: int, most: int) -> int:
+    """Module counts up to ``most`` that some units, each with a count of ``one``, can take together."""
+    mask = (1 << (most + 1)) - 1
+    counts = members(one & mask)
+    bits = 1
+    for _ in range(units):
+        grown = 0
+        for c in counts:
+            grown |= bits << c
+        bits = grown & mask
+    return bits
+
+
+def members(bits: int) -> list[int]:
+    """The counts of a set, ascending."""
+    found = []
+    while bits:
+        lowest = bits & -bits
+        found.append(lowest.bit_length() - 1)
+        bits ^= lowest
+    return found
+
+
+def below(bits: int, count: int) -> int | None:
+    """Largest count of the set that is smaller than ``count``."""
+    some = bits & ((1 << count) - 1)
+    return some.bit_length() - 1 if some else None
+
+
+def above(bits: int, count: int) -> int | None:
+    """Smallest count of the set that is larger than ``count``."""
+    some = bits >> (count + 1)
+    return count + 1 + (some & -some).bit_length() - 1 if some else None
+
+
+def any_wiring(space: Space, inverter: Inverter, counts: Sequence[int]) -> tuple[Unit, ...]:
+    """Units that take these module counts, each wired in one way with few string lengths."""
+    copies: dict[int, int] = {}
+    for c in counts:
+        copies[c] = copies.get(c, 0) + 1
+    units = []
+    for modules, times in copies.items():
+        accepted = np.zeros(space.most + 1, dtype=bool)
+        accepted[modules] = True
+        block = next(space.listing(accepted))
+        units.append(Unit(times, _trackers(inverter, block[int(np.argmin(distinct_lengths(block)))])))
+    return tuple(units)
+
+
+def any_hosting(
+    space: Space, inverter: Inverter, strings: Sequence[tuple[int, int]], units: int
+) -> tuple[Unit, ...] | None:
+    """Units that host exactly these (modules in series, strings) pairs, wired in one way; ``None`` where none do."""
+    wanted: dict[int, int] = {}
+    for length, count in strings:
+        wanted[length] = wanted.get(length, 0) + count
+    tally = ByStrings(tuple(sorted(wanted.items())))
+    lengths, counts = zip(*sorted(wanted.items()), strict=True)
+    ways = space.ways_by(tally)
+    states = {share_of(tally, state): state for state, w in enumerate(ways) if w and state}
+    split = even_strings(frozenset(states), lengths, counts, units)
+    if split is None:
+        return None
+    found = []
+    for share in dict.fromkeys(split):
+        accepted = np.zeros(tally.states, dtype=bool)
+        accepted[states[share]] = True
+        block = next(space.listing(accepted, lengths=lengths, tally=tally))
+        found.append(Unit(split.count(share), _trackers(inverter, block[0])))
+    return tuple(found)
+
+
+def share_of(tally: ByStrings, state: int) -> tuple[int, ...]:
+    """Strings of each length in a state."""
+    digits = []
+    for _, count in tally.wanted:
+        state, digit = divmod(state, count + 1)
+        digits.append(digit)
+    return tuple(digits)
+
+
+def _trackers(inverter: Inverter, row: np.ndarray) -> tuple[Tracker, ...]:
+    """The trackers in use of an arrangement, shape (trackers, 2)."""
+    slots = np.repeat(np.arange(len(inverter.inputs)), [g.trackers for g in inverter.inputs])
+    return tuple(Tracker(int(g), int(s), int(n)) for g, (s, n) in zip(slots, row, strict=True) if s)
