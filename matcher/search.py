@@ -22,8 +22,9 @@ from matcher.errors import MatcherError
 from matcher.limits import PairLimits, at_most, pair_limits
 from matcher.moduleyear import ModuleYear
 from matcher.options import Options, build, join
-from matcher.order import ranked, sort_keys
+from matcher.order import Order, ranked, sort_keys
 from matcher.request import Request
+from matcher.shortlist import Heads, can_estimate, candidates, estimate, margin
 from matcher.singles import expand
 
 #: An inverter of several trackers with no more arrangements than this is worked out whole.
@@ -54,6 +55,11 @@ class Search:
     def system_voltage_v(self) -> np.ndarray:
         """Maximum system voltage of each module [V], NaN where not stated."""
         return column(self.modules, "max_system_voltage_v")
+
+    @cached_property
+    def _heads(self) -> Heads:
+        assert self.year is not None
+        return Heads.of(self.year, self.request.clip_cap_pct)
 
     @cached_property
     def name_rank(self) -> np.ndarray:
@@ -108,22 +114,68 @@ class Search:
         tables, pairs = [], []
         for first, last in expansion.parts(PART):
             pair, strings, in_series = expansion.part(first, last)
-            options = self._single_options(module[pair], inverter[pair], limits, pair, strings, in_series)
-            if not every:
-                order = self.rank(options)
-                options, pair = options.take(order), pair[order]
-                _, best = np.unique(pair, return_index=True)
-                options, pair = options.take(best), pair[best]
+            if every:
+                options = self._single_options(module[pair], inverter[pair], limits, pair, strings, in_series)
+            else:
+                options, pair = self._single_bests(module, inverter, limits, pair, strings, in_series)
             tables.append(options)
             pairs.append(pair)
         return join(tables), np.concatenate(pairs), expansion.sizes
+
+    def _single_bests(
+        self, module: np.ndarray, inverter: np.ndarray, limits: PairLimits, pair: np.ndarray,
+        strings: np.ndarray, in_series: np.ndarray,
+    ) -> tuple[Options, np.ndarray]:  # fmt: skip
+        """The best option of each pair of those given, and its pair."""
+
+        def work_out(chosen: np.ndarray) -> Options:
+            p = pair[chosen]
+            return self._single_options(module[p], inverter[p], limits, p, strings[chosen], in_series[chosen])
+
+        chosen = np.arange(len(pair))
+        if self.request.order is Order.LEAST_INVERTER and len(pair):
+            estimate = self._estimate(module, inverter, pair, strings, in_series)
+            sure = ~self._unsure(inverter[pair], limits, pair, in_series)
+            chosen = candidates(pair, strings * in_series, estimate, sure, self.request.clip_cap_pct)
+            options = work_out(chosen)
+            off = np.abs(options.clipping_pct - estimate[chosen]) > margin(estimate[chosen]) / 2
+            if off.any():
+                # An inverter for which the estimate is no good: all options of its pairs.
+                again = np.zeros(len(limits.most), dtype=bool)
+                again[pair[chosen[off]]] = True
+                more = np.setdiff1d(np.flatnonzero(again[pair]), chosen, assume_unique=True)
+                options, chosen = join([options, work_out(more)]), np.concatenate([chosen, more])
+        else:
+            options = work_out(chosen)
+        of = pair[chosen]
+        order = self.rank(options)
+        of, options = of[order], options.take(order)
+        _, best = np.unique(of, return_index=True)
+        return options.take(best), of[best]
+
+    def _estimate(
+        self, module: np.ndarray, inverter: np.ndarray, pair: np.ndarray, strings: np.ndarray, in_series: np.ndarray
+    ) -> np.ndarray:
+        """Clipping loss of options with one tracker [%], about; NaN where it must be worked out."""
+        if self.year is None or not self.year.shows_clipping:
+            return np.zeros(len(pair))
+        # Options of one pair and string length stand together.
+        ahead = np.diff(pair, prepend=-1) != 0
+        ahead |= np.diff(in_series, prepend=-1) != 0
+        first = np.flatnonzero(ahead)
+        lines = module if self.year.power_w.ndim == 2 else np.zeros_like(module)
+        head = pair[first]
+        found = estimate(
+            self._heads, self.inverters, lines[head], inverter[head], in_series[first], np.cumsum(ahead) - 1, strings
+        )
+        found[~can_estimate(self.inverters)[inverter[pair]]] = np.nan
+        return found
 
     def _single_options(
         self, m: np.ndarray, i: np.ndarray, limits: PairLimits, pair: np.ndarray, strings: np.ndarray,
         in_series: np.ndarray,
     ) -> Options:  # fmt: skip
-        unsure = (in_series < limits.sure_from[pair]) | (in_series > limits.sure_to[pair])
-        unsure |= np.isnan(self.inverters.max_isc_a[i])
+        unsure = self._unsure(i, limits, pair, in_series)
         if self.year is None:
             losses = Losses.unknown(len(m))
         else:
@@ -136,6 +188,11 @@ class Search:
             pmax_w=self.points.pmax_w[m], ac_power_w=self.inverters.ac_power_w[i],
             voc_cold_v=self.points.voc_cold_v[m], voltage_limit_v=limits.voltage_limit_v[pair], losses=losses,
         )  # fmt: skip
+
+    def _unsure(self, i: np.ndarray, limits: PairLimits, pair: np.ndarray, in_series: np.ndarray) -> np.ndarray:
+        """Whether a safety rating is missing for options with one tracker each, shape (n,)."""
+        unsure = (in_series < limits.sure_from[pair]) | (in_series > limits.sure_to[pair])
+        return unsure | np.isnan(self.inverters.max_isc_a[i])
 
     def space(self, m: int, i: int, limits: PairLimits | None = None) -> Space:
         """All arrangements of one pair inside the limits, which are the request's where none are given."""
@@ -161,7 +218,7 @@ class Search:
         k = len(block)
         inputs = self.inverters.records[i].inputs
         slots = np.repeat(np.arange(len(inputs)), [g.trackers for g in inputs])
-        year = self._year_of(m)
+        year = self.year_of(m)
         currents = column(inputs, "max_current_a")[slots]
         losses = Losses.unknown(k) if year is None else block_losses(year, self.inverters, i, currents, block)
         limit = self.limits(np.array([m]), np.array([i])).voltage_limit_v[0]
@@ -173,11 +230,14 @@ class Search:
             voc_cold_v=self.points.voc_cold_v[m], voltage_limit_v=limit, losses=losses,
         )  # fmt: skip
 
-    def _year_of(self, m: int) -> ModuleYear | None:
+    def year_of(self, m: int) -> ModuleYear | None:
+        """The year of one module; ``None`` where there is none."""
         if self.year is None or self.year.power_w.ndim == 1:
             return self.year
         hours = self.year.hours
-        return ModuleYear(self.year.power_w[m], self.year.vmp_v[m], hours[m] if hours.ndim == 2 else hours)
+        return replace(
+            self.year, power_w=self.year.power_w[m], vmp_v=self.year.vmp_v[m], hours=hours[m] if hours.ndim == 2 else hours
+        )
 
     def whole(self, m: int, i: int, space: Space) -> Options | None:
         """All options of a space; ``None`` where it is empty."""
@@ -193,7 +253,7 @@ class Search:
         """Options of a space in order, one by one, without listing them all."""
         limit = self.limits(np.array([m]), np.array([i])).voltage_limit_v[0]
         lengths = np.arange(space.shortest, min(space.longest, space.most) + 1)
-        year = self._year_of(m)
+        year = self.year_of(m)
 
         def rows_of(block: np.ndarray, unsure: bool) -> tuple[Options, np.ndarray]:
             options = self.table(m, i, block, unsure)

@@ -1,0 +1,157 @@
+"""Which options can be the first of their pair, so that the losses of all the others need not be worked out.
+
+In the order of least inverter the first option of a pair is the largest array that clips no more than the cap.
+For inverters with one tracker the loss of every option is estimated here from a few sums of the year, exact
+for an inverter whose efficiency does not follow the voltage of single hours: with the AC power a parabola of
+the DC power at one mean voltage, what lies above the limit is a sum of the first three moments of the hours
+above it. What the estimate leaves within `MARGIN_PCT` of the decision is worked out by `matcher.clipping`,
+and each of those must meet its estimate to half of that, else all options of its pair are worked out.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from matcher.clipping import has_model, parabola
+from matcher.columns import InverterColumns
+from matcher.moduleyear import ModuleYear
+
+#: An estimated loss [percentage points] this near to the cap, or to the least of its pair, decides nothing.
+MARGIN_PCT = 0.06
+
+#: The same as a share of the loss, for losses far above the cap.
+MARGIN_SHARE = 0.03
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Heads:
+    """Sums over the hours of highest power of each module's year.
+
+    ``keys`` (modules * classes,) ascends: line plus half of the power over the highest of that line. The
+    ``moments`` (3, modules * (classes + 1)) are sums of hours, energy and energy times power from one class
+    upwards. ``highest_w``, ``head_vmp_v`` (mean over the hours that are clipped at the cap) and ``vmp_v``
+    (mean by energy) have shape (modules,).
+    """
+
+    keys: np.ndarray
+    moments: np.ndarray
+    highest_w: np.ndarray
+    head_vmp_v: np.ndarray
+    vmp_v: np.ndarray
+
+    @classmethod
+    def of(cls, year: ModuleYear, clip_cap_pct: float) -> Heads:
+        """Sums of a year of arrays (classes,), or (modules, classes); a module without power has none."""
+        power = np.nan_to_num(np.atleast_2d(year.power_w))
+        order = np.argsort(power, axis=1)
+        power = np.take_along_axis(power, order, axis=1)
+        vmp = np.take_along_axis(np.nan_to_num(np.atleast_2d(year.vmp_v)), order, axis=1)
+        hours = np.take_along_axis(np.broadcast_to(np.atleast_2d(year.hours), power.shape), order, axis=1)
+
+        def upwards(values: np.ndarray) -> np.ndarray:
+            sums = np.cumsum(values[:, ::-1], axis=1)[:, ::-1]
+            return np.pad(sums, ((0, 0), (0, 1)))
+
+        time, energy, square = (upwards(hours * power**n) for n in range(3))
+        clipped = energy[:, :-1] - power * time[:, :-1]
+        lines = np.arange(len(power))
+        # The class at whose power the cap is clipped; at least the highest one.
+        cap = np.minimum((clipped > clip_cap_pct / 100.0 * energy[:, :1]).sum(axis=1), power.shape[1] - 1)
+        head = upwards(hours * vmp)[lines, cap] / time[lines, cap]
+        with np.errstate(invalid="ignore"):
+            mean = np.nan_to_num((hours * power * vmp).sum(axis=1) / energy[:, 0])
+        highest = power[:, -1]
+        scaled = power / np.where(highest > 0, highest, 1.0)[:, None]
+        return cls(
+            (lines[:, None] + scaled / 2.0).ravel(), np.stack([time.ravel(), energy.ravel(), square.ravel()]),
+            highest, head, mean,
+        )  # fmt: skip
+
+    def above(self, line: np.ndarray, power: np.ndarray) -> np.ndarray:
+        """Moments (3, n) of the hours above a power [W] in the years of the lines, both (n,)."""
+        with np.errstate(invalid="ignore", divide="ignore"):
+            share = np.fmin(power / self.highest_w[line], 1.0)
+        return self.moments[:, np.searchsorted(self.keys, line + share / 2.0, side="right") + line]
+
+    def whole(self, line: np.ndarray) -> np.ndarray:
+        """Moments (3, n) of the whole years of the lines (n,)."""
+        classes = len(self.keys) // len(self.highest_w)
+        return self.moments[:, line * (classes + 1)]
+
+
+def estimate(
+    heads: Heads, inverters: InverterColumns, line: np.ndarray, inverter: np.ndarray, in_series: np.ndarray,
+    of: np.ndarray, strings: np.ndarray,
+) -> np.ndarray:  # fmt: skip
+    """Clipping loss by the power limit [%], shape (n,), about.
+
+    ``line``, ``inverter`` and ``in_series`` describe string lengths (k,); option j has ``strings[j]`` strings
+    of the length ``of[j]``, both (n,). 0 where there is no efficiency model or no year.
+    """
+    limit = inverters.ac_power_w[inverter]
+    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+        c2, c1, c0 = (
+            c[:, 0] for c in parabola(inverters, inverter, (in_series * heads.head_vmp_v[line])[:, None])
+        )
+        # DC power at which the limit is reached.
+        short = limit - c0
+        root = np.sqrt(c1 * c1 + 4.0 * c2 * short)
+        enough = np.where(root >= 0, 2.0 * short / (c1 + root), np.inf)
+        t2, t1, t0 = (c[:, 0] for c in parabola(inverters, inverter, (in_series * heads.vmp_v[line])[:, None]))
+        hours, energy, square = heads.whole(line)
+        t2, t1, t0 = t2 * square, t1 * energy, t0 * hours
+
+        modules = (strings * in_series[of]).astype(float)
+        hours, energy, square = heads.above(line[of], enough[of] / modules)
+        clipped = (c2[of] * modules * square + c1[of] * energy) * modules - short[of] * hours
+        total = (t2[of] * modules + t1[of]) * modules + t0[of]
+        return np.nan_to_num(clipped / total * 100.0, nan=0.0, posinf=0.0, neginf=0.0)
+
+
+def margin(clipping_pct: np.ndarray) -> np.ndarray:
+    """How far an estimate may be off before it decides nothing [percentage points]."""
+    return MARGIN_PCT + MARGIN_SHARE * clipping_pct
+
+
+def candidates(
+    pair: np.ndarray, modules: np.ndarray, clipping_pct: np.ndarray, sure: np.ndarray, clip_cap_pct: float
+) -> np.ndarray:
+    """Positions of the options that can be the first of their pair in the order of least inverter.
+
+    Parameters
+    ----------
+    pair : int array, shape (n,)
+        Ascending.
+    modules : int array, shape (n,)
+    clipping_pct : float array, shape (n,)
+        Estimates; all options of a pair with NaN are candidates.
+    sure : bool array, shape (n,)
+        Verdict `fits`.
+    clip_cap_pct : float
+        Loss up to which a higher DC/AC ratio is better [%].
+    """
+    starts = np.flatnonzero(np.diff(pair, prepend=-1))
+    sizes = np.diff(starts, append=len(pair))
+
+    def of_pair(ufunc: np.ufunc, values: np.ndarray) -> np.ndarray:
+        return np.repeat(ufunc.reduceat(values, starts), sizes)
+
+    # An option that fits stands before any that is to be confirmed.
+    open_ = sure | ~of_pair(np.logical_or, sure)
+    unknown = np.isnan(clipping_pct)
+    off = margin(clipping_pct)
+    within = open_ & (clipping_pct + off <= clip_cap_pct)
+    largest = of_pair(np.maximum, np.where(within, modules, 0))
+    doubtful = open_ & ~within & (clipping_pct - off <= clip_cap_pct)
+    # Where nothing is surely within the cap, the least loss may decide.
+    least = of_pair(np.minimum, np.where(open_, clipping_pct + off, np.inf))
+    keep = (within & (modules == largest)) | (doubtful & (modules >= largest))
+    keep |= open_ & (largest == 0) & (clipping_pct - off <= least)
+    return np.flatnonzero(keep | (open_ & unknown))
+
+
+def can_estimate(inverters: InverterColumns) -> np.ndarray:
+    """Inverters (k,) whose losses come from the power limit only, or are unknown."""
+    return np.isnan(inverters.max_current_a) | ~has_model(inverters)
