@@ -19,10 +19,27 @@ if TYPE_CHECKING:
 
     from catalog.database import Database, Run
 
-VERSION = 1
+VERSION = 2
+
+
+def _add_stock(session: Session) -> None:
+    """Version 2: stock lists, and what people decided on their articles."""
+    for statement in (
+        """CREATE TABLE stock (
+            id INTEGER NOT NULL, kind VARCHAR, record_id INTEGER, quantity INTEGER NOT NULL, unit_price FLOAT,
+            currency VARCHAR, place VARCHAR NOT NULL, article VARCHAR NOT NULL, text TEXT NOT NULL,
+            confidence VARCHAR NOT NULL, source_id INTEGER NOT NULL, loaded_at VARCHAR NOT NULL,
+            PRIMARY KEY (id), FOREIGN KEY(record_id) REFERENCES record (id),
+            FOREIGN KEY(source_id) REFERENCES source (id))""",
+        """CREATE TABLE stock_decision (
+            article_key VARCHAR NOT NULL, text_key TEXT NOT NULL, record_id INTEGER, decided_at VARCHAR NOT NULL,
+            PRIMARY KEY (article_key, text_key), FOREIGN KEY(record_id) REFERENCES record (id))""",
+    ):
+        session.connection().exec_driver_sql(statement)
+
 
 #: By the version that they lead to.
-MIGRATIONS: Mapping[int, Callable[[Session], None]] = {}
+MIGRATIONS: Mapping[int, Callable[[Session], None]] = {2: _add_stock}
 
 
 def stored_version(run: Run) -> int | None:

@@ -19,11 +19,12 @@ from catalog.errors import CatalogError
 from catalog.loading import LoadReport, Progress, load
 from catalog.near import nearest
 from catalog.records import Inverter, Module, Site, Source
-from catalog.rows import CURRENT, checked_kind, id_condition, kind_of, read_records, read_sites
+from catalog.rows import CURRENT, RECORD_TYPES, checked_kind, id_condition, kind_of, read_records, read_sites
 from catalog.sites import checked
 
 if TYPE_CHECKING:
-    from catalog.names import Named
+    from catalog.names import Named, NameIndex
+    from catalog.stock import StockItem
 
 #: How many computed things are kept; the oldest give way.
 _KEPT = 200
@@ -262,6 +263,43 @@ class Catalog:
             row = session.get(SiteRow, key)
             if row is not None:
                 session.delete(row)
+
+    # Stock
+
+    def stock(self) -> list[StockItem]:
+        """All lines of the stock lists that are kept, in their order."""
+        from catalog.stock import read_stock
+
+        with self._database.reading() as run:
+            return read_stock(run)
+
+    def load_stock(self, items: Iterable[StockItem], *, add: bool = False) -> list[StockItem]:
+        """Match the articles of a list to records, and keep the list in one transaction; return it as it is kept.
+
+        It takes the place of all that was in stock; with ``add`` only of the same articles in the same places.
+        """
+        from catalog.stock import keep_list, matched, read_decisions
+
+        names = self.name_indexes()
+        with self._database.reading() as run:
+            decisions = read_decisions(run)
+        items = matched(items, names, decisions)
+        with self._database.writing() as (session, run):
+            keep_list(session, run, items, _now(), add=add)
+        return items
+
+    def decide_stock(self, item: StockItem, record: tuple[str, int] | None) -> int:
+        """Keep which record (kind, id) an article means, ``None`` for none; see `catalog.stock.keep_decision`."""
+        from catalog.stock import keep_decision
+
+        with self._database.writing() as (session, run):
+            return keep_decision(session, run, item, record, _now())
+
+    def name_indexes(self) -> dict[str, NameIndex]:
+        """Names of each kind as an index, for resolving many texts."""
+        from catalog.names import NameIndex
+
+        return {kind: NameIndex(self.names(kind)) for kind in RECORD_TYPES}
 
     # What was computed
 

@@ -66,6 +66,36 @@ class SiteBase(SQLModel):
     mounting: str
 
 
+class StockRow(SQLModel, table=True):
+    """One line of a stock list: how many of an article lie where, at what price, and which record it means."""
+
+    __tablename__ = "stock"
+
+    id: int = Field(primary_key=True, sa_column_kwargs={"autoincrement": False})
+    kind: str | None
+    record_id: int | None = Field(foreign_key="record.id")
+    quantity: int
+    unit_price: float | None
+    currency: str | None
+    place: str
+    article: str
+    text: str = Field(sa_type=Text)
+    confidence: str
+    source_id: int = Field(foreign_key="source.id")
+    loaded_at: str
+
+
+class DecisionRow(SQLModel, table=True):
+    """Which record a person said that a supplier's article means; no record: none of the catalog."""
+
+    __tablename__ = "stock_decision"
+
+    article_key: str = Field(primary_key=True)
+    text_key: str = Field(primary_key=True, sa_type=Text)
+    record_id: int | None = Field(foreign_key="record.id")
+    decided_at: str
+
+
 class KeptRow(SQLModel, table=True):
     """Something computed that is worth keeping; it can be thrown away at any time."""
 
