@@ -11,15 +11,19 @@ from matcher.rules import RULE_SETS, RuleSet
 
 
 def rule_set(name: str) -> RuleSet:
-    """A rule set by name.
+    """A rule set by name, or a user's own by the path of its file.
 
     Raises
     ------
     CatalogError
-        Where there is none of this name.
+        Where there is none of this name, or the file holds none.
     """
+    if name.lower().endswith(".toml"):
+        from cli.rule_files import read_rule_set
+
+        return read_rule_set(name)
     if name not in RULE_SETS:
-        raise CatalogError(f"--rules {name}: there is no such rule set; choose {' or '.join(RULE_SETS)}")
+        raise CatalogError(f"--rules {name}: there is no such rule set; choose {' or '.join(RULE_SETS)}, or a file that ends in .toml")
     return RULE_SETS[name]
 
 

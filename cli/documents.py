@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from typing import IO, TYPE_CHECKING, Any
 
 from matcher.limits import voltage_cap
@@ -131,8 +131,19 @@ def totals_entry(fit: Fit) -> dict[str, int]:
     }
 
 
-def write_fit(fit: Fit, stream: IO[str], *, weather: str | None, with_checks: bool, rejected: list[dict] | None) -> None:
-    """Write the document as a stream, one option a line, so that no number of options fills the memory."""
+def write_fit(
+    fit: Fit,
+    stream: IO[str],
+    *,
+    weather: str | None,
+    with_checks: bool,
+    rejected: list[dict] | None,
+    extra: Mapping[str, Any] | None = None,
+) -> None:
+    """Write the document as a stream, one option a line, so that no number of options fills the memory.
+
+    ``extra`` are further entries: ``energy`` and ``by_count`` where they were asked for.
+    """
     opening = json.dumps(head(fit, weather), allow_nan=False)
     stream.write(opening[:-1])
     seen_modules: set[int] = set()
@@ -149,6 +160,7 @@ def write_fit(fit: Fit, stream: IO[str], *, weather: str | None, with_checks: bo
     tail: dict[str, Any] = {"modules": modules, "inverters": inverters, "totals": totals_entry(fit)}
     if rejected is not None:
         tail["rejected"] = rejected
+    tail |= extra or {}
     stream.write(json.dumps(tail, allow_nan=False)[1:])
     stream.write("\n")
 

@@ -13,9 +13,17 @@ from cli.siting import (
     SiteOption, TiltOption, WeatherOption, site_of,
 )  # fmt: skip
 
+from cli.wanted import (
+    ByCountOption, DailyKwhOption, EnergyPriceOption, ExportPriceOption, ModulePriceOption, OwnUseOption,
+    SunHoursOption, YearlyKwhOption, YearsOption, energy_wanted, worth_of,
+)  # fmt: skip
+
 if TYPE_CHECKING:
-    from catalog.records import Inverter, Module
+    from catalog.records import Inverter, Module, Site
     from catalog.store import Catalog
+    from cli.wanted import EnergyWanted
+    from cli.years import SiteYear
+    from matcher.request import Request
 
 NOTHING_FITS = 1
 
@@ -28,7 +36,7 @@ def fit(
     strings: Annotated[str | None, typer.Option(metavar="LIST", help="The array as strings, hosted exactly: 2x11,1x12 is 2 strings of 11 modules and 1 of 12.")] = None,
     ratio: Annotated[str, typer.Option(metavar="LOW..HIGH", help="Window of DC/AC ratios.")] = "0.8..1.5",
     clip_cap: Annotated[float, typer.Option(metavar="PCT", help="Clipping loss up to which a higher DC/AC ratio is better [%].")] = 2.0,
-    rules: Annotated[str, typer.Option(metavar="NAME", help="Rule set: iec-62548 or nec-690.")] = "iec-62548",
+    rules: Annotated[str, typer.Option(metavar="NAME", help="Rule set: iec-62548, nec-690, or a file of your own, .toml.")] = "iec-62548",
     combiner: Annotated[bool, typer.Option("--combiner", help="Strings are paralleled in a combiner box: string inputs are waived.")] = False,
     by: Annotated[str, typer.Option(metavar="ORDER", help="least-inverter, ratio, clipping, margin or energy.")] = "least-inverter",
     every: Annotated[bool, typer.Option("--every", help="Every arrangement, not the best one of each record.")] = False,
@@ -48,6 +56,15 @@ def fit(
     tilt: TiltOption = None,
     azimuth: AzimuthOption = None,
     weather: WeatherOption = None,
+    yearly_kwh: YearlyKwhOption = None,
+    daily_kwh: DailyKwhOption = None,
+    sun_hours: SunHoursOption = None,
+    by_count: ByCountOption = False,
+    energy_price: EnergyPriceOption = None,
+    own_use: OwnUseOption = None,
+    export_price: ExportPriceOption = None,
+    module_price: ModulePriceOption = None,
+    years: YearsOption = 20.0,
     catalog: CatalogOption = None,
 ) -> int:
     """Name what you have, get what fits it.
@@ -61,34 +78,80 @@ def fit(
         raise CatalogError("name what you have: --module NAME, --inverter NAME, or both")
     if strings is not None and module is None:
         raise CatalogError("--strings needs the module that they are made of: --module NAME")
+    pair = module is not None and inverter is not None
+    if by_count and not pair:
+        raise CatalogError("--by-count is about one pair: give --module and --inverter")
+    energy = energy_wanted(yearly_kwh, daily_kwh, sun_hours)
+    if energy is not None and (count is not None or strings is not None):
+        raise CatalogError("an energy wanted decides the module count: leave --count and --strings away")
+    worth = worth_of(energy_price, own_use, export_price, module_price, years)
     with open_catalog(catalog) as opened:
         place = site_of(
             opened, site, low=low, high=high, mounting=mounting, voltage_cap=voltage_cap, rear_share=rear_share,
             lat=lat, lon=lon, tilt=tilt, azimuth=azimuth, weather=weather,
         )  # fmt: skip
         from cli.asking import request_of
-        from cli.years import site_year, site_years
-        from matcher.fit import fit as search
 
-        pair = module is not None and inverter is not None
         request = request_of(place, ratio, count, clip_cap, rules, combiner, by, every or pair, units, strings)
         modules, inverters = _records(opened, module, inverter)
-        if len(modules) == 1:
-            limited = any(g.max_current_a is not None for i in inverters for g in i.inputs)
-            year = site_year(opened, place, modules[0], current_limits=limited)
-        else:
-            year = site_years(opened, place, modules)
-        found = search(modules, inverters, request, year.year)
+        year = _year(opened, place, modules, inverters, energy)
 
-    from cli import fit_screen, fit_files
+    from cli import fit_files, fit_screen
+    from cli.fit_growth import add_growth, show_growth
+    from cli.years import cold_plane
+    from matcher.fit import fit as search
 
+    plane = cold_plane(request)
+    if energy is not None:
+        request = _sized(request, modules, inverters, year, energy)
+    found = search(modules, inverters, request, year.year, plane)
+    extra = add_growth(found, worth) if by_count else {}
+    if energy is not None:
+        from cli.fit_energy import add_energy
+
+        extra |= add_energy(found, year, energy)
     if out is not None:
-        fit_files.write(found, out, year, with_checks=checks or not request.every, why=why)
+        fit_files.write(found, out, year, with_checks=checks or not request.every, why=why, extra=extra)
     if json:
-        fit_files.print_document(found, year.weather, with_checks=checks or not request.every, why=why)
+        fit_files.print_document(found, year.weather, with_checks=checks or not request.every, why=why, extra=extra)
     elif out is None or fit_screen.on_terminal():
+        if energy is not None:
+            from cli.fit_energy import show_energy
+
+            show_energy(found, year, energy)
+        if by_count:
+            show_growth(found, worth)
         fit_screen.show(found, year, limit=limit, checks=checks, why=why)
     return 0 if found.totals.records_with_option else NOTHING_FITS
+
+
+def _year(
+    catalog: Catalog, site: Site, modules: list[Module], inverters: list[Inverter], energy: EnergyWanted | None
+) -> SiteYear:
+    """The year that the question needs: of the module, of all modules, or made of sun hours."""
+    from cli.wanted import sun_hours_site_year
+    from cli.years import has_weather, site_year, site_years
+
+    if len(modules) == 1:
+        if energy is not None and energy.sun_hours is not None and not has_weather(site):
+            return sun_hours_site_year(modules[0], site, energy.sun_hours)
+        limited = any(g.max_current_a is not None for i in inverters for g in i.inputs)
+        return site_year(catalog, site, modules[0], current_limits=limited)
+    return site_years(catalog, site, modules)
+
+
+def _sized(
+    request: Request, modules: list[Module], inverters: list[Inverter], year: SiteYear, energy: EnergyWanted
+) -> Request:
+    """The request with the smallest module count that yields the energy."""
+    from dataclasses import replace
+
+    from matcher.energy import counts_for_energy
+
+    if year.year is None:
+        raise CatalogError(f"an energy needs weather: {year.why_not}, or --sun-hours with --module")
+    count = counts_for_energy(modules, inverters, request, year.year, energy.yearly_kwh)
+    return replace(request, counts=(count, count))
 
 
 def _records(catalog: Catalog, module: str | None, inverter: str | None) -> tuple[list[Module], list[Inverter]]:

@@ -6,7 +6,7 @@ import csv
 import os
 import sys
 import tempfile
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Mapping
 from contextlib import contextmanager
 from pathlib import Path
 from typing import IO, TYPE_CHECKING, Any
@@ -23,10 +23,10 @@ if TYPE_CHECKING:
 FORMS = (".csv", ".json", ".xlsx", ".html")
 
 
-def write(fit: Fit, out: str, year: SiteYear, *, with_checks: bool, why: bool) -> None:
-    """Write all options to a file.
-
-    Options may be gone through only once where an inverter has very many: a result is written to one file.
+def write(
+    fit: Fit, out: str, year: SiteYear, *, with_checks: bool, why: bool, extra: Mapping[str, Any] | None = None
+) -> None:
+    """Write all options to a file; ``extra`` are further entries of the document.
 
     Raises
     ------
@@ -47,14 +47,18 @@ def write(fit: Fit, out: str, year: SiteYear, *, with_checks: bool, why: bool) -
 
             write_report(fit, stream, year, why=why)
         elif form == ".json":
-            write_fit(fit, stream, weather=year.weather, with_checks=with_checks, rejected=_rejected(fit, why))
+            rejected = _rejected(fit, why)
+            write_fit(fit, stream, weather=year.weather, with_checks=with_checks, rejected=rejected, extra=extra)
         else:
             write_csv(fit, stream)
 
 
-def print_document(fit: Fit, weather: str | None, *, with_checks: bool, why: bool) -> None:
-    """Print the document on stdout."""
-    write_fit(fit, sys.stdout, weather=weather, with_checks=with_checks, rejected=_rejected(fit, why))
+def print_document(
+    fit: Fit, weather: str | None, *, with_checks: bool, why: bool, extra: Mapping[str, Any] | None = None
+) -> None:
+    """Print the document on stdout; ``extra`` are further entries of it."""
+    rejected = _rejected(fit, why)
+    write_fit(fit, sys.stdout, weather=weather, with_checks=with_checks, rejected=rejected, extra=extra)
 
 
 @contextmanager

@@ -18,6 +18,7 @@ if TYPE_CHECKING:
     from catalog.records import Module, Site
     from catalog.store import Catalog
     from matcher.moduleyear import ModuleYear, PlaneYear
+    from matcher.request import Request
     from matcher.weather import Weather
 
 #: DC losses from the modules to the inverter [% of power] (common practice: 1 to 5 %, no source).
@@ -29,7 +30,7 @@ NO_PLACE = "the site has no place: give --lat and --lon, or a --weather file"
 ASSUMED_TILT = 30.0
 
 #: Goes into the key of a kept year; to be raised when the calculation changes.
-_EDITION = 2
+_EDITION = 3
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,13 +38,14 @@ class SiteYear:
     """The year of modules at a site, where it comes from, and what must be said about it.
 
     ``year`` has arrays (classes,) for one module or (modules, classes) for several; where it is ``None``,
-    ``why_not`` says why.
+    ``why_not`` says why. ``irradiation_kwh_m2`` is that of a year on the array.
     """
 
     year: ModuleYear | None
     weather: str | None = None
     notes: tuple[str, ...] = ()
     why_not: str | None = None
+    irradiation_kwh_m2: float | None = None
 
 
 def site_year(
@@ -59,8 +61,10 @@ def site_year(
     CatalogError, MatcherError
         Where the weather file cannot be read.
     """
-    if not _has_weather(site):
+    if not has_weather(site):
         return SiteYear(None, why_not=NO_PLACE)
+    import numpy as np
+
     from matcher.electrical import diode_parameters
 
     diode = diode_parameters(module)
@@ -73,13 +77,15 @@ def site_year(
     else:
         from matcher.moduleyear import condense, module_year
 
-        plane, weather, notes = _plane(site)
+        plane, weather, notes = site_plane(site)
         year = condense(module_year(diode, plane, dc_loss_pct), current_limits=current_limits)
         arrays = {"power_w": year.power_w, "vmp_v": year.vmp_v, "hours": year.hours}
+        arrays["irradiation_kwh_m2"] = np.array(plane.irradiation_kwh_m2)
         catalog.keep(key, _packed(arrays, weather, notes))
     from matcher.moduleyear import ModuleYear
 
-    return SiteYear(ModuleYear(**arrays), weather, notes)
+    irradiation = float(arrays.pop("irradiation_kwh_m2"))
+    return SiteYear(ModuleYear(**arrays), weather, notes, irradiation_kwh_m2=irradiation)
 
 
 def site_years(
@@ -89,7 +95,7 @@ def site_years(
 
     A module whose record does not allow a model of its power has NaN. Raises as `site_year` does.
     """
-    if not _has_weather(site):
+    if not has_weather(site):
         return SiteYear(None, why_not=NO_PLACE)
     import numpy as np
 
@@ -101,7 +107,7 @@ def site_years(
     if kept is not None:
         arrays, weather, notes = _unpacked(kept)
     else:
-        whole, weather, notes = _plane(site)
+        whole, weather, notes = site_plane(site)
         condensed = condense_plane(whole)
         arrays = {"irradiance": condensed.irradiance, "cell_c": condensed.cell_c, "hours": condensed.hours}
         catalog.keep(key, _packed(arrays, weather, notes))
@@ -110,14 +116,15 @@ def site_years(
     # Without a model there is no power, which is not the same as none.
     unknown = ~(year.power_w > 0).any(axis=1)
     year.power_w[unknown] = np.nan
-    return SiteYear(year, weather, notes)
+    return SiteYear(year, weather, notes, irradiation_kwh_m2=plane.irradiation_kwh_m2)
 
 
-def _has_weather(site: Site) -> bool:
+def has_weather(site: Site) -> bool:
+    """Whether a year can be had for the site."""
     return site.weather is not None or site.lat is not None
 
 
-def _plane(site: Site) -> tuple[PlaneYear, str, tuple[str, ...]]:
+def site_plane(site: Site) -> tuple[PlaneYear, str, tuple[str, ...]]:
     """The site's year on its array, what it is called, and what must be said about it."""
     from matcher.moduleyear import plane_year
 
@@ -132,6 +139,24 @@ def _plane(site: Site) -> tuple[PlaneYear, str, tuple[str, ...]]:
     ]
     notes += [f"{n[0].upper()}{n[1:].rstrip('.')}." for n in weather.notes]
     return plane, label, tuple(notes)
+
+
+def cold_plane(request: Request) -> PlaneYear | None:
+    """The hour by hour year that a rule set takes the cold voltage from; ``None`` where it does not.
+
+    Raises
+    ------
+    CatalogError
+        Where it does and the site has no weather file: a clear sky is no record of cold hours.
+    """
+    if request.rules.cold_voltage != "hourly":
+        return None
+    if request.site.weather is None:
+        raise CatalogError(
+            f"rule set {request.rules.name} takes the cold voltage from hourly weather: give the site a weather"
+            " file (--weather)"
+        )
+    return site_plane(request.site)[0]
 
 
 def weather_of(site: Site) -> Weather:

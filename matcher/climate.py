@@ -31,8 +31,11 @@ class ClimateWindow:
         """Coldest ambient [degC] at which every voltage maximum that is known still holds.
 
         An unstated max DC voltage counts as the top of the MPPT window where the option relies on that
-        inference, and not at all where the option is to be confirmed anyway. ``None``: nothing known bounds it.
+        inference, and not at all where the option is to be confirmed anyway. ``None``: nothing known bounds it,
+        or the cold voltage comes from hourly weather and not from a temperature.
         """
+        if self._rules.cold_voltage == "hourly":
+            return None
         cap = voltage_cap(self._site, self._rules)
         known = [v for v in (inverter.max_dc_voltage_v, self._module.max_system_voltage_v) if v is not None]
         if cap == cap:

@@ -43,6 +43,13 @@ class Losses:
         """Clipping loss by both limits [%]."""
         return self.power_pct + self.current_pct
 
+    def of(self, year: ModuleYear) -> Losses:
+        """As they are, or with the clipping unknown where the year cannot show it."""
+        if year.shows_clipping:
+            return self
+        unknown = np.full(len(self.yearly_kwh), np.nan)
+        return Losses(unknown, unknown, self.yearly_kwh)
+
     @classmethod
     def unknown(cls, n: int) -> Losses:
         """Losses of n options that cannot be known."""
@@ -134,7 +141,7 @@ def single_losses(
     known = has_model(inverters)[inverter]
     for values in (losses.power_pct, losses.current_pct, losses.yearly_kwh):
         values[~known] = np.nan
-    return losses
+    return losses.of(year)
 
 
 def _single_chunk(
@@ -229,7 +236,7 @@ def block_losses(
         if limited:
             ac = _multi_ac(amounts[part], held, curve, start)
             sums[2, part] = np.minimum(ac, limit) @ year.hours
-    return _to_losses(*sums)
+    return _to_losses(*sums).of(year)
 
 
 def _multi_ac(amounts: np.ndarray, dc: np.ndarray, curve: tuple[np.ndarray, ...], start: float) -> np.ndarray:
@@ -268,4 +275,6 @@ def count_bounds(
         produced = high @ year.hours
         least[j] = np.maximum(low - limit, 0.0) @ year.hours / produced * 100.0 if produced > 0 else 0.0
         most[j] = np.minimum(high, limit) @ year.hours / 1000.0
+    if not year.shows_clipping:
+        least[:] = np.nan
     return least * (1.0 - 1e-9), most * (1.0 + 1e-9)

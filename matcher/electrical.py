@@ -8,6 +8,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -16,8 +17,12 @@ from matcher.columns import column
 from matcher.errors import MatcherError
 from matcher.rules import RuleSet, cold_factor
 from matcher.singlediode import (
-    FITTED_FROM, SixParameters, fit_six_parameters, max_power_point, six_parameters,
+    FITTED_FROM, SixParameters, at_conditions, fit_six_parameters, max_power_point, open_circuit_voltage,
+    six_parameters,
 )  # fmt: skip
+
+if TYPE_CHECKING:
+    from matcher.moduleyear import PlaneYear
 
 #: NOCT [degC] that stands in where a record has none.
 ASSUMED_NOCT_C = 45.0
@@ -85,6 +90,22 @@ def vmp(module: Module, cell_c: np.ndarray | float, diode: SixParameters | None)
     return None
 
 
+def power_in_heat(module: Module, site: Site) -> tuple[float, float, float] | None:
+    """Vmp [V] and power [W] at 1000 W/m2 and the hot design point, and its cell temperature [degC].
+
+    ``None`` where the record allows neither the model nor the coefficient of Pmax.
+    """
+    cell = site.design_high_c + hot_adder(module, site)
+    diode = diode_parameters(module)
+    if diode is not None:
+        volts, amps = max_power_point(diode, 1000.0, cell)
+        return float(volts), float(volts * amps), cell
+    volts_by_rule = vmp(module, cell, None)
+    if module.pmax_coef_pct is None or volts_by_rule is None:
+        return None
+    return float(volts_by_rule), module.pmax_w * (1.0 + module.pmax_coef_pct / 100.0 * (cell - 25.0)), cell
+
+
 def _cold_voc(module: Module, site: Site, rules: RuleSet) -> float | str:
     """Voc at the design low [V], or the reason why there is none."""
     if not uses_cold_table(module, rules):
@@ -139,8 +160,40 @@ def _vmp_at(modules: Sequence[Module], temperatures: np.ndarray) -> np.ndarray:
     return out
 
 
-def design_points(modules: Sequence[Module], site: Site, rules: RuleSet) -> Points:
+def hourly_voc(modules: Sequence[Module], plane: PlaneYear, rules: RuleSet) -> tuple[np.ndarray, np.ndarray]:
+    """Highest modelled Voc over a year's sunlit hours with the rule set's margin [V], and its cell temperature.
+
+    Shape (n,) each, NaN where a record does not allow the model. Only hours that no other one beats in both
+    irradiance and cold can hold the highest Voc.
+
+    References
+    ----------
+    T. Karin, A. Jain, "Photovoltaic String Sizing Using Site-Specific Modeling", IEEE J. Photovoltaics 2020,
+    doi:10.1109/JPHOTOV.2020.2969788 (from memory; the margin is the user's).
+    """
+    order = np.lexsort((plane.cell_c, -plane.irradiance))
+    cell = plane.cell_c[order]
+    beaten = cell >= np.append(np.inf, np.minimum.accumulate(cell)[:-1])
+    front = order[~beaten]
+    diodes = diodes_of(modules)
+    voc = open_circuit_voltage(at_conditions(diodes), plane.irradiance[front], plane.cell_c[front])
+    voc[np.isnan(voc)] = -np.inf
+    best = voc.argmax(axis=1)
+    highest = voc[np.arange(len(modules)), best] * (1.0 + rules.cold_margin_pct / 100.0)
+    return np.where(np.isfinite(highest), highest, np.nan), plane.cell_c[front][best]
+
+
+def design_points(
+    modules: Sequence[Module], site: Site, rules: RuleSet, plane: PlaneYear | None = None
+) -> Points:
     """Voltages and currents of each module at the site's design temperatures.
+
+    ``plane`` is the year on the site's array, which the cold-voltage method ``hourly`` needs.
+
+    Raises
+    ------
+    MatcherError
+        Where the rule set takes the cold voltage from hourly weather and there is none.
 
     References
     ----------
@@ -161,6 +214,17 @@ def design_points(modules: Sequence[Module], site: Site, rules: RuleSet) -> Poin
                 reasons[k] = reasons[k] or found
             else:
                 target[k] = found
+    if rules.cold_voltage == "hourly":
+        if plane is None:
+            raise MatcherError(
+                f"rule set {rules.name} takes the cold voltage from hourly weather: give the site a weather file"
+            )
+        voc_cold, cold = hourly_voc(modules, plane, rules)
+        wanted = "voc_coef_pct, isc_coef_pct and pmax_coef_pct"
+        reasons = [
+            f"the hourly cold voltage needs {wanted}, not all stated" if np.isnan(v) else r
+            for v, r in zip(voc_cold, reasons, strict=True)
+        ]
     vmps = _vmp_at(modules, np.column_stack([hot, np.full(n, 25.0), cold]))
     for k in np.flatnonzero(~(vmps > 0).all(axis=1)):
         missing = [c for c in ("isc_coef_pct", "pmax_coef_pct") if getattr(modules[k], c) is None]

@@ -7,9 +7,9 @@ columns (`Fit.ranked`) that are made into full options one by one (`Fit.option`)
 from __future__ import annotations
 
 import heapq
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, partial
 
 import numpy as np
 
@@ -22,7 +22,7 @@ from matcher.columns import InverterColumns
 from matcher.electrical import Points, design_points
 from matcher.errors import MatcherError
 from matcher.limits import UNLIMITED
-from matcher.moduleyear import ModuleYear
+from matcher.moduleyear import ModuleYear, PlaneYear
 from matcher.near import Rejection, rejection
 from matcher.options import Options, Unit, join, label
 from matcher.order import in_words
@@ -94,7 +94,7 @@ class Fit:
     lists_inverters: bool
     found: np.ndarray
     table: Options
-    lazy: list[Lazy]
+    lazy: list[Callable[[], Lazy]]
     search: Search
 
     @property
@@ -108,13 +108,13 @@ class Fit:
         return in_words(self.request.order, self.request.clip_cap_pct, self.year is not None)
 
     def ranked(self) -> Iterator[Options]:
-        """Options in order, in tables of any size; can be gone through once where inverters are lazy."""
+        """Options in order, in tables of any size."""
         if not self.lazy:
             yield self.table
             return
         keys = self.search.keys(self.table)
         whole = ((tuple(k), self.table, j) for j, k in enumerate(keys.tolist()))
-        for _, table, row in heapq.merge(whole, *self.lazy, key=lambda entry: entry[0]):
+        for _, table, row in heapq.merge(whole, *(begin() for begin in self.lazy), key=lambda entry: entry[0]):
             yield table.take(slice(row, row + 1))
 
     def options(self, limit: int | None = None, full: bool = True) -> Iterator[Option]:
@@ -205,6 +205,7 @@ def fit(
     inverters: Sequence[Inverter],
     request: Request,
     year: ModuleYear | None = None,
+    plane: PlaneYear | None = None,
 ) -> Fit:
     """Every valid arrangement of the modules on the inverters, counted, worked out and ranked.
 
@@ -217,6 +218,8 @@ def fit(
     year : ModuleYear, optional
         Condensed year of the module, arrays (classes,), or of all modules, (modules, classes). Without it
         there is no clipping figure.
+    plane : PlaneYear, optional
+        The year on the site's array, for rule sets that take the cold voltage from hourly weather.
 
     Raises
     ------
@@ -224,7 +227,9 @@ def fit(
         Where the one module that was named cannot be matched at all, with the value that is missing; or
         where ``every`` asks for more options than can be listed at once.
     """
-    points = design_points(modules, request.site, request.rules)
+    if request.several and request.counts is None and request.strings is None:
+        raise MatcherError("several units need to know what they share: a module count, or strings")
+    points = design_points(modules, request.site, request.rules, plane)
     if len(modules) == 1 and points.reasons[0] is not None:
         raise MatcherError(f"{modules[0].name} cannot be matched: {points.reasons[0]}")
     search = Search(tuple(modules), InverterColumns.of(inverters), request, points, year)
@@ -247,7 +252,7 @@ def fit(
     )
 
 
-def _on_one_unit(search: Search) -> tuple[Options, list[int], list[Lazy]]:
+def _on_one_unit(search: Search) -> tuple[Options, list[int], list[Callable[[], Lazy]]]:
     """Options of one inverter each, the exact number of arrangements per listed record, and lazy inverters."""
     request, singles = search.request, np.flatnonzero(search.inverters.single)
     lists_inverters = len(search.modules) == 1
@@ -258,7 +263,7 @@ def _on_one_unit(search: Search) -> tuple[Options, list[int], list[Lazy]]:
     for record, size in zip((inverter if lists_inverters else module).tolist(), sizes.tolist(), strict=True):
         arrangements[record] += size
     parts: list[Options] = [table]
-    lazy: list[Lazy] = []
+    lazy: list[Callable[[], Lazy]] = []
     for m in range(len(search.modules)):
         for i in np.flatnonzero(~search.inverters.single).tolist():
             space = search.space(m, i)
@@ -271,7 +276,7 @@ def _on_one_unit(search: Search) -> tuple[Options, list[int], list[Lazy]]:
                 best = search.whole(m, i, space)
             else:
                 best = None
-                lazy.append(search.in_order(m, i, space))
+                lazy.append(partial(search.in_order, m, i, space))
             if best is not None:
                 parts.append(best)
     return join(parts), arrangements, lazy

@@ -45,12 +45,13 @@ class ModuleYear:
     """One year of one module, hour by hour or in classes, arrays of one length.
 
     power_w [W] and vmp_v [V] of the module at its maximum power point, power after DC losses; hours [h] that
-    each entry stands for.
+    each entry stands for. ``shows_clipping`` is False for a stand-in that has no hours of high power.
     """
 
     power_w: np.ndarray
     vmp_v: np.ndarray
     hours: np.ndarray
+    shows_clipping: bool = True
 
     @property
     def energy_kwh(self) -> float:

@@ -60,8 +60,6 @@ class Request:
             )
         if self.strings is not None and self.counts is not None:
             raise MatcherError("strings say how many modules there are: leave the module count away")
-        if self.several and self.counts is None and self.strings is None:
-            raise MatcherError("several units need to know what they share: a module count, or strings")
 
     @property
     def several(self) -> bool:

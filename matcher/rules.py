@@ -10,14 +10,20 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 
 
+#: How the highest Voc is found. ``coefficient``: the datasheet's coefficient at the design low, the table only
+#: where there is none. ``table``: NEC Table 690.7(A) for every crystalline module. ``hourly``: the highest
+#: modelled Voc over the sunlit hours of the site's weather file, an engineer's own choice (NEC 690.7(A)(3);
+#: Karin and Jain 2020, doi:10.1109/JPHOTOV.2020.2969788, both from memory).
+COLD_METHODS = ("coefficient", "table", "hourly")
+
+
 @dataclass(frozen=True, slots=True)
 class RuleSet:
     """What one code prescribes.
 
     ``fuse_low`` and ``fuse_high`` bound the rating of a string fuse as a multiple of Isc at STC
-    (``fuse_high`` may be ``None``). ``cold_voltage`` is ``coefficient`` (the datasheet's coefficient of
-    Voc; the table only where there is none) or ``table`` (the table for every crystalline module).
-    ``clauses`` names the clause behind each check.
+    (``fuse_high`` may be ``None``). ``cold_voltage`` is one of `COLD_METHODS`; ``cold_margin_pct`` is added
+    to the Voc of the method ``hourly``. ``clauses`` names the clause behind each check.
     """
 
     name: str
@@ -26,6 +32,7 @@ class RuleSet:
     fuse_high: float | None
     voltage_cap_v: float | None = None
     cold_voltage: str = "coefficient"
+    cold_margin_pct: float = 0.0
     clauses: Mapping[str, str] = field(default_factory=dict)
 
     def clause(self, check: str) -> str:

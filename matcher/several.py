@@ -111,7 +111,7 @@ def together(rows: Options, copies: Sequence[int], pmax_w: float, ac_power_w: fl
     kwh = rows.yearly_kwh * times
     # What each unit would deliver without any limit, from which the loss of the whole follows.
     unlimited = kwh / (1.0 - rows.clipping_pct / 100.0)
-    whole = unlimited.sum()
+    whole = unlimited.sum()  # NaN, and with it the losses, where one of them is not known
     current = (unlimited * rows.current_clipping_pct).sum() / whole
     lengths = len(np.unique(rows.in_series[rows.in_series > 0]))
     width = rows.strings.shape[1]

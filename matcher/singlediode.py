@@ -203,6 +203,27 @@ def max_power_point(
     return vmp, imp
 
 
+def open_circuit_voltage(params: SixParameters, irradiance: ArrayLike, cell_c: ArrayLike) -> np.ndarray:
+    """Open-circuit voltage of the model [V]; arguments broadcast as in `max_power_point`.
+
+    NaN where the irradiance is not positive.
+    """
+    import numpy as np
+
+    with np.errstate(all="ignore"):
+        suns = np.asarray(irradiance, dtype=float) / 1000
+        light, log_dark, a, shunt = _operating(params, suns, np.asarray(cell_c, dtype=float) + 273.15)
+        dark = np.exp(log_dark)
+        v = a * np.log1p(light / dark)
+        for _ in range(20):  # Newton from above on a convex curve: falls to the root without passing it
+            diode = np.exp(log_dark + v / a)
+            step = (light - diode + dark - shunt * v) / (diode / a + shunt)
+            v = v + step
+            if not np.any(np.abs(step) > 1e-10 * np.abs(v)):
+                break
+    return np.where(suns > 0, v, np.nan)
+
+
 def _operating(
     params: SixParameters, suns: ArrayLike, cell_k: ArrayLike
 ) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
