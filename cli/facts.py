@@ -47,6 +47,25 @@ def confirm_words(confirm: Confirm) -> str:
     )
 
 
+_SHORT = {
+    "max_dc_voltage_v": "DC voltage",
+    "max_system_voltage_v": "system voltage",
+    "max_isc_a": "Isc of a tracker",
+    "voc_coef_pct": "coefficient of Voc",
+}
+
+
+def confirm_short(option: Option) -> str:
+    """All that is to be confirmed of one option, short enough for a column of a table."""
+    by_record: dict[str, list[str]] = {}
+    for c in option.confirm:
+        least = at_least(c)
+        words = _SHORT.get(c.field, field_words(c)) + (f" (inputs {c.inputs + 1})" if c.inputs else "")
+        limit = "" if least is None else f" ≥\u00a0{least:,.1f}\u00a0{c.unit}"
+        by_record.setdefault(c.record, []).append(words + limit)
+    return "; ".join(f"{record}: {', '.join(values)}" for record, values in by_record.items())
+
+
 def confirm_line(option: Option) -> str:
     """All that is to be confirmed of one option; empty where nothing is."""
     return "; ".join(f"{c.record}: {confirm_words(c)}" for c in option.confirm)

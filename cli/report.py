@@ -256,7 +256,7 @@ def _cells(fit: Fit, o: Option, columns: Sequence[Column]) -> list[Cell]:
         "kWh a year": Cell(number(o.yearly_kwh), o.yearly_kwh),
         "holds from °C": _end(facts.holds_from(o), -999.0),
         "holds to °C": _end(facts.holds_to(o), 999.0),
-        "to confirm": Cell(facts.confirm_line(o)),
+        "to confirm": Cell(facts.confirm_short(o)),
     }
     return [known[c.header] for c in columns]
 

@@ -111,6 +111,7 @@ def test_values_to_confirm_are_named_and_never_rounded_down(tmp_path: Path) -> N
     (line,) = [t for t in page.texts("strong") if "of at least" in t]
     named = float(re.search(r"at least ([\d.]+) A", line)[1])  # type: ignore[index]
     assert need <= named < need + 0.1
+    assert page.texts("td", data_label="to confirm") == [f"inverter: Isc of a tracker ≥ {named:.1f} A"]
 
 
 def test_hostile_names_stay_text(tmp_path: Path) -> None:
