@@ -1,4 +1,4 @@
-"""Run the examples of the documents and write what they print into the documents.
+"""Run the examples of the documents and write what they print into the documents; list the files in DEVELOPERS.md.
 
 Run from the root of the project: ``python tests/refresh_examples.py [DOCUMENT...]``. Look at the difference before
 you commit it: what changed there is what users see change.
@@ -13,6 +13,7 @@ from pathlib import Path
 sys.path.insert(0, str(Path(__file__).parent.parent))
 
 from documented_examples import Command, Session, documents, renewed, steps  # noqa: E402
+from project_layout import BEGIN, with_listing  # noqa: E402
 
 
 def refresh(path: Path) -> int:
@@ -28,8 +29,11 @@ def refresh(path: Path) -> int:
                 changes.append((step, now))
     for step, now in reversed(changes):
         lines[step.line + 1 : step.line + 1 + len(step.shown)] = now
-    if changes:
-        path.write_text("\n".join(lines) + "\n", encoding="utf-8")
+    now = "\n".join(lines) + "\n"
+    if BEGIN in now:
+        now = with_listing(now)
+    if now != text:
+        path.write_text(now, encoding="utf-8")
     return len(changes)
 
 
