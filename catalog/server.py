@@ -34,7 +34,8 @@ class Server:
             parsed = make_url(url)
         except (ArgumentError, ValueError) as error:
             raise CatalogError("the catalog's URL is not of the form postgresql+psycopg://user@host/name") from error
-        self.label = parsed.render_as_string(hide_password=True)
+        # What follows the "?" may hold a password too.
+        self.label = parsed.set(query={}).render_as_string(hide_password=True)
         self.readonly = readonly
         try:
             self._engine = create_engine(parsed, connect_args={"connect_timeout": _CONNECT_S})

@@ -87,12 +87,22 @@ def kill_loads(path: Path, kills: int, count: int = 2000, seed: int = 1) -> dict
     for kill in range(kills):
         path.write_bytes(blank)
         child = fork(load)
-        # Half of them near the end, where the changes are written to the file.
-        time.sleep(takes * (chance.uniform(0.75, 1.05) if kill % 2 else chance.uniform(0.0, 1.0)))
+        if kill % 2:
+            time.sleep(takes * chance.uniform(0.0, 1.1))
+        else:
+            # Half of them in the short while in which the file itself is written.
+            _wait_for_writing(path, len(blank), until=time.monotonic() + 10 * takes)
+            time.sleep(chance.uniform(0.0, 0.05))
         os.kill(child, signal.SIGKILL)
         os.waitpid(child, 0)
         seen[state_of(path, before, after, inverters)] += 1
     return seen
+
+
+def _wait_for_writing(path: Path, size: int, until: float) -> None:
+    """Wait until a file grows."""
+    while os.path.getsize(path) == size and time.monotonic() < until:
+        time.sleep(0.0005)
 
 
 def state_of(path: Path, before: Sequence[Module], after: Sequence[Module], inverters: Sequence[Inverter]) -> str:

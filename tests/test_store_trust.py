@@ -262,6 +262,20 @@ def test_waiting_for_another_writer_ends_in_a_line(small_catalog: Path, monkeypa
             catalog.modules()
 
 
+def test_waiting_on_a_server_ends_in_a_line(postgres_server, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(database, "WAIT_S", 0.1)
+    url = postgres_server.new_schema()
+    with Catalog.open(url, create=True) as catalog, Catalog.open(url) as other:
+        with other._database.writing(), pytest.raises(CatalogError, match="in use by another program .*try again"):
+            catalog.load(many_modules(3), [])
+        assert catalog.load(many_modules(3), []).new == 3
+
+
+def test_a_server_is_told_without_what_may_be_secret(postgres_server) -> None:
+    line = refusal(postgres_server.new_schema() + "&password=sesame")
+    assert "holds no catalog yet" in line and "ferrule sheet load cec" in line and "sesame" not in line
+
+
 # Crashes
 
 
