@@ -8,15 +8,17 @@ origin; ``sources``, the documents of single values that come from another one t
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import replace
 from functools import cache
 from typing import Any
 
 from catalog.errors import CatalogError
-from catalog.inputs_text import EXAMPLE
+from catalog.inputs_text import EXAMPLE, parse_inputs
 from catalog.plausibility import findings_of
 from catalog.records import FieldSpec, Inputs, Inverter, Module, Origin, Source, specs
 from catalog.sheet_reading import Entry, Reading, nearest
-from catalog.sheet_values import value_of
+from catalog.sheet_values import Coefficient, value_of
+from catalog.units import BASES
 
 KINDS: Mapping[str, type] = {"module": Module, "inverter": Inverter}
 MARKED_ORIGINS = (Origin.ENTERED, Origin.DERIVED, Origin.ASSUMED)
@@ -53,6 +55,8 @@ def records_of(entries: Sequence[Entry], reading: Reading) -> list[Module | Inve
     records = []
     first: dict[tuple[str, str, str], tuple[str, Module | Inverter]] = {}
     places = []
+    if reading.given:
+        entries = _completed(entries, reading)
     for entry in entries:
         record = _record(entry, reading)
         key = (entry.kind, record.maker, record.model)
@@ -76,10 +80,11 @@ def records_of(entries: Sequence[Entry], reading: Reading) -> list[Module | Inve
 def _record(entry: Entry, reading: Reading) -> Module | Inverter:
     type_ = KINDS[entry.kind]
     values: dict[str, Any] = {}
+    units = entry.units
     for name, spec in specs(type_).items():
         try:
             value = (
-                value_of(entry.cells.get(name), spec, reading.signs, f"{entry.where}, {name}")
+                value_of(entry.cells[name], spec, reading.signs, f"{entry.where}, {name}", units.get(name))
                 if name in entry.cells
                 else None
             )
@@ -89,6 +94,11 @@ def _record(entry: Entry, reading: Reading) -> Module | Inverter:
             values[name] = value
         elif spec.required:
             raise reading.fault(_needed(entry, spec), entry.where, name)
+    for name, base in BASES.items():
+        if isinstance(values.get(name), Coefficient):
+            if not values[base] > 0:
+                raise reading.fault(f"is {values[base]:g}; enter the value at STC", entry.where, base)
+            values[name] = values[name].percent(values[base])
     origins = _origins(entry, reading, type_)
     if type_ is Inverter:
         inputs = _inputs(entry, reading)
@@ -108,12 +118,46 @@ def _record(entry: Entry, reading: Reading) -> Module | Inverter:
     )
 
 
+def _completed(entries: Sequence[Entry], reading: Reading) -> list[Entry]:
+    """Entries with the values that a person gives for all of them, where they state none; marked as entered."""
+    kinds = {entry.kind for entry in entries}
+    for name in reading.given:
+        known = [*dict.fromkeys(n for kind in sorted(kinds) for n in fields_of(kind))]
+        if name not in known:
+            near = nearest(name, known)
+            raise CatalogError(f"--set {name}: there is no such field" + (f"; did you mean {near}?" if near else ""))
+    found = []
+    for entry in entries:
+        cells = dict(entry.cells)
+        units = dict(entry.units)
+        marked = cells.get(Origin.ENTERED.value) or []
+        for name, text in reading.given.items():
+            if name in fields_of(entry.kind) and cells.get(name) in (None, "", [], ()):
+                cells[name] = _given_inputs(text) if name == "inputs" else text
+                units.pop(name, None)
+                if name not in ("maker", "model", *ABOUT):
+                    marked = [*marked, name]
+        if marked:
+            cells[Origin.ENTERED.value] = marked
+        found.append(replace(entry, cells=cells, units=units))
+    return found
+
+
+def _given_inputs(text: str) -> tuple[Inputs, ...]:
+    try:
+        return parse_inputs(text)
+    except CatalogError as problem:
+        raise CatalogError(f"--set inputs: {problem}") from None
+
+
 def _needed(entry: Entry, spec: FieldSpec) -> str:
     unit = f" in {spec.unit}" if spec.unit not in ("", "1") else ""
     kind = {"module": "a module", "inverter": "an inverter"}[entry.kind]
     what = f"{kind} needs it ({spec.meaning}{unit}{', yes or no' if spec.type is bool else ''})"
     if spec.name in entry.meant:
         return f"is missing, {what}; is {entry.meant[spec.name]!r} meant? then rename it to {spec.name}"
+    if spec.type in (str, bool) and spec.name != "model":
+        what += f"; for all rows at once: --set {spec.name}={'no' if spec.type is bool else '...'}"
     return f"is blank, {what}" if spec.name in entry.cells else f"is missing, {what}"
 
 

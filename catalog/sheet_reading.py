@@ -15,20 +15,26 @@ from catalog.sheet_values import DecimalSigns
 class Entry:
     """One record as a file has it: where it stands there, its kind, and its cells by field name.
 
-    ``meant`` holds names of the file that are not known, by the field that they may mean.
+    ``meant`` holds names of the file that are not known, by the field that they may mean; ``units`` the unit of a
+    field's number where it is another one than the field's.
     """
 
     where: str
     kind: str
     cells: Mapping[str, Any]
     meant: Mapping[str, str] = field(default_factory=dict)
+    units: Mapping[str, str] = field(default_factory=dict)
 
 
 @dataclass(slots=True)
 class Reading:
-    """What is gathered while one file is read."""
+    """What is gathered while one file is read.
+
+    ``given`` holds values that a person gives for all records of the file that state none.
+    """
 
     path: Path
+    given: Mapping[str, str] = field(default_factory=dict)
     notes: list[str] = field(default_factory=list)
     signs: DecimalSigns = field(default_factory=DecimalSigns)
 

@@ -1,22 +1,27 @@
-"""Files of datasheets that a person can read and edit: CSV and TOML, to records and back.
+"""Files of datasheets: CSV, XLSX, TOML and the JSON of an open standard, to records and back.
 
-The ending of the file decides the form; the forms are described in `catalog.sheets_csv` and
-`catalog.sheets_toml`, the fields in `catalog.records`.
+The ending of the file decides the form; the forms are described in `catalog.sheets_csv`, `catalog.sheets_xlsx`,
+`catalog.sheets_toml` and `catalog.sheets_json`, the fields in `catalog.records`.
 """
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
+from typing import TYPE_CHECKING
 
-from catalog import sheets_csv, sheets_toml
 from catalog.errors import CatalogError
 from catalog.records import Inverter, Module
 from catalog.sheet_entries import records_of
-from catalog.sheet_reading import Reading
+from catalog.sheet_reading import Entry, Reading
 
-ENDINGS = (".csv", ".toml")
+if TYPE_CHECKING:
+    from catalog.sheet_tables import Settle
+
+ENDINGS = (".csv", ".xlsx", ".toml", ".json")
+
+_LARGEST = 100 * 2**20  # [bytes]
 
 
 @dataclass(frozen=True, slots=True)
@@ -28,12 +33,26 @@ class SheetFile:
     notes: list[str]
 
 
-def read_sheets(path: str | Path) -> SheetFile:
-    """Read the datasheets of a CSV or TOML file.
+def read_sheets(
+    path: str | Path,
+    *,
+    settle: Settle | None = None,
+    kind: str | None = None,
+    given: Mapping[str, str] | None = None,
+) -> SheetFile:
+    """Read the datasheets of a file.
 
     Parameters
     ----------
     path : str or Path
+    settle : callable, optional
+        Settles what the columns of a table are, where its headings are not the project's own: gets the
+        `catalog.column_map.ColumnMap` that is proposed, returns the one to use. Without it, every column must
+        be beyond doubt.
+    kind : {"module", "inverter"}, optional
+        What the rows of a table are, where it does not tell.
+    given : mapping, optional
+        Values by field for all records that state none, as texts; they get the origin ``entered``.
 
     Returns
     -------
@@ -48,18 +67,46 @@ def read_sheets(path: str | Path) -> SheetFile:
     """
     path = Path(path)
     ending = _ending(path, "reads")
-    reading = Reading(path)
-    text = _text(path, reading)
-    form = sheets_toml if ending == ".toml" else sheets_csv
-    records = records_of(form.read_entries(text, reading), reading)
+    reading = Reading(path, given or {})
+    data = _data(path, reading)
+    records = records_of(_entries(ending, data, reading, settle, kind), reading)
     if not records:
         raise reading.fault("has a heading and no rows; enter at least one module or inverter")
     modules = [r for r in records if isinstance(r, Module)]
     return SheetFile(modules, [r for r in records if isinstance(r, Inverter)], reading.notes)
 
 
+def _entries(
+    ending: str, data: bytes, reading: Reading, settle: Settle | None, kind: str | None
+) -> Sequence[Entry]:
+    if ending == ".toml":
+        from catalog import sheets_toml
+
+        return sheets_toml.read_entries(_text(data, reading), reading)
+    if ending == ".json":
+        from catalog import sheets_json
+
+        return sheets_json.read_entries(_text(data, reading), reading)
+    from catalog.sheet_tables import entries_of, heading_row
+
+    if ending == ".xlsx":
+        from catalog import sheets_xlsx
+
+        tables = sheets_xlsx.read_tables(data, reading)
+        # A sheet of remarks beside one of records is no fault.
+        found = [table for table in tables if heading_row(table.rows)[1] > 1] or tables[:1]
+        for table in tables:
+            if table not in found:
+                reading.note("has no columns of datasheets; left out", f"sheet {table.name!r}")
+    else:
+        from catalog import sheets_csv
+
+        found = sheets_csv.read_tables(_text(data, reading), reading)
+    return [entry for table in found for entry in entries_of(table, reading, settle, kind)]
+
+
 def write_sheets(path: str | Path, modules: Sequence[Module], inverters: Sequence[Inverter]) -> None:
-    """Write datasheets to a CSV or TOML file; `read_sheets` reads it back without loss.
+    """Write datasheets to a file; `read_sheets` reads it back without loss.
 
     Parameters
     ----------
@@ -75,7 +122,14 @@ def write_sheets(path: str | Path, modules: Sequence[Module], inverters: Sequenc
     """
     path = Path(path)
     ending = _ending(path, "writes")
-    write = sheets_toml.write_toml if ending == ".toml" else sheets_csv.write_csv
+    if ending == ".toml":
+        from catalog.sheets_toml import write_toml as write
+    elif ending == ".json":
+        from catalog.sheets_json import write_json as write
+    elif ending == ".xlsx":
+        from catalog.sheets_xlsx import write_xlsx as write
+    else:
+        from catalog.sheets_csv import write_csv as write
     try:
         write(path, [*modules, *inverters])
     except OSError as problem:
@@ -85,17 +139,25 @@ def write_sheets(path: str | Path, modules: Sequence[Module], inverters: Sequenc
 def _ending(path: Path, verb: str) -> str:
     ending = path.suffix.casefold()
     if ending not in ENDINGS:
-        raise CatalogError(f"{path}: Ferrule {verb} datasheets in files that end in {' or '.join(ENDINGS)}")
+        raise CatalogError(
+            f"{path}: Ferrule {verb} datasheets in files that end in {', '.join(ENDINGS[:-1])} or {ENDINGS[-1]}"
+        )
     return ending
 
 
-def _text(path: Path, reading: Reading) -> str:
+def _data(path: Path, reading: Reading) -> bytes:
     try:
+        if path.stat().st_size > _LARGEST:
+            raise reading.fault(f"is larger than {_LARGEST // 2**20} MB; part it")
         data = path.read_bytes()
     except OSError as problem:
         raise CatalogError(f"{path}: cannot be read ({problem.strerror}); check the path") from None
     if not data.strip():
         raise reading.fault("is empty; enter at least one module or inverter")
+    return data
+
+
+def _text(data: bytes, reading: Reading) -> str:
     if data.startswith((b"\xff\xfe", b"\xfe\xff")) or b"\0" in data:
         raise reading.fault("is no UTF-8 text; save the file in UTF-8")
     try:
