@@ -40,7 +40,7 @@ def best_first(
     Parameters
     ----------
     bounds : function of module counts (c,) and the length that the longest string has at least
-        Best ratio, clipping_pct, margin_pct and yearly_kwh that an arrangement of each count can have,
+        Best ratio, clipping_pct, margin_pct, yearly_kwh and cost that an arrangement of each count can have,
         arrays (c,) by name.
     rows_of : function of a block (k, trackers, 2) and whether it is to be confirmed
         The options of the block as a table, and their sort keys (k, keys).
@@ -84,8 +84,9 @@ def _by_count(
             continue
         best = bounds(np.array(counts), space.shortest)
         leading = leading_keys(
-            order, clip_cap_pct, best["ratio"], best["clipping_pct"], best["margin_pct"], best["yearly_kwh"]
-        )
+            order, clip_cap_pct, best["ratio"], best["clipping_pct"], best["margin_pct"], best["yearly_kwh"],
+            best["cost"],
+        )  # fmt: skip
         for modules, *key in zip(counts, *(k.tolist() for k in leading), strict=True):
             yield (float(to_confirm), *key), to_confirm, space.classes(modules, to_confirm, SORTED_AT_ONCE)
 

@@ -29,6 +29,7 @@ from matcher.order import in_words
 from matcher.request import Request
 from matcher.search import WHOLE_EVERY, Lazy, Search
 from matcher.shared import free_space, on_several_units, with_strings
+from matcher.shelf import Shelf
 
 __all__ = ["Fit", "Option", "Request", "Totals", "fit", "module_points"]
 
@@ -51,6 +52,7 @@ class Option:
     confirm: tuple[Confirm, ...] = ()
     coldest_c: float | None = None
     hottest_c: float | None = None
+    cost: float | None = None
 
     @property
     def units(self) -> int:
@@ -147,6 +149,7 @@ class Fit:
             rank, outcome, m, i, int(table.modules[row]), wired, float(table.ratio[row]),
             _number(table.clipping_pct[row]), _number(table.current_clipping_pct[row]),
             _number(table.yearly_kwh[row]), checks, confirm, coldest, hottest,
+            _number(self.search.cost(table.take(slice(row, row + 1)))[0]),
         )  # fmt: skip
 
     def module_points(self, m: int) -> ModulePoints:
@@ -168,7 +171,7 @@ class Fit:
                 missed.append((int(k), Rejection((), f"cannot be matched: {reason}", np.inf)))
                 continue
             space = free_space(self.search, m, i, UNLIMITED)
-            missed.append((int(k), rejection(self.pair(m, i), space, self.window(m), self.request)))
+            missed.append((int(k), rejection(self.pair(m, i), space, self.window(m), self.search.asked(m, i))))
         return sorted(missed, key=lambda entry: entry[1].distance)
 
     @cached_property
@@ -206,6 +209,7 @@ def fit(
     request: Request,
     year: ModuleYear | None = None,
     plane: PlaneYear | None = None,
+    shelf: Shelf | None = None,
 ) -> Fit:
     """Every valid arrangement of the modules on the inverters, counted, worked out and ranked.
 
@@ -220,6 +224,8 @@ def fit(
         there is no clipping figure.
     plane : PlaneYear, optional
         The year on the site's array, for rule sets that take the cold voltage from hourly weather.
+    shelf : Shelf, optional
+        How many of each record can be had, and at what price.
 
     Raises
     ------
@@ -232,7 +238,7 @@ def fit(
     points = design_points(modules, request.site, request.rules, plane)
     if len(modules) == 1 and points.reasons[0] is not None:
         raise MatcherError(f"{modules[0].name} cannot be matched: {points.reasons[0]}")
-    search = Search(tuple(modules), InverterColumns.of(inverters), request, points, year)
+    search = Search(tuple(modules), InverterColumns.of(inverters), request, points, year, shelf)
     if request.strings is not None:
         table, arrangements, lazy = *with_strings(search, request.strings), []
     elif request.several:

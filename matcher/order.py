@@ -22,6 +22,7 @@ class Order(StrEnum):
     CLIPPING = "clipping"
     MARGIN = "margin"
     ENERGY = "energy"
+    COST = "cost"
 
 
 def in_words(order: Order, clip_cap_pct: float, has_losses: bool) -> str:
@@ -38,6 +39,7 @@ def in_words(order: Order, clip_cap_pct: float, has_losses: bool) -> str:
         Order.CLIPPING: "by rising clipping loss",
         Order.MARGIN: "by falling cold-voltage margin",
         Order.ENERGY: "by falling yearly energy",
+        Order.COST: "by rising cost of modules and inverters",
     }
     return f"{first}; then {words[order]}"
 
@@ -50,7 +52,7 @@ def phase(clipping_pct: np.ndarray, clip_cap_pct: float) -> np.ndarray:
 
 def leading_keys(
     order: Order, clip_cap_pct: float, ratio: np.ndarray, clipping_pct: np.ndarray, margin_pct: np.ndarray,
-    yearly_kwh: np.ndarray,
+    yearly_kwh: np.ndarray, cost: np.ndarray,
 ) -> list[np.ndarray]:  # fmt: skip
     """Sort keys that follow the verdict, most important first, all ascending; arrays (n,)."""
     # Rounded, so that sums taken in another order tie and the next key decides.
@@ -64,18 +66,27 @@ def leading_keys(
         return [-margin_pct, -ratio]
     if order is Order.ENERGY:
         return [-np.nan_to_num(yearly_kwh, nan=-np.inf), -ratio]
+    if order is Order.COST:
+        return [np.round(np.nan_to_num(cost, nan=np.inf), 6), -ratio]
     stage = phase(clipping_pct, clip_cap_pct)
     return [stage, np.where(stage == 2, clipping, -ratio)]
 
 
-def sort_keys(options: Options, order: Order, clip_cap_pct: float, name_rank: np.ndarray) -> list[np.ndarray]:
-    """All sort keys of options, most important first; ``name_rank`` (n,) ranks by maker and model."""
+def sort_keys(
+    options: Options, order: Order, clip_cap_pct: float, name_rank: np.ndarray, cost: np.ndarray
+) -> list[np.ndarray]:
+    """All sort keys of options, most important first.
+
+    ``name_rank`` (n,) ranks by maker and model; ``cost`` (n,) is NaN where it is not known.
+    """
     leading = leading_keys(
-        order, clip_cap_pct, options.ratio, options.clipping_pct, options.margin_pct, options.yearly_kwh
+        order, clip_cap_pct, options.ratio, options.clipping_pct, options.margin_pct, options.yearly_kwh, cost
     )
     return [options.to_confirm, *leading, options.lengths, -options.margin_pct, name_rank]
 
 
-def ranked(options: Options, order: Order, clip_cap_pct: float, name_rank: np.ndarray) -> np.ndarray:
-    """Positions of the options in their order, shape (n,); a stable sort."""
-    return np.lexsort(sort_keys(options, order, clip_cap_pct, name_rank)[::-1])
+def ranked(
+    options: Options, order: Order, clip_cap_pct: float, name_rank: np.ndarray, cost: np.ndarray
+) -> np.ndarray:
+    """Positions of the options in their order, shape (n,); a stable sort. Parameters as of `sort_keys`."""
+    return np.lexsort(sort_keys(options, order, clip_cap_pct, name_rank, cost)[::-1])

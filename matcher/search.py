@@ -15,7 +15,7 @@ import numpy as np
 from catalog.records import Inverter, Module
 from matcher.arrangements import ByStrings, Group, Space
 from matcher.bestfirst import SORTED_AT_ONCE, Key, best_first
-from matcher.clipping import Losses, block_losses, count_bounds, single_losses
+from matcher.clipping import Losses, block_losses, count_bounds
 from matcher.columns import InverterColumns, column
 from matcher.electrical import Points
 from matcher.errors import MatcherError
@@ -24,7 +24,9 @@ from matcher.moduleyear import ModuleYear
 from matcher.options import Options, build, join
 from matcher.order import Order, ranked, sort_keys
 from matcher.request import Request
+from matcher.shelf import Shelf
 from matcher.shortlist import Heads, can_estimate, candidates, estimate, margin
+from matcher.singlelosses import single_losses
 from matcher.singles import expand
 
 #: An inverter of several trackers with no more arrangements than this is worked out whole.
@@ -50,6 +52,7 @@ class Search:
     request: Request
     points: Points
     year: ModuleYear | None
+    shelf: Shelf | None = None
 
     @cached_property
     def system_voltage_v(self) -> np.ndarray:
@@ -69,19 +72,34 @@ class Search:
     def limits(self, module: np.ndarray, inverter: np.ndarray) -> PairLimits:
         """Bounds of pairs, for one unit with the module counts and ratios that the request asks for."""
         r = self.request
-        return pair_limits(
+        limits = pair_limits(
             self.points, self.inverters, module, inverter, self.system_voltage_v, r.site, r.rules, r.ratio, r.counts
         )
+        if self.shelf is None:
+            return limits
+        return replace(limits, most=np.minimum(limits.most, self.shelf.modules_at_most[module]))
+
+    def asked(self, m: int, i: int) -> Request:
+        """What the request asks of one pair, no more than can be had."""
+        return self.request if self.shelf is None else self.shelf.bounded(self.request, m, i)
+
+    def cost(self, options: Options) -> np.ndarray:
+        """Cost of modules and inverters of each option, (n,); NaN where it is not known."""
+        if self.shelf is None:
+            return np.full(len(options), np.nan)
+        return self.shelf.cost(options.module, options.inverter, options.modules, options.units)
 
     def rank(self, options: Options) -> np.ndarray:
         """Positions of the options in the order of the request."""
         rank = self.name_rank[options.module, options.inverter]
-        return ranked(options, self.request.order, self.request.clip_cap_pct, rank)
+        return ranked(options, self.request.order, self.request.clip_cap_pct, rank, self.cost(options))
 
     def keys(self, options: Options) -> np.ndarray:
         """Sort keys of the options, shape (n, keys)."""
         rank = self.name_rank[options.module, options.inverter]
-        return np.column_stack(sort_keys(options, self.request.order, self.request.clip_cap_pct, rank))
+        return np.column_stack(
+            sort_keys(options, self.request.order, self.request.clip_cap_pct, rank, self.cost(options))
+        )
 
     def max_strings(self, module: np.ndarray, inverter: np.ndarray) -> np.ndarray:
         """Strings that the first tracker of each inverter takes at most."""
@@ -267,9 +285,17 @@ class Search:
                 "clipping_pct": clipping,
                 "yearly_kwh": kwh,
                 "margin_pct": np.full(len(counts), (limit - volts) / limit * 100.0),
+                "cost": self._cost_of_counts(m, i, counts),
             }
 
         return best_first(space, self.request.order, self.request.clip_cap_pct, bounds, rows_of)
+
+    def _cost_of_counts(self, m: int, i: int, counts: np.ndarray) -> np.ndarray:
+        """Cost of one unit with each number of modules, (c,)."""
+        if self.shelf is None:
+            return np.full(len(counts), np.nan)
+        one = np.ones(len(counts), dtype=np.int64)
+        return self.shelf.cost(m * one, i * one, counts, one)
 
     def best(self, m: int, i: int, space: Space) -> Options | None:
         """The first option of a space in the order of the request; ``None`` where it is empty."""

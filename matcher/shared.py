@@ -65,7 +65,8 @@ def with_strings(search: Search, strings: Sequence[tuple[int, int]]) -> tuple[Op
     for m, i in _pairs(search):
         space = free_space(search, m, i, total)
         ways = 0
-        for units in range(search.request.units[0], search.request.units[1] + 1):
+        low, high = search.asked(m, i).units
+        for units in range(low, high + 1):
             if not _inside(search, m, i, total, units):
                 continue
             options, number = _hosted(search, m, i, space, tally, units)
@@ -119,8 +120,8 @@ def free_space(search: Search, m: int, i: int, most: int) -> Space:
 
 
 def _wanted(search: Search, m: int, i: int) -> Iterator[tuple[int, int]]:
-    """Numbers of units and module counts that the request asks for and whose ratio is in the window."""
-    request = search.request
+    """Numbers of units and module counts that are asked of a pair and whose ratio is in the window."""
+    request = search.asked(m, i)
     assert request.counts is not None
     for units in range(request.units[0], request.units[1] + 1):
         for total in range(max(request.counts[0], units), request.counts[1] + 1):
