@@ -6,11 +6,14 @@ import json
 from collections.abc import Iterator, Mapping
 from typing import IO, TYPE_CHECKING, Any
 
+import numpy as np
+
 from matcher.limits import voltage_cap
 
 if TYPE_CHECKING:
     from matcher.checks import Tracker
     from matcher.fit import Fit, Option
+    from matcher.options import Options
 
 FIT_SCHEMA = "ferrule.fit/1"
 
@@ -166,11 +169,46 @@ def write_fit(
 
 
 def _option_lines(fit: Fit, with_checks: bool, modules: set[int], inverters: set[int]) -> Iterator[str]:
+    """Options as JSON, one text each, and which records they name."""
+    if not with_checks:
+        rank = 0
+        for table in fit.ranked():
+            modules.update(np.unique(table.module).tolist())
+            inverters.update(np.unique(table.inverter).tolist())
+            yield from _lines_of(fit, table, rank)
+            rank += len(table)
+        return
     encode = json.JSONEncoder(allow_nan=False).encode
-    for option in fit.options(full=with_checks):
+    for option in fit.options(full=True):
         modules.add(option.module)
         inverters.add(option.inverter)
-        yield encode(option_entry(fit, option, with_checks))
+        yield encode(option_entry(fit, option, with_checks=True))
+
+
+def _lines_of(fit: Fit, table: Options, rank: int) -> Iterator[str]:
+    """Options of a table as JSON, straight from its columns: `option_entry` for hundreds of thousands."""
+    encode = json.JSONEncoder(allow_nan=False).encode
+    one_tracker = (table.strings > 0).sum(axis=1) == 1
+    columns = (
+        table.module, table.inverter, table.modules, table.ratio, table.clipping_pct, table.yearly_kwh,
+        table.to_confirm, table.units, one_tracker, table.inputs[:, 0], table.strings[:, 0], table.in_series[:, 0],
+    )  # fmt: skip
+    rows = zip(*(c.tolist() for c in columns), strict=True)
+    for k, (m, i, count, ratio, clipping, kwh, unsure, units, plain, group, s, n) in enumerate(rows):
+        if not plain or units != 1 or not s:
+            yield encode(option_entry(fit, fit.option(table, k, rank + k + 1, full=False), with_checks=False))
+            continue
+        verdict = "to-confirm" if unsure else "fits"
+        yield (
+            f'{{"rank": {rank + k + 1}, "verdict": "{verdict}", "module": "m{fit.modules[m].id}",'
+            f' "inverter": "i{fit.inverters[i].id}", "units": 1, "modules": {count},'
+            f' "arrangement": [{{"inputs": {group}, "strings": {s}, "in_series": {n}}}], "label": "{s}x{n}",'
+            f' "dc_ac_ratio": {ratio!r}, "clipping_loss_pct": {_json(clipping)}, "yearly_kwh": {_json(kwh)}}}'
+        )
+
+
+def _json(value: float) -> str:
+    return "null" if value != value else repr(value)
 
 
 def _known(value: float) -> float | None:

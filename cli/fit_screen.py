@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
-from cli.facts import assumptions, at_least, confirm_words
+from cli.facts import assumptions, at_least, confirm_words, holds_from, holds_to
 from matcher.checks import Check, Confirm, Verdict
 
 if TYPE_CHECKING:
@@ -179,23 +179,14 @@ def _unit_wiring(unit: Unit) -> str:
     return " | ".join(label if n == 1 else f"{n} of {label}" for label, n in alike)
 
 
-#: Nowhere on Earth is the air colder (Vostok, 1983: -89.2 degC); an option that holds there holds anywhere.
-_COLDEST_ON_EARTH_C = -90.0
-
-_VOLTAGE_MAXIMA = ("max_dc_voltage_v", "max_system_voltage_v")
-
-
 def climate_window(option: Option) -> str:
-    """Coldest to hottest ambient temperature at which the option holds.
+    """Coldest to hottest air temperature at which the option holds.
 
-    ``any`` where nothing bounds it; ``?`` where the maximum that would bound it is not on record.
+    ``any`` where nothing bounds it; ``?`` where a value that is to be confirmed would.
     """
-    if option.coldest_c is None:
-        low = "?" if any(c.field in _VOLTAGE_MAXIMA for c in option.confirm) else "any"
-    else:
-        low = "any" if option.coldest_c < _COLDEST_ON_EARTH_C else f"{option.coldest_c:.0f}"
-    high = "any" if option.hottest_c is None else f"{option.hottest_c:.0f}"
-    return f"{low} to {high}"
+    ends = ("?" if end is None else end if isinstance(end, str) else f"{end:.0f}"
+            for end in (holds_from(option), holds_to(option)))  # fmt: skip
+    return " to ".join(ends)
 
 
 def _confirm_lines(fit: Fit, options: Sequence[Option]) -> None:
