@@ -10,9 +10,6 @@ from pathlib import Path
 ROOT = Path(__file__).parent.parent
 PACKAGES = ("catalog", "matcher", "cli", "seed_catalog")
 
-BEGIN, END = "<!-- files: begin -->", "<!-- files: end -->"
-
-
 def files(package: str) -> list[Path]:
     """Python files of a package, its ``__init__.py`` first."""
     return sorted((ROOT / package).glob("*.py"), key=lambda path: (path.name != "__init__.py", path.name))
@@ -27,14 +24,7 @@ def listing() -> str:
         if others:
             rows = [f"| `{path.relative_to(ROOT).as_posix()}` | {_sentence(path)} |" for path in others]
             parts.append("\n".join(["| file | purpose |", "| --- | --- |", *rows]) + "\n")
-    return "\n".join(parts)
-
-
-def with_listing(text: str) -> str:
-    """The guide with the listing brought up to date."""
-    before, _, rest = text.partition(BEGIN)
-    _, _, after = rest.partition(END)
-    return f"{before}{BEGIN}\n{listing()}\n{END}{after}"
+    return "\n".join(parts).strip("\n")
 
 
 def _sentence(path: Path) -> str:

@@ -1,4 +1,4 @@
-"""Run the examples of the documents and write what they print into the documents; list the files in DEVELOPERS.md.
+"""Run the examples of the documents and write what they print into them; renew what is made from the code.
 
 Run from the root of the project: ``python tests/refresh_examples.py [DOCUMENT...]``. Look at the difference before
 you commit it: what changed there is what users see change.
@@ -12,8 +12,8 @@ from pathlib import Path
 
 sys.path.insert(0, str(Path(__file__).parent.parent))
 
+from document_parts import with_parts  # noqa: E402
 from documented_examples import Command, Session, documents, renewed, steps  # noqa: E402
-from project_layout import BEGIN, with_listing  # noqa: E402
 
 
 def refresh(path: Path) -> int:
@@ -29,9 +29,7 @@ def refresh(path: Path) -> int:
                 changes.append((step, now))
     for step, now in reversed(changes):
         lines[step.line + 1 : step.line + 1 + len(step.shown)] = now
-    now = "\n".join(lines) + "\n"
-    if BEGIN in now:
-        now = with_listing(now)
+    now = with_parts("\n".join(lines) + "\n")
     if now != text:
         path.write_text(now, encoding="utf-8")
     return len(changes)

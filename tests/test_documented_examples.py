@@ -7,8 +7,10 @@ import re
 from pathlib import Path
 
 import pytest
+from document_parts import fields
 from documented_examples import ROOT, Command, Session, agree, documents, renewed, steps
 
+from catalog.records import Inputs, Inverter, Module, Site
 from cli.cautions import CAUTIONS
 
 
@@ -20,6 +22,11 @@ def test_every_example_prints_what_the_document_shows(path: Path, tmp_path: Path
         if isinstance(step, Command) and not agree(step.shown, printed):
             difference = "\n".join(difflib.unified_diff(step.shown, printed, "shown", "printed", lineterm=""))
             pytest.fail(f"{path.name}, line {step.line + 1}: $ {step.typed}\n{difference}")
+
+
+@pytest.mark.parametrize("record_type", [Module, Inverter, Inputs, Site], ids=lambda t: t.__name__)
+def test_the_tables_of_fields_are_those_of_the_records(record_type: type):
+    assert fields(record_type) in (ROOT / "docs" / "file-forms.md").read_text(encoding="utf-8")
 
 
 def test_an_elision_stands_for_any_lines_and_for_nothing_else():
