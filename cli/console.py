@@ -37,15 +37,18 @@ def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> Non
     """Print rows of text; numbers are set to the right and never wrapped."""
     from rich.table import Table
 
+    rows = list(rows)
     table = Table(box=None, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold", show_edge=False)
-    for column in columns:
+    for k, column in enumerate(columns):
+        # What must not fold keeps its width; the columns that may fold give way.
+        whole = max([len(column.header), *(len(row[k]) for row in rows)])
         table.add_column(
             column.header,
             justify="right" if column.number else "left",
             no_wrap=not column.fold,
             overflow="fold",
             vertical="top",
-            min_width=column.min_width,
+            min_width=min(column.min_width or 0, whole) if column.fold else whole,
         )
     for row in rows:
         table.add_row(*row)

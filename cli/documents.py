@@ -91,6 +91,8 @@ def option_entry(fit: Fit, option: Option, with_checks: bool) -> dict[str, Any]:
         "clipping_loss_pct": option.clipping_loss_pct,
         "yearly_kwh": option.yearly_kwh,
     }
+    if fit.search.shelf is not None:
+        entry |= {"cost": option.cost, "currency": None if option.cost is None else fit.search.shelf.currency}
     if len(option.wired) > 1:
         # Unlike units: `arrangement` is that of the first, `split` holds all.
         entry["split"] = [
@@ -116,6 +118,10 @@ def option_entry(fit: Fit, option: Option, with_checks: bool) -> dict[str, Any]:
             | ({} if c.inputs is None else {"inputs": c.inputs})
             for c in option.confirm
         ]
+        entry["clipping_parts"] = {
+            "power_limit_pct": option.power_clipping_pct,
+            "current_limit_pct": option.current_clipping_pct,
+        }
         entry["climate"] = {"coldest_c": option.coldest_c, "hottest_c": option.hottest_c}
     return entry
 
@@ -195,7 +201,7 @@ def _lines_of(fit: Fit, table: Options, rank: int) -> Iterator[str]:
     )  # fmt: skip
     rows = zip(*(c.tolist() for c in columns), strict=True)
     for k, (m, i, count, ratio, clipping, kwh, unsure, units, plain, group, s, n) in enumerate(rows):
-        if not plain or units != 1 or not s:
+        if not plain or units != 1 or not s or fit.search.shelf is not None:
             yield encode(option_entry(fit, fit.option(table, k, rank + k + 1, full=False), with_checks=False))
             continue
         verdict = "to-confirm" if unsure else "fits"

@@ -41,6 +41,14 @@ def show(fit: Fit, year: SiteYear, *, limit: int, checks: bool, why: bool) -> No
     show_grounds(fit, year)
 
 
+def say_lines(lines: Sequence[str]) -> None:
+    """Print lines, and an empty one where there are any."""
+    for line in lines:
+        say(line)
+    if lines:
+        say()
+
+
 def show_options(fit: Fit, year: SiteYear, limit: int) -> list[Option]:
     """Print question, answer, the first options and what to confirm of them; return these options."""
     say(question(fit))
@@ -49,12 +57,10 @@ def show_options(fit: Fit, year: SiteYear, limit: int) -> list[Option]:
     say(answer(fit, options))
     if options:
         say(f"Order: {fit.order}.")
-        say()
         _options_tables(fit, options, year.year is not None)
         more = _number_listed(fit) - len(options)
         if more > 0:
             say(f"... and {more:,} more (--limit N shows more, --out FILE.csv holds all of them).")
-            say()
         _confirm_lines(fit, options)
     return options
 
@@ -120,12 +126,11 @@ def _number_listed(fit: Fit) -> int:
 
 def _options_tables(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
     """One table per verdict, which is why the verdict needs no column."""
-    for outcome in (Verdict.FITS, Verdict.TO_CONFIRM):
-        some = [o for o in options if o.verdict is outcome]
-        if some:
-            say(_HEADINGS[outcome])
-            _options_table(fit, some, has_year)
-            say()
+    for _, alike in groupby(options, key=lambda o: o.verdict):
+        some = list(alike)
+        say()
+        say(_HEADINGS[some[0].verdict])
+        _options_table(fit, some, has_year)
 
 
 _HEADINGS = {
@@ -142,6 +147,9 @@ def _options_table(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
     columns += [Column("wiring", fold=True), Column("mod.", number=True), Column("DC/AC", number=True)]
     if has_year:
         columns += [Column("clip %", number=True), Column("kWh/year", number=True)]
+    shelf = fit.search.shelf
+    if shelf is not None and shelf.currency is not None:
+        columns += [Column(f"cost {shelf.currency}", number=True)]
     columns += [Column("holds at degC", number=True)]
     rows = []
     for o in options:
@@ -151,6 +159,8 @@ def _options_table(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
         row += [wiring(o), str(o.modules), f"{o.dc_ac_ratio:.2f}"]
         if has_year:
             row += [number(o.clipping_loss_pct, 2), number(o.yearly_kwh)]
+        if shelf is not None and shelf.currency is not None:
+            row += [number(o.cost)]
         rows.append([*row, climate_window(o)])
     print_table(columns, rows)
 
@@ -193,6 +203,7 @@ def _confirm_lines(fit: Fit, options: Sequence[Option]) -> None:
     waiting = [o for o in options if o.confirm]
     if not waiting:
         return
+    say()
     say("To confirm on the datasheets before ordering:")
     shared = _shared(fit, waiting)
     for line in shared:

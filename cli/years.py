@@ -30,7 +30,7 @@ NO_PLACE = "the site has no place: give --lat and --lon, or a --weather file"
 ASSUMED_TILT = 30.0
 
 #: Goes into the key of a kept year; to be raised when the calculation changes.
-_EDITION = 3
+_EDITION = 4
 
 
 @dataclass(frozen=True, slots=True)
@@ -132,8 +132,10 @@ def site_plane(site: Site) -> tuple[PlaneYear, str, tuple[str, ...]]:
     tilt, azimuth, assumed = plane_of(site, weather)
     plane = plane_year(weather, tilt, azimuth)
     label = "clear-sky year" if site.weather is None else f"{weather.kind} {os.path.basename(site.weather)}"
+    place = f" ({weather.name})" if weather.name and site.weather is not None else ""
     notes = [
-        f"Weather: {label}, {weather.lowest_c:.1f} to {weather.highest_c:.1f} degC in the air,"
+        f"Weather: {label}{place}, {len(weather.times):,} intervals of {weather.interval_hours:g} h,"
+        f" {weather.lowest_c:.1f} to {weather.highest_c:.1f} degC in the air,"
         f" {plane.irradiation_kwh_m2:,.0f} kWh/m2 a year on the array (tilt {tilt:g}, azimuth {azimuth:g} deg"
         f"{', assumed' if assumed else ''})."
     ]

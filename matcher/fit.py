@@ -55,6 +55,13 @@ class Option:
     cost: float | None = None
 
     @property
+    def power_clipping_pct(self) -> float | None:
+        """What the power limit takes of the unlimited AC energy [%]; the rest of the loss is the current limits'."""
+        if self.clipping_loss_pct is None or self.current_clipping_pct is None:
+            return None
+        return self.clipping_loss_pct - self.current_clipping_pct
+
+    @property
     def units(self) -> int:
         """Number of inverters."""
         return sum(u.copies for u in self.wired)
