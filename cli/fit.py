@@ -21,6 +21,7 @@ from cli.wanted import (
 if TYPE_CHECKING:
     from catalog.records import Inverter, Module, Site
     from catalog.store import Catalog
+    from cli.in_stock import Lots
     from cli.wanted import EnergyWanted
     from cli.years import SiteYear
     from matcher.request import Request
@@ -38,7 +39,8 @@ def fit(
     clip_cap: Annotated[float, typer.Option(metavar="PCT", help="Clipping loss up to which a higher DC/AC ratio is better [%].")] = 2.0,
     rules: Annotated[str, typer.Option(metavar="NAME", help="Rule set: iec-62548, nec-690, or a file of your own, .toml.")] = "iec-62548",
     combiner: Annotated[bool, typer.Option("--combiner", help="Strings are paralleled in a combiner box: string inputs are waived.")] = False,
-    by: Annotated[str, typer.Option(metavar="ORDER", help="least-inverter, ratio, clipping, margin or energy.")] = "least-inverter",
+    by: Annotated[str, typer.Option(metavar="ORDER", help="least-inverter, ratio, clipping, margin, energy or cost.")] = "least-inverter",
+    in_stock: Annotated[bool, typer.Option("--in-stock", help="Only what is in stock, in the numbers that are there; with the cost.")] = False,
     every: Annotated[bool, typer.Option("--every", help="Every arrangement, not the best one of each record.")] = False,
     checks: Annotated[bool, typer.Option("--checks", help="Show every check of the options shown (and put them into documents).")] = False,
     why: Annotated[bool, typer.Option("--why", help="Say of the records without option what stops them and what would change that.")] = False,
@@ -91,9 +93,14 @@ def fit(
             lat=lat, lon=lon, tilt=tilt, azimuth=azimuth, weather=weather,
         )  # fmt: skip
         from cli.asking import request_of
+        from cli.in_stock import on_shelf, stock_lots
 
         request = request_of(place, ratio, count, clip_cap, rules, combiner, by, every or pair, units, strings)
-        modules, inverters = _records(opened, module, inverter)
+        lots = stock_lots(opened) if in_stock or by == "cost" else None
+        modules, inverters = _records(opened, module, inverter, lots if in_stock else None)
+        stock = None if lots is None else on_shelf(modules, inverters, request, lots, bounded=in_stock)
+        if stock is not None:
+            modules, inverters = stock.modules, stock.inverters
         year = _year(opened, place, modules, inverters, energy)
 
     from cli import fit_files, fit_screen
@@ -104,8 +111,12 @@ def fit(
     plane = cold_plane(request)
     if energy is not None:
         request = _sized(request, modules, inverters, year, energy)
-    found = search(modules, inverters, request, year.year, plane)
+        if stock is not None:
+            stock.check_count(request)
+    found = search(modules, inverters, request, year.year, plane, stock.shelf if stock else None)
     extra = add_growth(found, worth) if by_count else {}
+    if stock is not None:
+        extra |= stock.entry()
     if energy is not None:
         from cli.fit_energy import add_energy
 
@@ -121,6 +132,8 @@ def fit(
             show_energy(found, year, energy)
         if by_count:
             show_growth(found, worth)
+        if stock is not None:
+            fit_screen.say_lines(stock.notes)
         fit_screen.show(found, year, limit=limit, checks=checks, why=why)
     return 0 if found.totals.records_with_option else NOTHING_FITS
 
@@ -154,11 +167,22 @@ def _sized(
     return replace(request, counts=(count, count))
 
 
-def _records(catalog: Catalog, module: str | None, inverter: str | None) -> tuple[list[Module], list[Inverter]]:
+def _records(
+    catalog: Catalog, module: str | None, inverter: str | None, stocked: Lots | None
+) -> tuple[list[Module], list[Inverter]]:
+    """The records that were named, and all others of the other kind, or those in stock."""
     from cli.choosing import choose_inverter, choose_module
+    from cli.in_stock import only_in_stock
 
-    modules = [choose_module(catalog, module)] if module is not None else catalog.modules()
-    inverters = [choose_inverter(catalog, inverter)] if inverter is not None else catalog.inverters()
+    modules = inverters = None
+    if module is not None:
+        modules = [choose_module(catalog, module)]
+    if inverter is not None:
+        inverters = [choose_inverter(catalog, inverter)]
+    if modules is None:
+        modules = catalog.modules() if stocked is None else only_in_stock(catalog, stocked, "module")
+    if inverters is None:
+        inverters = catalog.inverters() if stocked is None else only_in_stock(catalog, stocked, "inverter")
     for kind, records in (("module", modules), ("inverter", inverters)):
         if not records:
             raise CatalogError(

@@ -119,14 +119,17 @@ _COLUMNS: tuple[tuple[str, Callable[[Fit, Options, int], Any]], ...] = (
 
 
 def write_csv(fit: Fit, stream: IO[str]) -> None:
-    """Write all options as CSV, in order."""
+    """Write all options as CSV, in order; with cost and currency where stock or prices were asked for."""
     writer = csv.writer(stream)
-    writer.writerow(["rank", *(header for header, _ in _COLUMNS)])
+    shelf = fit.search.shelf
+    writer.writerow(["rank", *(header for header, _ in _COLUMNS), *(["cost", "currency"] if shelf else [])])
     rank = 0
     for table in fit.ranked():
+        costs = fit.search.cost(table).tolist() if shelf else []
         for k in range(len(table)):
             rank += 1
-            writer.writerow([rank, *(value(fit, table, k) for _, value in _COLUMNS)])
+            cost = [f"{costs[k]:.2f}", shelf.currency] if shelf and costs[k] == costs[k] else [""] * 2 if shelf else []
+            writer.writerow([rank, *(value(fit, table, k) for _, value in _COLUMNS), *cost])
 
 
 def blank(value: float) -> str:

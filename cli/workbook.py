@@ -70,6 +70,7 @@ class _Sheets:
 
     def __init__(self, book: Workbook, fit: Fit, year: SiteYear, explain_all: bool, number: int) -> None:
         self.fit, self.year, self.explain_all, self.number = fit, year, explain_all, number
+        self.costed = fit.search.shelf.currency if fit.search.shelf else None
         self.formats = Formats(book)
         self.options = Table(book, "Options", self._option_columns(), self.formats, number)
         self.confirm = Table(book, "To confirm", _CONFIRM_COLUMNS, self.formats)
@@ -126,6 +127,8 @@ class _Sheets:
             Column("clipping loss [%]", 9, 2),
             Column("yearly energy [kWh]", 10, 0),
         ]
+        if self.costed:
+            columns.append(Column(f"cost [{self.costed}]", 11, 2))
         if self.explain_all:
             columns += [
                 Column("holds down to [degC]", 10, 1),
@@ -152,6 +155,8 @@ class _Sheets:
             o.clipping_loss_pct,
             o.yearly_kwh,
         ]
+        if self.costed:
+            row.append(o.cost)
         if self.explain_all:
             row += [facts.holds_from(o), facts.holds_to(o), facts.confirm_line(o) or None]
         return row

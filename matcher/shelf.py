@@ -55,8 +55,8 @@ class Lots:
 class Shelf:
     """How many of each record can be had, and at what price.
 
-    ``modules_at_most`` (modules,) and ``inverters_at_most`` (inverters,) are no less than the lowest numbers that the
-    request asks for; `UNLIMITED` where nothing bounds them. All prices are in ``currency``.
+    ``modules_at_most`` (modules,) and ``inverters_at_most`` (inverters,) are `UNLIMITED` where nothing bounds them. All
+    prices are in ``currency``.
     """
 
     modules_at_most: np.ndarray
@@ -72,8 +72,8 @@ class Shelf:
     def bounded(self, request: Request, m: int, i: int) -> Request:
         """The request, asking no more of a pair than can be had."""
         modules, inverters = int(self.modules_at_most[m]), int(self.inverters_at_most[i])
-        units = (request.units[0], min(request.units[1], inverters))
+        units = (request.units[0], max(request.units[0], min(request.units[1], inverters)))
         if request.strings is not None or modules == UNLIMITED:
             return replace(request, units=units)
         low, high = request.counts or (1, modules)
-        return replace(request, units=units, counts=(low, min(high, modules)))
+        return replace(request, units=units, counts=(low, max(low, min(high, modules))))
