@@ -87,7 +87,7 @@ def _start_power(inverters: InverterColumns, row: np.ndarray) -> np.ndarray:
     return np.nan_to_num(inverters.sandia[row, 0], nan=0.0)
 
 
-def _to_losses(ac_sum: np.ndarray, free: np.ndarray, delivered: np.ndarray) -> Losses:
+def to_losses(ac_sum: np.ndarray, free: np.ndarray, delivered: np.ndarray) -> Losses:
     """Losses from sums over the year [Wh]: unlimited, after the power limit only, after both limits."""
     with np.errstate(invalid="ignore", divide="ignore"):
         power = (1.0 - free / ac_sum) * 100.0
@@ -99,81 +99,6 @@ def _to_losses(ac_sum: np.ndarray, free: np.ndarray, delivered: np.ndarray) -> L
     power[np.abs(power) < 1e-9] = 0.0
     current[np.abs(current) < 1e-9] = 0.0
     return Losses(power, current, delivered / 1000.0)
-
-
-def single_losses(
-    year: ModuleYear,
-    inverters: InverterColumns,
-    inverter: np.ndarray,
-    strings: np.ndarray,
-    in_series: np.ndarray,
-    module: np.ndarray | None = None,
-) -> Losses:
-    """Losses of n options with one tracker each; index and count arrays of shape (n,).
-
-    Parameters
-    ----------
-    year : ModuleYear
-        Arrays (classes,) for one module type, or (modules, classes) for several.
-    module : int array, shape (n,), optional
-        Line of ``year`` of each option, where there are several.
-    """
-    n = len(inverter)
-    power = np.atleast_2d(year.power_w)
-    volts = np.atleast_2d(year.vmp_v)
-    hours = np.broadcast_to(np.atleast_2d(year.hours), power.shape)
-    line = np.zeros(n, dtype=np.int64) if module is None else module
-    # Options that differ in the number of strings only share everything that depends on voltage.
-    key = (line * len(inverters.records) + inverter) * (int(in_series.max(initial=0)) + 1) + in_series
-    order = np.argsort(key, kind="stable")
-    starts = np.flatnonzero(np.diff(key[order], prepend=-1))
-    sizes = np.diff(starts, append=n)
-    # Groups with many options first: the j-th options of all groups are then a leading slice.
-    by_size = np.argsort(-sizes, kind="stable")
-    starts, sizes = starts[by_size], sizes[by_size]
-    sums = np.empty((3, n))
-    step = max(1, CHUNK // power.shape[1])
-    for first in range(0, len(starts), step):
-        chunk = slice(first, first + step)
-        _single_chunk(power, volts, hours, inverters, inverter, strings, in_series, line, order,
-                      starts[chunk], sizes[chunk], sums)  # fmt: skip
-    losses = _to_losses(*sums)
-    known = has_model(inverters)[inverter]
-    for values in (losses.power_pct, losses.current_pct, losses.yearly_kwh):
-        values[~known] = np.nan
-    return losses.of(year)
-
-
-def _single_chunk(
-    power, volts, hours, inverters, inverter, strings, in_series, line, order, starts, sizes, sums
-) -> None:  # fmt: skip
-    """Fill the sums [Wh] of the groups of options given by their starts and sizes in ``order``."""
-    head = order[starts]
-    row, length, lines = inverter[head], in_series[head][:, None], line[head]
-    each = power[lines] * length
-    at = volts[lines] * length
-    weight = hours[lines]
-    c2, c1, c0 = parabola(inverters, row, at)
-    start_power = _start_power(inverters, row)[:, None]
-    limit = inverters.ac_power_w[row][:, None]
-    current_limit = inverters.max_current_a[row][:, None] * at
-    limited = bool((~np.isnan(current_limit)).any())
-    for j in range(int(sizes[0])):
-        live = int(np.searchsorted(-sizes, -j, side="left"))  # groups with more than j options
-        which = order[starts[:live] + j]
-        dc = each[:live] * strings[which][:, None]
-        ac = _ac(dc, c2[:live], c1[:live], c0[:live], start_power[:live])
-        w = weight[:live]
-        sums[0, which] = np.einsum("ij,ij->i", ac, w)
-        free = np.minimum(ac, limit[:live])
-        sums[1, which] = sums[2, which] = np.einsum("ij,ij->i", free, w)
-        if limited:
-            held = np.fmin(dc, current_limit[:live])
-            touched = np.flatnonzero((held < dc).any(axis=1))
-            if len(touched):
-                t = touched
-                ac = _ac(held[t], c2[t], c1[t], c0[t], start_power[t])
-                sums[2, which[t]] = np.einsum("ij,ij->i", np.minimum(ac, limit[t]), w[t])
 
 
 def _ac(dc: np.ndarray, c2: np.ndarray, c1: np.ndarray, c0: np.ndarray, start: np.ndarray) -> np.ndarray:
@@ -236,7 +161,7 @@ def block_losses(
         if limited:
             ac = _multi_ac(amounts[part], held, curve, start)
             sums[2, part] = np.minimum(ac, limit) @ year.hours
-    return _to_losses(*sums).of(year)
+    return to_losses(*sums).of(year)
 
 
 def _multi_ac(amounts: np.ndarray, dc: np.ndarray, curve: tuple[np.ndarray, ...], start: float) -> np.ndarray:
