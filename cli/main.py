@@ -24,9 +24,10 @@ app = typer.Typer(
 
 
 def _register() -> None:
-    from cli import demo, fit, sheet, site
+    from cli import demo, fit, sheet, site, vet
 
     app.command("fit")(fit.fit)
+    app.command("vet")(vet.vet)
     app.add_typer(sheet.app, name="sheet")
     app.add_typer(site.app, name="site")
     app.command("demo")(demo.demo)

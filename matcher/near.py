@@ -7,6 +7,7 @@ themselves say what is then wrong and by how much.
 
 from __future__ import annotations
 
+from bisect import bisect_left
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 
@@ -68,16 +69,17 @@ def rejection(pair: Pair, space: Space, window: ClimateWindow, request: Request)
     by the array power at most.
     """
     if space.shortest > space.longest:
-        return _no_length(pair, space, window)
+        return no_length(pair, space, window)
     if all(g.max_strings < 1 for g in space.groups):
-        return _no_string(pair)
+        return no_string(pair)
     if request.strings is not None:
         stopped = strings_stopped(pair, space, request.strings, request.units)
         return stopped or _outside_ratio(pair, [request.modules_in_strings], request)
     return _no_count(pair, space, request)
 
 
-def _no_length(pair: Pair, space: Space, window: ClimateWindow) -> Rejection:
+def no_length(pair: Pair, space: Space, window: ClimateWindow) -> Rejection:
+    """What stops every string length."""
     p, inverter = pair.points, pair.inverter
     n = space.shortest
     low, low_limit, each = "mppt-low", inverter.mppt_low_v, p.vmp_hot_v
@@ -127,7 +129,8 @@ def _ways_out_of_length(
         yield f"{word} {np.floor(fewer * each):.0f} V for {_in_series(fewer)} (it has {low_limit:g} V)"
 
 
-def _no_string(pair: Pair) -> Rejection:
+def no_string(pair: Pair) -> Rejection:
+    """What stops a single string on any tracker: its current."""
     best = max(g.max_isc_a or 0.0 for g in pair.inverter.inputs)
     need = pair.points.isc_design_a
     return Rejection(
@@ -248,46 +251,48 @@ def counts_around(space: Space, total: int, units: int) -> tuple[int | None, int
 def _given_way(pair: Pair, space: Space, total: int, units: int) -> Iterator[Nearest]:
     """Arrangements that hold the count once one limit gives way by as little as it takes, with their checks."""
     whole = replace(space, fewest=1, most=total)
-    farthest = int(space.longest * (1.0 + FAR))
+    farthest = min(total, int(space.longest * (1.0 + FAR)))
     ways = [
         [whole],
-        (replace(whole, longest=n) for n in range(space.longest + 1, min(total, farthest) + 1)),
-        (replace(whole, shortest=n) for n in range(space.shortest - 1, 0, -1)),
-        (replace(whole, groups=_with_more_strings(space, extra)) for extra in (1, 2, 4)),
+        [replace(whole, longest=n) for n in range(space.longest + 1, farthest + 1)],
+        [replace(whole, shortest=n) for n in range(space.shortest - 1, 0, -1)],
+        [replace(whole, groups=_with_more_strings(space, extra)) for extra in (1, 2, 4)],
     ]
-    found = False
-    for way in ways:
-        for relaxed in way:
-            nearest = _wired(pair, relaxed, total, units)
-            if nearest is not None:
-                found = True
-                yield nearest
-                break
+    found = list(filter(None, (_first_wired(pair, way, total, units) for way in ways)))
+    yield from found
     if found:
         return
-    for n in range(space.longest + 1, min(total, farthest) + 1):
-        for extra in (0, 1, 2, 4):
-            relaxed = replace(whole, shortest=max(1, 2 * space.shortest - n), longest=n,
-                              groups=_with_more_strings(space, extra))  # fmt: skip
-            nearest = _wired(pair, relaxed, total, units)
-            if nearest is not None:
-                yield nearest
-                return
+    for extra in (0, 1, 2, 4):
+        groups = _with_more_strings(space, extra)
+        way = [
+            replace(whole, shortest=max(1, 2 * space.shortest - n), longest=n, groups=groups)
+            for n in range(space.longest + 1, farthest + 1)
+        ]
+        nearest = _first_wired(pair, way, total, units)
+        if nearest is not None:
+            yield nearest
+
+
+def _first_wired(pair: Pair, spaces: Sequence[Space], total: int, units: int) -> Nearest | None:
+    """The count wired in the first of some spaces, each inside the next, that takes it."""
+    if not spaces or not _takes(spaces[-1], total, units):
+        return None
+    first = bisect_left(spaces, True, key=lambda s: _takes(s, total, units))
+    return _wired(pair, spaces[first], total, units)
+
+
+def _takes(space: Space, total: int, units: int) -> bool:
+    return bool(reach.on_units(reach.one_unit(space), units, total) >> total & 1)
 
 
 def _with_more_strings(space: Space, extra: int) -> tuple:
     return tuple(replace(g, max_strings=g.max_strings + extra) for g in space.groups)
 
 
-def _wired(pair: Pair, space: Space, total: int, units: int) -> Nearest | None:
-    """One way of wiring the count in a space, and its checks; ``None`` where there is none."""
-    bits = reach.one_unit(space)
-    if units == 1:
-        split = (total,) if bits >> total & 1 else None
-    else:
-        split = even_split(reach.members(bits), total, units)
-    if split is None:
-        return None
+def _wired(pair: Pair, space: Space, total: int, units: int) -> Nearest:
+    """One way of wiring the count in a space that takes it, and its checks."""
+    split = even_split(reach.members(reach.one_unit(space)), total, units)
+    assert split is not None
     wired = reach.any_wiring(space, pair.inverter, split)
     return wired, checks_of(pair, wired)
 
@@ -339,13 +344,16 @@ def strings_stopped(
             if wired is None:
                 continue
             checks = checks_of(pair, wired)
-            failed = _failing(checks)
-            if not failed:
-                return None
-            said = "; ".join(describe(c, pair) for c in failed)
-            return Rejection(tuple(c.check for c in failed), f"wired as {label(wired)}: {said}",
-                             _miss((wired, checks)), tuple(checks), wired)  # fmt: skip
+            return stopped_by(pair, wired, checks) if _failing(checks) else None
     return Rejection(("module-count",), "these strings cannot be shared by so many units", 1.0)
+
+
+def stopped_by(pair: Pair, wired: tuple[Unit, ...], checks: Sequence[Check]) -> Rejection:
+    """What stops one arrangement, of which a check fails."""
+    failed = _failing(checks)
+    said = "; ".join(describe(c, pair) for c in failed)
+    return Rejection(tuple(c.check for c in failed), f"wired as {label(wired)}: {said}", _miss((wired, list(checks))),
+                     tuple(checks), wired)  # fmt: skip
 
 
 _WHERE = {

@@ -17,44 +17,66 @@ from matcher.options import Unit
 from matcher.several import even_strings
 
 
+#: Sets with more members than this are added by convolution.
+_FEW = 64
+
+
 def one_unit(space: Space) -> int:
     """Module counts that one inverter can take, 1 to the space's ``most``."""
-    mask = (1 << (space.most + 1)) - 1
     bits = 1
-    for group, choices in zip(space.groups, space.choices, strict=True):
-        steps = set(choices.modules.tolist())
+    for group in space.groups:
+        tracker = 1 | _one_tracker(group.max_strings, space.shortest, space.longest, space.most)
         for _ in range(group.trackers):
-            grown = bits
-            for step in steps:
-                grown |= bits << step
-            grown &= mask
+            grown = _sums(bits, tracker, space.most)
             if grown == bits:
                 break
             bits = grown
     return bits & ~1
 
 
+def _one_tracker(strings: int, shortest: int, longest: int, most: int) -> int:
+    """Counts up to ``most`` of up to ``strings`` strings of one length."""
+    bits = 0
+    for n in range(shortest, min(longest, most) + 1):
+        times = min(strings, most // n)
+        # A bit for every multiple of n up to the last one: a geometric series.
+        bits |= ((1 << n * (times + 1)) - (1 << n)) // ((1 << n) - 1)
+    return bits
+
+
 def on_units(one: int, units: int, most: int) -> int:
     """Module counts up to ``most`` that some units, each with a count of ``one``, can take together."""
-    mask = (1 << (most + 1)) - 1
-    counts = members(one & mask)
     bits = 1
     for _ in range(units):
-        grown = 0
-        for c in counts:
-            grown |= bits << c
-        bits = grown & mask
+        bits = _sums(bits, one, most)
     return bits
+
+
+def _sums(a: int, b: int, most: int) -> int:
+    """Sums of a member of each set, up to ``most``."""
+    mask = (1 << (most + 1)) - 1
+    a, b = a & mask, b & mask
+    if a.bit_count() > b.bit_count():
+        a, b = b, a
+    if a.bit_count() <= _FEW:
+        found = 0
+        for shift in members(a):
+            found |= b << shift
+        return found & mask
+    size = a.bit_length() + b.bit_length()
+    product = np.fft.irfft(np.fft.rfft(_as_array(a), size) * np.fft.rfft(_as_array(b), size), size)
+    packed = np.packbits(product > 0.5, bitorder="little").tobytes()
+    return int.from_bytes(packed, "little") & mask
+
+
+def _as_array(bits: int) -> np.ndarray:
+    raw = np.frombuffer(bits.to_bytes(bits.bit_length() // 8 + 1, "little"), dtype=np.uint8)
+    return np.unpackbits(raw, bitorder="little").astype(float)
 
 
 def members(bits: int) -> list[int]:
     """The counts of a set, ascending."""
-    found = []
-    while bits:
-        lowest = bits & -bits
-        found.append(lowest.bit_length() - 1)
-        bits ^= lowest
-    return found
+    return np.flatnonzero(_as_array(bits)).tolist()
 
 
 def below(bits: int, count: int) -> int | None:

@@ -22,13 +22,13 @@ def even_split(reachable: Sequence[int], total: int, units: int) -> tuple[int, .
         return tuple(ideal)
     if not _sums(counts, total, units):
         return None
-    spreads = sorted({b - a for a in counts for b in counts if a * units <= total <= b * units})
-    for spread in spreads:
-        for low in counts:
-            if low * units > total or (low + spread) * units < total:
+    known = set(counts)
+    lows = [c for c in counts if c * units <= total]
+    for spread in range(counts[-1] - counts[0] + 1):
+        for low in lows:
+            if (low + spread) * units < total or low + spread not in known:
                 continue
-            inside = [c for c in counts if low <= c <= low + spread]
-            found = _sums(inside, total, units)
+            found = _sums([c for c in counts if low <= c <= low + spread], total, units)
             if found:
                 return found
     return None

@@ -1,0 +1,144 @@
+"""Vetted bundles on the terminal: one with its reasons, or a list with a line for each."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import TYPE_CHECKING
+
+from cli.cautions import CAUTIONS, HOURLY_MEANS
+from cli.console import Column, number, print_table, say
+from cli.facts import assumptions, confirm_words
+from cli.vet_words import bounds_known, cause, mend_words, short, window_short, window_words
+from matcher.options import label
+
+if TYPE_CHECKING:
+    from cli.vet_lists import Line
+    from cli.years import SiteYear
+    from matcher.checks import Check
+    from matcher.vet import Vetted
+
+#: Lines of a list that fit one screen with what stands around them.
+ONE_SCREEN = 18
+
+
+def show(vetted: Vetted, year: SiteYear | None, rules: bool = False) -> None:
+    """Print one bundle: question, verdict, wiring, climate, reasons, changes, checks (and their ``rules``)."""
+    b = vetted.bundle
+    say(f"{_question(vetted)}?")
+    say()
+    if vetted.verdict == "no-verdict":
+        say(f"no-verdict: {vetted.reason}.")
+        return
+    if vetted.option is not None:
+        _show_sound(vetted)
+    else:
+        say(f"does-not-fit: {cause(vetted.failed)}. {_sentence(vetted.reason)}")
+        if vetted.window is not None:
+            say(f"Elsewhere: {window_words(vetted.window)}.")
+        say("What would mend it, the smallest change first:" if vetted.mends else "No single change mends it.")
+        for mend in vetted.mends:
+            say(mend_words(mend, vetted), indent=2)
+    if vetted.checks:
+        say()
+        site = vetted.site
+        say(f"Checks of {label(vetted.wired)} at {site.design_low_c:g} and {site.design_high_c:g} degC:")
+        columns = len(_CHECKS) if rules else len(_CHECKS) - 1
+        print_table(_CHECKS[:columns], [_check_row(c)[:columns] for c in vetted.checks])
+    say()
+    if year is not None:
+        for line in year.notes or (f"No clipping figure: {year.why_not}.",):
+            say(line)
+        if year.year is not None:
+            say(HOURLY_MEANS)
+    assert vetted.bench is not None
+    fit = vetted.bench.fit
+    if fit.modules[0].noct_c is None:
+        say(assumptions(fit)[0])
+    if fit.inverters[b.inverter].origin("inputs") == "assumed":
+        say("Assumed: one tracker, as the inverter's source says nothing of trackers.")
+    for line in CAUTIONS:
+        say(line)
+
+
+def _question(vetted: Vetted) -> str:
+    b, site = vetted.bundle, vetted.site
+    name = vetted.bench.fit.inverters[b.inverter].name if vetted.bench is not None else "the inverter"
+    where = "in which climates"
+    if not vetted.solved:
+        where = f"at {site.design_low_c:g} to {site.design_high_c:g} degC, {site.mounting}"
+        if site.name != "as given":
+            where = f"at {site.name} ({site.design_low_c:g} to {site.design_high_c:g} degC, {site.mounting})"
+    else:
+        where = f"{where}, {site.mounting}"
+    return f"Is it sound: {b.modules} {b.module.name} on {b.units} {name}, {where}"
+
+
+def _show_sound(vetted: Vetted) -> None:
+    option = vetted.option
+    assert option is not None
+    words = f"{vetted.verdict}: wired as {option.label}, DC/AC {option.dc_ac_ratio:.2f}"
+    if option.clipping_loss_pct is not None:
+        words += f", {option.clipping_loss_pct:.2f} % clipped, {number(option.yearly_kwh)} kWh/year"
+    say(f"{words}.")
+    waits = "" if bounds_known(vetted) else ", once the values below are confirmed"
+    say(_sentence(window_words(vetted.window)).removesuffix(".") + f"{waits}.")
+    if option.confirm:
+        say("To confirm on the datasheets before ordering:")
+        for c in option.confirm:
+            at = f" (at {vetted.site.design_low_c:g} degC)" if vetted.solved and c.unit == "V" else ""
+            say(f"{c.record}: {confirm_words(c)}{at}", indent=2)
+    for remark in vetted.remarks:
+        say(f"Note: {remark}.")
+
+
+def _sentence(text: str) -> str:
+    return f"{text[:1].upper()}{text[1:]}."
+
+
+_CHECKS = (
+    Column("check"), Column("value", number=True), Column("limit", number=True), Column("unit"),
+    Column("margin %", number=True), Column("verdict"), Column("rule", fold=True),
+)  # fmt: skip
+
+
+def _check_row(c: Check) -> list[str]:
+    digits = 0 if c.unit in ("W", "1") else 1
+    rule = c.rule + (f"; {c.remark}" if c.remark else "")
+    return [c.check, number(c.value, digits), number(c.limit, digits), "" if c.unit == "1" else c.unit,
+            number(c.margin_pct, 1), str(c.verdict), rule]  # fmt: skip
+
+
+def show_list(lines: Sequence[Line], everything: bool) -> None:
+    """Print a line for each bundle, those that want attention first where not all can be shown."""
+    shown = list(lines)
+    if not everything and len(lines) > ONE_SCREEN:
+        shown = sorted(lines, key=lambda line: _ATTENTION[line.verdict])[:ONE_SCREEN]
+    say(summary(lines))
+    say()
+    columns = [Column("row", number=True), Column("article", fold=True), Column("mod.", number=True), Column("verdict"),
+               Column("holds at degC", number=True), Column("wiring, or what is wrong", fold=True)]  # fmt: skip
+    print_table(columns, [_line_row(line) for line in shown])
+    if len(shown) < len(lines):
+        say(f"... and {len(lines) - len(shown):,} more (--all shows them, --out FILE.xlsx holds all with their reasons).")
+    say()
+    for line in CAUTIONS:
+        say(line)
+
+
+def summary(lines: Sequence[Line]) -> str:
+    """How many of a list came out how."""
+    counts = {v: sum(line.verdict == v for line in lines) for v in _ATTENTION}
+    said = ", ".join(f"{n:,} {v}" for v, n in sorted(counts.items(), key=lambda e: -_ATTENTION[e[0]]) if n)
+    return f"{len(lines):,} bundle{'s' if len(lines) != 1 else ''}: {said}."
+
+
+#: What wants attention first.
+_ATTENTION = {"does-not-fit": 0, "not-judged": 1, "no-verdict": 2, "to-confirm": 3, "fits": 4}
+
+
+def _line_row(line: Line) -> list[str]:
+    v = line.vetted
+    if v is None:
+        return [str(line.row.number), line.row.article, line.row.modules, line.verdict, "", line.reason]
+    holds = "" if v.verdict == "no-verdict" else window_short(v.window)
+    return [str(line.row.number), line.row.article, str(v.bundle.modules), line.verdict, holds, short(v)]

@@ -1,0 +1,109 @@
+"""What is said of a vetted bundle, on screen and in files alike."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from cli.facts import COLDEST_ON_EARTH_C
+
+if TYPE_CHECKING:
+    from matcher.anyclimate import Window
+    from matcher.mends import Mend
+    from matcher.vet import Vetted
+
+#: What is wrong, by the check that stops the nearest arrangement.
+CAUSES = {
+    "max-dc-voltage": "too long in the cold",
+    "system-voltage": "too long in the cold",
+    "voltage-cap": "too long in the cold",
+    "mppt-low": "too short in the heat",
+    "start": "too short in the heat",
+    "mppt-high": "too long for tracking",
+    "short-circuit": "too much current",
+    "string-inputs": "too many strings",
+    "array-power": "too much array",
+    "module-count": "wrong count",
+}
+
+
+def cause(failed: tuple[str, ...]) -> str:
+    """The cause in words: that of the check which stops the nearest arrangement, and what comes with it."""
+    return ", ".join(dict.fromkeys(CAUSES[check] for check in failed))
+
+
+def window_words(window: Window | None) -> str:
+    """A climate window as a sentence without its end."""
+    if window is None:
+        return "sound in no climate"
+    low = "" if window.coldest_c is None or window.coldest_c < COLDEST_ON_EARTH_C else f"{_up(window.coldest_c)}"
+    high = "" if window.hottest_c is None else f"{_down(window.hottest_c)}"
+    if not low and not high:
+        return "sound in any climate"
+    parts = []
+    if low:
+        parts.append(f"the lowest temperature on record is {low} degC or milder")
+    if high:
+        parts.append(f"the highest {'temperature on record ' if not low else ''}is {high} degC or cooler")
+    return "sound where " + " and ".join(parts)
+
+
+def window_short(window: Window | None) -> str:
+    """A climate window for a column: coldest to hottest [degC]."""
+    if window is None:
+        return "nowhere"
+    low = "any" if window.coldest_c is None or window.coldest_c < COLDEST_ON_EARTH_C else f"{_up(window.coldest_c)}"
+    return f"{low} to {'any' if window.hottest_c is None else _down(window.hottest_c)}"
+
+
+def _up(value: float) -> int:
+    """Whole degrees on the safe side of a coldest temperature."""
+    return -int(-(value - 1e-9) // 1)
+
+
+def _down(value: float) -> int:
+    return int((value + 1e-9) // 1)
+
+
+def bounds_known(vetted: Vetted) -> bool:
+    """Whether no value that is still to be confirmed could narrow the climate window."""
+    confirm = () if vetted.option is None else vetted.option.confirm
+    return not any(c.field in ("max_dc_voltage_v", "max_system_voltage_v", "voc_coef_pct") for c in confirm)
+
+
+def mend_words(mend: Mend, vetted: Vetted) -> str:
+    """One change in words: "13 modules instead of 14 (1x13)"."""
+    assert vetted.bench is not None
+    bundle = vetted.bundle
+    inverters = vetted.bench.fit.inverters
+    what = {
+        "count": f"{mend.modules} modules instead of {bundle.modules}",
+        "strings": "other strings",
+        "units": f"{mend.units} inverter{'s' if mend.units > 1 else ''} instead of {bundle.units}",
+        "inverter": inverters[mend.inverter].name,
+    }[mend.kind]
+    doubt = ", to confirm" if mend.verdict == "to-confirm" else ""
+    return f"{what} ({mend.label}{doubt})"
+
+
+def short(vetted: Vetted) -> str:
+    """The wiring and what to ask or know, or what is wrong and the smallest change, for one line of a table."""
+    if vetted.option is not None:
+        more = vetted.remarks[0].partition(":")[0] if vetted.remarks else ""
+        if vetted.option.confirm:
+            from cli.facts import confirm_short
+
+            more = "ask: " + confirm_short(vetted.option).replace("≥\u00a0", ">= ").replace("\u00a0", " ")
+        return vetted.option.label + (f"; {more}" if more else "")
+    if not vetted.failed:
+        return vetted.reason.partition("cannot be matched: ")[2] or vetted.reason
+    if not vetted.mends:
+        return CAUSES[vetted.failed[0]]
+    mend = vetted.mends[0]
+    assert vetted.bench is not None
+    change = {
+        "count": f"{mend.modules} modules would do",
+        "strings": f"{mend.label} would do",
+        "units": f"{mend.units} inverters would do",
+        "inverter": f"{vetted.bench.fit.inverters[mend.inverter].name} would do",
+    }[mend.kind]
+    return f"{CAUSES[vetted.failed[0]]}; {change}" + (", to confirm" if mend.verdict == "to-confirm" else "")
