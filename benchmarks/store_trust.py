@@ -1,6 +1,6 @@
 """Fifty kills of a load, and four writers and eight readers for a minute: nothing may be lost or torn.
 
-    python benchmarks/store_trust.py [--kills 50] [--seconds 60] [--writers 4] [--readers 8]
+python benchmarks/store_trust.py [--kills 50] [--seconds 60] [--writers 4] [--readers 8]
 """
 
 from __future__ import annotations
@@ -27,12 +27,16 @@ def main() -> None:
     asked = parser.parse_args()
     with tempfile.TemporaryDirectory() as folder:
         seen = kill_loads(Path(folder) / "killed.sqlite", asked.kills, count=10_000, seed=asked.seed)
-        print(f"{asked.kills} kills (seed {asked.seed}): {seen['before']} as before, {seen['after']} as after")
-        done = crowd(str(Path(folder) / "crowd.sqlite"), Path(folder), asked.writers, asked.readers, asked.seconds)
+        print(
+            f"{asked.kills} kills (seed {asked.seed}): {seen['before']} as before, {seen['after']} as after"
+        )
+        done = crowd(
+            str(Path(folder) / "crowd.sqlite"), Path(folder), asked.writers, asked.readers, asked.seconds
+        )
         print(
             f"{asked.writers} writers, {asked.readers} readers and a loader for {asked.seconds:g} s:"
-            f" {done.written} changes written, {done.refused} refused as somebody was first, {done.loads} loads,"
-            f" {done.read} reads, {len(done.errors)} errors"
+            f" {done.written} changes written, {done.refused} refused as somebody was first,"
+            f" {done.loads} loads, {done.read} reads, {len(done.errors)} errors"
         )
         for error in done.errors:
             print(error)

@@ -15,7 +15,6 @@ from typing import TYPE_CHECKING
 from catalog import schema
 from catalog.database import Database, file_of, open_database
 from catalog.errors import CatalogError
-from catalog.faults import told
 from catalog.filecopy import copy_file, copy_over, finished, free_name
 from catalog.sqlitefile import SqliteFile
 
@@ -34,7 +33,10 @@ def backup(source: Database, path: Path) -> None:
     if isinstance(source, SqliteFile):
         copy_file(source.path, path)
         return
-    with finished(path) as unfinished, closing(open_database(unfinished, create=True, readonly=False)) as target:
+    with (
+        finished(path) as unfinished,
+        closing(open_database(unfinished, create=True, readonly=False)) as target,
+    ):
         schema.ensure(target, create=True)
         _transfer(source, target)
 
@@ -42,8 +44,8 @@ def backup(source: Database, path: Path) -> None:
 def restore(location: str | Path, path: Path) -> Path | None:
     """Bring a backup back in the place of a catalog.
 
-    The backup is checked first, and what the catalog held until now is kept in a file of its own. Others who have the
-    catalog open see it as before, and from one moment on as restored.
+    The backup is checked first, and what the catalog held until now is kept in a file of its own. Others who
+    have the catalog open see it as before, and from one moment on as restored.
 
     Parameters
     ----------
@@ -84,7 +86,8 @@ def restore(location: str | Path, path: Path) -> Path | None:
         return kept
     try:
         shutil.copyfile(target, kept)
-        # A journal belongs to the file that it lies beside: left there, it would be rolled back into the new one.
+        # A journal belongs to the file that it lies beside: left there, it would be rolled back into the new
+        # one.
         for ending in ("-journal", "-wal", "-shm"):
             with suppress(FileNotFoundError):
                 os.replace(f"{target}{ending}", f"{kept}{ending}")

@@ -1,7 +1,8 @@
 """Opening the database of a catalog: a SQLite file, or PostgreSQL by its URL.
 
-Reading goes by plain SQL (`Run`) that both understand. On a SQLite file it takes the standard library alone, so that
-commands that only read need not wait for the import of sqlmodel. Writing goes by a session of SQLModel.
+Reading goes by plain SQL (`Run`) that both understand. On a SQLite file it takes the standard library alone,
+so that commands that only read need not wait for the import of sqlmodel. Writing goes by a session of
+SQLModel.
 """
 
 from __future__ import annotations
@@ -82,7 +83,8 @@ def open_database(location: str | Path, *, create: bool, readonly: bool) -> Data
 
         return Server(f"postgresql+psycopg://{rest}", readonly=readonly)
     raise CatalogError(
-        f"a catalog is a file or a PostgreSQL database (postgresql+psycopg://user@host/name), not {scheme}://..."
+        "a catalog is a file or a PostgreSQL database (postgresql+psycopg://user@host/name),"
+        f" not {scheme}://..."
     )
 
 

@@ -11,20 +11,22 @@ from catalog.errors import CatalogError
 UNCHANGED = "nothing in it was changed"
 
 BUSY = (
-    "the catalog {0} is in use by another program that is writing to it: wait until that is done and try again; "
-    + UNCHANGED
+    "the catalog {0} is in use by another program that is writing to it: wait until that is done and"
+    " try again; " + UNCHANGED
 )
 
 _LINES = {
     "SQLITE_BUSY": BUSY,
     "SQLITE_LOCKED": "the catalog {0} is in use by another program: try again; " + UNCHANGED,
-    "SQLITE_FULL": "no room is left for the catalog {0}: free some space on its disk and try again; " + UNCHANGED,
-    "SQLITE_READONLY": "the catalog {0}, or the folder that holds it, is read-only: make both writable, or name"
-    " another catalog with --catalog; " + UNCHANGED,
-    "SQLITE_NOTADB": "{0} is not a catalog: it is no SQLite file, or it is damaged; name another with --catalog, or"
-    " bring back a copy with 'ferrule sheet restore'",
+    "SQLITE_FULL": "no room is left for the catalog {0}: free some space on its disk and try again; "
+    + UNCHANGED,
+    "SQLITE_READONLY": "the catalog {0}, or the folder that holds it, is read-only: make both writable, or"
+    " name another catalog with --catalog; " + UNCHANGED,
+    "SQLITE_NOTADB": "{0} is not a catalog: it is no SQLite file, or it is damaged; name another with"
+    " --catalog, or bring back a copy with 'ferrule sheet restore'",
     "SQLITE_CORRUPT": "the catalog {0} is damaged: bring back a copy with 'ferrule sheet restore'",
-    "SQLITE_CANTOPEN": "the catalog {0} cannot be opened: see that it and its folder exist and that you may use them",
+    "SQLITE_CANTOPEN": "the catalog {0} cannot be opened: see that it and its folder exist and that you may"
+    " use them",
     "SQLITE_PERM": "the catalog {0} cannot be opened: you have no permission",
     "SQLITE_AUTH": "the catalog {0} cannot be opened: you have no permission",
     "SQLITE_IOERR": "the catalog {0} cannot be read or written: its disk reports an error ({1})",
@@ -45,7 +47,7 @@ _STATES = {
 
 
 def line(error: BaseException, where: str) -> str | None:
-    """What went wrong with the database at ``where``, as one line; ``None`` for an error that is none of a database."""
+    """What went wrong with the database at ``where``, as one line; ``None`` for an error of another kind."""
     cause = getattr(error, "orig", None) or error
     name = getattr(cause, "sqlite_errorname", None)
     if name is not None:

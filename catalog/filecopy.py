@@ -60,7 +60,7 @@ def free_name(path: Path, tag: str) -> Path:
 
 @contextmanager
 def finished(target: Path) -> Iterator[Path]:
-    """A file to be written that gets its name when it is complete, and vanishes if it does not come to that."""
+    """A file to be written that gets its name when it is complete, and vanishes if it never is."""
     unfinished = target.with_name(f".{target.name}.{os.getpid()}.part")
     try:
         with _os_told(target):

@@ -36,7 +36,8 @@ def check_records(records: Sequence[Module | Inverter]) -> None:
         more = len(refused) - 1
         others = f" (and {more} more record{'s' if more > 1 else ''} like it)" if more else ""
         name = records[k].name if isinstance(records[k].name, str) else ""
-        raise CatalogError(f"{name.strip() or 'a record without a name'}: {refused[k]}{others}; nothing was kept")
+        name = name.strip() or "a record without a name"
+        raise CatalogError(f"{name}: {refused[k]}{others}; nothing was kept")
 
 
 def checked_value(spec: FieldSpec, value: Any) -> Any:
@@ -82,17 +83,19 @@ def _of_wrong_type(records: Sequence[Module | Inverter]) -> Iterator[tuple[int, 
         if type_ is Inverter:
             groups = [(k, group) for k, record in zip(rows, chosen, strict=True) for group in record.inputs]
             for spec in specs(Inputs).values():
-                yield from _column(spec, (getattr(group, spec.name) for _, group in groups), [k for k, _ in groups])
+                yield from _column(
+                    spec, (getattr(group, spec.name) for _, group in groups), [k for k, _ in groups]
+                )
 
 
 def _column(spec: FieldSpec, values: Iterable[Any], rows: Sequence[int]) -> Iterator[tuple[int, str]]:
     """What is wrong in the values of one field; the usual case, nothing, is found out fast."""
     values = list(values)
     usual = {spec.type, int} if spec.type is float else {spec.type}
-    if set(map(type, values)) <= usual | {type(None)}:
-        # Texts repeat a lot.
-        if spec.type is not str or not any(_wrong(spec, text) for text in set(values)):
-            return
+    sound = set(map(type, values)) <= usual | {type(None)}
+    # Texts repeat a lot, so each is looked at once.
+    if sound and (spec.type is not str or not any(_wrong(spec, text) for text in set(values))):
+        return
     for k, value in zip(rows, values, strict=True):
         wrong = None if value is None and not spec.required else _wrong(spec, value)
         if wrong:

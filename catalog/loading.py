@@ -42,9 +42,9 @@ def load(
 ) -> LoadReport:
     """Load records in one transaction.
 
-    A record is compared with what the same table or sheet (the same source by name) last said of it. If that is the same,
-    nothing happens. Otherwise the loaded values become a revision of their own; where people amended the record
-    meanwhile, another one follows in which their values are kept (see `catalog.merging`).
+    A record is compared with what the same table or sheet (the same source by name) last said of it. If that
+    is the same, nothing happens. Otherwise the loaded values become a revision of their own; where people
+    amended the record meanwhile, another one follows in which their values are kept (see `catalog.merging`).
 
     Raises
     ------
@@ -81,7 +81,9 @@ def _refuse_twins(records: Iterable[Module | Inverter]) -> None:
     for record in records:
         key = (record.maker, record.model)
         if key in seen:
-            raise CatalogError(f"{record.name} stands twice in what is to be loaded; take one out; nothing was kept")
+            raise CatalogError(
+                f"{record.name} stands twice in what is loaded; take one out; nothing was kept"
+            )
         seen.add(key)
 
 
@@ -133,7 +135,8 @@ def _is_current(record: Module | Inverter, current: Module | Inverter) -> bool:
 def _last_said(run: Run, kind: str, families: Iterable[str]) -> dict[str, dict[int, Any]]:
     """What each table or sheet last said, by its name and the record's id."""
     return {
-        family: {r.id: r for r in read_records(run, kind, FAMILY[kind], {"family": family})} for family in families
+        family: {r.id: r for r in read_records(run, kind, FAMILY[kind], {"family": family})}
+        for family in families
     }
 
 
@@ -195,12 +198,20 @@ class _Batch:
                 rows.clear()
         if self._moved:
             table = RecordRow.__table__
-            statement = update(table).where(table.c.id == bindparam("id_")).values(current=bindparam("number"))
+            statement = (
+                update(table).where(table.c.id == bindparam("id_")).values(current=bindparam("number"))
+            )
             connection.execute(statement, self._moved)
             self._moved.clear()
 
     def _revise(
-        self, id_: int, number: int, previous: int | None, act: str, record: Any, act_source: Any | None = None
+        self,
+        id_: int,
+        number: int,
+        previous: int | None,
+        act: str,
+        record: Any,
+        act_source: Any | None = None,
     ) -> None:
         row = revision_row(
             id_,

@@ -1,7 +1,7 @@
 """A newer revision of a table meets a record that people have since worked on.
 
-What a table or sheet states is one layer, what people amended another. A later load takes the place of the values of
-its own earlier load, and leaves what was entered by hand or read from another document since.
+What a table or sheet states is one layer, what people amended another. A later load takes the place of the
+values of its own earlier load, and leaves what was entered by hand or read from another document since.
 """
 
 from __future__ import annotations
@@ -48,9 +48,10 @@ def merged(current: Record, loaded: Record, before: Record | None) -> Record:
     Returns
     -------
     Module or Inverter
-        For each value: if the current one is from the earlier load, the loaded one. If it was entered, or read from
-        another document, it stays, unless the loaded one is itself an entered one and new. With no earlier load: the
-        loaded one if it has at least the standing of the current (entered, stated, derived, assumed).
+        For each value: if the current one is from the earlier load, the loaded one. If it was entered, or
+        read from another document, it stays, unless the loaded one is itself an entered one and new. With no
+        earlier load: the loaded one if it has at least the standing of the current (entered, stated, derived,
+        assumed).
     """
     family = loaded.source.name
     values, origins, sources = {}, {}, {}

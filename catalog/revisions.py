@@ -4,8 +4,7 @@ from __future__ import annotations
 
 import json
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass, replace
-from datetime import datetime
+from dataclasses import replace
 from typing import TYPE_CHECKING, Any
 
 from catalog.errors import CatalogError
@@ -13,7 +12,6 @@ from catalog.guard import check_records, checked_field, checked_value
 from catalog.merging import same
 from catalog.records import Inputs, Inverter, Module, Origin, Source, specs
 from catalog.rows import (
-    content_names,
     inputs_rows,
     kind_of,
     read_records,
@@ -46,35 +44,9 @@ def _family_condition(kind: str) -> str:
     return f'v."revision" = ({latest})'
 
 
-#: By kind: the condition of the latest revisions in which one document (``:family``, its name) speaks for itself.
+#: By kind: the condition of the latest revisions in which one document (``:family``, its name) speaks for
+#: itself.
 FAMILY: Mapping[str, str] = {kind: _family_condition(kind) for kind in ("module", "inverter")}
-
-
-@dataclass(frozen=True, slots=True)
-class Change:
-    """One field that a revision changed."""
-
-    field: str
-    old: Any
-    new: Any
-    origin: Origin | None
-    source: Source | None
-
-
-@dataclass(frozen=True, slots=True)
-class Revision:
-    """One entry of a record's history: from which document, what, and when.
-
-    ``act`` is loaded, entered, amended, merged or undone. ``changes`` compares it with revision ``previous``.
-    """
-
-    number: int
-    previous: int | None
-    act: str
-    created_at: datetime
-    source: Source
-    note: str
-    changes: tuple[Change, ...]
 
 
 class Sources:
@@ -150,7 +122,9 @@ def current_record(run: Run, kind: str, id_: int, revision: int | None = None) -
     if revision is not None:
         latest = current_record(run, kind, id_).revision
         raise CatalogError(f"{kind} {id_} has no revision {revision}: its revisions are 1 to {latest}")
-    raise CatalogError(f"the catalog holds no {kind} with the id {id_}: 'ferrule sheet find' shows names and ids")
+    raise CatalogError(
+        f"the catalog holds no {kind} with the id {id_}: 'ferrule sheet find' shows names and ids"
+    )
 
 
 def enter(session: Session, run: Run, record: Module | Inverter, created_at: str, note: str = "") -> int:
@@ -166,7 +140,9 @@ def enter(session: Session, run: Run, record: Module | Inverter, created_at: str
     rows = run('SELECT r."id", r."maker", r."model" FROM record r WHERE r."kind" = :kind', {"kind": kind})
     for id_, maker, model in rows:
         if f"{maker} {model}".casefold() == record.name.casefold():
-            raise CatalogError(f"{maker} {model} is in the catalog already: amend it with 'ferrule sheet amend {id_}'")
+            raise CatalogError(
+                f"{maker} {model} is in the catalog already: change it with 'ferrule sheet amend'"
+            )
     id_ = run('SELECT COALESCE(MAX(r."id"), 0) + 1 FROM record r', {})[0][0]
     _insert("record", session, [record_row(kind, id_, record)])
     _add(session, run, replace(record, id=id_, revision=1), None, ENTERED, created_at, note=note)
@@ -214,50 +190,11 @@ def undo(
     _add(session, run, restored, previous, UNDONE, created_at, act_source=rows[back_to].source, note=note)
 
 
-def history(run: Run, kind: str, id_: int) -> list[Revision]:
-    """All revisions of a record, oldest first."""
-    records = {r.revision: r for r in read_records(run, kind, 'r."id" = :id', {"id": id_})}
-    if not records:
-        current_record(run, kind, id_)
-    found = []
-    for row in read_revision_rows(run, kind, id_):
-        # An undone revision differs from the one before it in number, whatever a next undo would go back to.
-        base = row.revision - 1 if row.act == UNDONE else row.previous
-        found.append(
-            Revision(
-                row.revision,
-                row.previous,
-                row.act,
-                datetime.fromisoformat(row.created_at),
-                row.source,
-                row.note,
-                _changes(records.get(base), records[row.revision]),
-            )
-        )
-    return found
-
-
-def _changes(old: Any | None, new: Any) -> tuple[Change, ...]:
-    changes = []
-    for name in content_names(kind_of(new)):
-        was, is_ = getattr(old, name, None), getattr(new, name)
-        differs = was != is_
-        if old is not None and not differs:
-            differs = (old.origins.get(name), old.source_of(name).name) != (
-                new.origins.get(name),
-                new.source_of(name).name,
-            ) and is_ is not None
-        if differs:
-            source = None if is_ is None else new.source_of(name)
-            changes.append(Change(name, was, is_, new.origin(name), source))
-    return tuple(changes)
-
-
 def _expected(current: Any, expected: int | None) -> Any:
     if expected is not None and current.revision != expected:
         raise CatalogError(
-            f"{current.name} was changed by someone else meanwhile (revision {current.revision}, you saw {expected}):"
-            " look at it again with 'ferrule sheet history', then repeat; nothing was changed"
+            f"{current.name} was changed by someone else meanwhile (revision {current.revision}, you saw"
+            f" {expected}): look at it again with 'ferrule sheet history', then repeat; nothing was changed"
         )
     return current
 

@@ -90,7 +90,8 @@ def read_records(run: Run, kind: str, where: str = CURRENT, params: dict[str, An
         return _records(kind, rows, read_sources(run), inputs)
     except (LookupError, ValueError, TypeError, AttributeError) as error:
         raise CatalogError(
-            f"the catalog is damaged, some {kind}s cannot be read: bring back a copy with 'ferrule sheet restore'"
+            f"the catalog is damaged, some {kind}s cannot be read:"
+            " bring back a copy with 'ferrule sheet restore'"
         ) from error
 
 

@@ -1,9 +1,9 @@
 """The schema version of a catalog, and the way from an older one to this one.
 
 To change a table: change it in `catalog.tables`, add one to `VERSION`, and add to `MIGRATIONS`, under the new
-version, a function that brings a catalog from the version before to it. Migrations are SQL of their time and use
-nothing of `catalog.tables`, which goes on changing. A migration runs in one transaction; for a file, a copy is
-kept beside it first.
+version, a function that brings a catalog from the version before to it. Migrations are SQL of their time and
+use nothing of `catalog.tables`, which goes on changing. A migration runs in one transaction; for a file, a
+copy is kept beside it first.
 """
 
 from __future__ import annotations
@@ -32,7 +32,8 @@ def _add_stock(session: Session) -> None:
             PRIMARY KEY (id), FOREIGN KEY(record_id) REFERENCES record (id),
             FOREIGN KEY(source_id) REFERENCES source (id))""",
         """CREATE TABLE stock_decision (
-            article_key VARCHAR NOT NULL, text_key TEXT NOT NULL, record_id INTEGER, decided_at VARCHAR NOT NULL,
+            article_key VARCHAR NOT NULL, text_key TEXT NOT NULL, record_id INTEGER,
+            decided_at VARCHAR NOT NULL,
             PRIMARY KEY (article_key, text_key), FOREIGN KEY(record_id) REFERENCES record (id))""",
     ):
         session.connection().exec_driver_sql(statement)
@@ -99,8 +100,8 @@ def checked_version(database: Database) -> int | None:
         raise CatalogError(f"{database.label} is a database, but no catalog of Ferrule's: name another")
     if version > VERSION:
         raise CatalogError(
-            f"the catalog {database.label} was last used by a newer Ferrule (its schema is {version}, this one knows"
-            f" up to {VERSION}): update with 'pip install --upgrade ferrule'; {UNCHANGED}"
+            f"the catalog {database.label} was last used by a newer Ferrule (its schema is {version}, this"
+            f" one knows up to {VERSION}): update with 'pip install --upgrade ferrule'; {UNCHANGED}"
         )
     if any(step not in MIGRATIONS for step in range(version + 1, VERSION + 1)):
         raise CatalogError(f"the catalog {database.label} has a schema {version} that no Ferrule has written")

@@ -33,14 +33,18 @@ class Server:
         try:
             parsed = make_url(url)
         except (ArgumentError, ValueError) as error:
-            raise CatalogError("the catalog's URL is not of the form postgresql+psycopg://user@host/name") from error
+            raise CatalogError(
+                "the catalog's URL is not of the form postgresql+psycopg://user@host/name"
+            ) from error
         # What follows the "?" may hold a password too.
         self.label = parsed.set(query={}).render_as_string(hide_password=True)
         self.readonly = readonly
         try:
             self._engine = create_engine(parsed, connect_args={"connect_timeout": _CONNECT_S})
         except ImportError as error:
-            raise CatalogError("a catalog in PostgreSQL needs psycopg: pip install 'ferrule[postgres]'") from error
+            raise CatalogError(
+                "a catalog in PostgreSQL needs psycopg: pip install 'ferrule[postgres]'"
+            ) from error
 
     @contextmanager
     def reading(self) -> Iterator[Run]:
@@ -93,12 +97,12 @@ class Server:
         return bool(names) if name is None else name in names
 
     def keep_copy(self, tag: str) -> None:
-        """Copies of a server's database are its administrator's (pg_dump); a migration is one transaction anyway."""
+        """Copies are the administrator's (pg_dump); a migration is one transaction anyway."""
 
     def missing_line(self) -> str:
         return (
-            f"the database {self.label} holds no catalog yet: 'ferrule sheet load cec' makes one and loads the"
-            " public tables"
+            f"the database {self.label} holds no catalog yet: 'ferrule sheet load cec' makes one and loads"
+            " the public tables"
         )
 
     def close(self) -> None:

@@ -1,8 +1,8 @@
 """A catalog in one SQLite file.
 
-The rollback journal is used, not the write-ahead log: a catalog at rest is then one file that can be copied, mailed
-and opened on a read-only disk, and after a crash the next one who opens it finds it as it was before. Writers take
-their lock at once (BEGIN IMMEDIATE), so that nobody finds out at the end that another was first.
+The rollback journal is used, not the write-ahead log: a catalog at rest is then one file that can be copied,
+mailed and opened on a read-only disk, and after a crash the next one who opens it finds it as it was before.
+Writers take their lock at once (BEGIN IMMEDIATE), so that nobody finds out at the end that another was first.
 """
 
 from __future__ import annotations
@@ -145,8 +145,8 @@ def connect(path: Path, mode: str, *, readonly: bool = False) -> sqlite3.Connect
     mode : {"rw", "rwc", "ro"}
         As in SQLite's URIs. With ``rw`` a file that is write-protected opens for reading.
     readonly : bool
-        Refuse to write. The mode stays ``rw`` where it can be: a reader too must be able to roll back what a writer
-        that was killed has left.
+        Refuse to write. The mode stays ``rw`` where it can be: a reader too must be able to roll back what a
+        writer that was killed has left.
 
     Returns
     -------

@@ -13,21 +13,22 @@ from pathlib import Path
 from types import TracebackType
 from typing import TYPE_CHECKING, Any
 
-from catalog import revisions, schema
+from catalog import history, revisions, schema, sitelist
 from catalog.database import Database, open_database
-from catalog.errors import CatalogError
 from catalog.loading import LoadReport, Progress, load
-from catalog.near import nearest
 from catalog.records import Inverter, Module, Site, Source
 from catalog.rows import CURRENT, RECORD_TYPES, checked_kind, id_condition, kind_of, read_records, read_sites
-from catalog.sites import checked
 
 if TYPE_CHECKING:
     from catalog.names import Named, NameIndex
+    from catalog.where import Condition
     from catalog.stock import StockItem
 
 #: How many computed things are kept; the oldest give way.
 _KEPT = 200
+
+#: Keys of what people said begin so; it does not give way.
+SAID = "said/"
 
 
 class Catalog:
@@ -108,6 +109,15 @@ class Catalog:
         with self._database.reading() as run:
             return [Named(*row) for row in run(sql, {"kind": checked_kind(kind)})]
 
+    def matching(self, kind: str, condition: Condition) -> list[int]:
+        """Ids of the records of a kind that meet a condition (see `catalog.where`), by maker and model."""
+        sql = (
+            f'SELECT r."id" FROM record r JOIN {checked_kind(kind)}_revision v ON v."record_id" = r."id"'
+            f' WHERE r."kind" = :kind AND {CURRENT} AND {condition.sql} ORDER BY r."maker", r."model", r."id"'
+        )
+        with self._database.reading() as run:
+            return [id_ for (id_,) in run(sql, {"kind": kind} | condition.params)]
+
     def load(
         self, modules: Iterable[Module], inverters: Iterable[Inverter], progress: Progress | None = None
     ) -> LoadReport:
@@ -176,7 +186,8 @@ class Catalog:
         Raises
         ------
         CatalogError
-            If there is no such record or field, the result is impossible, or the revision is not the expected one.
+            If there is no such record or field, the result is impossible, or the revision is not the expected
+            one.
         """
         with self._database.writing() as (session, run):
             revisions.amend(
@@ -198,7 +209,7 @@ class Catalog:
             revisions.undo(session, run, checked_kind(kind), id_, _now(), expected=expected)
             return revisions.current_record(run, kind, id_)
 
-    def history(self, kind: str, id_: int) -> list[revisions.Revision]:
+    def history(self, kind: str, id_: int) -> list[history.Revision]:
         """All revisions of a record, oldest first, each with the fields that it changed.
 
         Raises
@@ -207,7 +218,7 @@ class Catalog:
             If there is no such record.
         """
         with self._database.reading() as run:
-            return revisions.history(run, checked_kind(kind), id_)
+            return history.history(run, checked_kind(kind), id_)
 
     # Sites
 
@@ -224,14 +235,7 @@ class Catalog:
         CatalogError
             If there is none; the nearest names are told.
         """
-        sites = self.sites()
-        key = _site_key(name)
-        for site in sites:
-            if _site_key(site.name) == key:
-                return site
-        if not sites:
-            raise CatalogError(f"no site is called {name!r}, and none is kept: 'ferrule site add' keeps one")
-        raise CatalogError(f"no site is called {name!r}{nearest(name, [site.name for site in sites])}")
+        return sitelist.site_of(self.sites(), name)
 
     def add_site(self, site: Site, *, replace: bool = False) -> None:
         """Keep a site; with ``replace``, in the place of one with the same name.
@@ -241,28 +245,13 @@ class Catalog:
         CatalogError
             If its values are impossible, or the name is taken.
         """
-        from catalog.tables import SiteRow
-
-        site = checked(site)
-        key = _site_key(site.name)
-        if not key:
-            raise CatalogError("a site needs a name")
         with self._database.writing() as (session, _):
-            taken = session.get(SiteRow, key)
-            if taken is not None and not replace:
-                raise CatalogError(f"a site is called {taken.name!r} already: drop it first, or choose another name")
-            values = {name: getattr(site, name) for name in SiteRow.model_fields if name != "name_key"}
-            session.merge(SiteRow(name_key=key, **values))
+            sitelist.add(session, site, replace=replace)
 
     def drop_site(self, name: str) -> None:
         """Forget a site; raises as `site` does."""
-        from catalog.tables import SiteRow
-
-        key = _site_key(self.site(name).name)
-        with self._database.writing() as (session, _):
-            row = session.get(SiteRow, key)
-            if row is not None:
-                session.delete(row)
+        with self._database.writing() as (session, run):
+            sitelist.drop(session, run, name)
 
     # Stock
 
@@ -309,19 +298,24 @@ class Catalog:
             rows = run('SELECT k."data" FROM kept k WHERE k."key" = :key', {"key": key})
         return bytes(rows[0][0]) if rows else None
 
-    def keep(self, key: str, data: bytes) -> None:
-        """Keep something that was computed, if that is possible; it can be computed again."""
-        self._database.attempt(
+    def keep(self, key: str, data: bytes) -> bool:
+        """Keep something, if that is possible at once; tell whether it was.
+
+        What was computed gives way to newer things, as it can be computed again. What a person said, such as what
+        the columns of a file are, has a key that begins with `SAID` and stays.
+        """
+        return self._database.attempt(
             [
                 (
                     'INSERT INTO kept ("key", "data", "made_at") VALUES (:key, :data, :made_at)'
-                    ' ON CONFLICT ("key") DO UPDATE SET "data" = excluded."data", "made_at" = excluded."made_at"',
+                    ' ON CONFLICT ("key") DO UPDATE'
+                    ' SET "data" = excluded."data", "made_at" = excluded."made_at"',
                     {"key": key, "data": data, "made_at": datetime.now(UTC).isoformat()},
                 ),
                 (
-                    'DELETE FROM kept WHERE "key" NOT IN'
+                    'DELETE FROM kept WHERE "key" NOT LIKE :said AND "key" NOT IN'
                     ' (SELECT k."key" FROM kept k ORDER BY k."made_at" DESC LIMIT :most)',
-                    {"most": _KEPT},
+                    {"most": _KEPT, "said": f"{SAID}%"},
                 ),
             ]
         )
@@ -355,11 +349,6 @@ class Catalog:
                 known = {record.id for record in found}
                 revisions.current_record(run, kind, next(id_ for id_ in ids if id_ not in known))
         return found
-
-
-def _site_key(name: str) -> str:
-    """Names that differ only in case or blanks are one."""
-    return " ".join(name.split()).casefold()
 
 
 def _now() -> str:

@@ -1,8 +1,8 @@
-"""The tables of a catalog, as SQLModel classes; the columns of values come from the field lists of `catalog.records`.
+"""The tables of a catalog, as SQLModel classes; columns of values come from the fields of `catalog.records`.
 
-A record is a name. What is known of it stands in its revisions: each holds all values, so that any of them can be
-read alone, and none is ever changed. ``record.current`` tells which one counts. A change to a table here is a
-new schema version: see `catalog.schema`.
+A record is a name. What is known of it stands in its revisions: each holds all values, so that any of them
+can be read alone, and none is ever changed. ``record.current`` tells which one counts. A change to a table
+here is a new schema version: see `catalog.schema`.
 """
 
 from __future__ import annotations
@@ -43,8 +43,8 @@ class RevisionBase(SQLModel):
     """What revisions of modules and of inverters have in common.
 
     ``act`` tells how it came about, ``previous`` what counted before. ``source_id`` is the document of the
-    values, but for those in ``sources``; ``act_source_id`` is the document of this act. Origins and sources are
-    JSON objects by field name that hold only the exceptions.
+    values, but for those in ``sources``; ``act_source_id`` is the document of this act. Origins and sources
+    are JSON objects by field name that hold only the exceptions.
     """
 
     record_id: int = Field(primary_key=True, foreign_key="record.id")
@@ -67,7 +67,7 @@ class SiteBase(SQLModel):
 
 
 class StockRow(SQLModel, table=True):
-    """One line of a stock list: how many of an article lie where, at what price, and which record it means."""
+    """A line of a stock list: how many of an article lie where, at what price, and which record it means."""
 
     __tablename__ = "stock"
 

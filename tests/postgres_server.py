@@ -54,7 +54,9 @@ class PostgresServer:
         import psycopg
 
         name = f"catalog_{next(_NUMBERS)}"
-        with psycopg.connect(f"host={self._folder} user=tests dbname=postgres", autocommit=True) as connection:
+        with psycopg.connect(
+            f"host={self._folder} user=tests dbname=postgres", autocommit=True
+        ) as connection:
             connection.execute(f"CREATE SCHEMA {name}")
         return f"postgresql+psycopg://tests@/postgres?host={self._folder}&options=-csearch_path%3D{name}"
 

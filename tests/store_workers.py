@@ -22,7 +22,7 @@ AS_BEFORE, AS_AFTER = "before", "after"
 
 
 def fork(work: Callable[[], object], answer: Path | None = None) -> int:
-    """Run a function in a process of its own; returns its id. What it returns or raises is written to a file."""
+    """Run a function in a process of its own; return its id. What it returns or raises goes to a file."""
     child = os.fork()
     if child:
         return child
@@ -105,7 +105,9 @@ def _wait_for_writing(path: Path, size: int, until: float) -> None:
         time.sleep(0.0005)
 
 
-def state_of(path: Path, before: Sequence[Module], after: Sequence[Module], inverters: Sequence[Inverter]) -> str:
+def state_of(
+    path: Path, before: Sequence[Module], after: Sequence[Module], inverters: Sequence[Inverter]
+) -> str:
     """Whether a catalog is as before or as after a load, all of it."""
     from catalog.backup import damage
 

@@ -1,4 +1,4 @@
-"""The catalog: what goes in comes out, a load is all or nothing and repeats without effect, and no edit loses anything."""
+"""The catalog: what goes in comes out, a load is all or nothing, no edit loses anything."""
 
 from __future__ import annotations
 
@@ -153,7 +153,9 @@ def test_a_record_that_stands_twice_is_refused(catalog: Catalog) -> None:
 
 def test_progress_ends_at_the_total(catalog: Catalog) -> None:
     told: list[tuple[int, int]] = []
-    catalog.load([replace(MODULE, model=f"AF-{n}") for n in range(5)], INVERTERS, lambda *done: told.append(done))
+    catalog.load(
+        [replace(MODULE, model=f"AF-{n}") for n in range(5)], INVERTERS, lambda *done: told.append(done)
+    )
     assert told[-1] == (7, 7)
 
 
@@ -215,7 +217,9 @@ def test_a_sheet_fills_and_replaces_what_a_table_said(catalog: Catalog) -> None:
 
 def test_an_assumed_value_replaces_no_stated_one(catalog: Catalog) -> None:
     id_ = id_of(catalog, TWO_GROUPS)
-    table = replace(TWO_GROUPS, inputs=(Inputs(trackers=1),), origins={"inputs": Origin.ASSUMED}, source=TABLE_2024)
+    table = replace(
+        TWO_GROUPS, inputs=(Inputs(trackers=1),), origins={"inputs": Origin.ASSUMED}, source=TABLE_2024
+    )
     catalog.load([], [table])
     assert catalog.inverter(id_).inputs == TWO_GROUPS.inputs
 

@@ -63,7 +63,9 @@ def test_a_file_in_the_place_of_a_folder(tmp_path: Path) -> None:
     assert "cannot be opened" in refusal(tmp_path / "file" / "catalog.sqlite", create=True)
 
 
-@pytest.mark.parametrize("content", [b"maker,model\nQuillon,QN-5000\n" * 40, b"SQLite format 3\x00" + b"\xff" * 5000])
+@pytest.mark.parametrize(
+    "content", [b"maker,model\nQuillon,QN-5000\n" * 40, b"SQLite format 3\x00" + b"\xff" * 5000]
+)
 def test_what_is_no_database_is_told_and_left_alone(tmp_path: Path, content: bytes) -> None:
     path = tmp_path / "modules.csv"
     path.write_bytes(content)
@@ -180,7 +182,10 @@ def _use(folder: Path) -> list[str]:
     with Catalog.open(folder / "catalog.sqlite") as catalog:
         catalog.keep("year", b"x")
         said.append(f"{len(catalog.modules())} modules, kept {catalog.kept('year')}")
-        for write in (lambda: catalog.add_site(replace(SITE, name="East")), lambda: catalog.load([], [INVERTER])):
+        for write in (
+            lambda: catalog.add_site(replace(SITE, name="East")),
+            lambda: catalog.load([], [INVERTER]),
+        ):
             try:
                 write()
                 said.append("written")
@@ -247,9 +252,14 @@ def test_no_room_loses_nothing(small_catalog: Path, monkeypatch: pytest.MonkeyPa
         assert len(catalog.sites()) == 2
 
 
-def test_waiting_for_another_writer_ends_in_a_line(small_catalog: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+def test_waiting_for_another_writer_ends_in_a_line(
+    small_catalog: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
     monkeypatch.setattr(database, "WAIT_S", 0.1)
-    with closing(sqlite3.connect(small_catalog, isolation_level=None)) as other, Catalog.open(small_catalog) as catalog:
+    with (
+        closing(sqlite3.connect(small_catalog, isolation_level=None)) as other,
+        Catalog.open(small_catalog) as catalog,
+    ):
         other.execute("BEGIN IMMEDIATE")
         assert len(catalog.modules()) == 2
         with pytest.raises(CatalogError, match="in use by another program .*try again"):
@@ -266,7 +276,10 @@ def test_waiting_on_a_server_ends_in_a_line(postgres_server, monkeypatch: pytest
     monkeypatch.setattr(database, "WAIT_S", 0.1)
     url = postgres_server.new_schema()
     with Catalog.open(url, create=True) as catalog, Catalog.open(url) as other:
-        with other._database.writing(), pytest.raises(CatalogError, match="in use by another program .*try again"):
+        with (
+            other._database.writing(),
+            pytest.raises(CatalogError, match="in use by another program .*try again"),
+        ):
             catalog.load(many_modules(3), [])
         assert catalog.load(many_modules(3), []).new == 3
 
@@ -298,7 +311,9 @@ def test_kills_leave_the_catalog_as_before_or_after(tmp_path: Path) -> None:
     assert seen[AS_BEFORE] > 0
 
 
-def test_what_a_killed_writer_left_is_rolled_back_by_the_next_reader(small_catalog: Path, tmp_path: Path) -> None:
+def test_what_a_killed_writer_left_is_rolled_back_by_the_next_reader(
+    small_catalog: Path, tmp_path: Path
+) -> None:
     """A copy of file and journal in the midst of a transaction is what a kill leaves."""
     crashed = tmp_path / "crashed.sqlite"
     with closing(sqlite3.connect(small_catalog, isolation_level=None)) as writer:
@@ -331,7 +346,9 @@ def test_two_may_make_the_same_catalog_at_once(store_location: str, tmp_path: Pa
 
     children = [fork(make, tmp_path / f"{n}.json") for n in range(4)]
     assert [os.waitpid(child, 0)[1] for child in children] == [0] * 4
-    assert sorted((tmp_path / f"{n}.json").read_text() for n in range(4)) == ['{"answer": 0}'] * 3 + ['{"answer": 50}']
+    assert sorted((tmp_path / f"{n}.json").read_text() for n in range(4)) == ['{"answer": 0}'] * 3 + [
+        '{"answer": 50}'
+    ]
 
 
 # Schema versions
