@@ -1,0 +1,82 @@
+"""docs/documents.md describes every document that the commands print, field by field."""
+
+from __future__ import annotations
+
+import json
+import re
+import shutil
+from collections.abc import Iterator
+from pathlib import Path
+from typing import Any
+
+import pvlib
+import pytest
+from documented_examples import ROOT
+
+from catalog.records import Inverter, Module, Site, specs
+
+TEXT = (ROOT / "docs" / "documents.md").read_text(encoding="utf-8")
+
+FITS = ("fit", "-m", "klassik 270p", "--site", "butterfield barn")
+SHOWN = [
+    (*FITS, "--count", "25", "--units", "1..3", "--why"),
+    (*FITS, "--yearly-kwh", "9000"),
+    (*FITS, "-i", "viola 5", "--by-count", "--energy-price", "0.2", "--module-price", "90"),
+    ("sheet", "find", "cello"),
+    ("sheet", "find", "klassik"),
+    ("sheet", "show", "old faithful 20"),
+    ("sheet", "show", "klassik 270p"),
+    ("site", "list"),
+    ("site", "show", "rimefell"),
+    ("site", "add", "Quay", "--low", "-20", "--high", "38", "--weather", str(Path(pvlib.__file__).parent / "data" / "723170TYA.CSV")),
+    ("site", "drop", "rimefell"),
+]
+
+#: Keys that are names of fields, which docs/file-forms.md lists, or of records.
+FIELDS = {*specs(Module), *specs(Inverter), *specs(Site)}
+
+
+@pytest.fixture(scope="module")
+def demo_catalog(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    from cli.main import run
+
+    path = tmp_path_factory.mktemp("demo") / "demo.sqlite"
+    assert run(["demo", "--keep", str(path)]) == 0
+    return path
+
+
+@pytest.mark.parametrize("words", SHOWN, ids=lambda words: " ".join(words[:2]))
+def test_every_field_of_a_document_is_described(ferrule, demo_catalog: Path, tmp_path: Path, words):
+    shutil.copy(demo_catalog, tmp_path / "small.sqlite")
+    ran = ferrule(*words, "--json")
+    assert ran.status == 0, ran.err
+    document = json.loads(ran.out)
+    described = set(re.findall(r"`([a-z_0-9]+)`", section(document["schema"])))
+    wanted = {key for key in keys(document) if not re.fullmatch(r"[mi]\d+", key)}
+    if not document["schema"].startswith("ferrule.fit/"):
+        wanted -= FIELDS
+    assert wanted - described - {"schema"} == set()
+
+
+def test_every_schema_has_a_section():
+    names = set()
+    for path in (ROOT / "cli").glob("*.py"):
+        names |= set(re.findall(r"[\"'](ferrule\.[a-z.]+/\d+)[\"']", path.read_text(encoding="utf-8")))
+    assert "ferrule.fit/1" in names
+    assert [name for name in sorted(names) if f"## {name}\n" not in TEXT] == []
+
+
+def section(schema: str) -> str:
+    """What the page says of a schema."""
+    return TEXT.split(f"## {schema}\n", 1)[1].split("\n## ", 1)[0]
+
+
+def keys(document: Any) -> Iterator[str]:
+    """All keys of a document, at any depth."""
+    if isinstance(document, dict):
+        for key, value in document.items():
+            yield key
+            yield from keys(value)
+    elif isinstance(document, list):
+        for value in document:
+            yield from keys(value)
