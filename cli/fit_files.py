@@ -20,7 +20,7 @@ if TYPE_CHECKING:
     from matcher.fit import Fit
     from matcher.options import Options
 
-FORMS = (".csv", ".json", ".xlsx", ".html")
+FORMS = (".csv", ".json", ".xlsx", ".html", ".parquet")
 
 
 def write(
@@ -37,8 +37,14 @@ def write(
     form = path.suffix.lower()
     if form not in FORMS:
         raise CatalogError(f"--out {out}: the ending decides the form, {', '.join(FORMS[:-1])} or {FORMS[-1]}")
-    with replacing(path, binary=form == ".xlsx") as stream:
-        if form == ".xlsx":
+    if form == ".parquet":
+        from cli import parquet
+
+        parquet.required(out)
+    with replacing(path, binary=form in (".xlsx", ".parquet")) as stream:
+        if form == ".parquet":
+            parquet.write_fit(fit, stream)
+        elif form == ".xlsx":
             from cli.workbook import write_workbook
 
             write_workbook(fit, stream, year, with_checks=with_checks, why=why)

@@ -24,12 +24,13 @@ app = typer.Typer(
 
 
 def _register() -> None:
-    from cli import demo, fit, sheet, site, vet
+    from cli import demo, fit, sheet, site, sweep, vet
 
     app.command("fit")(fit.fit)
     app.command("vet")(vet.vet)
     app.add_typer(sheet.app, name="sheet")
     app.add_typer(site.app, name="site")
+    app.command("sweep")(sweep.sweep)
     app.command("demo")(demo.demo)
 
 
