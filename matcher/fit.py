@@ -173,13 +173,16 @@ class Fit:
         missed = []
         for k in np.flatnonzero(~self.found):
             m, i = (0, int(k)) if self.lists_inverters else (int(k), 0)
-            reason = self.points.reasons[m]
-            if reason is not None:
-                missed.append((int(k), Rejection((), f"cannot be matched: {reason}", np.inf)))
-                continue
-            space = free_space(self.search, m, i, UNLIMITED)
-            missed.append((int(k), rejection(self.pair(m, i), space, self.window(m), self.search.asked(m, i))))
+            missed.append((int(k), self.rejection(m, i)))
         return sorted(missed, key=lambda entry: entry[1].distance)
+
+    def rejection(self, m: int, i: int) -> Rejection:
+        """Why a pair has no option."""
+        reason = self.points.reasons[m]
+        if reason is not None:
+            return Rejection((), f"cannot be matched: {reason}", np.inf)
+        space = free_space(self.search, m, i, UNLIMITED)
+        return rejection(self.pair(m, i), space, self.window(m), self.search.asked(m, i))
 
     @cached_property
     def _windows(self) -> dict[int, ClimateWindow]:
@@ -247,7 +250,7 @@ def fit(
         raise MatcherError(f"{modules[0].name} cannot be matched: {points.reasons[0]}")
     search = Search(tuple(modules), InverterColumns.of(inverters), request, points, year, shelf)
     if request.strings is not None:
-        table, arrangements, lazy = *with_strings(search, request.strings), []
+        table, arrangements, lazy = *with_strings(search, request.kinds), []
     elif request.several:
         table, arrangements, lazy = *on_several_units(search), []
     else:
