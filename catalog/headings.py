@@ -73,7 +73,9 @@ def meaning(heading: str, kind: str) -> Meaning:
         return _judged(found, unit, True, "")
     found = words.likely[kind].get(tokens)
     if found:
-        return _judged(found, unit, False, "may mean something else")
+        # Only a module's power at STC is in watts peak.
+        peak = found == "pmax_w" and re.search(r"\bk?wp\b", heading.casefold()) is not None
+        return _judged(found, unit, peak, "" if peak else "may mean something else")
     if tokens & words.other:
         return Meaning(None, unit, False, "names other conditions")
     return _near(tokens, unit, kind, words)

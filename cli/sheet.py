@@ -4,9 +4,14 @@ from __future__ import annotations
 
 import typer
 
-from cli import sheet_find, sheet_load, sheet_show
+from cli import sheet_amend, sheet_enter, sheet_export, sheet_find, sheet_history, sheet_load, sheet_show
 
-app = typer.Typer(no_args_is_help=True, help="The datasheets that are kept: load, find, show.")
+app = typer.Typer(no_args_is_help=True, help="The datasheets that are kept: load, enter, find, show, amend, export, history.")
 app.command("load")(sheet_load.load)
 app.command("find")(sheet_find.find)
 app.command("show")(sheet_show.show)
+app.command("amend")(sheet_amend.amend)
+app.command("history")(sheet_history.history)
+app.command("undo")(sheet_amend.undo)
+app.command("enter")(sheet_enter.enter)
+app.command("export")(sheet_export.export)

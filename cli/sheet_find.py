@@ -1,4 +1,4 @@
-"""``ferrule sheet find``: records by words of their names, with their key ratings."""
+"""``ferrule sheet find``: records by words of their names or by their values, with their key ratings."""
 
 from __future__ import annotations
 
@@ -7,11 +7,13 @@ from typing import TYPE_CHECKING, Annotated, Any
 
 import typer
 
+from catalog.errors import CatalogError
 from cli.kinds import KindOption, all_names, asked_kinds, of_kind
 from cli.opening import CatalogOption, open_catalog
 
 if TYPE_CHECKING:
     from catalog.records import Inverter, Module
+    from catalog.store import Catalog
     from cli.console import Column
 
 SCHEMA = "ferrule.find/1"
@@ -20,31 +22,43 @@ NOTHING_FOUND = 1
 
 def find(
     words: Annotated[
-        list[str],
+        list[str] | None,
         typer.Argument(
-            metavar="WORDS...",
+            metavar="[WORDS...]",
             help="Words of maker and model, in any order; the last may be unfinished.",
             show_default=False,
         ),
-    ],
+    ] = None,
+    where: Annotated[
+        str | None,
+        typer.Option(
+            metavar="CONDITION",
+            help='On values, such as "ac_power_w >= 5 kW and phases == 1"; also or, not, brackets, == unknown, ~ "text".',
+            show_default=False,
+        ),
+    ] = None,
     kind: KindOption = None,
     limit: Annotated[int, typer.Option(metavar="N", min=1, help="Records shown.")] = 20,
     as_json: Annotated[bool, typer.Option("--json", help="Print the result as a document.")] = False,
     catalog: CatalogOption = None,
 ) -> int:
-    """Find records by words of their names, the best first, with their key ratings.
+    """Find records by words of their names, by their values, or both, with their key ratings.
+
+    A value that no source states meets no comparison; ask for it with == unknown.
 
     Exit status: 0 something found, 1 nothing found, 2 bad input.
 
     Example: ferrule sheet find af6k 270
     """
     kinds = asked_kinds(kind)
-    query = " ".join(words)
+    query = " ".join(words or ())
+    if not query and where is None:
+        raise CatalogError("name words of a maker or model, or a condition with --where")
     with open_catalog(catalog) as opened:
-        from catalog.names import find as search
-
-        known = all_names(opened, kinds)
-        found = [(*known.records[c.id], c.score) for c in search(query, known.names, limit)]
+        if where is None:
+            found, total = _by_words(opened, query, kinds, limit), None
+        else:
+            found, total = _by_values(opened, query, where, kinds, limit)
         records = {
             (k, r.id): r
             for k in kinds
@@ -54,18 +68,50 @@ def find(
     if as_json:
         from cli.console import print_json
 
-        print_json({"schema": SCHEMA, "query": query, "found": [_entry(*hit) for hit in hits]})
+        document: dict[str, Any] = {"schema": SCHEMA, "query": query}
+        if where is not None:
+            document |= {"where": where, "total": total}
+        print_json(document | {"found": [_entry(*hit) for hit in hits]})
     elif hits:
-        _show(query, hits, limit)
+        _show(query, hits, limit, total)
     else:
         from cli.console import say
 
-        what = " or ".join(kinds)
-        say(f"No {what} has a name like {query!r}.")
+        asked = [f"has a name like {query!r}"] if query else []
+        asked += [f"is known to meet {where!r}"] if where is not None else []
+        say(f"No {' or '.join(kinds)} {' and '.join(asked)}.")
     return 0 if hits else NOTHING_FOUND
 
 
-def _show(query: str, hits: Sequence[tuple[str, Module | Inverter, float]], limit: int) -> None:
+def _by_words(catalog: Catalog, query: str, kinds: Sequence[str], limit: int) -> list[tuple[str, int, float]]:
+    """Kind, id and score of the records whose names are most like the words."""
+    from catalog.names import find as search
+
+    known = all_names(catalog, kinds)
+    return [(*known.records[c.id], c.score) for c in search(query, known.names, limit)]
+
+
+def _by_values(
+    catalog: Catalog, query: str, where: str, kinds: Sequence[str], limit: int
+) -> tuple[list[tuple[str, int, float | None]], int]:
+    """Kind, id and score of the first records that meet a condition (and are named so), and how many there are."""
+    from catalog.names import Named
+    from catalog.names import find as search
+    from catalog.where import condition, kinds_of
+
+    met = [(kind, id_) for kind in kinds_of(where, kinds) for id_ in catalog.matching(kind, condition(where, kind))]
+    if not query:
+        return [(*record, None) for record in met[:limit]], len(met)
+    wanted = set(met)
+    known = all_names(catalog, kinds)
+    names = [Named(n.id, n.maker, n.model) for n in known.names if known.records[n.id] in wanted]
+    found = search(query, names, len(names)) if names else []
+    return [(*known.records[c.id], c.score) for c in found[:limit]], len(found)
+
+
+def _show(
+    query: str, hits: Sequence[tuple[str, Module | Inverter, float | None]], limit: int, total: int | None
+) -> None:
     from catalog.namekeys import compact
     from cli.console import print_table, say
 
@@ -78,7 +124,9 @@ def _show(query: str, hits: Sequence[tuple[str, Module | Inverter, float]], limi
         columns = _COLUMNS[kind]()
         records = [r for k, r, _ in hits if k == kind]
         print_table([c for c, _ in columns], [[text(r) for _, text in columns] for r in records])
-    if len(hits) == limit:
+    if total is not None:
+        say(f"{total:,} in all." if total <= limit else f"The first {limit} of {total:,}; --limit N shows more.")
+    elif len(hits) == limit:
         say(f"The first {limit}; more words or --limit N show others.")
 
 
@@ -144,7 +192,7 @@ _RATINGS = {
 }
 
 
-def _entry(kind: str, record: Module | Inverter, score: float) -> dict[str, Any]:
+def _entry(kind: str, record: Module | Inverter, score: float | None) -> dict[str, Any]:
     entry = {"kind": kind, "id": record.id, "maker": record.maker, "model": record.model, "score": score}
     entry |= {name: getattr(record, name) for name in _RATINGS[kind]}
     if kind == "inverter":

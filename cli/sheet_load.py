@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import time
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
@@ -11,6 +11,8 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from catalog.errors import CatalogError
+from cli.columns import Columns, pairs
+from cli.kinds import asked_kinds
 from cli.opening import CatalogOption, location, open_catalog
 
 if TYPE_CHECKING:
@@ -28,7 +30,7 @@ def load(
         list[str],
         typer.Argument(
             metavar="cec|FILE...",
-            help="The public CEC tables, or files of datasheets (.csv, .toml).",
+            help="The public CEC tables, or files of datasheets (.csv, .xlsx, .toml, .json of Orange Button).",
             show_default=False,
         ),
     ],
@@ -45,6 +47,26 @@ def load(
             help="With cec: this table of inverters. With one of the two options, only that table is loaded.",
         ),
     ] = None,
+    kind: Annotated[
+        str | None, typer.Option("--kind", metavar="KIND", help="What the rows are, where a table does not tell.")
+    ] = None,
+    columns: Annotated[
+        list[str] | None,
+        typer.Option(
+            "--map",
+            metavar="HEADING=FIELD",
+            help='What a column is: "Power (W)=pmax_w", "Tk=voc_coef_pct in mV/K"; no field leaves it out.',
+        ),
+    ] = None,
+    given: Annotated[
+        list[str] | None,
+        typer.Option(
+            "--set",
+            metavar="FIELD=VALUE",
+            help="A value for all records of the files that state none, such as bifacial=no; it counts as entered.",
+        ),
+    ] = None,
+    yes: Annotated[bool, typer.Option("--yes", help="Accept what the columns seem to be.")] = False,
     catalog: CatalogOption = None,
 ) -> None:
     """Load the public tables or your own datasheets: all or nothing, and safe to repeat.
@@ -52,13 +74,19 @@ def load(
     What is loaded again and has not changed stays as it is; what has changed becomes a new revision, and
     values that you amended yourself are kept. The catalog is made where there is none.
 
+    Tables may have headings as people write them, in units as people use them. What they are taken for is
+    shown; what is not sure is asked for, or accepted with --yes, and kept for the next table like it.
+
     Example: ferrule sheet load cec
     """
     began = time.perf_counter()
-    with _progress() as tell:
-        found = _read(what, modules, inverters)
-        with open_catalog(catalog, create=True) as opened:
-            report = opened.load(found.modules, found.inverters, tell)
+    settled = Columns(catalog, pairs(columns or (), "--map", "Power (W)=pmax_w"), yes)
+    values = pairs(given or (), "--set", "bifacial=no")
+    (kind,) = asked_kinds(kind) if kind else (None,)
+    found = _read(what, modules, inverters, settled, kind, values)
+    with _progress() as tell, open_catalog(catalog, create=True) as opened:
+        report = opened.load(found.modules, found.inverters, tell)
+        settled.keep(opened)
     from cli.console import note, say
 
     for line in found.notes[:_REMARKS]:
@@ -77,7 +105,14 @@ def _counted(number: int, what: str) -> str:
     return f"{number:,} {what}{'' if number == 1 else 's'}"
 
 
-def _read(what: list[str], modules: Path | None, inverters: Path | None) -> SheetFile:
+def _read(
+    what: list[str],
+    modules: Path | None,
+    inverters: Path | None,
+    columns: Columns,
+    kind: str | None,
+    given: Mapping[str, str],
+) -> SheetFile:
     from catalog.sheetfiles import SheetFile
 
     if PUBLIC_TABLES in what:
@@ -91,7 +126,8 @@ def _read(what: list[str], modules: Path | None, inverters: Path | None) -> Shee
         raise CatalogError(
             f"{option} belongs to 'ferrule sheet load {PUBLIC_TABLES}'; name datasheet files without it"
         )
-    files = [_file(Path(name)) for name in what]
+    files = [_file(Path(name), columns, kind, given) for name in what]
+    columns.check_used()
     return SheetFile(
         [record for file in files for record in file.modules],
         [record for file in files for record in file.inverters],
@@ -112,7 +148,7 @@ def _public(modules: Path | None, inverters: Path | None) -> SheetFile:
     )
 
 
-def _file(path: Path) -> SheetFile:
+def _file(path: Path, columns: Columns, kind_of_rows: str | None, given: Mapping[str, str]) -> SheetFile:
     """A file in one of the project's forms, or a CEC table; its content tells which."""
     from catalog.cec import cec_kind
     from catalog.sheetfiles import read_sheets
@@ -123,7 +159,7 @@ def _file(path: Path) -> SheetFile:
             raise CatalogError(
                 f"{path}: no such file; write '{PUBLIC_TABLES}' for the public tables, or the path of a file"
             )
-        return read_sheets(path)
+        return read_sheets(path, settle=columns.settle, kind=kind_of_rows, given=given)
     return _public(path, None) if kind == "module" else _public(None, path)
 
 

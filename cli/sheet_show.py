@@ -50,7 +50,7 @@ def show(
 
         print_json(document(found, record, current, remarks))
     else:
-        _print(found, record, current, remarks)
+        print_record(found, record, current, remarks)
 
 
 def document(
@@ -106,7 +106,8 @@ def _source(record: Module | Inverter, name: str | None) -> dict[str, str]:
     return {"name": source.name, "revision": source.revision}
 
 
-def _print(kind: str, record: Module | Inverter, current: int, remarks: Sequence[Finding]) -> None:
+def print_record(kind: str, record: Module | Inverter, current: int, remarks: Sequence[Finding]) -> None:
+    """Print a record whole, with what is odd about it."""
     from cli.console import Column, print_table, say
 
     revision = f"revision {record.revision}"

@@ -139,7 +139,7 @@ def test_load_keeps_what_is_odd_and_says_so(ferrule, sheet):
         (("nowhere.toml",), "nowhere.toml: cannot be read"),
         (("cecc",), "'cec' for the public tables"),
         (("cec", "--modules", "nowhere.csv"), "nowhere.csv"),
-        (("pyproject.docx",), ".csv or .toml"),
+        (("pyproject.docx",), ".xlsx, .toml or .json"),
     ],
 )
 def test_load_refuses_in_one_line(ferrule, tmp_path, arguments, said):

@@ -1,0 +1,130 @@
+"""What the columns of someone's table are: shown, confirmed or corrected, and kept for the next such table."""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+
+from catalog.column_map import ColumnMap, MappedColumn
+from catalog.errors import CatalogError
+from cli.opening import open_catalog
+
+_KEY = "said/columns/"
+
+
+def pairs(texts: Sequence[str], option: str, example: str) -> dict[str, str]:
+    """``NAME=VALUE`` texts as a mapping.
+
+    Raises
+    ------
+    CatalogError
+        Naming the text without an equals sign.
+    """
+    found = {}
+    for text in texts:
+        name, mark, value = text.rpartition("=") if option == "--map" else text.partition("=")
+        if not mark or not name.strip():
+            raise CatalogError(f"{option} {text!r}: write it like {option} \"{example}\"")
+        found[name.strip()] = value.strip()
+    return found
+
+
+@dataclass(slots=True)
+class Columns:
+    """Settles the columns of tables while files are read (see `catalog.sheet_tables`).
+
+    ``said`` are fields by heading from the command line; ``yes`` accepts what is doubtful.
+    """
+
+    catalog: str | None
+    said: Mapping[str, str]
+    yes: bool
+    settled: list[ColumnMap] = field(default_factory=list)
+    _used: set[str] = field(default_factory=set)
+
+    def settle(self, proposed: ColumnMap) -> ColumnMap:
+        """The map to use instead of the one that is proposed.
+
+        Raises
+        ------
+        CatalogError
+            Where columns are doubtful and nobody is there to ask.
+        """
+        found, before = self._kept(proposed) or proposed, "as kept from a table with these headings"
+        headings = {" ".join(c.heading.casefold().split()) for c in found.columns}
+        own = {h: name for h, name in self.said.items() if " ".join(h.casefold().split()) in headings}
+        self._used |= set(own)
+        remark = "" if found is proposed else f", {before}"
+        if own:
+            found = found.with_fields(own)
+        self._show(found, remark)
+        if found.doubtful:
+            found = found.confirmed() if self.yes else self._asked(found)
+            self.settled.append(found)
+        elif own:
+            self.settled.append(found)
+        return found
+
+    def check_used(self) -> None:
+        """Refuse headings from the command line that no table has.
+
+        Raises
+        ------
+        CatalogError
+        """
+        unused = [heading for heading in self.said if heading not in self._used]
+        if unused:
+            raise CatalogError(
+                f"--map {unused[0]!r}: no table with headings of its own has such a column; write the heading as the"
+                " file has it"
+            )
+
+    def keep(self, opened: object) -> int:
+        """Keep in the catalog what was confirmed or said; returns how many tables."""
+        return sum(opened.keep(_KEY + found.signature, found.to_bytes()) for found in self.settled)  # type: ignore[attr-defined]
+
+    def _kept(self, proposed: ColumnMap) -> ColumnMap | None:
+        try:
+            with open_catalog(self.catalog, readonly=True) as opened:
+                data = opened.kept(_KEY + proposed.signature)
+        except CatalogError:
+            # No catalog yet: the load makes it.
+            return None
+        found = ColumnMap.from_bytes(data) if data else None
+        same = found is not None and [c.heading.casefold() for c in found.columns] == [c.heading.casefold() for c in proposed.columns]
+        return found if same else None
+
+    def _show(self, found: ColumnMap, remark: str) -> None:
+        columns = [c for c in found.columns if c.heading]
+        width = min(max((len(c.heading) for c in columns), default=0), 44)
+        print(f"Columns, one {found.kind} a row{remark}:", file=sys.stderr)
+        for column in columns:
+            print(f"  {column.heading:<{width}}  {_meant(column)}", file=sys.stderr)
+
+    def _asked(self, found: ColumnMap) -> ColumnMap:
+        """The map with what a person says of every doubtful column."""
+        if not (sys.stdin.isatty() and sys.stderr.isatty()):
+            listed = "; ".join(f"{c.heading!r} = {c.field}? ({c.remark})" for c in found.doubtful)
+            first = found.doubtful[0]
+            raise CatalogError(
+                f"not sure of {len(found.doubtful)} column{'s' if len(found.doubtful) > 1 else ''}: {listed}. --yes accepts"
+                f" them as shown, --map \"{first.heading}={first.field}\" says one, --map \"{first.heading}=\" leaves it out"
+            )
+        said = {}
+        for column in found.doubtful:
+            print(f"{column.heading}: {_meant(column)} -- Enter accepts, n leaves it out, or name a field: ",
+                  end="", file=sys.stderr, flush=True)  # fmt: skip
+            answer = sys.stdin.readline()
+            if not answer:
+                raise CatalogError("left before the columns were confirmed; nothing was loaded")
+            answer = answer.strip()
+            if answer.casefold() in ("n", "no"):
+                said[column.heading] = ""
+            elif answer and answer.casefold() not in ("y", "yes"):
+                said[column.heading] = answer
+        return found.with_fields(said).confirmed()
+
+
+def _meant(column: MappedColumn) -> str:
+    return str(column).removeprefix(f"{column.heading}: ")
