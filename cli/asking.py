@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from catalog.errors import CatalogError
 from catalog.records import Site
-from cli.ranges import number_range, strings_of, whole_range
+from cli.ranges import array_of, number_range, whole_range
 from matcher.fit import Request
 from matcher.order import Order
 from matcher.rules import RULE_SETS, RuleSet
@@ -50,13 +50,15 @@ def request_of(
         raise CatalogError(f"--clip-cap {clip_cap:g}: a clipping loss is 0 to 100 %")
     if by not in list(Order):
         raise CatalogError(f"--by {by}: choose one of {', '.join(Order)}")
+    array, faces = (None, ()) if strings is None else array_of(strings)
     return Request(
         site=site,
         rules=rule_set(rules),
         ratio=number_range(ratio, "--ratio"),
         counts=None if count is None else whole_range(count, "--count"),
         units=whole_range(units, "--units"),
-        strings=None if strings is None else strings_of(strings),
+        strings=array,
+        faces=faces,
         clip_cap_pct=clip_cap,
         combiner=combiner,
         order=Order(by),

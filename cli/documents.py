@@ -85,7 +85,7 @@ def option_entry(fit: Fit, option: Option, with_checks: bool) -> dict[str, Any]:
         "inverter": inverter_key(fit, option.inverter),
         "units": option.units,
         "modules": option.modules,
-        "arrangement": _arrangement(option.arrangement),
+        "arrangement": _arrangement(fit, option.arrangement),
         "label": option.label,
         "dc_ac_ratio": option.dc_ac_ratio,
         "clipping_loss_pct": option.clipping_loss_pct,
@@ -96,7 +96,7 @@ def option_entry(fit: Fit, option: Option, with_checks: bool) -> dict[str, Any]:
     if len(option.wired) > 1:
         # Unlike units: `arrangement` is that of the first, `split` holds all.
         entry["split"] = [
-            {"units": u.copies, "modules": u.modules, "arrangement": _arrangement(u.trackers), "label": u.label}
+            {"units": u.copies, "modules": u.modules, "arrangement": _arrangement(fit, u.trackers), "label": u.label}
             for u in option.wired
         ]
     if with_checks:
@@ -126,8 +126,14 @@ def option_entry(fit: Fit, option: Option, with_checks: bool) -> dict[str, Any]:
     return entry
 
 
-def _arrangement(trackers: tuple[Tracker, ...]) -> list[dict[str, int]]:
-    return [{"inputs": t.inputs, "strings": t.strings, "in_series": t.in_series} for t in trackers]
+def _arrangement(fit: Fit, trackers: tuple[Tracker, ...]) -> list[dict[str, int | float]]:
+    """Trackers in use; with the way their strings face where parts of the array face different ways."""
+    faces = fit.request.different_faces
+    return [
+        {"inputs": t.inputs, "strings": t.strings, "in_series": t.in_series}
+        | ({"azimuth": faces[t.face - 1][0], "tilt": faces[t.face - 1][1]} if faces else {})
+        for t in trackers
+    ]
 
 
 def totals_entry(fit: Fit) -> dict[str, int]:

@@ -34,7 +34,7 @@ def fit(
     inverter: Annotated[str | None, typer.Option("--inverter", "-i", metavar="NAME", help="The inverter on hand.")] = None,
     count: Annotated[str | None, typer.Option(metavar="N", help="Modules on hand: 60, or a range 56..64.")] = None,
     units: Annotated[str, typer.Option(metavar="K", help="Inverters of one type that share them: 2, or a range 1..4.")] = "1",
-    strings: Annotated[str | None, typer.Option(metavar="LIST", help="The array as strings, hosted exactly: 2x11,1x12 is 2 strings of 11 modules and 1 of 12.")] = None,
+    strings: Annotated[str | None, typer.Option(metavar="LIST", help="The array as strings, hosted exactly: 2x11,1x12 is 2 strings of 11 modules and 1 of 12; 2x11@170/30,1x12@260/30 with azimuth/tilt of each part.")] = None,
     ratio: Annotated[str, typer.Option(metavar="LOW..HIGH", help="Window of DC/AC ratios.")] = "0.8..1.5",
     clip_cap: Annotated[float, typer.Option(metavar="PCT", help="Clipping loss up to which a higher DC/AC ratio is better [%].")] = 2.0,
     rules: Annotated[str, typer.Option(metavar="NAME", help="Rule set: iec-62548, nec-690, or a file of your own, .toml.")] = "iec-62548",
@@ -101,7 +101,7 @@ def fit(
         stock = None if lots is None else on_shelf(modules, inverters, request, lots, bounded=in_stock)
         if stock is not None:
             modules, inverters = stock.modules, stock.inverters
-        year = _year(opened, place, modules, inverters, energy)
+        year = _year(opened, place, modules, inverters, energy, request.different_faces)
 
     from cli import fit_files, fit_screen
     from cli.fit_growth import add_growth, show_growth
@@ -139,13 +139,20 @@ def fit(
 
 
 def _year(
-    catalog: Catalog, site: Site, modules: list[Module], inverters: list[Inverter], energy: EnergyWanted | None
+    catalog: Catalog,
+    site: Site,
+    modules: list[Module],
+    inverters: list[Inverter],
+    energy: EnergyWanted | None,
+    faces: tuple[tuple[float, float], ...],
 ) -> SiteYear:
-    """The year that the question needs: of the module, of all modules, or made of sun hours."""
+    """The year that the question needs: of the module, of its faces, of all modules, or made of sun hours."""
     from cli.wanted import sun_hours_site_year
-    from cli.years import has_weather, site_year, site_years
+    from cli.years import facing_year, has_weather, site_year, site_years
 
     if len(modules) == 1:
+        if faces:
+            return facing_year(site, modules[0], faces)
         if energy is not None and energy.sun_hours is not None and not has_weather(site):
             return sun_hours_site_year(modules[0], site, energy.sun_hours)
         limited = any(g.max_current_a is not None for i in inverters for g in i.inputs)

@@ -3,19 +3,20 @@
 from __future__ import annotations
 
 import sys
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from itertools import groupby
 from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
 from cli.facts import assumptions, at_least, confirm_words, holds_from, holds_to
-from matcher.checks import Check, Confirm, Verdict
+from matcher.checks import Check, Confirm, Verdict, face_mark
 
 if TYPE_CHECKING:
     from cli.years import SiteYear
     from matcher.fit import Fit, Option
     from matcher.options import Unit
+    from matcher.request import Request
 
 
 def on_terminal() -> bool:
@@ -94,10 +95,20 @@ def question(fit: Fit) -> str:
     if r.counts is not None:
         count = f", {_span(r.counts)} modules"
     if r.strings is not None:
-        count = ", exactly the strings " + ", ".join(f"{s}x{n}" for n, s in r.strings)
+        count = ", exactly the strings " + ", ".join(_strings(r))
     if r.several:
         count += f" on {_span(r.units)} units"
     return f"{asked} at {where}? DC/AC {low:.2f} to {high:.2f}{count}, rules {r.rules.name}."
+
+
+def _strings(request: Request) -> Iterator[str]:
+    """The strings of a request, with a letter and azimuth/tilt for each way they face."""
+    faces = request.faces or (None,) * len(request.strings or ())
+    for (length, count), face in zip(request.strings or (), faces, strict=True):
+        where = ""
+        if face is not None:
+            where = f"{face_mark(request.different_faces.index(face) + 1)} ({face[0]:g}/{face[1]:g} deg)"
+        yield f"{count}x{length}{where}"
 
 
 def _span(counts: tuple[int, int]) -> str:

@@ -32,17 +32,51 @@ def whole_range(text: str, option: str) -> tuple[int, int]:
 
 
 def strings_of(text: str) -> tuple[tuple[int, int], ...]:
-    """An array written as strings, ``2x11,1x12``: (modules in series, strings) pairs.
+    """An array written as strings that all face the same way, ``2x11,1x12``: (modules in series, strings) pairs.
 
     Raises
     ------
     CatalogError
         Where a part is not of this form.
     """
-    found = []
+    strings, faces = array_of(text)
+    if faces:
+        raise CatalogError(f"--strings {text}: which way strings face plays no part here; leave @ and what follows away")
+    return strings
+
+
+def array_of(text: str) -> tuple[tuple[tuple[int, int], ...], tuple[tuple[float, float], ...]]:
+    """An array written as strings, ``2x11,1x12``, with the way each part faces, ``2x11@170/30,1x12@260/30``.
+
+    Returns
+    -------
+    (modules in series, strings) of each part, and azimuth and tilt [deg] of each, or nothing where none is given.
+
+    Raises
+    ------
+    CatalogError
+        Where a part is not of this form, or only some parts say how they face.
+    """
+    found, faces = [], []
     for part in text.replace(" ", "").split(","):
-        strings, x, length = part.lower().partition("x")
+        wired, at, facing = part.lower().partition("@")
+        strings, x, length = wired.partition("x")
         if not (x and strings.isdigit() and length.isdigit() and int(strings) > 0 and int(length) > 0):
             raise CatalogError(f"--strings {text}: write strings x modules in series, such as 2x11,1x12")
         found.append((int(length), int(strings)))
-    return tuple(found)
+        if at:
+            faces.append(_face(facing, text))
+    if faces and len(faces) != len(found):
+        raise CatalogError(f"--strings {text}: say of every part which way it faces, or of none")
+    return tuple(found), tuple(faces)
+
+
+def _face(text: str, whole: str) -> tuple[float, float]:
+    azimuth, slash, tilt = text.partition("/")
+    try:
+        face = (float(azimuth), float(tilt))
+    except ValueError:
+        face = (-1.0, -1.0)
+    if not slash or not (0 <= face[0] <= 360 and 0 <= face[1] <= 90):
+        raise CatalogError(f"--strings {whole}: after @ write azimuth/tilt in degrees, such as 2x11@170/30")
+    return face

@@ -7,7 +7,7 @@ import io
 import json
 import os
 from collections.abc import Mapping, Sequence
-from dataclasses import astuple, dataclass
+from dataclasses import astuple, dataclass, replace
 from typing import TYPE_CHECKING
 
 from catalog.errors import CatalogError
@@ -46,6 +46,16 @@ class SiteYear:
     notes: tuple[str, ...] = ()
     why_not: str | None = None
     irradiation_kwh_m2: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class SitePlane:
+    """The year of a site's array, where it comes from, and what must be said about it; or why there is none."""
+
+    plane: PlaneYear | None
+    weather: str | None = None
+    notes: tuple[str, ...] = ()
+    why_not: str | None = None
 
 
 def site_year(
@@ -88,6 +98,33 @@ def site_year(
     return SiteYear(ModuleYear(**arrays), weather, notes, irradiation_kwh_m2=irradiation)
 
 
+def facing_year(
+    site: Site, module: Module, faces: Sequence[tuple[float, float]], dc_loss_pct: float = DC_LOSS_PCT
+) -> SiteYear:
+    """Year of one module on several planes, given by azimuth and tilt [deg], interval by interval.
+
+    The sun comes to the parts of an array at different times, so their year is not condensed. Raises as
+    `site_year` does.
+    """
+    if not has_weather(site):
+        return SiteYear(None, why_not=NO_PLACE)
+    from matcher.electrical import diode_parameters
+    from matcher.moduleyear import facing_years, plane_year
+
+    diode = diode_parameters(module)
+    if diode is None:
+        return SiteYear(None, why_not=f"the coefficients of {module.name} do not allow a model of its power")
+    weather = weather_of(site)
+    planes = [plane_year(weather, tilt, azimuth) for azimuth, tilt in faces]
+    _, label, notes = site_plane(replace(site, azimuth=faces[0][0], tilt=faces[0][1]), weather)
+    more = tuple(
+        f"Another part of the array faces {azimuth:g} deg at {tilt:g} deg tilt:"
+        f" {plane.irradiation_kwh_m2:,.0f} kWh/m2 a year."
+        for (azimuth, tilt), plane in zip(faces[1:], planes[1:], strict=True)
+    )
+    return SiteYear(facing_years(diode, planes, dc_loss_pct), label, notes[:1] + more + notes[1:])
+
+
 def site_years(
     catalog: Catalog, site: Site, modules: Sequence[Module], dc_loss_pct: float = DC_LOSS_PCT
 ) -> SiteYear:
@@ -97,10 +134,21 @@ def site_years(
     """
     if not has_weather(site):
         return SiteYear(None, why_not=NO_PLACE)
+    from matcher.sweep import years_of
+
+    found = condensed_plane(catalog, site)
+    assert found.plane is not None
+    year = years_of(modules, found.plane, dc_loss_pct)
+    return SiteYear(year, found.weather, found.notes, irradiation_kwh_m2=found.plane.irradiation_kwh_m2)
+
+
+def condensed_plane(catalog: Catalog, site: Site) -> SitePlane:
+    """Condensed year of a site's array, whatever the modules; raises as `site_year` does."""
+    if not has_weather(site):
+        return SitePlane(None, why_not=NO_PLACE)
     import numpy as np
 
-    from matcher.electrical import diodes_of
-    from matcher.moduleyear import PlaneYear, condense_plane, module_years
+    from matcher.moduleyear import PlaneYear, condense_plane
 
     key = _key("plane", site)
     kept = catalog.kept(key)
@@ -111,12 +159,7 @@ def site_years(
         condensed = condense_plane(whole)
         arrays = {"irradiance": condensed.irradiance, "cell_c": condensed.cell_c, "hours": condensed.hours}
         catalog.keep(key, _packed(arrays, weather, notes))
-    plane = PlaneYear(**arrays, rows=np.empty(0, dtype=int))
-    year = module_years(diodes_of(modules), plane, dc_loss_pct)
-    # Without a model there is no power, which is not the same as none.
-    unknown = ~(year.power_w > 0).any(axis=1)
-    year.power_w[unknown] = np.nan
-    return SiteYear(year, weather, notes, irradiation_kwh_m2=plane.irradiation_kwh_m2)
+    return SitePlane(PlaneYear(**arrays, rows=np.empty(0, dtype=int)), weather, notes)
 
 
 def has_weather(site: Site) -> bool:
@@ -124,11 +167,11 @@ def has_weather(site: Site) -> bool:
     return site.weather is not None or site.lat is not None
 
 
-def site_plane(site: Site) -> tuple[PlaneYear, str, tuple[str, ...]]:
+def site_plane(site: Site, weather: Weather | None = None) -> tuple[PlaneYear, str, tuple[str, ...]]:
     """The site's year on its array, what it is called, and what must be said about it."""
     from matcher.moduleyear import plane_year
 
-    weather = weather_of(site)
+    weather = weather or weather_of(site)
     tilt, azimuth, assumed = plane_of(site, weather)
     plane = plane_year(weather, tilt, azimuth)
     label = "clear-sky year" if site.weather is None else f"{weather.kind} {os.path.basename(site.weather)}"

@@ -15,6 +15,10 @@ from math import prod
 
 import numpy as np
 
+#: A string length with the way it faces: ``face * FACE + length``. Strings that face different ways are
+#: different strings; face 0 is the plain length.
+FACE = 100_000
+
 #: Partial arrangements that are carried on at once: bounds memory, whatever the number of arrangements.
 BLOCK = 4096
 
@@ -115,7 +119,8 @@ class Space:
     """All arrangements of one module type on one inverter with ``fewest`` to ``most`` modules.
 
     String lengths run from ``shortest`` to ``longest``; those outside ``sure_from``..``sure_to`` leave a
-    voltage to confirm.
+    voltage to confirm. ``facing`` lists the lengths with their faces instead (see `FACE`), which only the
+    tally by strings can tell apart.
     """
 
     groups: tuple[Group, ...]
@@ -125,6 +130,7 @@ class Space:
     sure_to: int
     fewest: int
     most: int
+    facing: tuple[int, ...] = ()
 
     @cached_property
     def choices(self) -> tuple[Choices, ...]:
@@ -133,12 +139,14 @@ class Space:
 
     def _choices(self, group: Group) -> Choices:
         n, s = [], []
-        for length in range(self.shortest, min(self.longest, self.most) + 1):
-            for strings in range(1, min(group.max_strings, self.most // length) + 1):
+        lengths = self.facing or range(self.shortest, min(self.longest, self.most) + 1)
+        for length in lengths:
+            for strings in range(1, min(group.max_strings, self.most // (length % FACE)) + 1):
                 n.append(length)
                 s.append(strings)
         in_series, strings_ = np.array(n, dtype=np.int64), np.array(s, dtype=np.int64)
-        unsure = (in_series < self.sure_from) | (in_series > self.sure_to)
+        plain = in_series % FACE
+        unsure = (plain < self.sure_from) | (plain > self.sure_to)
         return Choices(in_series, strings_, unsure | group.to_confirm)
 
     @cached_property

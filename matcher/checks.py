@@ -24,18 +24,27 @@ class Verdict(StrEnum):
     NOTE = "note"
 
 
+def face_mark(face: int) -> str:
+    """Letter of a face, with a blank before it; nothing for 0."""
+    return f" {chr(ord('A') + face - 1)}" if face else ""
+
+
 @dataclass(frozen=True, slots=True)
 class Tracker:
-    """What one tracker carries: its group of inputs (index), strings, and modules in series."""
+    """What one tracker carries: its group of inputs (index), strings, modules in series, and which way they face.
+
+    ``face`` numbers the different faces of the request from 1; 0 where all strings face the same way.
+    """
 
     inputs: int
     strings: int
     in_series: int
+    face: int = 0
 
     @property
     def label(self) -> str:
-        """Like ``2x11``: 2 strings of 11 modules."""
-        return f"{self.strings}x{self.in_series}"
+        """Like ``2x11``: 2 strings of 11 modules; ``2x11 A`` where they are those that face the first way."""
+        return f"{self.strings}x{self.in_series}{face_mark(self.face)}"
 
 
 @dataclass(frozen=True, slots=True)

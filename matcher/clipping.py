@@ -117,42 +117,47 @@ def block_losses(
     row: int,
     max_current_a: np.ndarray,
     block: np.ndarray,
+    face: np.ndarray | None = None,
 ) -> Losses:
     """Losses of k arrangements on one inverter of several trackers.
 
     Parameters
     ----------
     year : ModuleYear
-        Arrays (classes,) of one module type.
+        Arrays (classes,) of one module type; (faces, hours) where parts of the array face different ways.
     row : int
         Which inverter of ``inverters``.
     max_current_a : float array, shape (trackers,)
         Current limit of each tracker, NaN where not stated.
     block : int array, shape (k, trackers, 2)
         Strings and modules in series on each tracker; 0, 0 where it is empty.
+    face : int array, shape (k, trackers), optional
+        Line of ``year`` of each tracker, where it has several; of no account where the tracker is empty.
     """
     k = len(block)
     if not has_model(inverters)[row]:
         return Losses.unknown(k)
     # Trackers that carry the same under the same limit are one kind; an arrangement is how many of each.
     limits = np.broadcast_to(np.nan_to_num(max_current_a, nan=np.inf), block.shape[:2])
-    flat = np.column_stack([limits.ravel(), block.reshape(-1, 2)])
+    faces = np.zeros(limits.size) if face is None else face.ravel().clip(min=0)
+    flat = np.column_stack([limits.ravel(), block.reshape(-1, 2), faces])
     kinds, index = np.unique(flat, axis=0, return_inverse=True)
     amounts = np.zeros((k, len(kinds)))
     np.add.at(amounts, (np.repeat(np.arange(k), block.shape[1]), index.ravel()), 1.0)
     used = kinds[:, 1] > 0
     kinds, amounts = kinds[used], amounts[:, used]
 
-    current, strings, length = (c[:, None] for c in kinds.T)
-    at = length * year.vmp_v
-    unheld = strings * length * year.power_w
+    current, strings, length = (c[:, None] for c in kinds.T[:3])
+    line = kinds[:, 3].astype(np.int64)
+    at = length * np.atleast_2d(year.vmp_v)[line]
+    unheld = strings * length * np.atleast_2d(year.power_w)[line]
     held = np.minimum(unheld, current * at)
     curve = parabola(inverters, np.full(len(kinds), row), at)
     start = _start_power(inverters, np.array([row]))[0]
     limit = inverters.ac_power_w[row]
     sums = np.empty((3, k))
     limited = bool((held < unheld).any())
-    step = max(1, 8 * CHUNK // len(year.power_w))
+    step = max(1, 8 * CHUNK // len(year.hours))
     for first in range(0, k, step):
         part = slice(first, first + step)
         ac = _multi_ac(amounts[part], unheld, curve, start)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, fields
 from typing import TYPE_CHECKING
 
@@ -170,6 +171,26 @@ def condense_plane(plane: PlaneYear, bound_pct: float = 0.004) -> PlaneYear:
     mean_t = np.bincount(label, hours * g * t) / np.bincount(label, hours * g)
     order = np.argsort(-mean_g, kind="stable")
     return PlaneYear(mean_g[order], mean_t[order], total[order], np.empty(0, dtype=int))
+
+
+def facing_years(params: SixParameters, planes: Sequence[PlaneYear], dc_loss_pct: float = 2.0) -> ModuleYear:
+    """One year of one module on several planes of the same weather, interval by interval.
+
+    Returns
+    -------
+    ModuleYear
+        ``power_w`` and ``vmp_v`` of shape (planes, n), ``hours`` of shape (n,): every interval in which one
+        of the planes has light.
+    """
+    import numpy as np
+
+    rows = np.unique(np.concatenate([plane.rows for plane in planes]))
+    power, vmp, hours = np.zeros((len(planes), rows.size)), np.zeros((len(planes), rows.size)), np.zeros(rows.size)
+    for k, plane in enumerate(planes):
+        year = module_year(params, plane, dc_loss_pct)
+        at = np.searchsorted(rows, plane.rows)
+        power[k, at], vmp[k, at], hours[at] = year.power_w, year.vmp_v, year.hours
+    return ModuleYear(power, vmp, hours)
 
 
 def module_years(params: SixParameters, plane: PlaneYear, dc_loss_pct: float = 2.0) -> ModuleYear:

@@ -16,9 +16,10 @@ class Options:
     """n options; arrays of shape (n,) unless said otherwise.
 
     ``module`` and ``inverter`` index the records of the search. ``to_confirm`` tells the verdict apart
-    (False: fits). Losses are NaN where they cannot be known. The last five have shape (n, trackers), with 0
+    (False: fits). Losses are NaN where they cannot be known. The last six have shape (n, trackers), with 0
     strings where a tracker is empty or there is none. With several units the trackers of each different
     unit stand one after the other: ``kind`` tells these apart, ``copies`` is how many are wired alike.
+    ``face`` numbers the faces of the request from 1; 0 where all strings face the same way.
     """
 
     module: np.ndarray
@@ -37,6 +38,7 @@ class Options:
     inputs: np.ndarray
     copies: np.ndarray
     kind: np.ndarray
+    face: np.ndarray
 
     def __len__(self) -> int:
         return len(self.module)
@@ -49,10 +51,10 @@ class Options:
         """The different units of option k, each with what its trackers in use carry."""
         found: dict[int, list[Tracker]] = {}
         copies: dict[int, int] = {}
-        columns = (self.kind[k], self.copies[k], self.inputs[k], self.strings[k], self.in_series[k])
-        for kind, times, group, s, n in zip(*(c.tolist() for c in columns), strict=True):
+        columns = (self.kind[k], self.copies[k], self.inputs[k], self.strings[k], self.in_series[k], self.face[k])
+        for kind, times, group, s, n, face in zip(*(c.tolist() for c in columns), strict=True):
             if s:
-                found.setdefault(kind, []).append(Tracker(group, s, n))
+                found.setdefault(kind, []).append(Tracker(group, s, n, face))
                 copies[kind] = times
         return tuple(Unit(copies[kind], tuple(trackers)) for kind, trackers in found.items())
 
@@ -95,6 +97,7 @@ def build(
     voc_cold_v: np.ndarray,
     voltage_limit_v: np.ndarray,
     losses: Losses,
+    face: np.ndarray | None = None,
 ) -> Options:
     """Options of one unit each, with the columns that follow from the others; arrays (n,) or (n, trackers)."""
     modules = (strings * in_series).sum(axis=1)
@@ -118,6 +121,7 @@ def build(
         inputs=inputs,
         copies=np.broadcast_to(np.ones(1, dtype=np.int32), strings.shape),
         kind=np.broadcast_to(np.zeros(1, dtype=np.int16), strings.shape),
+        face=np.broadcast_to(np.zeros(1, dtype=np.int16), strings.shape) if face is None else face,
     )
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from catalog.records import Site
+from matcher.arrangements import FACE
 from matcher.errors import MatcherError
 from matcher.order import Order
 from matcher.rules import DEFAULT_RULES, RuleSet
@@ -25,6 +26,8 @@ class Request:
         ``counts`` or ``strings``.
     strings
         An array given as strings, hosted exactly: (modules in series, number of such strings) pairs.
+    faces
+        Azimuth and tilt [deg] of each entry of ``strings``, where parts of the array face different ways.
     clip_cap_pct
         Clipping loss up to which a higher DC/AC ratio is better [%].
     combiner
@@ -41,6 +44,7 @@ class Request:
     counts: tuple[int, int] | None = None
     units: tuple[int, int] = (1, 1)
     strings: tuple[tuple[int, int], ...] | None = None
+    faces: tuple[tuple[float, float], ...] = ()
     clip_cap_pct: float = 2.0
     combiner: bool = False
     order: Order = Order.LEAST_INVERTER
@@ -60,6 +64,22 @@ class Request:
             )
         if self.strings is not None and self.counts is not None:
             raise MatcherError("strings say how many modules there are: leave the module count away")
+
+    @property
+    def kinds(self) -> tuple[tuple[int, int], ...]:
+        """Strings by length and face: (`matcher.arrangements.FACE` * face + modules in series, strings)."""
+        if not self.faces:
+            return self.strings or ()
+        known = self.different_faces
+        return tuple(
+            ((known.index(face) + 1) * FACE + length, count)
+            for (length, count), face in zip(self.strings or (), self.faces, strict=True)
+        )
+
+    @property
+    def different_faces(self) -> tuple[tuple[float, float], ...]:
+        """The faces, each once, in the order in which they are given."""
+        return tuple(dict.fromkeys(self.faces))
 
     @property
     def several(self) -> bool:

@@ -13,7 +13,7 @@ from functools import cached_property
 import numpy as np
 
 from catalog.records import Inverter, Module
-from matcher.arrangements import ByStrings, Group, Space
+from matcher.arrangements import FACE, ByStrings, Group, Space
 from matcher.bestfirst import SORTED_AT_ONCE, Key, best_first
 from matcher.clipping import Losses, block_losses, count_bounds
 from matcher.columns import InverterColumns, column
@@ -234,23 +234,28 @@ class Search:
     def table(self, m: int, i: int, block: np.ndarray, unsure: bool | np.ndarray) -> Options:
         """Options of a block of arrangements (k, trackers, 2) of one pair."""
         k = len(block)
+        face, in_series = np.divmod(block[:, :, 1], FACE)
+        block = np.stack([block[:, :, 0], in_series], axis=-1)
         inputs = self.inverters.records[i].inputs
         slots = np.repeat(np.arange(len(inputs)), [g.trackers for g in inputs])
         year = self.year_of(m)
         currents = column(inputs, "max_current_a")[slots]
-        losses = Losses.unknown(k) if year is None else block_losses(year, self.inverters, i, currents, block)
+        if year is None:
+            losses = Losses.unknown(k)
+        else:
+            losses = block_losses(year, self.inverters, i, currents, block, face - 1 if self.request.faces else None)
         limit = self.limits(np.array([m]), np.array([i])).voltage_limit_v[0]
         return build(
             np.full(k, m, dtype=np.int32), np.full(k, i, dtype=np.int32), np.broadcast_to(unsure, k).copy(),
             block[:, :, 0].astype(np.int32), block[:, :, 1].astype(np.int32),
             np.broadcast_to(slots.astype(np.int16), block.shape[:2]),
             pmax_w=self.points.pmax_w[m], ac_power_w=self.inverters.ac_power_w[i],
-            voc_cold_v=self.points.voc_cold_v[m], voltage_limit_v=limit, losses=losses,
+            voc_cold_v=self.points.voc_cold_v[m], voltage_limit_v=limit, losses=losses, face=face.astype(np.int16),
         )  # fmt: skip
 
     def year_of(self, m: int) -> ModuleYear | None:
-        """The year of one module; ``None`` where there is none."""
-        if self.year is None or self.year.power_w.ndim == 1:
+        """The year of one module, or of all its faces; ``None`` where there is none."""
+        if self.year is None or self.year.power_w.ndim == 1 or self.request.faces:
             return self.year
         hours = self.year.hours
         return replace(

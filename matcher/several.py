@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from functools import cache
 
 import numpy as np
 
@@ -13,58 +12,21 @@ from matcher.options import Options
 def even_split(reachable: Sequence[int], total: int, units: int) -> tuple[int, ...] | None:
     """Module counts of the units, falling, that add up to ``total`` and differ as little as can be.
 
-    Every count is one of ``reachable`` (ascending). ``None`` where they cannot add up to the total.
+    Every count is one of ``reachable``. ``None`` where they cannot add up to the total.
     """
-    counts = [c for c in reachable if c <= total]
+    known = {c for c in reachable if c <= total}
     whole, rest = divmod(total, units)
-    ideal = [whole + 1] * rest + [whole] * (units - rest)
-    if set(ideal) <= set(counts):
-        return tuple(ideal)
-    if not _sums(counts, total, units):
-        return None
-    known = set(counts)
-    lows = [c for c in counts if c * units <= total]
-    for spread in range(counts[-1] - counts[0] + 1):
-        for low in lows:
-            if (low + spread) * units < total or low + spread not in known:
-                continue
-            found = _sums([c for c in counts if low <= c <= low + spread], total, units)
-            if found:
-                return found
-    return None
-
-
-def _sums(counts: Sequence[int], total: int, units: int) -> tuple[int, ...] | None:
-    """Some ``units`` counts, with repetition, that add up to ``total``, falling; ``None`` where there are none.
-
-    Bit m of ``after[k]`` says whether k counts can add up to m.
-    """
-    if not counts:
-        return None
-    mask = (1 << (total + 1)) - 1
-    after = [1]
-    for _ in range(units):
-        reached = 0
-        for c in counts:
-            reached |= after[-1] << c
-        after.append(reached & mask)
-    if not after[units] >> total & 1:
-        return None
-    chosen, left = [], total
-    middle = total / units
-    for k in range(units, 0, -1):
-        for c in sorted(counts, key=lambda c: abs(c - middle)):
-            if c <= left and after[k - 1] >> (left - c) & 1:
-                chosen.append(c)
-                left -= c
-                break
-    return tuple(sorted(chosen, reverse=True))
+    ideal = (whole + 1,) * rest + (whole,) * (units - rest)
+    if known.issuperset(ideal):
+        return ideal
+    split = even_strings(frozenset((c,) for c in known), (1,), (total,), units)
+    return None if split is None else tuple(c for (c,) in split)
 
 
 def even_strings(
     hosted: frozenset[tuple[int, ...]], lengths: tuple[int, ...], wanted: tuple[int, ...], units: int
 ) -> tuple[tuple[int, ...], ...] | None:
-    """Strings of each length for each unit, that add up to ``wanted`` and whose module counts differ little.
+    """Strings of each length for each unit, that add up to ``wanted``; their module counts differ as little as can be.
 
     Parameters
     ----------
@@ -75,24 +37,81 @@ def even_strings(
     wanted
         Strings of each length that all units together host.
     """
+    shares = [s for s in hosted if all(a <= b for a, b in zip(s, wanted, strict=True))]
+    modules = {s: sum(n * k for n, k in zip(lengths, s, strict=True)) for s in shares}
+    mean = sum(n * k for n, k in zip(lengths, wanted, strict=True)) / units
+    sizes = sorted(set(modules.values()))
 
-    def modules(share: tuple[int, ...]) -> int:
-        return sum(n * s for n, s in zip(lengths, share, strict=True))
+    def within(low: int, high: int) -> tuple[tuple[int, ...], ...] | None:
+        some = [s for s in shares if low <= modules[s] <= high]
+        return _adding_up(some, wanted, units)
 
-    @cache
-    def split(left: tuple[int, ...], count: int) -> tuple[tuple[int, ...], ...] | None:
-        if count == 1:
-            return (left,) if left in hosted else None
-        aim = modules(left) / count
-        shares = (s for s in hosted if all(a <= b for a, b in zip(s, left, strict=True)))
-        for share in sorted(shares, key=lambda s: (abs(modules(s) - aim), s)):
-            rest = split(tuple(b - a for a, b in zip(share, left, strict=True)), count - 1)
-            if rest is not None:
-                return (share, *rest)
+    lows = [v for v in sizes if v <= mean]
+    highs = [v for v in sizes if v >= mean]
+    if not lows or not highs or (found := within(sizes[0], sizes[-1])) is None:
         return None
+    # From the narrowest window of module counts around the mean to lower and lower ones.
+    spread = sizes[-1] - sizes[0]
+    for low in reversed(lows):
+        # The first low has no bound yet and widens; each later one has to beat what is found.
+        inside = [v for v in highs if v - low < spread]
+        if low == lows[-1]:
+            better = next((b for high in inside if (b := within(low, high)) is not None), None)
+        else:
+            better = within(low, inside[-1]) if inside else None
+        while better is not None:
+            found = better
+            taken = [modules[s] for s in found]
+            spread = max(taken) - min(taken)
+            inside = [v for v in highs if v - low < spread]
+            better = within(low, inside[-1]) if inside else None
+    return tuple(sorted(found, key=lambda s: modules[s], reverse=True))
 
-    found = split(wanted, units)
-    return None if found is None else tuple(sorted(found, key=modules, reverse=True))
+
+def _adding_up(
+    shares: Sequence[tuple[int, ...]], wanted: tuple[int, ...], units: int
+) -> tuple[tuple[int, ...], ...] | None:
+    """Some ``units`` shares, with repetition, that add up to ``wanted``; ``None`` where there are none.
+
+    A sum of shares is a bit of one whole number: the place of the sum in a mixed radix with room for twice
+    what is wanted of each length, so that adding one share never carries. Bit of ``after[k]``: k shares can
+    add up to it.
+    """
+    strides = [1]
+    for w in wanted:
+        strides.append(strides[-1] * (2 * w + 1))
+
+    def place(share: Sequence[int]) -> int:
+        return sum(k * stride for k, stride in zip(share, strides, strict=False))
+
+    allowed = 1
+    for w, stride in zip(wanted, strides, strict=False):
+        allowed = sum(allowed << (k * stride) for k in range(w + 1))
+    places = [place(s) for s in shares]
+    after = [1]
+    for _ in range(units):
+        reached = 0
+        for p in places:
+            reached |= after[-1] << p
+        after.append(reached & allowed)
+    if not after[units] >> place(wanted) & 1:
+        return None
+    chosen: list[tuple[int, ...]] = []
+    left = wanted
+    for k in range(units, 0, -1):
+        # Nearest to an equal part of what is left, so that units are alike where they can be.
+        chosen.append(
+            min(
+                (
+                    s
+                    for s, p in zip(shares, places, strict=True)
+                    if all(a <= b for a, b in zip(s, left, strict=True)) and after[k - 1] >> (place(left) - p) & 1
+                ),
+                key=lambda s: (sum(abs(k * a - b) for a, b in zip(s, left, strict=True)), s),
+            )
+        )
+        left = tuple(b - a for a, b in zip(chosen[-1], left, strict=True))
+    return tuple(chosen)
 
 
 def together(rows: Options, copies: Sequence[int], pmax_w: float, ac_power_w: float) -> Options:
@@ -135,5 +154,6 @@ def together(rows: Options, copies: Sequence[int], pmax_w: float, ac_power_w: fl
         in_series=flat(rows.in_series),
         inputs=flat(rows.inputs),
         copies=flat(np.repeat(times.astype(np.int32), width)),
+        face=flat(rows.face),
         kind=flat(np.repeat(np.arange(len(times), dtype=np.int16), width)),
     )

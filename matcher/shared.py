@@ -8,7 +8,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from matcher.arrangements import ByStrings, Space
+from matcher.arrangements import FACE, ByStrings, Space
 from matcher.errors import MatcherError
 from matcher.limits import TOLERANCE, at_most
 from matcher.options import Options, join
@@ -48,6 +48,8 @@ def on_several_units(search: Search) -> tuple[Options, list[int]]:
 def with_strings(search: Search, strings: Sequence[tuple[int, int]]) -> tuple[Options, list[int]]:
     """Options that host exactly these (modules in series, strings) pairs, on one or several units.
 
+    Modules in series may carry a face (`matcher.arrangements.FACE`).
+
     Raises
     ------
     MatcherError
@@ -59,11 +61,11 @@ def with_strings(search: Search, strings: Sequence[tuple[int, int]]) -> tuple[Op
     tally = ByStrings(tuple(sorted(wanted.items())))
     if tally.states > MOST_STATES:
         raise MatcherError("the strings have too many different lengths to be spread exactly; give fewer kinds")
-    total = sum(length * count for length, count in wanted.items())
+    total = sum(kind % FACE * count for kind, count in wanted.items())
     parts: list[Options] = []
     arrangements: list[int] = []
     for m, i in _pairs(search):
-        space = free_space(search, m, i, total)
+        space = replace(free_space(search, m, i, total), facing=tuple(wanted) if search.request.faces else ())
         ways = 0
         low, high = search.asked(m, i).units
         for units in range(low, high + 1):
@@ -80,12 +82,12 @@ def _hosted(
     search: Search, m: int, i: int, space: Space, tally: ByStrings, units: int
 ) -> tuple[list[Options], int]:
     """Options of one pair with a number of units, and how many arrangements of one unit there are."""
-    lengths = tuple(length for length, _ in tally.wanted)
+    lengths = tuple(kind % FACE for kind, _ in tally.wanted)
     if not all(space.shortest <= length <= space.longest for length in lengths):
         return [], 0
     ways = space.ways_by(tally)
     if units == 1:
-        if not ways[-1] or sum(n * c for n, c in tally.wanted) > space.most:
+        if not ways[-1] or sum(n * c for n, (_, c) in zip(lengths, tally.wanted, strict=True)) > space.most:
             return [], 0
         tables = search.hosting(m, i, space, tally, tally.states - 1)
         if search.request.every:

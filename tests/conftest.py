@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import shutil
 from collections.abc import Callable, Iterator
 from pathlib import Path
 from typing import TYPE_CHECKING, NamedTuple
@@ -77,6 +78,22 @@ def small_catalog(tmp_path: Path) -> Path:
 
 
 @pytest.fixture(scope="session")
+def demo_path(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The demo's catalog. It is shared: copy it."""
+    from cli.main import run
+
+    path = tmp_path_factory.mktemp("demo") / "demo.sqlite"
+    assert run(["demo", "--keep", str(path)]) == 0
+    return path
+
+
+@pytest.fixture
+def demo_catalog(demo_path: Path, tmp_path: Path) -> Path:
+    """The demo's catalog for one test, where the fixture `ferrule` looks for one."""
+    return Path(shutil.copy(demo_path, tmp_path / "small.sqlite"))
+
+
+@pytest.fixture(scope="session")
 def postgres_server() -> Iterator[PostgresServer]:
     """A PostgreSQL server of the tests' own."""
     from postgres_server import PostgresServer, why_not
@@ -100,7 +117,8 @@ def store_location(request: pytest.FixtureRequest, tmp_path: Path) -> str:
 def ferrule(
     tmp_path: Path, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]
 ) -> Callable[..., Ran]:
-    """Run a command line in this process; its catalog is that of `small_catalog`, if the test asks for one."""
+    """Run a command line in this process; its catalog is that of `small_catalog` or `demo_catalog`, if the test
+    asks for one."""
     from cli.main import run
 
     monkeypatch.setenv("FERRULE_CATALOG", str(tmp_path / "small.sqlite"))
