@@ -34,7 +34,7 @@ ANY_RATIO = (1e-9, 1e9)
 
 def with_diode(module: Module) -> Module:
     """The module with the six parameters that its values give, so that they are fitted once only."""
-    if module.vmp_coef_pct is not None or module.a_ref is not None:
+    if module.a_ref is not None:
         return module
     diode = diode_parameters(module)
     if diode is None:

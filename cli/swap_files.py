@@ -1,0 +1,198 @@
+"""What takes the place of a record, as a file or a document, `ferrule.swap/1`."""
+
+from __future__ import annotations
+
+import csv
+import json
+import sys
+from pathlib import Path
+from typing import IO, TYPE_CHECKING, Any
+
+from catalog.errors import CatalogError
+from cli.cautions import CAUTIONS
+from cli.facts import confirm_line
+from cli.fit_files import replacing, safe
+from cli.swap_screen import CURRENT, PART_WORDS, VOLTAGE, answer, margin, order
+from matcher.options import label
+
+if TYPE_CHECKING:
+    from cli.swap import Question
+    from matcher.fit import Fit, Option
+    from matcher.mixing import Mismatch
+
+SWAP_SCHEMA = "ferrule.swap/1"
+
+FORMS = (".csv", ".xlsx", ".json")
+
+Full = "list[tuple[Fit, Option]]"
+
+
+def write(question: Question, full: Full, out: str) -> None:
+    """Write all candidates to a file.
+
+    Raises
+    ------
+    CatalogError
+        Where the ending names no form, or the file cannot be written.
+    """
+    path = Path(out)
+    form = path.suffix.lower()
+    if form not in FORMS:
+        raise CatalogError(f"--out {out}: the ending decides the form, {', '.join(FORMS[:-1])} or {FORMS[-1]}")
+    with replacing(path, binary=form == ".xlsx") as stream:
+        if form == ".xlsx":
+            _write_workbook(question, full, stream)
+        elif form == ".json":
+            json.dump(document(question, full), stream, allow_nan=False, indent=1)
+        else:
+            writer = csv.writer(stream)
+            writer.writerow([name for name, _, _ in _columns(question)])
+            for values in _rows(question, full):
+                writer.writerow([_cell(v) for v in values])
+
+
+def print_document(question: Question, full: Full) -> None:
+    """Print the document on stdout."""
+    json.dump(document(question, full), sys.stdout, allow_nan=False, indent=1)
+    print()
+
+
+def document(question: Question, full: Full) -> dict[str, Any]:
+    """The document; what is not known is null."""
+    q, swaps = question, question.swaps
+    head = {
+        "schema": SWAP_SCHEMA,
+        "module": {"maker": q.module.maker, "model": q.module.model, "pmax_w": q.module.pmax_w},
+        "inverter": {"maker": q.inverter.maker, "model": q.inverter.model, "ac_power_w": q.inverter.ac_power_w},
+        "site": {"name": q.site.name, "design_low_c": q.site.design_low_c, "design_high_c": q.site.design_high_c,
+                 "mounting": q.site.mounting},
+        "rules": {"name": q.rules.name, "isc_factor": q.rules.isc_factor},
+        "wiring": {"label": label(q.wired), "units": [
+            {"units": u.copies, "modules": u.modules,
+             "arrangement": [{"inputs": t.inputs, "strings": t.strings, "in_series": t.in_series} for t in u.trackers]}
+            for u in q.wired]},
+        "replaces": "inverter" if q.replaces_inverter else "module",
+        "part": q.part,
+        "order": order(q),
+    }  # fmt: skip
+    if q.part is not None:
+        head["candidates"] = [_part_entry(q, k) for k in range(len(swaps))]
+        head["totals"] = {"records_considered": swaps.considered, "looked_at": swaps.looked_at, "sound": len(swaps)}
+        return head
+    head["candidates"] = [_entry(q, k, full) for k in range(len(swaps))]
+    head["totals"] = {"records_considered": swaps.considered, "sound": len(swaps), "stopped": swaps.stopped,
+                      "unmatched": swaps.unmatched}  # fmt: skip
+    return head
+
+
+def _entry(q: Question, k: int, full: Full) -> dict[str, Any]:
+    swaps = q.swaps
+    record = q.records[swaps.index[k]]
+    entry: dict[str, Any] = {
+        "rank": k + 1, "maker": record.maker, "model": record.model,
+        "verdict": "to-confirm" if swaps.to_confirm[k] else "fits",
+        "changes_pct": {name: _known(values[k]) for name, values in swaps.changes.items()},
+        "dc_ac_ratio": float(swaps.ratio[k]),
+    }  # fmt: skip
+    if not q.replaces_inverter:
+        entry["size_change_mm"] = [_known(v) for v in swaps.size_mm[k]]
+    if k < len(full):
+        o = full[k][1]
+        entry |= {
+            "label": o.label, "clipping_loss_pct": o.clipping_loss_pct, "yearly_kwh": o.yearly_kwh,
+            "checks": [{"check": c.check, "verdict": str(c.verdict), "value": c.value, "limit": c.limit, "unit": c.unit,
+                        "margin_pct": c.margin_pct, "rule": c.rule} for c in o.checks],
+            "confirm": [{"record": c.record, "field": c.field, "at_least": c.at_least} for c in o.confirm],
+            "climate": {"coldest_c": o.coldest_c, "hottest_c": o.hottest_c},
+        }  # fmt: skip
+    return entry
+
+
+def _part_entry(q: Question, k: int) -> dict[str, Any]:
+    c = q.swaps.found[k]
+    record = q.records[c.index]
+    return {
+        "rank": k + 1, "maker": record.maker, "model": record.model, "verdict": c.verdict,
+        "trackers": [{"inputs": t.inputs, "strings": [{"old": o, "new": n} for o, n in t.strings]} for t in c.trackers],
+        "mismatch": {"stc": _mismatch(c.stc), "hot": _mismatch(c.hot), "spread_stc": _mismatch(c.spread_stc)},
+        "confirm": [{"record": x.record, "field": x.field, "at_least": x.at_least} for x in c.confirm],
+    }  # fmt: skip
+
+
+def _mismatch(m: Mismatch | None) -> dict[str, float] | None:
+    return None if m is None else {"power_w": m.together_w, "apart_w": m.apart_w, "loss_pct": m.loss_pct}
+
+
+def _known(value: float) -> float | None:
+    return None if value != value else float(value)
+
+
+def _columns(q: Question) -> list[tuple[str, int, int | None]]:
+    """Columns: header with unit, width in a workbook, digits after the point (None: text)."""
+    head: list[tuple[str, int, int | None]] = [("rank", 6, 0), ("verdict", 12, None), ("maker", 22, None), ("model", 28, None)]
+    if q.part is not None:
+        return [*head, ("power [W]", 9, 0), ("wiring", 40, None), ("loss at STC [%]", 9, 2), ("loss in the heat [%]", 9, 2),
+                ("loss if spread [%]", 9, 2)]  # fmt: skip
+    changes = [(f"change of {name} [%]", 9, 1) for name in q.swaps.changes]
+    size = [] if q.replaces_inverter else [("change of length [mm]", 9, 0), ("change of width [mm]", 9, 0)]
+    power = ("AC power [W]", 10, 0) if q.replaces_inverter else ("power [W]", 9, 0)
+    return [*head, power, *changes, *size, ("DC/AC ratio", 8, 3), ("voltage margin [%]", 9, 1), ("current margin [%]", 9, 1),
+            ("clipping loss [%]", 9, 2), ("to confirm", 60, None)]  # fmt: skip
+
+
+def _rows(q: Question, full: Full) -> list[list[Any]]:
+    swaps = q.swaps
+    if q.part is not None:
+        return [
+            [k + 1, c.verdict, (record := q.records[c.index]).maker, record.model, record.pmax_w,
+             " | ".join(t.label for t in c.trackers),
+             *(None if m is None else m.loss_pct for m in (c.stc, c.hot, c.spread_stc))]
+            for k, c in enumerate(swaps.found)
+        ]  # fmt: skip
+    found = []
+    for k in range(len(swaps)):
+        record = q.records[swaps.index[k]]
+        o = full[k][1] if k < len(full) else None
+        power = record.ac_power_w if q.replaces_inverter else record.pmax_w
+        size = [] if q.replaces_inverter else [_known(v) for v in swaps.size_mm[k]]
+        found.append(
+            [k + 1, "to-confirm" if swaps.to_confirm[k] else "fits", record.maker, record.model, power,
+             *(_known(v[k]) for v in swaps.changes.values()), *size, float(swaps.ratio[k]),
+             margin(o, VOLTAGE) if o else None, margin(o, CURRENT) if o else None,
+             o.clipping_loss_pct if o else None, (confirm_line(o) or None) if o else None]
+        )  # fmt: skip
+    return found
+
+
+def _cell(value: Any) -> Any:
+    if value is None:
+        return ""
+    if isinstance(value, float):
+        return f"{value:.6g}"
+    return safe(value) if isinstance(value, str) else value
+
+
+def _write_workbook(q: Question, full: Full, stream: IO[bytes]) -> None:
+    import xlsxwriter
+
+    from cli.worksheets import Column, Formats, Table
+
+    book = xlsxwriter.Workbook(stream, {"strings_to_formulas": False, "strings_to_urls": False})
+    formats = Formats(book)
+    table = Table(book, "Candidates", [Column(*c) for c in _columns(q)], formats)
+    for values in _rows(q, full):
+        table.row(values)
+    table.close()
+    basis = Table(book, "Rests on", [Column("what", 14), Column("words", 110)], formats)
+    what = f"{q.part} of the modules {q.name}" if q.part is not None else q.name
+    basis.row(["Question", f"What takes the place of {what}, wired as {label(q.wired)}?"])
+    basis.row(["Answer", answer(q)])
+    basis.row(["Order", order(q)])
+    if q.part is not None:
+        basis.row(["Losses", PART_WORDS])
+    elif len(q.swaps) > len(full):
+        basis.row(["Margins", f"Margins, clipping and values to confirm are told of the first {len(full)}."])
+    for line in CAUTIONS:
+        basis.row(["Caution", line])
+    basis.close()
+    book.close()
