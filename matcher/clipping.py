@@ -151,7 +151,8 @@ def block_losses(
     line = kinds[:, 3].astype(np.int64)
     at = length * np.atleast_2d(year.vmp_v)[line]
     unheld = strings * length * np.atleast_2d(year.power_w)[line]
-    held = np.minimum(unheld, current * at)
+    with np.errstate(invalid="ignore"):
+        held = np.fmin(unheld, current * at)  # no limit in the dark is no number, and holds nothing
     curve = parabola(inverters, np.full(len(kinds), row), at)
     start = _start_power(inverters, np.array([row]))[0]
     limit = inverters.ac_power_w[row]

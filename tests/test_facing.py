@@ -76,8 +76,8 @@ def test_each_part_has_the_sun_of_its_own_plane():
             strings[t.face, t.in_series] = strings.get((t.face, t.in_series), 0) + t.strings
         assert strings == {(1, 12): 2, (2, 12): 1, (2, 11): 1}
         loss, energy = by_hand(option, years)
-        assert option.clipping_loss_pct == pytest.approx(loss, abs=1e-3)
-        assert option.yearly_kwh == pytest.approx(energy, rel=1e-5)
+        assert option.clipping_loss_pct == pytest.approx(loss, abs=5e-3)
+        assert option.yearly_kwh == pytest.approx(energy, rel=1e-4)
         losses.add(round(loss, 2))
     assert len(losses) > 1, "the current limit must tell options apart"
 
