@@ -24,6 +24,8 @@ if TYPE_CHECKING:
     from cli.in_stock import Lots
     from cli.wanted import EnergyWanted
     from cli.years import SiteYear
+    from matcher.energy import Enough
+    from matcher.moduleyear import PlaneYear
     from matcher.request import Request
 
 NOTHING_FITS = 1
@@ -39,7 +41,7 @@ def fit(
     clip_cap: Annotated[float, typer.Option(metavar="PCT", help="Clipping loss up to which a higher DC/AC ratio is better [%].")] = 2.0,
     rules: Annotated[str, typer.Option(metavar="NAME", help="Rule set: iec-62548, nec-690, or a file of your own, .toml.")] = "iec-62548",
     combiner: Annotated[bool, typer.Option("--combiner", help="Strings are paralleled in a combiner box: string inputs are waived.")] = False,
-    by: Annotated[str, typer.Option(metavar="ORDER", help="least-inverter, ratio, clipping, margin, energy or cost.")] = "least-inverter",
+    by: Annotated[str | None, typer.Option(metavar="ORDER", help="least-inverter (energy, where an energy is wanted), ratio, clipping, margin, energy or cost.")] = None,
     in_stock: Annotated[bool, typer.Option("--in-stock", help="Only what is in stock, in the numbers that are there; with the cost.")] = False,
     every: Annotated[bool, typer.Option("--every", help="Every arrangement, not the best one of each record.")] = False,
     checks: Annotated[bool, typer.Option("--checks", help="Show every check of the options shown (and put them into documents).")] = False,
@@ -86,6 +88,9 @@ def fit(
     energy = energy_wanted(yearly_kwh, daily_kwh, sun_hours)
     if energy is not None and (count is not None or strings is not None):
         raise CatalogError("an energy wanted decides the module count: leave --count and --strings away")
+    if by_count and (energy is not None or strings is not None or units.strip() != "1"):
+        raise CatalogError("--by-count goes through the module counts of one unit: leave --strings, --units and an energy wanted away")
+    by = by or ("least-inverter" if energy is None else "energy")
     worth = worth_of(energy_price, own_use, export_price, module_price, years)
     with open_catalog(catalog) as opened:
         place = site_of(
@@ -103,6 +108,8 @@ def fit(
             modules, inverters = stock.modules, stock.inverters
         year = _year(opened, place, modules, inverters, energy, request.different_faces)
 
+    from dataclasses import replace
+
     from cli import fit_files, fit_screen
     from cli.fit_growth import add_growth, show_growth
     from cli.years import cold_plane
@@ -110,7 +117,8 @@ def fit(
 
     plane = cold_plane(request)
     if energy is not None:
-        request = _sized(request, modules, inverters, year, energy)
+        enough = _enough(request, modules, inverters, year, energy, plane)
+        request = replace(request, counts=(enough.modules, enough.modules))
         if stock is not None:
             stock.check_count(request)
     found = search(modules, inverters, request, year.year, plane, stock.shelf if stock else None)
@@ -120,7 +128,7 @@ def fit(
     if energy is not None:
         from cli.fit_energy import add_energy
 
-        extra |= add_energy(found, year, energy)
+        extra |= add_energy(found, year, energy, enough)
     if out is not None:
         fit_files.write(found, out, year, with_checks=checks or not request.every, why=why, extra=extra)
     if json:
@@ -129,7 +137,7 @@ def fit(
         if energy is not None:
             from cli.fit_energy import show_energy
 
-            show_energy(found, year, energy)
+            show_energy(found, year, energy, enough)
         if by_count:
             show_growth(found, worth)
         if stock is not None:
@@ -150,28 +158,34 @@ def _year(
     from cli.wanted import sun_hours_site_year
     from cli.years import facing_year, has_weather, site_year, site_years
 
+    by_sun_hours = energy is not None and energy.sun_hours is not None
+    if by_sun_hours and has_weather(site):
+        raise CatalogError("--sun-hours stands in for weather, and the site has a place or a weather file: leave one of them away")
     if len(modules) == 1:
         if faces:
             return facing_year(site, modules[0], faces)
-        if energy is not None and energy.sun_hours is not None and not has_weather(site):
+        if by_sun_hours:
+            assert energy is not None and energy.sun_hours is not None
             return sun_hours_site_year(modules[0], site, energy.sun_hours)
         limited = any(g.max_current_a is not None for i in inverters for g in i.inputs)
         return site_year(catalog, site, modules[0], current_limits=limited)
     return site_years(catalog, site, modules)
 
 
-def _sized(
-    request: Request, modules: list[Module], inverters: list[Inverter], year: SiteYear, energy: EnergyWanted
-) -> Request:
-    """The request with the smallest module count that yields the energy."""
-    from dataclasses import replace
-
-    from matcher.energy import counts_for_energy
+def _enough(
+    request: Request,
+    modules: list[Module],
+    inverters: list[Inverter],
+    year: SiteYear,
+    energy: EnergyWanted,
+    plane: PlaneYear | None,
+) -> Enough:
+    """The smallest module count that yields the energy."""
+    from matcher.energy import fewest_modules
 
     if year.year is None:
         raise CatalogError(f"an energy needs weather: {year.why_not}, or --sun-hours with --module")
-    count = counts_for_energy(modules, inverters, request, year.year, energy.yearly_kwh)
-    return replace(request, counts=(count, count))
+    return fewest_modules(modules, inverters, request, year.year, energy.yearly_kwh, plane)
 
 
 def _records(

@@ -10,7 +10,7 @@ from cli.fit_screen import wiring
 
 if TYPE_CHECKING:
     from matcher.fit import Fit
-    from matcher.growth import Worth
+    from matcher.growth import Step, Worth
 
 #: Rows on screen; more steps are thinned out evenly, the document holds all.
 _ROWS = 30
@@ -46,12 +46,24 @@ def show_growth(fit: Fit, worth: Worth | None) -> None:
     print_table(columns, rows)
     if every > 1:
         say(f"(every {every}. of {len(steps):,} counts; --json holds all)")
-    if last is not None:
-        say(f"Beyond {last.option.modules} modules, one more no longer pays at these prices.")
-    elif worth is not None and worth.module_price is not None:
-        say("No module count pays at these prices.")
+    if worth is not None and worth.module_price is not None:
+        say(_conclusion(steps, last))
     say("Worth is the energy times the prices given; no tariff, tax, interest or ageing is assumed.")
     say()
+
+
+def _conclusion(steps: list[Step], last: Step | None) -> str:
+    """Where one more module no longer pays, or why that is not said."""
+    if any(s.net is None for s in steps):
+        return "Whether one more module pays cannot be said: the energy of some counts is not known."
+    if last is None:
+        return "No module count pays at these prices."
+    if last is steps[-1]:
+        return (
+            f"Up to {last.option.modules} modules, the last count within the ratings and the DC/AC window, one more"
+            " still pays at these prices."
+        )
+    return f"Beyond {last.option.modules} modules, one more no longer pays at these prices."
 
 
 def add_growth(fit: Fit, worth: Worth | None) -> dict[str, Any]:

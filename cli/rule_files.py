@@ -38,7 +38,7 @@ def read_rule_set(path: str) -> RuleSet:
         One line that names the file, the entry, and what would be possible.
     """
     try:
-        entries = tomllib.loads(Path(path).read_text(encoding="utf-8"))
+        entries = tomllib.loads(Path(path).read_text(encoding="utf-8-sig"))
     except OSError as error:
         raise CatalogError(f"rule set {path}: {error.strerror}") from None
     except (tomllib.TOMLDecodeError, UnicodeDecodeError) as error:
@@ -48,9 +48,9 @@ def read_rule_set(path: str) -> RuleSet:
         known = ", ".join(["name", "based_on", *_NUMBERS, "cold_voltage", "clauses"])
         raise CatalogError(f"rule set {path}: {unknown[0]!r} is not known; a rule set has {known}")
     name, based_on = entries.get("name"), entries.get("based_on")
-    if not isinstance(name, str) or not name.strip() or name in RULE_SETS:
+    if not isinstance(name, str) or not name.strip() or name.strip() in RULE_SETS:
         raise CatalogError(f"rule set {path}: give it a name of its own, such as name = \"harbour-authority\"")
-    if based_on not in RULE_SETS:
+    if not isinstance(based_on, str) or based_on not in RULE_SETS:
         raise CatalogError(f"rule set {path}: based_on must name {' or '.join(RULE_SETS)}")
     changes: dict[str, Any] = {"name": name.strip()}
     for field, (low, high) in _NUMBERS.items():
@@ -65,6 +65,8 @@ def read_rule_set(path: str) -> RuleSet:
     rules = replace(base, **changes)
     if rules.cold_voltage == "hourly" and "cold_margin_pct" not in entries:
         raise CatalogError(f"rule set {path}: cold_voltage = \"hourly\" needs the margin you choose, cold_margin_pct")
+    if rules.cold_voltage != "hourly" and "cold_margin_pct" in entries:
+        raise CatalogError(f"rule set {path}: cold_margin_pct goes with cold_voltage = \"hourly\" only; leave it away")
     if rules.fuse_high is not None and rules.fuse_low > rules.fuse_high:
         raise CatalogError(f"rule set {path}: fuse_low {rules.fuse_low:g} is above fuse_high {rules.fuse_high:g}")
     return rules

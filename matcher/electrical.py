@@ -209,7 +209,10 @@ def design_points(
     for k, module in enumerate(modules):
         if module.voc_coef_pct is not None:
             voc_hot[k] = module.voc_v * (1.0 + module.voc_coef_pct / 100.0 * (hot[k] - 25.0))
-        for target, found in ((voc_cold, _cold_voc(module, site, rules)), (isc, _isc_design(module, site, rules))):
+        wanted = [(isc, _isc_design(module, site, rules))]
+        if rules.cold_voltage != "hourly":
+            wanted.insert(0, (voc_cold, _cold_voc(module, site, rules)))
+        for target, found in wanted:
             if isinstance(found, str):
                 reasons[k] = reasons[k] or found
             else:
@@ -220,11 +223,10 @@ def design_points(
                 f"rule set {rules.name} takes the cold voltage from hourly weather: give the site a weather file"
             )
         voc_cold, cold = hourly_voc(modules, plane, rules)
-        wanted = "voc_coef_pct, isc_coef_pct and pmax_coef_pct"
-        reasons = [
-            f"the hourly cold voltage needs {wanted}, not all stated" if np.isnan(v) else r
-            for v, r in zip(voc_cold, reasons, strict=True)
-        ]
+        for k in np.flatnonzero(np.isnan(voc_cold)):
+            missing = [c for c in ("voc_coef_pct", "isc_coef_pct", "pmax_coef_pct") if getattr(modules[k], c) is None]
+            named = f"needs {', '.join(missing)}, not stated" if missing else "needs a model, and none fits the record"
+            reasons[k] = f"the hourly cold voltage {named}"
     vmps = _vmp_at(modules, np.column_stack([hot, np.full(n, 25.0), cold]))
     for k in np.flatnonzero(~(vmps > 0).all(axis=1)):
         missing = [c for c in ("isc_coef_pct", "pmax_coef_pct") if getattr(modules[k], c) is None]

@@ -3,20 +3,21 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 
 from catalog.records import Inverter, Module
+from matcher.checks import Verdict, check_option, verdict
+from matcher.clipping import has_model
+from matcher.columns import InverterColumns
 from matcher.errors import MatcherError
 from matcher.fit import Fit, Option, fit
-from matcher.moduleyear import ModuleYear
+from matcher.moduleyear import ModuleYear, PlaneYear
+from matcher.options import Options
 from matcher.order import Order
 from matcher.request import Request
-
-#: Shares of the least conceivable count up to which counts are tried, one after the other.
-_REACHES = (1.1, 1.3, 2.0)
 
 
 @dataclass(frozen=True, slots=True)
@@ -39,9 +40,22 @@ class Chain:
         return self.module * self.dc_wiring * self.inverter * (1.0 if self.clipping is None else self.clipping)
 
 
-def counts_for_energy(
-    modules: Sequence[Module], inverters: Sequence[Inverter], request: Request, year: ModuleYear, yearly_kwh: float
-) -> int:
+@dataclass(frozen=True, slots=True)
+class Enough:
+    """The fewest modules that yield an energy, and the option of theirs that yields most, whatever its verdict."""
+
+    modules: int
+    best: Option
+
+
+def fewest_modules(
+    modules: Sequence[Module],
+    inverters: Sequence[Inverter],
+    request: Request,
+    year: ModuleYear,
+    yearly_kwh: float,
+    plane: PlaneYear | None = None,
+) -> Enough:
     """Smallest number of modules with which some option yields at least ``yearly_kwh`` a year.
 
     Parameters
@@ -50,41 +64,74 @@ def counts_for_energy(
         Without a module count.
     year
         Of the modules: (classes,) or (modules, classes).
+    plane
+        As for `matcher.fit.fit`.
 
     Raises
     ------
     MatcherError
-        Where no option reaches it.
+        Where no option reaches it, or no energy is known.
     """
-    best_dc_kwh = float(np.nanmax(year.power_w @ year.hours if year.power_w.ndim == 1
-                                  else (year.power_w * year.hours).sum(axis=-1))) / 1000.0  # fmt: skip
+    each = np.atleast_1d((year.power_w * year.hours).sum(axis=-1)) / 1000.0
+    if not (each > 0).any():
+        raise MatcherError("no energy figure: the coefficients on record do not allow a model of the modules' power")
+    if not has_model(InverterColumns.of(inverters)).any():
+        raise MatcherError("no energy figure: no efficiency of the inverter is on record")
     # An inverter gives no more than it takes: with fewer modules than this nothing reaches the energy.
-    least = max(1, math.ceil(yearly_kwh / best_dc_kwh * (1.0 - 1e-9)))
+    least = math.ceil(yearly_kwh / float(np.nanmax(each)) * (1.0 - 1e-9))
+    largest = request.units[1] * request.ratio[1] * max(i.ac_power_w for i in inverters)
+    ceiling = math.floor(largest / min(m.pmax_w for m in modules) * (1.0 + 1e-9))
     tried = least - 1
-    for reach in _REACHES:
-        upto = max(tried + 1, math.ceil(least * reach))
+    step = _step(least)
+    while tried < ceiling:
+        upto = min(tried + step, ceiling)
         asked = replace(request, counts=(tried + 1, upto), order=Order.ENERGY, every=True)
-        enough = [m for m, kwh in _yields(fit(modules, inverters, asked, year)) if kwh >= yearly_kwh * (1.0 - 1e-9)]
-        if enough:
-            return min(enough)
+        try:
+            found = fit(modules, inverters, asked, year, plane)
+        except MatcherError:
+            if step == 1:
+                raise
+            step = max(1, step // 4)  # more options than can be listed at once
+            continue
+        enough = _first_with(found, yearly_kwh * (1.0 - 1e-9))
+        if enough is not None:
+            return enough
         tried = upto
+        step = _step(tried)
     raise MatcherError(
-        f"no option yields {yearly_kwh:,.0f} kWh a year: with {least} to {tried} modules the ratings, the DC/AC"
-        " window or the units leave none; widen --ratio or allow more --units"
+        f"no option yields {yearly_kwh:,.0f} kWh a year: that takes {least:,} modules or more, and the ratings, the"
+        " DC/AC window and the units allow none that reach it; widen --ratio or allow more --units"
     )
 
 
-def _yields(found: Fit) -> Iterator[tuple[int, float]]:
-    """Module counts and the most energy [kWh] that an option of each has."""
+def _step(modules: int) -> int:
+    """How many module counts are tried at once."""
+    return max(3, modules // 10)
+
+
+def _first_with(found: Fit, yearly_kwh: float) -> Enough | None:
+    """The smallest module count of a search of which some option yields so much."""
     table = found.table
-    for modules in np.unique(table.modules).tolist():
-        yield modules, float(np.nanmax(table.yearly_kwh[table.modules == modules], initial=0.0))
-    if found.lazy:
-        for m, i in {(m, i) for m in range(len(found.modules)) for i in np.flatnonzero(~found.search.inverters.single)}:
-            space = found.search.space(m, int(i))
-            for count in space.reachable:
-                best = found.search.best_of_count(m, int(i), space, count)
-                yield count, float(np.nan_to_num(best.yearly_kwh[0]))
+    kwh = np.nan_to_num(table.yearly_kwh)
+    rows = np.flatnonzero(kwh >= yearly_kwh)
+    best: tuple[int, float, Options] | None = None
+    if len(rows):
+        fewest = int(table.modules[rows].min())
+        row = int(np.argmax(np.where(table.modules == fewest, kwh, 0.0)))
+        best = fewest, float(kwh[row]), table.take(slice(row, row + 1))
+    search = found.search
+    for begin in found.lazy:
+        m, i, space = begin.args
+        # Energy decides, whatever the verdict: with everything to confirm there is but one.
+        for count in space.reachable:
+            if best is not None and count > best[0]:
+                break
+            row = search.best_of_count(m, i, replace(space, sure_to=0), count)
+            most = float(np.nan_to_num(row.yearly_kwh[0]))
+            if most >= yearly_kwh and (best is None or (count, -most) < (best[0], -best[1])):
+                outcome = verdict(check_option(found.pair(m, i), row.wired(0)[0].trackers))
+                best = count, most, replace(row, to_confirm=np.array([outcome is Verdict.TO_CONFIRM]))
+    return None if best is None else Enough(best[0], found.option(best[2], 0, 1, full=False))
 
 
 def chain(
