@@ -24,10 +24,11 @@ app = typer.Typer(
 
 
 def _register() -> None:
-    from cli import demo, fit, sheet, site, sweep, vet
+    from cli import demo, fit, sheet, site, swap, sweep, vet
 
     app.command("fit")(fit.fit)
     app.command("vet")(vet.vet)
+    app.command("swap")(swap.swap)
     app.add_typer(sheet.app, name="sheet")
     app.add_typer(site.app, name="site")
     app.command("sweep")(sweep.sweep)
