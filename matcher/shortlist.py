@@ -24,6 +24,10 @@ MARGIN_PCT = 0.06
 #: The same as a share of the loss, for losses far above the cap.
 MARGIN_SHARE = 0.03
 
+#: An inverter whose DC power at the limit changes by more than this share with the voltage of bright hours has
+#: no mean voltage that stands for the year (in the CEC table it is less than 0.05).
+_WILD = 0.06
+
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Heads:
@@ -31,8 +35,9 @@ class Heads:
 
     ``keys`` (modules * classes,) ascends: line plus half of the power over the highest of that line. The
     ``moments`` (3, modules * (classes + 1)) are sums of hours, energy and energy times power from one class
-    upwards. ``highest_w``, ``head_vmp_v`` (mean over the hours that are clipped at the cap) and ``vmp_v``
-    (mean by energy) have shape (modules,).
+    upwards. ``highest_w``, ``head_vmp_v`` (mean over the hours that are clipped at the cap), ``vmp_v`` (mean
+    by energy), ``low_vmp_v`` and ``high_vmp_v`` (over the hours of more than half the highest power) have
+    shape (modules,).
     """
 
     keys: np.ndarray
@@ -40,6 +45,8 @@ class Heads:
     highest_w: np.ndarray
     head_vmp_v: np.ndarray
     vmp_v: np.ndarray
+    low_vmp_v: np.ndarray
+    high_vmp_v: np.ndarray
 
     @classmethod
     def of(cls, year: ModuleYear, clip_cap_pct: float) -> Heads:
@@ -63,10 +70,11 @@ class Heads:
         with np.errstate(invalid="ignore"):
             mean = np.nan_to_num((hours * power * vmp).sum(axis=1) / energy[:, 0])
         highest = power[:, -1]
+        bright = power >= highest[:, None] / 2.0
         scaled = power / np.where(highest > 0, highest, 1.0)[:, None]
         return cls(
             (lines[:, None] + scaled / 2.0).ravel(), np.stack([time.ravel(), energy.ravel(), square.ravel()]),
-            highest, head, mean,
+            highest, head, mean, np.where(bright, vmp, np.inf).min(axis=1), np.where(bright, vmp, -np.inf).max(axis=1),
         )  # fmt: skip
 
     def above(self, line: np.ndarray, power: np.ndarray) -> np.ndarray:
@@ -88,17 +96,17 @@ def estimate(
     """Clipping loss by the power limit [%], shape (n,), about.
 
     ``line``, ``inverter`` and ``in_series`` describe string lengths (k,); option j has ``strings[j]`` strings
-    of the length ``of[j]``, both (n,). 0 where there is no efficiency model or no year.
+    of the length ``of[j]``, both (n,). 0 where there is no efficiency model or no year, NaN where the efficiency
+    follows the voltage too much for an estimate.
     """
     limit = inverters.ac_power_w[inverter]
     with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
-        c2, c1, c0 = (
-            c[:, 0] for c in parabola(inverters, inverter, (in_series * heads.head_vmp_v[line])[:, None])
-        )
-        # DC power at which the limit is reached.
+        (c2, c1, c0), enough = _at_limit(inverters, inverter, in_series * heads.head_vmp_v[line], limit)
         short = limit - c0
-        root = np.sqrt(c1 * c1 + 4.0 * c2 * short)
-        enough = np.where(root >= 0, 2.0 * short / (c1 + root), np.inf)
+        wild = np.zeros(len(line), dtype=bool)
+        for volts in (heads.low_vmp_v, heads.high_vmp_v):
+            shifted = _at_limit(inverters, inverter, in_series * volts[line], limit)[1] / enough
+            wild |= np.abs(shifted - 1.0) > _WILD
         t2, t1, t0 = (c[:, 0] for c in parabola(inverters, inverter, (in_series * heads.vmp_v[line])[:, None]))
         hours, energy, square = heads.whole(line)
         t2, t1, t0 = t2 * square, t1 * energy, t0 * hours
@@ -107,7 +115,20 @@ def estimate(
         hours, energy, square = heads.above(line[of], enough[of] / modules)
         clipped = (c2[of] * modules * square + c1[of] * energy) * modules - short[of] * hours
         total = (t2[of] * modules + t1[of]) * modules + t0[of]
-        return np.nan_to_num(clipped / total * 100.0, nan=0.0, posinf=0.0, neginf=0.0)
+        found = np.nan_to_num(clipped / total * 100.0, nan=0.0, posinf=0.0, neginf=0.0)
+    wild |= ~(enough > 0) & has_model(inverters)[inverter]
+    found[wild[of]] = np.nan
+    return found
+
+
+def _at_limit(
+    inverters: InverterColumns, inverter: np.ndarray, volts: np.ndarray, limit: np.ndarray
+) -> tuple[tuple[np.ndarray, ...], np.ndarray]:
+    """Coefficients of AC over DC power at DC voltages [V], and the DC power at the limit [W]; arrays (k,)."""
+    c2, c1, c0 = (c[:, 0] for c in parabola(inverters, inverter, volts[:, None]))
+    short = limit - c0
+    root = np.sqrt(c1 * c1 + 4.0 * c2 * short)
+    return (c2, c1, c0), np.where(root >= 0, 2.0 * short / (c1 + root), np.inf)
 
 
 def margin(clipping_pct: np.ndarray) -> np.ndarray:
