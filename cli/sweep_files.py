@@ -8,6 +8,7 @@ import os
 import shutil
 import tempfile
 from collections.abc import Callable, Sequence
+from dataclasses import fields
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -80,7 +81,8 @@ def assemble(form: str, parts: Sequence[Path], out: Path) -> None:
 
 def labels(options: Options) -> tuple[list[str], np.ndarray]:
     """The different arrangements in words, and which of them each option has, shape (n,)."""
-    wiring = np.hstack([options.strings, options.in_series, options.inputs, options.copies, options.kind])
+    columns = (getattr(options, f.name) for f in fields(options))
+    wiring = np.hstack([values for values in columns if values.ndim == 2])
     _, first, which = np.unique(wiring, axis=0, return_index=True, return_inverse=True)
     return [label(options.wired(k)) for k in first.tolist()], which.ravel()
 
