@@ -72,6 +72,21 @@ def records_of(entries: Sequence[Entry], reading: Reading) -> list[Module | Inve
         raise reading.fault(problem) from None
     if reading.signs.comma:
         reading.note("decimal commas were read as decimal points")
+    if reading.signs.thousands:
+        reading.note(f"marks between thousands were taken out, first in {reading.signs.thousands}")
+    return checked_records(records, places, reading)
+
+
+def checked_records(
+    records: list[Module | Inverter], places: Sequence[str], reading: Reading
+) -> list[Module | Inverter]:
+    """Records as they are; impossible ones are refused, odd values and what is assumed are noted.
+
+    Raises
+    ------
+    CatalogError
+        For the first record that cannot be, with its place in the file.
+    """
     _note_defaults(records, reading)
     _check(records, places, reading)
     return records
@@ -197,7 +212,7 @@ def _inputs(entry: Entry, reading: Reading) -> tuple[Inputs, ...]:
 
 
 @cache
-def _marked(type_: type) -> tuple[str, ...]:
+def marked_fields(type_: type) -> tuple[str, ...]:
     """Fields whose value has an origin and a source: all but the name."""
     return (
         *(name for name in specs(type_) if name not in ("maker", "model")),
@@ -205,14 +220,14 @@ def _marked(type_: type) -> tuple[str, ...]:
     )
 
 
-def _not_marked(name: object, allowed: Sequence[str]) -> str:
+def _notmarked_fields(name: object, allowed: Sequence[str]) -> str:
     near = nearest(str(name), allowed)
     hint = f"did you mean {near}?" if near else "name a value as its column is named"
     return f"{name!r} is no value of this kind of record; {hint}"
 
 
 def _origins(entry: Entry, reading: Reading, type_: type) -> dict[str, Origin]:
-    allowed = _marked(type_)
+    allowed = marked_fields(type_)
     origins: dict[str, Origin] = {}
     for origin in MARKED_ORIGINS:
         names = entry.cells.get(origin.value) or []
@@ -220,7 +235,7 @@ def _origins(entry: Entry, reading: Reading, type_: type) -> dict[str, Origin]:
             raise reading.fault('is no list of fields; write it like ["noct_c"]', entry.where, origin.value)
         for name in names:
             if name not in allowed:
-                raise reading.fault(_not_marked(name, allowed), entry.where, origin.value)
+                raise reading.fault(_notmarked_fields(name, allowed), entry.where, origin.value)
             if name in origins:
                 raise reading.fault(
                     f"{name} is marked {origins[name]} as well; keep one mark", entry.where, origin.value
@@ -242,14 +257,14 @@ def _source(entry: Entry, reading: Reading) -> Source:
 
 
 def _sources(entry: Entry, reading: Reading, type_: type) -> dict[str, Source]:
-    allowed = _marked(type_)
+    allowed = marked_fields(type_)
     given = entry.cells.get("sources") or {}
     if not isinstance(given, Mapping):
         raise reading.fault("is no table of sources by field", entry.where, "sources")
     found = {}
     for name, source in given.items():
         if name not in allowed:
-            raise reading.fault(_not_marked(name, allowed), entry.where, "sources")
+            raise reading.fault(_notmarked_fields(name, allowed), entry.where, "sources")
         if not isinstance(source, Mapping) or not source.get("name"):
             raise reading.fault(f"{name} has no source with a name", entry.where, "sources")
         where = f"{entry.where}, sources"
@@ -264,7 +279,7 @@ def _same_or_fault(
     if record == first:
         reading.note(f"is in {earlier} already, with the same values; taken once", entry.where)
         return
-    differ = [name for name in _marked(type(record)) if getattr(record, name) != getattr(first, name)]
+    differ = [name for name in marked_fields(type(record)) if getattr(record, name) != getattr(first, name)]
     what = f"another {', '.join(differ[:3])}" if differ else "other sources or origins"
     raise reading.fault(f"is in {earlier} already, with {what}; keep the right one", entry.where, "model")
 

@@ -62,6 +62,11 @@ def key_of(heading: str) -> str:
 _BY_KEY = {key_of(name): name for name in KNOWN}
 
 
+def own_fields(heading: Sequence[Any]) -> list[str | None]:
+    """Field of every cell of a heading that is one of the project's own; ``None`` for any other."""
+    return [_BY_KEY.get(key_of(str(cell))) for cell in heading]
+
+
 def heading_row(rows: Sequence[Sequence[Any]]) -> tuple[int, int]:
     """Index of the row that is most like a heading, and how many of its cells are known."""
     best, most = 0, 0
@@ -104,7 +109,7 @@ def entries_of(
         )
     heading = [_text(cell) for cell in table.rows[at]]
     rows = list(enumerate(table.rows[at + 1 :], start=at + 2))
-    own = [_BY_KEY.get(key_of(text)) for text in heading]
+    own = own_fields(heading)
     named = sum(1 for text in heading if text)
     if "kind" in own or 2 * sum(name is not None for name in own) >= named:
         columns = _own_columns(heading, own, table.place(at + 1), reading)

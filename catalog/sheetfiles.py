@@ -13,7 +13,7 @@ from typing import TYPE_CHECKING
 
 from catalog.errors import CatalogError
 from catalog.records import Inverter, Module
-from catalog.sheet_entries import records_of
+from catalog.sheet_entries import checked_records, records_of
 from catalog.sheet_reading import Entry, Reading
 
 if TYPE_CHECKING:
@@ -69,11 +69,23 @@ def read_sheets(
     ending = _ending(path, "reads")
     reading = Reading(path, given or {})
     data = _data(path, reading)
-    records = records_of(_entries(ending, data, reading, settle, kind), reading)
+    records = _plain(data, reading) if ending == ".csv" and kind is None else None
+    if records is None:
+        records = records_of(_entries(ending, data, reading, settle, kind), reading)
     if not records:
         raise reading.fault("has a heading and no rows; enter at least one module or inverter")
     modules = [r for r in records if isinstance(r, Module)]
     return SheetFile(modules, [r for r in records if isinstance(r, Inverter)], reading.notes)
+
+
+def _plain(data: bytes, reading: Reading) -> list[Module | Inverter] | None:
+    """Records of a CSV file in the project's own plain form; ``None`` if it is not plain."""
+    from catalog import sheets_csv
+    from catalog.plain_tables import plain_records
+
+    (table,) = sheets_csv.read_tables(_text(data, reading), reading)
+    found = plain_records(table, reading)
+    return None if found is None else checked_records(*found, reading)
 
 
 def _entries(
