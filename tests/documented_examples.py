@@ -24,7 +24,8 @@ ROOT = Path(__file__).parent.parent
 ELISION = "..."
 
 _FENCE = re.compile(r"```(\w+)(?: (\S+))?\s*$")
-_SECONDS = re.compile(r"\b\d+\.\d s\b")
+#: What differs from run to run: seconds that something took, and the time of day.
+_TIMES = re.compile(r"\b\d+\.\d s\b|\b20\d\d-\d\d-\d\d \d\d:\d\d\b")
 
 
 @dataclass(frozen=True)
@@ -127,13 +128,13 @@ class Session:
 
 
 def agree(shown: list[str], printed: list[str]) -> bool:
-    """Whether a document shows what was printed, but for elisions and the seconds that something took."""
+    """Whether a document shows what was printed, but for elisions and times."""
     parts = []
     for line in shown:
-        exact = re.escape(_SECONDS.sub("? s", line)) + "\n"
+        exact = re.escape(_TIMES.sub("?", line)) + "\n"
         parts.append("(?:.*\n)*?" if line == ELISION else exact)
     pattern = "".join(parts)
-    return re.fullmatch(pattern, "".join(_SECONDS.sub("? s", line) + "\n" for line in printed)) is not None
+    return re.fullmatch(pattern, "".join(_TIMES.sub("?", line) + "\n" for line in printed)) is not None
 
 
 def renewed(shown: list[str], printed: list[str]) -> list[str]:
