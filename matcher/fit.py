@@ -53,6 +53,7 @@ class Option:
     coldest_c: float | None = None
     hottest_c: float | None = None
     cost: float | None = None
+    cold_by_hours: bool = False
 
     @property
     def power_clipping_pct(self) -> float | None:
@@ -157,6 +158,7 @@ class Fit:
             _number(table.clipping_pct[row]), _number(table.current_clipping_pct[row]),
             _number(table.yearly_kwh[row]), checks, confirm, coldest, hottest,
             _number(self.search.cost(table.take(slice(row, row + 1)))[0]),
+            self.request.rules.cold_voltage == "hourly",
         )  # fmt: skip
 
     def module_points(self, m: int) -> ModulePoints:

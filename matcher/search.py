@@ -257,6 +257,9 @@ class Search:
         """The year of one module, or of all its faces; ``None`` where there is none."""
         if self.year is None or self.year.power_w.ndim == 1 or self.request.faces:
             return self.year
+        if np.isnan(self.year.power_w[m]).all():
+            # No model of its power: bounds on losses must say unknown too, or all options are worked out.
+            return None
         hours = self.year.hours
         return replace(
             self.year, power_w=self.year.power_w[m], vmp_v=self.year.vmp_v[m], hours=hours[m] if hours.ndim == 2 else hours
