@@ -34,10 +34,14 @@ Settle = Callable[[ColumnMap], ColumnMap]
 
 @dataclass(frozen=True, slots=True)
 class Table:
-    """Rows of cells as a file has them; the first is row 1. ``name`` is that of its worksheet."""
+    """Rows of cells as a file has them; the first is row 1. ``name`` is that of its worksheet.
+
+    ``guarded`` tells that an apostrophe ahead of a text keeps spreadsheets from taking it for a formula.
+    """
 
     rows: Sequence[Sequence[Any]]
     name: str = ""
+    guarded: bool = False
 
     def place(self, number: int) -> str:
         """Where a row stands."""
@@ -111,7 +115,9 @@ def entries_of(
     rows = list(enumerate(table.rows[at + 1 :], start=at + 2))
     own = own_fields(heading)
     named = sum(1 for text in heading if text)
-    if "kind" in own or 2 * sum(name is not None for name in own) >= named:
+    # Headings such as "Voc (V)" are those of others, though they mean the same.
+    exact = sum(text.casefold() == (name or "").casefold() for text, name in zip(heading, own, strict=True) if text)
+    if "kind" in own or 2 * exact >= named:
         columns = _own_columns(heading, own, table.place(at + 1), reading)
         columns.kind = kind if "kind" not in own else None
     else:
@@ -203,7 +209,7 @@ def _entries(
             raise reading.fault(
                 f"has {len(row)} cells, the heading has {width}; put a cell with the separator in it in quotes", where
             )
-        cells = {name: _cell(row[k]) for k, name in used if k < len(row)}
+        cells = {name: _cell(row[k], table.guarded) for k, name in used if k < len(row)}
         if foreign and filled == 1 and not cells.get("model"):
             reading.note("holds a remark and no record; left out", where)
             continue
@@ -218,13 +224,13 @@ def _entries(
     return entries
 
 
-def _cell(cell: Any) -> Any:
-    """A cell without blanks around it; of a text that a spreadsheet must not take for a formula, the text."""
+def _cell(cell: Any, guarded: bool) -> Any:
+    """A cell without blanks around it and without the guard of a text."""
     if cell is None:
         return ""
     if isinstance(cell, str):
         cell = cell.strip()
-        return cell[1:] if len(cell) > 1 and cell[0] == "'" and cell[1] in "=+-@'" else cell
+        return cell[1:] if guarded and len(cell) > 1 and cell[0] == "'" and cell[1] in "=+-@'" else cell
     return cell
 
 

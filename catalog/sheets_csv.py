@@ -30,7 +30,7 @@ def read_tables(text: str, reading: Reading) -> list[Table]:
     if text.startswith("sep="):
         # A spreadsheet's own line about the separator; it stays a row, so that row numbers are those of the file.
         mark = text[4:5]
-        return [Table(_rows(text, mark if mark in _MARKS else ",", reading))]
+        return [Table(_rows(text, mark if mark in _MARKS else ",", reading), guarded=True)]
     line = text.lstrip("\r\n").partition("\n")[0]
     known = {mark: sum(key_of(cell.strip('" \r')) in _OWN for cell in line.split(mark)) for mark in _MARKS}
     mark = max(known, key=known.__getitem__)
@@ -38,7 +38,7 @@ def read_tables(text: str, reading: Reading) -> list[Table]:
         head = "\n".join(text.splitlines()[:25])
         score = {m: heading_row(list(csv.reader(io.StringIO(head), delimiter=m)))[1] for m in _MARKS if m in head}
         mark = max(score, key=score.__getitem__, default=mark)
-    return [Table(_rows(text, mark, reading))]
+    return [Table(_rows(text, mark, reading), guarded=True)]
 
 
 def _rows(text: str, mark: str, reading: Reading) -> list[list[str]]:
