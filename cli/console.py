@@ -41,7 +41,7 @@ def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> Non
     table = Table(box=None, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold", show_edge=False)
     for k, column in enumerate(columns):
         # What must not fold keeps its width; the columns that may fold give way.
-        whole = max([len(column.header), *(len(row[k]) for row in rows)])
+        whole = max(len(line) for text in (column.header, *(row[k] for row in rows)) for line in text.split("\n"))
         table.add_column(
             column.header,
             justify="right" if column.number else "left",

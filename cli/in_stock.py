@@ -80,7 +80,7 @@ def only_in_stock(catalog: Catalog, lots: Lots, kind: str) -> list[Any]:
     CatalogError
         Where there is none.
     """
-    ids = sorted(id_ for id_, some in lots.items() if some[0].kind == kind and _pieces(some) > 0)
+    ids = sorted(id_ for id_, some in lots.items() if some[0].kind == kind and pieces_of(some) > 0)
     if not ids:
         raise CatalogError(f"no {kind} is in stock: 'ferrule stock list' shows what is")
     return catalog.modules(ids) if kind == "module" else catalog.inverters(ids)
@@ -115,7 +115,8 @@ def on_shelf(
     return OnShelf(modules, inverters, shelf, tuple(notes))
 
 
-def _pieces(items: Sequence[StockItem]) -> int:
+def pieces_of(items: Sequence[StockItem]) -> int:
+    """How many pieces some lines are together."""
     return sum(item.quantity for item in items)
 
 
@@ -129,7 +130,7 @@ def _bounds(
 
     if not bounded:
         return records, np.full(len(records), UNLIMITED, dtype=np.int64)
-    there = {r.id: _pieces(lots[r.id]) if r.id in lots else None for r in records}
+    there = {r.id: pieces_of(lots[r.id]) if r.id in lots else None for r in records}
     if len(records) == 1:
         (record,) = records
         number = there[record.id]

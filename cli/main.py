@@ -24,12 +24,13 @@ app = typer.Typer(
 
 
 def _register() -> None:
-    from cli import demo, fit, sheet, site, swap, sweep, vet
+    from cli import demo, fit, sheet, site, stock, swap, sweep, vet
 
     app.command("fit")(fit.fit)
     app.command("vet")(vet.vet)
     app.command("swap")(swap.swap)
     app.add_typer(sheet.app, name="sheet")
+    app.add_typer(stock.app, name="stock")
     app.add_typer(site.app, name="site")
     app.command("sweep")(sweep.sweep)
     app.command("demo")(demo.demo)
