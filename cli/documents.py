@@ -31,7 +31,13 @@ def head(fit: Fit, weather: str | None) -> dict[str, Any]:
             "mounting": r.site.mounting,
             "weather": weather,
         },
-        "rules": {"name": r.rules.name, "isc_factor": r.rules.isc_factor, "voltage_cap_v": _known(cap)},
+        "rules": {
+            "name": r.rules.name,
+            "isc_factor": r.rules.isc_factor,
+            "voltage_cap_v": _known(cap),
+            "cold_voltage": r.rules.cold_voltage,
+        }
+        | ({"cold_margin_pct": r.rules.cold_margin_pct} if r.rules.cold_voltage == "hourly" else {}),
         "ratio_window": list(r.ratio),
         "order": fit.order,
     }

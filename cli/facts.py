@@ -16,6 +16,9 @@ if TYPE_CHECKING:
 #: Nowhere on Earth is the air colder (Vostok, 1983: -89.2 degC).
 COLDEST_ON_EARTH_C = -90.0
 
+#: Stands for the cold end of the climate window where the cold voltage comes from hourly weather.
+FROM_HOURS = "file"
+
 _VOLTAGE_MAXIMA = ("max_dc_voltage_v", "max_system_voltage_v")
 
 
@@ -74,10 +77,13 @@ def confirm_line(option: Option) -> str:
 def holds_from(option: Option) -> float | str | None:
     """Coldest air temperature at which the option holds [degC]; "any" where no place on Earth is colder.
 
-    ``None`` while a voltage maximum is to be confirmed: what is not known bounds it.
+    ``None`` while a voltage maximum is to be confirmed: what is not known bounds it. `FROM_HOURS` where the
+    cold voltage is that of the hours of a weather file, which no single temperature stands for.
     """
     if any(c.field in _VOLTAGE_MAXIMA for c in option.confirm):
         return None
+    if option.cold_by_hours:
+        return FROM_HOURS
     return "any" if option.coldest_c is None or option.coldest_c < COLDEST_ON_EARTH_C else option.coldest_c
 
 
@@ -94,8 +100,17 @@ def climate_words(option: Option, low_c: float, high_c: float) -> str:
     if low == high == "any":
         return "any temperature"
     waits = ", once confirmed" if low is None or high is None else ""
+    if low == FROM_HOURS:
+        low = "the cold of the weather file"
     ends = (low_c if low is None else low, high_c if high is None else high)
-    return f"{' to '.join(e if isinstance(e, str) else f'{e:.0f}' for e in ends)} °C{waits}"
+    return f"{whole(ends[0], cold=True)} to {whole(ends[1], cold=False)} °C{waits}"
+
+
+def whole(end: float | str, cold: bool) -> str:
+    """One end of a climate window in whole degrees, on the safe side; words as they are."""
+    if isinstance(end, str):
+        return end
+    return str(math.ceil(end - 1e-6) if cold else math.floor(end + 1e-6))
 
 
 def rests_on(fit: Fit, year: SiteYear) -> list[str]:
@@ -124,6 +139,14 @@ def assumptions(fit: Fit) -> list[str]:
     from matcher.electrical import ASSUMED_NOCT_C
 
     lines = []
+    rules = fit.request.rules
+    if rules.cold_voltage == "hourly":
+        lines.append(
+            f"Cold voltage: the highest modelled Voc of the weather file's sunlit hours and {rules.cold_margin_pct:g} %"
+            f" margin, as rule set {rules.name} says; it rests on that file and not on the design low."
+        )
+    elif rules.cold_voltage == "table":
+        lines.append(f"Cold voltage: by NEC Table 690.7(A) for crystalline silicon, as rule set {rules.name} says.")
     if any(m.noct_c is None for m in fit.modules[:1]) and len(fit.modules) == 1:
         lines.append(f"Assumed: NOCT {ASSUMED_NOCT_C:g} degC, which the module's record does not state.")
     assumed = sum(1 for i in fit.inverters if i.origin("inputs") == "assumed")

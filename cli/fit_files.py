@@ -121,6 +121,7 @@ _COLUMNS: tuple[tuple[str, Callable[[Fit, Options, int], Any]], ...] = (
     ("yearly_kwh", lambda f, t, k: blank(t.yearly_kwh[k])),
     ("cold_voltage_margin_pct", lambda f, t, k: blank(t.margin_pct[k])),
     ("string_lengths", lambda f, t, k: t.lengths[k]),
+    ("rules", lambda f, t, k: safe(f.request.rules.name)),
 )
 
 

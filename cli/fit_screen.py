@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
-from cli.facts import assumptions, at_least, confirm_words, holds_from, holds_to
+from cli.facts import assumptions, at_least, confirm_words, holds_from, holds_to, whole
 from matcher.checks import Check, Confirm, Verdict, face_mark
 
 if TYPE_CHECKING:
@@ -70,7 +70,7 @@ def show_grounds(fit: Fit, year: SiteYear) -> None:
     """Print what the answer rests on, and the cautions."""
     for line in year.notes or (f"No clipping figure: {year.why_not}.",):
         say(line)
-    if year.year is not None:
+    if year.year is not None and year.year.shows_clipping:
         say(HOURLY_MEANS)
     for line in assumptions(fit):
         say(line)
@@ -203,11 +203,11 @@ def _unit_wiring(unit: Unit) -> str:
 def climate_window(option: Option) -> str:
     """Coldest to hottest air temperature at which the option holds.
 
-    ``any`` where nothing bounds it; ``?`` where a value that is to be confirmed would.
+    ``any`` where nothing bounds it; ``?`` where a value that is to be confirmed would; whole degrees on the
+    safe side.
     """
-    ends = ("?" if end is None else end if isinstance(end, str) else f"{end:.0f}"
-            for end in (holds_from(option), holds_to(option)))  # fmt: skip
-    return " to ".join(ends)
+    low, high = holds_from(option), holds_to(option)
+    return f"{'?' if low is None else whole(low, cold=True)} to {'?' if high is None else whole(high, cold=False)}"
 
 
 def _confirm_lines(fit: Fit, options: Sequence[Option]) -> None:

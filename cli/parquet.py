@@ -108,6 +108,7 @@ def _fit_columns(fit: Fit, t: Options) -> dict[str, Column]:
         "yearly_kwh": t.yearly_kwh,
         "cold_voltage_margin_pct": t.margin_pct,
         "string_lengths": t.lengths,
+        "rules": ([fit.request.rules.name], np.zeros(len(t), dtype=np.int32)),
     }
 
 

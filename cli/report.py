@@ -254,18 +254,18 @@ def _cells(fit: Fit, o: Option, columns: Sequence[Column]) -> list[Cell]:
         "DC/AC": Cell(f"{o.dc_ac_ratio:.2f}", o.dc_ac_ratio),
         "clipped %": Cell(number(o.clipping_loss_pct, 2), o.clipping_loss_pct),
         "kWh a year": Cell(number(o.yearly_kwh), o.yearly_kwh),
-        "holds from °C": _end(facts.holds_from(o), -999.0),
-        "holds to °C": _end(facts.holds_to(o), 999.0),
+        "holds from °C": _end(facts.holds_from(o), True, -999.0),
+        "holds to °C": _end(facts.holds_to(o), False, 999.0),
         "to confirm": Cell(facts.confirm_short(o)),
     }
     return [known[c.header] for c in columns]
 
 
-def _end(value: float | str | None, beyond: float) -> Cell:
+def _end(value: float | str | None, cold: bool, beyond: float) -> Cell:
     """One end of the climate window; any temperature sorts beyond every number."""
     if value is None:
         return Cell("?")
-    return Cell(value, beyond) if isinstance(value, str) else Cell(typeset(f"{value:.0f}"), value)
+    return Cell(value, beyond) if isinstance(value, str) else Cell(typeset(facts.whole(value, cold)), value)
 
 
 def _rejected(fit: Fit) -> list[dict[str, str]]:

@@ -130,7 +130,12 @@ def string_in_climate(fit: Fit, option: Option) -> StringInClimate:
 
 
 def _dawn_voc(module: Module, site: Site, rules: RuleSet, ambient: np.ndarray) -> np.ndarray:
-    """Voc of a module [V] with its cells at the air's temperature, by the method of the rule set."""
+    """Voc of a module [V] with its cells at the air's temperature, by the method of the rule set.
+
+    By the coefficient, or the table, where the rule set takes the cold voltage from hours of weather.
+    """
+    if rules.cold_voltage == "hourly":
+        rules = replace(rules, cold_voltage="coefficient")
     # A coefficient of Vmp only spares the engine the single-diode model, whose Vmp is not asked for here.
     plain = replace(module, vmp_coef_pct=module.vmp_coef_pct or -0.4)
     return np.array(
@@ -187,7 +192,7 @@ def _one_inverter(fit: Fit, module: int, inverter: int, ratio: tuple[float, floa
         hours = year.hours[module] if year.hours.ndim == 2 else year.hours
         year = ModuleYear(year.power_w[module], year.vmp_v[module], hours)
     request = replace(fit.request, ratio=ratio, counts=None, strings=None, units=(1, 1), every=False)
-    points = design_points(fit.modules[module : module + 1], request.site, request.rules)
+    points = fit.points.take(module)
     return Search(
         fit.modules[module : module + 1],
         InverterColumns.of(fit.inverters[inverter : inverter + 1]),

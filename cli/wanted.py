@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from math import inf
 from typing import TYPE_CHECKING, Annotated
 
 import typer
@@ -79,8 +80,8 @@ def worth_of(
         if given:
             raise CatalogError(f"{given[0]} needs the worth of a kWh: --energy-price")
         return None
-    if any(v is not None and v < 0 for v in (energy_price, *prices.values())) or not 0 < years <= 100:
-        raise CatalogError("prices and energies are not below 0, and the years are above 0 and at most 100")
+    if any(v is not None and not 0 <= v < inf for v in (energy_price, *prices.values())) or not 0 < years <= 100:
+        raise CatalogError("prices and energies are numbers not below 0, and the years are above 0 and at most 100")
     if own_use is not None and export_price is None:
         raise CatalogError("--own-use leaves a surplus: say what it is paid with --export-price, 0 where it is not")
     if own_use is None and export_price is not None:

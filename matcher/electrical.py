@@ -7,7 +7,7 @@ cannot be matched at all carries the reason.
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -47,6 +47,10 @@ class Points:
     imp_a: np.ndarray
     pmax_w: np.ndarray
     reasons: tuple[str | None, ...]
+
+    def take(self, m: int) -> Points:
+        """The values of one module."""
+        return Points(*(getattr(self, f.name)[m : m + 1] for f in fields(self)))
 
 
 def hot_adder(module: Module, site: Site) -> float:
