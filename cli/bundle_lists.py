@@ -159,7 +159,7 @@ class Reader:
         return self._known[text]
 
     def _read(self, text: str) -> int | str:
-        from catalog.names import resolve
+        from catalog.names import look_up, resolve
 
         if not text:
             return f"no {self._kind} is named"
@@ -169,9 +169,14 @@ class Reader:
         found = resolve(text, self._index)
         if found.confidence == "sure":
             return found.candidates[0].id
-        if found.confidence == "none" or not found.candidates:
+        candidates = found.candidates
+        if found.confidence == "none" or not candidates:
+            # What is too little for a text may be a part of a name that several records have.
+            typed = look_up(text, self._index)
+            candidates = typed.candidates if typed.match is not None or typed.ambiguous else []
+        if not candidates:
             return f"no {self._kind} of the catalog is like {text!r}"
-        near = " or ".join(self._name[c.id] for c in found.candidates[:3])
+        near = " or ".join(self._name[c.id] for c in candidates[:3])
         return f"{self._kind} {text!r}: choose among {near}"
 
 

@@ -12,6 +12,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from catalog.records import Inverter, Module, Site
+from matcher.bench import with_diode
 from matcher.checks import Confirm, Pair, Verdict, to_confirm, verdict
 from matcher.electrical import design_points
 from matcher.errors import MatcherError
@@ -76,9 +77,10 @@ def swap_part(
         Where the old module cannot be matched.
     """
     trackers = [t for unit in wired for _ in range(unit.copies) for t in unit.trackers]
+    place = {m.name: k for k, m in enumerate(modules)}
     others = [m for m in modules if m.name != old.name]
-    place = {id(m): k for k, m in enumerate(modules)}
-    near = _nearest(old, others, nearest)
+    old = with_diode(old)
+    near = [with_diode(m) for m in _nearest(old, others, nearest)]
     own = design_points([old], site, rules, plane)
     if own.reasons[0] is not None:
         raise MatcherError(f"{old.name} cannot be matched: {own.reasons[0]}")
@@ -103,7 +105,7 @@ def swap_part(
             continue
         found.append(
             PartSwap(
-                place[id(new)], str(outcome), together, tuple(dict.fromkeys(to_confirm(checks))),
+                place[new.name], str(outcome), together, tuple(dict.fromkeys(to_confirm(checks))),
                 stc and stc.mismatch(together), hot and hot.mismatch(together), stc and stc.mismatch(apart),
             )  # fmt: skip
         )
