@@ -32,10 +32,6 @@ def main(number: int = 10_000) -> None:
     with tempfile.TemporaryDirectory() as name:
         folder = Path(name)
 
-        def run(catalog: Catalog, file: tuple[str, bytes]) -> None:
-            form = Path(file[0]).suffix
-            (taken if check(folder, catalog, *file) else refused)[form] += 1
-
         # A new catalog now and then keeps each load short.
         while (done := taken.total() + refused.total()) < number:
             with Catalog.open(folder / f"{done}.sqlite", create=True) as catalog:
@@ -44,7 +40,13 @@ def main(number: int = 10_000) -> None:
                     max_examples=some, deadline=None, database=None, phases=[Phase.generate, Phase.shrink],
                     suppress_health_check=list(HealthCheck),
                 )  # fmt: skip
-                quiet(given(files)(lambda file, catalog=catalog: run(catalog, file)))()
+
+                @quiet
+                @given(files)
+                def run(file: tuple[str, bytes]) -> None:
+                    (taken if check(folder, catalog, *file) else refused)[Path(file[0]).suffix] += 1  # noqa: B023
+
+                run()
     total = taken.total() + refused.total()
     print(f"{total:,} files in {time.perf_counter() - began:.0f} s: {taken.total():,} taken, {refused.total():,} refused in one line")
     for form in sorted({*taken, *refused}):

@@ -110,7 +110,8 @@ def _tokens(text: str) -> list[Token]:
         sort = match.lastgroup or ""
         if sort == "unit" or match["number"]:
             unit, end = match["unit"] or "", match.end()
-            if unit.casefold() in _WORDS:
+            if unit and unit_of(unit) is None:
+                # The next word, not a unit.
                 unit, end = "", match.start("unit")
             found.append(Token("number", float(match["number"]), match.start("number"), unit))
             at = end

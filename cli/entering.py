@@ -50,6 +50,10 @@ class Entering:
     kind: str
     answers: dict[str, str] = field(default_factory=dict)
 
+    def pointless(self, spec: FieldSpec) -> bool:
+        """Whether there is nothing to ask: what is not bifacial has no bifaciality."""
+        return spec.name == "bifaciality" and self.values().get("bifacial") is False
+
     def to_bytes(self) -> bytes:
         """To keep it as a draft."""
         return json.dumps(self.answers).encode()

@@ -64,11 +64,17 @@ def _fill(catalog: Catalog, draft: Entering) -> None:
         _tell("Blank: not known. back: the field before. later (or Ctrl-D): leave, and go on another time.")
     place = next((k for k, spec in enumerate(fields) if spec.name not in draft.answers), len(fields))
     while place < len(fields):
+        if draft.pointless(fields[place]):
+            draft.answers[fields[place].name] = ""
+            place += 1
+            continue
         try:
             _ask(catalog, draft, fields[place], f"{place + 1}/{len(fields)}")
             place += 1
         except _Back:
             place = max(place - 1, 0)
+            while place and draft.pointless(fields[place]):
+                place -= 1
 
 
 def _ask(catalog: Catalog, draft: Entering, spec: FieldSpec, count: str = "") -> None:
