@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
 from cli.facts import assumptions, at_least, confirm_words, holds_from, holds_to, whole
+from cli.quoting import amend_command
 from matcher.checks import Check, Confirm, Verdict, face_mark
 
 if TYPE_CHECKING:
@@ -226,6 +227,17 @@ def _confirm_lines(fit: Fit, options: Sequence[Option]) -> None:
             say(f"#{o.rank}  {own}: {'; '.join(words)}", indent=2)
     if len(waiting) > 5:
         say("(the document holds them for every option: --json)", indent=2)
+    say(f"What you have read goes on record by a command, here for #{waiting[0].rank}:")
+    for command in _amend_commands(fit, waiting[0]):
+        # Not wrapped: it is there to be copied.
+        print(f"  {command}")
+
+
+def _amend_commands(fit: Fit, option: Option) -> list[str]:
+    """Commands that enter what an option waits for, one per record."""
+    records = {"module": fit.modules[option.module], "inverter": fit.inverters[option.inverter]}
+    asked = {kind: [c for c in option.confirm if c.record == kind] for kind in records}
+    return [amend_command(records[kind], *some) for kind, some in asked.items() if some]
 
 
 def _shared(fit: Fit, waiting: Sequence[Option]) -> list[str]:

@@ -10,26 +10,30 @@ if TYPE_CHECKING:
     from matcher.checks import Confirm
 
 
-def amend_command(record: Module | Inverter, confirm: Confirm) -> str:
-    """The command that enters the value which a ``to-confirm`` verdict asked for.
+def amend_command(record: Module | Inverter, *confirms: Confirm) -> str:
+    """The command that enters the values which a ``to-confirm`` verdict asked for.
 
     Parameters
     ----------
     record : Module or Inverter
-        The record that lacks it.
-    confirm : Confirm
-        What is asked for.
+        The record that lacks them.
+    *confirms : Confirm
+        What is asked for of it.
 
     Returns
     -------
     str
         With ``VALUE`` and ``DOCUMENT`` to be filled in.
     """
-    values = [f"{confirm.field}=VALUE"]
-    if confirm.inputs is not None:
-        values = [f"inputs[{confirm.inputs + 1}].{confirm.field}=VALUE"]
+    values = []
+    for confirm in confirms:
+        if confirm.inputs is None:
+            values.append(f"{confirm.field}=VALUE")
+            continue
+        group = f"inputs[{confirm.inputs + 1}]"
         if record.origin("inputs") == "assumed":
             # How many trackers there are is assumed too, so that is asked for with it.
-            values.insert(0, f"inputs[{confirm.inputs + 1}].trackers=VALUE")
-    quoted = [f'"{value}"' if "[" in value else value for value in values]
+            values.append(f"{group}.trackers=VALUE")
+        values.append(f"{group}.{confirm.field}=VALUE")
+    quoted = [f'"{value}"' if "[" in value else value for value in dict.fromkeys(values)]
     return f"ferrule sheet amend {shlex.quote(record.name)} {' '.join(quoted)} --source DOCUMENT"
