@@ -33,8 +33,11 @@ from matcher.singles import expand
 WHOLE = 2_000
 WHOLE_EVERY = 50_000
 
-#: Options worked out before they are reduced to the best of each pair.
+#: Options worked out at once.
 PART = 400_000
+#: Options among which the best of each pair are sought at once, and the modules that they may have: bounds memory.
+PART_OF_BESTS = 100_000
+MODULES_OF_BESTS = 2_000
 
 #: Options that can be sorted at once.
 MOST_AT_ONCE = 5_000_000
@@ -58,11 +61,6 @@ class Search:
     def system_voltage_v(self) -> np.ndarray:
         """Maximum system voltage of each module [V], NaN where not stated."""
         return column(self.modules, "max_system_voltage_v")
-
-    @cached_property
-    def _heads(self) -> Heads:
-        assert self.year is not None
-        return Heads.of(self.year, self.request.clip_cap_pct)
 
     @cached_property
     def name_rank(self) -> np.ndarray:
@@ -130,7 +128,9 @@ class Search:
                 f"{total:,} arrangements are too many to list at once; narrow the ratio window or the module count"
             )
         tables, pairs = [], []
-        for first, last in expansion.parts(PART):
+        per_module = total // max(1, len(np.unique(module)))
+        size = PART if every else min(PART_OF_BESTS, MODULES_OF_BESTS * max(1, per_module))
+        for first, last in expansion.parts(size):
             pair, strings, in_series = expansion.part(first, last)
             if every:
                 options = self._single_options(module[pair], inverter[pair], limits, pair, strings, in_series)
@@ -181,10 +181,15 @@ class Search:
         ahead = np.diff(pair, prepend=-1) != 0
         ahead |= np.diff(in_series, prepend=-1) != 0
         first = np.flatnonzero(ahead)
-        lines = module if self.year.power_w.ndim == 2 else np.zeros_like(module)
         head = pair[first]
+        year, line = self.year, np.zeros(len(head), dtype=np.int64)
+        if year.power_w.ndim == 2:
+            several, line = np.unique(module[head], return_inverse=True)
+            hours = year.hours[several] if year.hours.ndim == 2 else year.hours
+            year = replace(year, power_w=year.power_w[several], vmp_v=year.vmp_v[several], hours=hours)
+        heads = Heads.of(year, self.request.clip_cap_pct)
         found = estimate(
-            self._heads, self.inverters, lines[head], inverter[head], in_series[first], np.cumsum(ahead) - 1, strings
+            heads, self.inverters, line, inverter[head], in_series[first], np.cumsum(ahead) - 1, strings
         )
         found[~can_estimate(self.inverters)[inverter[pair]]] = np.nan
         return found

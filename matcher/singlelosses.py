@@ -20,6 +20,9 @@ from matcher.moduleyear import ModuleYear
 #: With more string lengths than this on one module's year, modules are gone through one by one.
 _WORTH_A_LINE = 48
 
+#: With more options than this for each string length, sums over the year are made once for a string length.
+_WORTH_MOMENTS = 3
+
 
 def single_losses(
     year: ModuleYear,
@@ -56,9 +59,9 @@ def single_losses(
     if len(lines) and len(lines) > _WORTH_A_LINE * len(ends):
         first = 0
         for end in ends.tolist():
-            at = lines[first]
-            _fill(power[at], volts[at], hours[at], inverters, inverter, strings, in_series, order,
-                  starts[first:end], sizes[first:end], sums, room)  # fmt: skip
+            at, part = lines[first], slice(first, end)
+            _fill_line(power[at], volts[at], hours[at], inverters, inverter, strings, in_series, order,
+                       starts[part], sizes[part], sums, room)  # fmt: skip
             first = end
     elif len(lines):
         for first in range(0, len(lines), step):
@@ -71,6 +74,100 @@ def single_losses(
     for values in (losses.power_pct, losses.current_pct, losses.yearly_kwh):
         values[~known] = np.nan
     return losses.of(year)
+
+
+def _fill_line(power, volts, hours, inverters, inverter, strings, in_series, order, starts, sizes, sums, room) -> None:
+    """As `_fill`, for groups on one year (classes,)."""
+    if len(order) >= _WORTH_MOMENTS * len(starts):
+        head = order[starts]
+        row, length = inverter[head], in_series[head].astype(float)
+        most = length * strings[order[starts + sizes - 1]]
+        tame = _bounds(power, volts, length, *_at_voltage(inverters, row), most)[0]
+        tame &= np.isnan(inverters.max_current_a[row])
+        _fill_by_moments(power, volts, hours, inverters, inverter, strings, in_series, order,
+                         starts[tame], sizes[tame], sums, room)  # fmt: skip
+        starts, sizes = starts[~tame], sizes[~tame]
+    _fill(power, volts, hours, inverters, inverter, strings, in_series, order, starts, sizes, sums, room)
+
+
+def _fill_by_moments(
+    power, volts, hours, inverters, inverter, strings, in_series, order, starts, sizes, sums, room
+) -> None:  # fmt: skip
+    """As `_fill`, for groups of many options with tame efficiencies, no current limit, on one year (classes,).
+
+    The AC power is a parabola in the number of modules in each class, and so is its sum over the year. Only
+    what is above the limit, in the classes of highest power, and the classes of lowest power, where an inverter
+    may not start, are gone through for each option.
+    """
+    falling = np.argsort(-power, kind="stable")
+    power, volts, hours = power[falling], volts[falling], hours[falling]
+    step = room.shape[1]
+    for first in range(0, len(starts), step):
+        begins, lengths = starts[first : first + step], sizes[first : first + step]
+        head = order[begins]
+        row, length = inverter[head], in_series[head].astype(float)
+        start, span, bend, rated = _at_voltage(inverters, row)
+        fewest, most = length * strings[head], length * strings[order[begins + lengths - 1]]
+        _, least, steepest, lowest = _bounds(power, volts, length, start, span, bend, rated, most)
+        begin = np.nan_to_num(inverters.sandia[row, 0])  # DC power below which nothing is delivered
+        least = np.maximum(least, begin)
+        limit = inverters.ac_power_w[row]
+        near_limit = (limit / steepest + lowest) * (1.0 - 1e-9)
+
+        c0, c1, c2, work, more, _ = room[:, : len(row)]
+        _lines((start, span, bend), length, volts, (work, c1, c2))
+        # From d * (rated / span + c2 * (d - span)) with d = dc - start.
+        np.divide(rated[:, None], c1, out=c0)
+        c1 *= c2
+        np.subtract(c0, c1, out=c1)
+        np.multiply(c2, work, out=more)
+        np.subtract(more, c1, out=c0)
+        c0 *= work
+        more *= 2.0
+        c1 -= more
+
+        of = np.repeat(np.arange(len(row)), lengths)
+        which = order[np.arange(len(of)) + np.repeat(begins - np.cumsum(lengths) + lengths, lengths)]
+        modules = length[of] * strings[which]
+        low = int(np.searchsorted(-power, -(least / fewest).max(), side="left"))
+        w = hours[:low]
+        a0, a1, a2 = c0[:, :low] @ w, c1[:, :low] @ (w * power[:low]), c2[:, :low] @ (w * power[:low] ** 2)
+        total = (a2[of] * modules + a1[of]) * modules + a0[of]
+        over = np.zeros(len(of))
+        # Those with like numbers of classes above the limit together.
+        heads = np.searchsorted(-power, -(near_limit[of] / modules), side="right")
+        by_head = np.argsort(-heads, kind="stable")
+        for k in range(0, len(of), step):
+            some = by_head[k : k + step]
+            g, m = of[some], modules[some]
+            ac, dc = _parabola(c0, c1, c2, g, slice(low, None), m, power)
+            ac[dc < begin[g, None]] = 0.0
+            total[some] += np.maximum(ac, 0.0, out=ac) @ hours[low:]
+            high = int(heads[some[0]])
+            if high:
+                ac, _ = _parabola(c0, c1, c2, g, slice(0, high), m, power)
+                ac -= limit[g, None]
+                over[some] = np.maximum(ac, 0.0, out=ac) @ hours[:high]
+        sums[0, which] = total
+        sums[1, which] = sums[2, which] = total - over
+
+
+def _parabola(c0, c1, c2, group, classes, modules, power) -> tuple[np.ndarray, np.ndarray]:
+    """AC and DC power [W] of options (n,) of some groups in some classes."""
+    dc = modules[:, None] * power[classes]
+    ac = c2[:, classes].take(group, axis=0)
+    ac *= dc
+    ac += c1[:, classes].take(group, axis=0)
+    ac *= dc
+    ac += c0[:, classes].take(group, axis=0)
+    return ac, dc
+
+
+def _lines(coefficients, length, volts, out) -> None:
+    """``at zero + slope * length * volts`` of each pair of coefficients, for groups and classes."""
+    for (at_zero, slope), values in zip(coefficients, out, strict=True):
+        np.multiply((slope * length)[:, None], volts, out=values)
+        values += at_zero[:, None]
 
 
 def _fill(power, volts, hours, inverters, inverter, strings, in_series, order, starts, sizes, sums, room) -> None:
@@ -103,9 +200,7 @@ def _fill_chunk(power, volts, hours, inverters, inverter, strings, in_series, or
     low = _first_low_class(power, volts, length, start, span, c2, rated, begin, fewest, most)
 
     at_start, at_span, curve, share, d, work = room[:, : len(row)]
-    for (at_zero, slope), values in zip((start, span, c2), (at_start, at_span, curve), strict=True):
-        np.multiply((slope * length)[:, None], volts, out=values)
-        values += at_zero[:, None]
+    _lines((start, span, c2), length, volts, (at_start, at_span, curve))
     np.divide(rated[:, None], at_span, out=share)
 
     def delivered(dc: np.ndarray, which: slice | np.ndarray) -> np.ndarray:
@@ -159,25 +254,29 @@ def _at_voltage(inverters: InverterColumns, row: np.ndarray) -> tuple:
     return start, span, c2, paco
 
 
-def _first_low_class(power, volts, length, start, span, c2, rated, begin, fewest, most) -> int:
-    """First class from which on AC power may have to be set to none; 0 where that may be anywhere.
+def _bounds(power, volts, length, start, span, c2, rated, most) -> tuple[np.ndarray, ...]:
+    """Whether efficiencies are tame, and bounds over all voltages of the year; arrays (n,).
 
-    Above the start power the AC power can only be negative where the curvature outweighs the efficiency, which
-    is looked at with the least favourable voltage of the year.
+    Tame: AC power is positive above the start power, up to the power of ``most`` modules. The bounds: the
+    highest start power [W], the highest AC power per watt above the start power, the lowest start power [W].
     """
     ends = np.stack([volts.min(axis=-1) * length, volts.max(axis=-1) * length])
     starts, spans, curves = (a + b * ends for a, b in (start, span, c2))
-    highest = most * power.max(axis=-1)
-    beyond = np.maximum(highest - starts.min(axis=0) - spans.min(axis=0), 0.0)
-    tame = (spans.min(axis=0) > 0) & (
-        rated / np.where(spans > 0, spans, 1.0).max(axis=0)
-        + np.minimum(curves.min(axis=0), 0.0) * beyond
-        - np.maximum(curves.max(axis=0), 0.0) * spans.max(axis=0)
-        >= 0
-    )
+    least_span, most_span = spans.min(axis=0), spans.max(axis=0)
+    beyond = np.maximum(most * power.max(axis=-1) - starts.min(axis=0) - least_span, 0.0)
+    down, up = np.minimum(curves.min(axis=0), 0.0), np.maximum(curves.max(axis=0), 0.0)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        tame = (least_span > 0) & (rated / most_span + down * beyond - up * most_span >= 0)
+        steepest = rated / least_span + up * beyond - down * most_span
+    return tame, starts.max(axis=0), steepest, starts.min(axis=0)
+
+
+def _first_low_class(power, volts, length, start, span, c2, rated, begin, fewest, most) -> int:
+    """First class from which on AC power may have to be set to none; 0 where that may be anywhere."""
+    tame, least, *_ = _bounds(power, volts, length, start, span, c2, rated, most)
     if not tame.all():
         return 0
-    need = np.maximum(starts.max(axis=0), begin) / fewest
+    need = np.maximum(least, begin) / fewest
     low = power < (need.max() if power.ndim == 1 else need[:, None])
     low = low if low.ndim == 1 else low.any(axis=0)
     return int(np.argmax(low)) if low.any() else len(low)
