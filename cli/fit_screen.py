@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
-from cli.facts import assumptions, at_least, confirm_words, holds_from, holds_to, whole
+from cli.facts import assumptions, at_least, confirm_words, holds_from, holds_to, number_of_options, whole
 from cli.quoting import amend_command
 from matcher.checks import Check, Confirm, Verdict, face_mark
 
@@ -28,6 +28,7 @@ def on_terminal() -> bool:
 def show(fit: Fit, year: SiteYear, *, limit: int, checks: bool, why: bool) -> None:
     """Print the answer."""
     options = show_options(fit, year, limit)
+    _amend_lines(fit, options)
     if checks or fit.is_pair:
         for option in options if checks else options[:1]:
             say()
@@ -60,7 +61,7 @@ def show_options(fit: Fit, year: SiteYear, limit: int) -> list[Option]:
     if options:
         say(f"Order: {fit.order}.")
         _options_tables(fit, options, year.year is not None)
-        more = _number_listed(fit) - len(options)
+        more = number_of_options(fit) - len(options)
         if more > 0:
             say(f"... and {more:,} more (--limit N shows more, --out FILE.csv holds all of them).")
         _confirm_lines(fit, options)
@@ -122,6 +123,8 @@ def answer(fit: Fit, options: Sequence[Option]) -> str:
     if not t.arrangements:
         return "Nothing fits."
     ways = f"{t.arrangements:,} arrangement{'s' if t.arrangements != 1 else ''}"
+    if fit.request.several:
+        ways += " of one unit"
     if fit.is_pair:
         words = f"In {ways}."
     else:
@@ -130,10 +133,6 @@ def answer(fit: Fit, options: Sequence[Option]) -> str:
     if options and options[0].verdict is Verdict.TO_CONFIRM:
         words += " None is proven by the ratings on record: each waits for values to confirm."
     return words
-
-
-def _number_listed(fit: Fit) -> int:
-    return fit.totals.arrangements if fit.request.every else fit.totals.records_with_option
 
 
 def _options_tables(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
@@ -227,9 +226,16 @@ def _confirm_lines(fit: Fit, options: Sequence[Option]) -> None:
             say(f"#{o.rank}  {own}: {'; '.join(words)}", indent=2)
     if len(waiting) > 5:
         say("(the document holds them for every option: --json)", indent=2)
-    say(f"What you have read goes on record by a command, here for #{waiting[0].rank}:")
-    for command in _amend_commands(fit, waiting[0]):
-        # Not wrapped: it is there to be copied.
+
+
+def _amend_lines(fit: Fit, options: Sequence[Option]) -> None:
+    """Print the commands that put the values on record which the first waiting option asks for."""
+    waiting = next((o for o in options if o.confirm), None)
+    if waiting is None:
+        return
+    say(f"What you have read goes on record by a command, here for #{waiting.rank}:")
+    for command in _amend_commands(fit, waiting):
+        # Not wrapped as text: it is there to be copied.
         print(f"  {command}")
 
 

@@ -10,6 +10,10 @@ if TYPE_CHECKING:
     from matcher.checks import Confirm
 
 
+#: Longer command lines are parted as a shell understands it.
+_WIDTH = 96
+
+
 def amend_command(record: Module | Inverter, *confirms: Confirm) -> str:
     """The command that enters the values which a ``to-confirm`` verdict asked for.
 
@@ -36,4 +40,6 @@ def amend_command(record: Module | Inverter, *confirms: Confirm) -> str:
             values.append(f"{group}.trackers=VALUE")
         values.append(f"{group}.{confirm.field}=VALUE")
     quoted = [f'"{value}"' if "[" in value else value for value in dict.fromkeys(values)]
-    return f"ferrule sheet amend {shlex.quote(record.name)} {' '.join(quoted)} --source DOCUMENT"
+    words = [f"ferrule sheet amend {shlex.quote(record.name)}", *quoted, "--source DOCUMENT"]
+    line = " ".join(words)
+    return line if len(line) <= _WIDTH else " \\\n    ".join([words[0], " ".join(words[1:])])
