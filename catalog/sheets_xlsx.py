@@ -7,6 +7,7 @@ A workbook is a ZIP archive of XML. Before anything of it is read, its sizes are
 from __future__ import annotations
 
 import io
+import warnings
 import zipfile
 from collections.abc import Sequence
 from datetime import date, datetime
@@ -41,7 +42,10 @@ def read_tables(data: bytes, reading: Reading) -> list[Table]:
     from openpyxl import load_workbook
 
     try:
-        book = load_workbook(io.BytesIO(data), read_only=True, data_only=True, keep_links=False)
+        with warnings.catch_warnings():
+            # What openpyxl leaves out (styles, printer settings) is nothing that is read here.
+            warnings.simplefilter("ignore")
+            book = load_workbook(io.BytesIO(data), read_only=True, data_only=True, keep_links=False)
         tables = [Table(_rows(sheet, reading), sheet.title) for sheet in book.worksheets if sheet.sheet_state == "visible"]
     except CatalogError:
         raise

@@ -137,7 +137,7 @@ def test_a_value_to_confirm_is_one_command_away(ferrule, small_catalog, record):
 
 def test_that_command_asks_for_the_number_of_trackers_where_it_is_assumed(ferrule, small_catalog, record):
     asked = Confirm("inverter", "max_isc_a", 14.4, "A", inputs=0)
-    words = shlex.split(amend_command(INVERTER, asked))
+    words = shlex.split(amend_command(INVERTER, asked).replace("\\\n", ""))
     assert ferrule(*[word.replace("VALUE", "2").replace("DOCUMENT", "sheet") for word in words[1:]]).status == 0
     assert record("QN-5000 [240V]").inputs == (Inputs(trackers=2, max_isc_a=2.0),)
     assert "trackers=" not in amend_command(TWO_GROUPS, Confirm("inverter", "max_isc_a", 14.4, "A", inputs=1))
