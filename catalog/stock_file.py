@@ -234,6 +234,8 @@ class _List:
         if isinstance(cell, float) and cell.is_integer() and abs(cell) < 1e15:
             cell = int(cell)
         text = " ".join(str(cell).split())
+        if re.match("'[=+@-]", text):
+            text = text[1:]  # the mark that keeps a spreadsheet from taking a text for a formula
         if not text.isprintable() or len(text) > 2000:
             raise self._bad(row, name, "holds characters that cannot be printed, or far too many; write it anew")
         return text

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
 
@@ -13,6 +12,7 @@ from catalog.errors import CatalogError
 
 if TYPE_CHECKING:
     from catalog.records import Site
+    from catalog.stock import StockItem
     from catalog.store import Catalog
     from matcher.fit import Fit, Option
 
@@ -68,14 +68,16 @@ def _fresh(keep: str | None) -> Path:
 
 
 def _stock_shelf(catalog: Catalog) -> None:
-    """Load the demo's datasheets and sites."""
+    """Load the demo's datasheets, sites and stock list."""
     import seed_catalog
     from catalog.sheetfiles import read_sheets
+    from catalog.stock_file import read_stock_file
 
     files = [read_sheets(seed_catalog.path(name)) for name in SHEETS]
     catalog.load([m for f in files for m in f.modules], [i for f in files for i in f.inverters])
     for site in _sites(seed_catalog.path(SITES)):
         catalog.add_site(site)
+    catalog.load_stock(read_stock_file(seed_catalog.path(STOCK)).items)
 
 
 def _sites(path: Path) -> list[Site]:
@@ -103,7 +105,7 @@ def _answer(catalog: Catalog, path: Path) -> None:
     year = site_year(catalog, site, module)
     found = search([module], inverters, request, year.year)
 
-    shelf = _shelf()
+    shelf = _shelf(catalog)
     left = shelf[MODULE]
     say(
         f"The demo: Loam & Lantern, an invented distributor, has {len(catalog.names('module'))} types of"
@@ -123,31 +125,13 @@ def _answer(catalog: Catalog, path: Path) -> None:
     _say_next(path)
 
 
-@dataclass(frozen=True, slots=True)
-class _Lot:
-    """How many of a type lie where, at what price."""
-
-    quantity: int
-    unit_price: float
-    currency: str
-    place: str
-
-
-def _shelf() -> dict[str, _Lot]:
+def _shelf(catalog: Catalog) -> dict[str, StockItem]:
     """The demo's stock by name of the record; what could not be read has none."""
-    import csv
-
-    import seed_catalog
-
-    with seed_catalog.path(STOCK).open(encoding="utf-8", newline="") as file:
-        return {
-            row["record"]: _Lot(int(row["quantity"]), float(row["unit_price"]), row["currency"], row["place"])
-            for row in csv.DictReader(file)
-            if row["record"]
-        }
+    names = {n.id: n.name for kind in ("module", "inverter") for n in catalog.names(kind)}
+    return {names[item.record]: item for item in catalog.stock() if item.record is not None}
 
 
-def _in_short(found: Fit, options: Sequence[Option], shelf: Mapping[str, _Lot]) -> str:
+def _in_short(found: Fit, options: Sequence[Option], shelf: Mapping[str, StockItem]) -> str:
     """The answer as one gives it on the telephone: least inverter, least money, doubtful bargain."""
     in_stock = [o for o in options if o.units <= shelf[_name(found, o)].quantity]
     proven = [o for o in in_stock if not o.confirm]
@@ -168,11 +152,11 @@ def _name(found: Fit, option: Option) -> str:
     return found.inverters[option.inverter].name
 
 
-def _cost(found: Fit, option: Option, shelf: Mapping[str, _Lot]) -> float:
+def _cost(found: Fit, option: Option, shelf: Mapping[str, StockItem]) -> float:
     return option.units * shelf[_name(found, option)].unit_price
 
 
-def _ordered(found: Fit, option: Option, shelf: Mapping[str, _Lot]) -> str:
+def _ordered(found: Fit, option: Option, shelf: Mapping[str, StockItem]) -> str:
     lot = shelf[_name(found, option)]
     price = f"{_cost(found, option, shelf):,.0f} {lot.currency}"
     return f"#{option.rank}, {option.units} x {_name(found, option)} ({price}, {lot.quantity} on the shelf)"
@@ -194,7 +178,8 @@ def _say_next(path: Path) -> None:
     where = f'--catalog "{path}"'
     say("Go on from here; 'ferrule sheet load cec' loads the public tables into a catalog of your own:")
     for line in (
-        f'ferrule fit -m "klassik 270p" --site "{SITE}" --count {COUNT} --units {UNITS} --why {where}',
+        f'ferrule fit -m "klassik 270p" --site "{SITE}" --count {COUNT} --units {UNITS} --in-stock --by cost {where}',
+        f'ferrule stock grid --site "{SITE}" {where}',
         f'ferrule fit -m "klassik 270p" -i "viola 5" --low -12 --high 37 {where}',
         f'ferrule sheet show "old faithful 4.6" {where}',
     ):

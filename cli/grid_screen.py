@@ -13,7 +13,8 @@ if TYPE_CHECKING:
     from matcher.grid import GridPair
     from matcher.near import Rejection
 
-_MODULE_WIDTH = 26
+_MODULE_WIDTH = 24
+_INVERTER_WIDTH = 12
 
 
 def show(shown: Shown) -> None:
@@ -59,26 +60,25 @@ def lone_line(shown: Shown, kind: str, own: int, other: int, reason: Rejection) 
 
 def _blocks(shown: Shown) -> None:
     grid = shown.grid
-    rows = [m for m in range(len(grid.modules)) if any((m, i) in grid.pairs for i in range(len(grid.inverters)))]
-    columns = [i for i in range(len(grid.inverters)) if any((m, i) in grid.pairs for m in rows)]
-    width = max(len(_cell(p)) for p in grid.pairs.values())
-    width = max(width, 11)
-    each = max(1, (WIDTH - _MODULE_WIDTH - 9) // (width + 1))
-    for first in range(0, len(columns), each):
-        block = columns[first : first + each]
+    rows = sorted({m for m, _ in grid.pairs})
+    names = [_folded(grid.modules[m].name, _MODULE_WIDTH) for m in rows]
+    columns = []
+    for i in sorted({i for _, i in grid.pairs}):
+        cells = [_cell(grid.pairs[m, i]) if (m, i) in grid.pairs else "-" for m in rows]
+        width = max(_INVERTER_WIDTH, *(len(cell) for cell in cells))
+        inverter = grid.inverters[i]
+        columns.append((width, _folded(f"{inverter.name} ({shown.pieces[inverter.id]:,})", width), cells))
+    while columns:
+        room, block = WIDTH - _MODULE_WIDTH - 8, []
+        while columns and (not block or columns[0][0] < room):
+            room -= columns[0][0] + 1
+            block.append(columns.pop(0))
         say()
-        heads = [
-            Column(_folded(f"{grid.inverters[i].name} ({shown.pieces[grid.inverters[i].id]:,})", width)) for i in block
-        ]
         print_table(
-            [Column("module", fold=True, min_width=_MODULE_WIDTH), Column("pieces", number=True), *heads],
+            [Column("module"), Column("pieces", number=True), *(Column(head) for _, head, _ in block)],
             [
-                [
-                    grid.modules[m].name,
-                    f"{shown.pieces[grid.modules[m].id]:,}",
-                    *(_cell(grid.pairs[m, i]) if (m, i) in grid.pairs else "-" for i in block),
-                ]
-                for m in rows
+                [name, f"{shown.pieces[grid.modules[m].id]:,}", *(cells[k] for _, _, cells in block)]
+                for k, (m, name) in enumerate(zip(rows, names, strict=True))
             ],
         )
 
