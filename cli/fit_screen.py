@@ -151,14 +151,15 @@ _HEADINGS = {
 
 
 def _options_table(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
+    shelf = fit.search.shelf
     columns = [Column("#", number=True)]
     if not fit.is_pair:
-        columns += [Column("inverter" if fit.lists_inverters else "module", fold=True, min_width=30)]
+        name_width = 30 if shelf is None else 22  # a column of costs needs the room
+        columns += [Column("inverter" if fit.lists_inverters else "module", fold=True, min_width=name_width)]
         columns += [Column("AC kW" if fit.lists_inverters else "W", number=True)]
     columns += [Column("wiring", fold=True), Column("mod.", number=True), Column("DC/AC", number=True)]
     if has_year:
         columns += [Column("clip %", number=True), Column("kWh/year", number=True)]
-    shelf = fit.search.shelf
     if shelf is not None and shelf.currency is not None:
         columns += [Column(f"cost {shelf.currency}", number=True)]
     columns += [Column("holds at degC", number=True)]
