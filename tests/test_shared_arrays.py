@@ -400,3 +400,53 @@ def test_every_option_of_a_range_of_counts_and_units():
         if 0.8 <= total * 440 / (k * 10_000) <= 1.5 and oracle.smallest_spread(reachable, total, k) is not None
     }
     assert set(found) == wanted
+
+
+# --- climate windows -----------------------------------------------------------------------------------------
+
+
+def test_climate_windows_of_shared_arrays_are_tight():
+    """0.1 K inside the checks of every unit are no worse than at the site, 0.1 K outside those of one unit are."""
+    severity = (oracle.NOT_ASKED, oracle.PASS, oracle.OPEN, oracle.FAIL).index
+    bounded = Counter()
+    for seed in range(500):
+        case, rng = random_case(random.Random(seed)), random.Random(-seed)
+        mean = case.inverter.ac_power_w / case.module.pmax_w * rng.uniform(0.8, 1.4)
+        asked: list[dict[str, object]] = [{"counts": (max(2, round(2 * mean)),) * 2, "units": (1, 2)}]
+        whole = ask(case)
+        if whole is None:
+            continue
+        first = next(whole.options(full=False), None)
+        if first is not None:
+            asked.append({"strings": tuple((t.in_series, t.strings) for t in first.arrangement), "units": (1, 2)})
+        for change in asked:
+            request = replace(request_of(case), **({"counts": None} | change))
+            for option in fit([case.module], [case.inverter], request).options(limit=3):
+                forms = [a for _, a in unit_forms(option, case.inverter)]
+                here = [oracle.checks(case.module, case.inverter, case.site, a) for a in forms]
+
+                def holds(names, case=case, forms=forms, here=here, **temperature) -> bool:
+                    site = replace(case.site, **temperature)
+                    try:
+                        there = [oracle.checks(case.module, case.inverter, site, a) for a in forms]
+                    except oracle.CannotMatch:
+                        return False
+                    return all(
+                        severity(t[n]) <= max(severity(h[n]) for h in here) for t in there for n in names
+                    )
+
+                where = f"seed {seed}: {option.label}"
+                for names, field, edge, inward, beyond in (
+                    (oracle.VOLTAGE_MAXIMA, "design_low_c", option.coldest_c, 0.1, -200.0),
+                    (("mppt-low", "start"), "design_high_c", option.hottest_c, -0.1, 80.0),
+                ):
+                    if edge is None:
+                        assert holds(names, **{field: beyond}), where
+                    else:
+                        assert holds(names, **{field: edge + inward}), where
+                        assert not holds(names, **{field: edge - inward}), where
+                bounded[len(forms), option.coldest_c is not None, option.hottest_c is not None] += 1
+        if bounded[1, True, True] > 20 and bounded[2, True, True] > 4:
+            break
+    assert bounded[1, True, True] > 20
+    assert bounded[2, True, True] > 4
