@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
+from operator import itemgetter
 from typing import TYPE_CHECKING, Any
 
 from catalog.errors import CatalogError
@@ -14,6 +15,7 @@ from catalog.revisions import FAMILY, LOADED, MERGED, Sources, record_row, revis
 from catalog.rows import id_condition, inputs_rows, read_records
 
 if TYPE_CHECKING:
+    from sqlalchemy import Connection, Table
     from sqlmodel import Session
 
     from catalog.database import Database, Run
@@ -183,7 +185,7 @@ class _Batch:
 
     def flush(self) -> None:
         """Insert what has gathered."""
-        from sqlalchemy import bindparam, insert, update
+        from sqlalchemy import bindparam, update
 
         from catalog.tables import REVISION_ROWS, InputsRow, RecordRow
 
@@ -194,7 +196,7 @@ class _Batch:
             (InputsRow, self._inputs),
         ):
             if rows:
-                connection.execute(insert(table.__table__), rows)
+                _insert(connection, table.__table__, rows)
                 rows.clear()
         if self._moved:
             table = RecordRow.__table__
@@ -226,3 +228,15 @@ class _Batch:
         self._revisions.append(row)
         if self._kind == "inverter":
             self._inputs += inputs_rows(id_, number, record.inputs)
+
+
+def _insert(connection: Connection, table: Table, rows: Sequence[dict[str, Any]]) -> None:
+    """Insert rows, all with the same columns; to a driver that takes them by position, straight as tuples."""
+    from sqlalchemy import insert
+
+    statement = insert(table)
+    if not connection.dialect.positional:
+        connection.execute(statement, rows)
+        return
+    compiled = statement.compile(dialect=connection.dialect, column_keys=list(rows[0]))
+    connection.exec_driver_sql(str(compiled), list(map(itemgetter(*compiled.positiontup), rows)))

@@ -19,7 +19,7 @@ from catalog.sheet_reading import Reading
 from catalog.sheet_tables import Table, own_fields
 
 _PLAIN_NUMBERS = re.compile(r"[0-9.eE+\-\n]*")
-_LOOSE_ENDS = re.compile(r"(?m)^[ \t\u00a0]|[ \t\u00a0]$")
+_LOOSE_ENDS = (" \n", "\n ", "\t", "\u00a0")
 _FLAGS = {"yes": True, "no": False}
 _SUSPECT = ("'", "\u2212")
 
@@ -42,11 +42,12 @@ def plain_records(table: Table, reading: Reading) -> tuple[list[Module | Inverte
         return None
     fields = own_fields(table.rows[0])
     width = len(fields)
-    rows = [(number, row) for number, row in enumerate(table.rows[1:], start=2) if row and any(row)]
-    if not rows or None in fields or len(set(fields)) < width or any(len(row) != width for _, row in rows):
+    # An empty line is a row without cells.
+    numbers = [number for number, row in enumerate(table.rows[1:], start=2) if row]
+    rows = [row for row in table.rows[1:] if row]
+    if not rows or None in fields or len(set(fields)) < width or set(map(len, rows)) != {width}:
         return None
-    numbers = [number for number, _ in rows]
-    columns = dict(zip(fields, zip(*(row for _, row in rows), strict=True), strict=True))
+    columns = dict(zip(fields, zip(*rows, strict=True), strict=True))
     try:
         found = [_of_kind(kind, columns, chosen, reading) for kind, chosen in _kinds(columns).items()]
     except (_NotPlain, CatalogError, ValueError, KeyError):
@@ -99,7 +100,7 @@ def _of_kind(
     found = []
     for row, (source, origins, sources) in zip(zip(*values.values(), strict=True), about, strict=True):
         record = type_(**dict(zip(names, row, strict=True)), source=source, origins=origins, sources=sources)
-        if any(getattr(record, name) is None for name in origins):
+        if origins and any(getattr(record, name) is None for name in origins):
             raise _NotPlain
         found.append(record)
     return found
@@ -108,7 +109,8 @@ def _of_kind(
 def _column(cells: Sequence[str], spec: FieldSpec) -> list[Any]:
     """Values of one column."""
     text = "\n".join(cells)
-    if _LOOSE_ENDS.search(text) or text.count("\n") >= len(cells):
+    loose = text != text.strip(" ") or any(mark in text for mark in _LOOSE_ENDS)
+    if loose or text.count("\n") >= len(cells):
         raise _NotPlain
     if spec.required and "" in cells:
         raise _NotPlain

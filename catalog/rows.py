@@ -7,9 +7,10 @@ both understand; every column is qualified and quoted.
 from __future__ import annotations
 
 import json
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cache
+from operator import attrgetter
 from typing import TYPE_CHECKING, Any
 
 from catalog.errors import CatalogError
@@ -137,7 +138,12 @@ def id_condition(ids: Iterable[int]) -> str:
 
 def values_of(kind: str, record: Module | Inverter) -> dict[str, Any]:
     """Columns of a revision that hold values."""
-    return {name: getattr(record, name) for name in value_names(kind)}
+    return dict(zip(value_names(kind), _values(kind)(record), strict=True))
+
+
+@cache
+def _values(kind: str) -> Callable[[Any], tuple]:
+    return attrgetter(*value_names(kind))
 
 
 def inputs_rows(record_id: int, revision: int, inputs: Sequence[Inputs]) -> list[dict[str, Any]]:
