@@ -137,7 +137,8 @@ def _bounds(
         if number is None:
             notes.append(f"{record.name} is in no stock list: how many there are, and their price, is not known.")
         elif number < asked:
-            missing = f"{asked - number:,} of {asked:,} {_many(kind, asked)} are missing"
+            lacking = asked - number
+            missing = f"{lacking:,} of {asked:,} {_many(kind, asked)} {'is' if lacking == 1 else 'are'} missing"
             notes.append(f"In stock: {number:,} of {record.name}; {missing}.")
         else:
             notes.append(f"In stock: {number:,} of {record.name}{_places(lots[record.id])}; no option takes more.")
