@@ -13,11 +13,12 @@ def fields(record_type: type) -> str:
     """Table of the fields of a record type: name, unit, whether it is needed, possible range, meaning."""
     rows = ["| field | unit | needed | from | to | meaning |", "| --- | --- | --- | --- | --- | --- |"]
     for spec in specs(record_type).values():
-        unit = {"": "", "1": "1"}.get(spec.unit, spec.unit)
+        unit = spec.unit
         low, high = ("" if v is None else f"{v:,g}" for v in (spec.low, spec.high))
         if not unit:
             unit = {int: "whole number", bool: "yes or no", str: "text"}.get(spec.type, "")
-        rows.append(f"| `{spec.name}` | {unit} | {'yes' if spec.required else ''} | {low} | {high} | {spec.meaning} |")
+        needed = "yes" if spec.required else ""
+        rows.append(f"| `{spec.name}` | {unit} | {needed} | {low} | {high} | {spec.meaning} |")
     return "\n".join(rows)
 
 

@@ -1,9 +1,9 @@
 """The examples of the documents: found, run in this process, compared with what is shown, and refreshed.
 
-A fenced block ``console`` holds commands (``$ ...``), each followed by what it prints; a line ``...`` stands for
-any number of lines. A fenced block with a file name behind its language, such as ``csv mine.csv``, is a file
-that the reader writes; ``cp`` takes one from pvlib's data folder. The blocks of one document run one after the
-other in one folder.
+A fenced block ``console`` holds commands (``$ ...``), each followed by what it prints; a line ``...`` stands
+for any number of lines. A fenced block with a file name behind its language, such as ``csv mine.csv``, is a
+file that the reader writes; ``cp`` takes one from pvlib's data folder. The blocks of one document run one
+after the other in one folder.
 """
 
 from __future__ import annotations
@@ -83,7 +83,7 @@ def _trimmed(lines: list[str]) -> list[str]:
     return lines
 
 
-class Session:
+class Reader:
     """A reader at work in a folder of their own: files, environment, status of the last command."""
 
     def __init__(self, folder: Path) -> None:
@@ -108,7 +108,7 @@ class Session:
             return []
         if words[0] == "cat":
             return _trimmed((self.folder / words[1]).read_text(encoding="utf-8").splitlines())
-        assert words[0] == "ferrule", f"an example runs {words[0]}; examples run ferrule, export, cp, cat, echo"
+        assert words[0] == "ferrule", f"{words[0]}: examples run ferrule, export, cp, cat and echo $?"
         return self._ferrule(words[1:])
 
     def _ferrule(self, arguments: list[str]) -> list[str]:
@@ -119,7 +119,11 @@ class Session:
         os.environ.pop("FERRULE_CATALOG", None)
         os.environ.update(self.environment)
         try:
-            with contextlib.chdir(self.folder), contextlib.redirect_stdout(screen), contextlib.redirect_stderr(screen):
+            with (
+                contextlib.chdir(self.folder),
+                contextlib.redirect_stdout(screen),
+                contextlib.redirect_stderr(screen),
+            ):
                 self.status = run(arguments)
         finally:
             os.environ.clear()

@@ -1,7 +1,7 @@
 """Run the examples of the documents and write what they print into them; renew what is made from the code.
 
-Run from the root of the project: ``python tests/refresh_examples.py [DOCUMENT...]``. Look at the difference before
-you commit it: what changed there is what users see change.
+Run from the root of the project: ``python tests/refresh_examples.py [DOCUMENT...]``. Look at the difference
+before you commit it: what changed there is what users see change.
 """
 
 from __future__ import annotations
@@ -13,7 +13,7 @@ from pathlib import Path
 sys.path.insert(0, str(Path(__file__).parent.parent))
 
 from document_parts import with_parts  # noqa: E402
-from documented_examples import Command, Session, documents, renewed, steps  # noqa: E402
+from documented_examples import Command, Reader, documents, renewed, steps  # noqa: E402
 
 
 def refresh(path: Path) -> int:
@@ -22,9 +22,9 @@ def refresh(path: Path) -> int:
     lines = text.splitlines()
     changes: list[tuple[Command, list[str]]] = []
     with tempfile.TemporaryDirectory() as folder:
-        session = Session(Path(folder).resolve())
+        reader = Reader(Path(folder).resolve())
         for step in steps(text):
-            printed = session.do(step)
+            printed = reader.do(step)
             if isinstance(step, Command) and (now := renewed(step.shown, printed)) != step.shown:
                 changes.append((step, now))
     for step, now in reversed(changes):

@@ -1,4 +1,4 @@
-"""Draw the pictures of the documents anew, from the demo: ``python tests/refresh_pictures.py``, in the root."""
+"""Draw the pictures of the documents anew, from the demo: ``python tests/refresh_pictures.py`` in the root."""
 
 from __future__ import annotations
 
@@ -38,8 +38,8 @@ def main() -> None:
         ("climate", draw_climate(string_in_climate(found, option))),
         ("energy", draw_energy(energy_by_count(found, option))),
     ):
-        svg = picture.svg if "xmlns=" in picture.svg else picture.svg.replace("<svg ", '<svg xmlns="http://www.w3.org/2000/svg" ', 1)
-        (ROOT / "docs" / f"{name}.svg").write_text(svg.replace("<svg ", f"<svg {_ROOT_STYLE} ", 1) + "\n", encoding="utf-8")
+        svg = picture.svg.replace("<svg ", f"<svg {_ROOT_STYLE} ", 1)
+        (ROOT / "docs" / f"{name}.svg").write_text(f"{svg}\n", encoding="utf-8")
         print(f"docs/{name}.svg: {picture.words}")
 
 

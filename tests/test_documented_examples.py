@@ -1,4 +1,4 @@
-"""What the documents show is what the commands print; ``python tests/refresh_examples.py`` brings them up to date."""
+"""What the documents show is what the commands print (``python tests/refresh_examples.py`` renews it)."""
 
 from __future__ import annotations
 
@@ -8,7 +8,7 @@ from pathlib import Path
 
 import pytest
 from document_parts import fields
-from documented_examples import ROOT, Command, Session, agree, documents, renewed, steps
+from documented_examples import ROOT, Command, Reader, agree, documents, renewed, steps
 
 from catalog.records import Inputs, Inverter, Module, Site
 from cli.cautions import CAUTIONS
@@ -16,9 +16,9 @@ from cli.cautions import CAUTIONS
 
 @pytest.mark.parametrize("path", documents(), ids=lambda path: path.name)
 def test_every_example_prints_what_the_document_shows(path: Path, tmp_path: Path):
-    session = Session(tmp_path)
+    reader = Reader(tmp_path)
     for step in steps(path.read_text(encoding="utf-8")):
-        printed = session.do(step)
+        printed = reader.do(step)
         if isinstance(step, Command) and not agree(step.shown, printed):
             difference = "\n".join(difflib.unified_diff(step.shown, printed, "shown", "printed", lineterm=""))
             pytest.fail(f"{path.name}, line {step.line + 1}: $ {step.typed}\n{difference}")

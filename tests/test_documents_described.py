@@ -18,14 +18,16 @@ from catalog.records import Inverter, Module, Site, specs
 TEXT = (ROOT / "docs" / "documents.md").read_text(encoding="utf-8")
 
 FITS = ("fit", "-m", "klassik 270p", "--site", "butterfield barn")
+SWAP = ("swap", "-m", "klassik 270p", "-i", "viola 5", "--site", "butterfield barn")
+WEATHER = str(Path(pvlib.__file__).parent / "data" / "723170TYA.CSV")
 SHOWN = [
     (*FITS, "--count", "25", "--units", "1..3", "--why"),
     (*FITS, "--yearly-kwh", "9000"),
     (*FITS, "-i", "viola 5", "--by-count", "--energy-price", "0.2", "--module-price", "90"),
     (*FITS, "-i", "cello 10", "--strings", "1x10@115/25,1x12@295/25"),
-    ("swap", "-m", "klassik 270p", "-i", "viola 5", "--strings", "1x12|1x12", "--low", "-12", "--high", "37"),
-    ("swap", "-m", "klassik 270p", "-i", "viola 5", "--count", "24", "--low", "-12", "--high", "37", "--part", "2"),
-    ("swap", "-m", "klassik 270p", "-i", "viola 5", "--count", "24", "--low", "-12", "--high", "37", "--replace", "inverter"),
+    (*SWAP, "--strings", "1x12|1x12"),
+    (*SWAP, "--count", "24", "--part", "2"),
+    (*SWAP, "--count", "24", "--replace", "inverter"),
     (*FITS, "--count", "24", "--in-stock", "--by", "cost"),
     ("stock", "list"),
     ("stock", "grid", "--site", "butterfield barn"),
@@ -38,7 +40,7 @@ SHOWN = [
     ("sheet", "show", "klassik 270p"),
     ("site", "list"),
     ("site", "show", "rimefell"),
-    ("site", "add", "Quay", "--low", "-20", "--high", "38", "--weather", str(Path(pvlib.__file__).parent / "data" / "723170TYA.CSV")),
+    ("site", "add", "Quay", "--low", "-20", "--high", "38", "--weather", WEATHER),
     ("site", "drop", "rimefell"),
 ]
 

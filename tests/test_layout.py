@@ -1,4 +1,4 @@
-"""The layout holds: every file is listed for contributors, imports go one way, and starting up waits for nothing heavy."""
+"""The layout holds: every file is listed, imports go one way, and starting up waits for nothing heavy."""
 
 from __future__ import annotations
 
