@@ -23,7 +23,7 @@ _LOWEST_LIMIT = 0.3
 #: Weight of the errors below that share, where only the curvature of the efficiency is left.
 _LOW_WEIGHT = 0.1
 #: Classes before the bound is looked at, for power limits only and for both.
-_FIRST_CLASSES = (120, 300)
+_FIRST_CLASSES = (120, 450)
 
 
 def class_labels(
