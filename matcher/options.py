@@ -127,11 +127,18 @@ def build(
 
 def join(parts: Sequence[Options]) -> Options:
     """All options of several tables in one."""
-    width = max((p.strings.shape[1] for p in parts), default=1)
-
-    def widened(a: np.ndarray) -> np.ndarray:
-        return np.pad(a, ((0, 0), (0, width - a.shape[1]))) if a.ndim == 2 and a.shape[1] < width else a
-
     if len(parts) == 1:
         return parts[0]
-    return Options(*(np.concatenate([widened(getattr(p, f.name)) for p in parts]) for f in fields(Options)))
+
+    def joined(arrays: Sequence[np.ndarray]) -> np.ndarray:
+        width = max((a.shape[1] for a in arrays if a.ndim == 2), default=0)
+        if all(a.ndim == 1 or a.shape[1] == width for a in arrays):
+            return np.concatenate(arrays)
+        out = np.zeros((sum(map(len, arrays)), width), dtype=arrays[0].dtype)
+        end = 0
+        for a in arrays:
+            start, end = end, end + len(a)
+            out[start:end, : a.shape[1]] = a
+        return out
+
+    return Options(*(joined([getattr(p, f.name) for p in parts]) for f in fields(Options)))

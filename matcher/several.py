@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from functools import lru_cache
 
 import numpy as np
 
@@ -19,7 +20,7 @@ def even_split(reachable: Sequence[int], total: int, units: int) -> tuple[int, .
     ideal = (whole + 1,) * rest + (whole,) * (units - rest)
     if known.issuperset(ideal):
         return ideal
-    split = even_strings(frozenset((c,) for c in known), (1,), (total,), units)
+    split = _even_strings(frozenset((c,) for c in known), (1,), (total,), units)
     return None if split is None else tuple(c for (c,) in split)
 
 
@@ -37,6 +38,14 @@ def even_strings(
     wanted
         Strings of each length that all units together host.
     """
+    return _even_strings(hosted, lengths, wanted, units)
+
+
+@lru_cache(maxsize=4096)
+def _even_strings(
+    hosted: frozenset[tuple[int, ...]], lengths: tuple[int, ...], wanted: tuple[int, ...], units: int
+) -> tuple[tuple[int, ...], ...] | None:
+    """As `even_strings`; kept, because inverters by the hundreds host the same."""
     shares = [s for s in hosted if all(a <= b for a, b in zip(s, wanted, strict=True))]
     modules = {s: sum(n * k for n, k in zip(lengths, s, strict=True)) for s in shares}
     mean = sum(n * k for n, k in zip(lengths, wanted, strict=True)) / units

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections import Counter
 from collections.abc import Iterator, Sequence
 from dataclasses import replace
+from functools import lru_cache, partial
 
 import numpy as np
 
@@ -14,10 +15,16 @@ from matcher.limits import TOLERANCE, at_most
 from matcher.options import Options, join
 from matcher.reach import share_of
 from matcher.search import Search
+from matcher.singleunits import SingleUnits
 from matcher.several import even_split, even_strings, together
 
 #: States of a hosted array (strings of each length so far) that are gone through at most.
 MOST_STATES = 200_000
+
+
+#: An option that is still to be put together: its units as rows of the single-tracker table or as tables of
+#: their own, and how many there are of each.
+_Plan = tuple[list["int | Options"], list[int]]
 
 
 def on_several_units(search: Search) -> tuple[Options, list[int]]:
@@ -28,21 +35,28 @@ def on_several_units(search: Search) -> tuple[Options, list[int]]:
     """
     request = search.request
     assert request.counts is not None
-    parts: list[Options] = []
+    singles = SingleUnits(search, request.counts[1])
+    plans: list[_Plan] = []
     arrangements: list[int] = []
     for m, i in _pairs(search):
-        space = free_space(search, m, i, request.counts[1])
-        ways: dict[int, int] = {}
-        for units, total in _wanted(search, m, i):
-            split = even_split(space.reachable, total, units)
+        wanted = list(_wanted(search, m, i))
+        used: dict[int, int] = {}
+        if wanted and search.inverters.single[i]:
+            ways = singles.ways(m, i)
+            row = partial(singles.ask, m, i)
+        elif wanted:
+            space = free_space(search, m, i, request.counts[1])
+            ways = {count: space.ways[count] for count in space.reachable}
+            row = partial(search.best_of_count, m, i, space)
+        for units, total in wanted:
+            split = even_split(list(ways), total, units)
             if split is None:
                 continue
             copies = Counter(split)
-            rows = [search.best_of_count(m, i, space, count) for count in copies]
-            ways |= {count: space.ways[count] for count in copies}
-            parts.append(_joined(search, rows, list(copies.values())))
-        arrangements.append(sum(ways.values()))
-    return _all(search, parts), arrangements
+            used |= {count: ways[count] for count in copies}
+            plans.append(([row(count) for count in copies], list(copies.values())))
+        arrangements.append(sum(used.values()))
+    return _put_together(search, singles, plans), arrangements
 
 
 def with_strings(search: Search, strings: Sequence[tuple[int, int]]) -> tuple[Options, list[int]]:
@@ -62,25 +76,60 @@ def with_strings(search: Search, strings: Sequence[tuple[int, int]]) -> tuple[Op
     if tally.states > MOST_STATES:
         raise MatcherError("the strings have too many different lengths to be spread exactly; give fewer kinds")
     total = sum(kind % FACE * count for kind, count in wanted.items())
-    parts: list[Options] = []
+    singles = SingleUnits(search, total)
+    plans: list[_Plan] = []
     arrangements: list[int] = []
     for m, i in _pairs(search):
-        space = replace(free_space(search, m, i, total), facing=tuple(wanted) if search.request.faces else ())
-        ways = 0
         low, high = search.asked(m, i).units
-        for units in range(low, high + 1):
-            if not _inside(search, m, i, total, units):
-                continue
-            options, number = _hosted(search, m, i, space, tally, units)
+        inside = [units for units in range(low, high + 1) if _inside(search, m, i, total, units)]
+        space = None
+        ways = 0
+        for units in inside:
+            if search.inverters.single[i] and not search.request.faces:
+                options, number = _hosted_by_singles(singles, m, i, tally, units)
+            else:
+                if space is None:
+                    facing = tuple(wanted) if search.request.faces else ()
+                    space = replace(free_space(search, m, i, total), facing=facing)
+                options, number = _hosted(search, m, i, space, tally, units)
             ways += number
-            parts += options
+            plans += options
         arrangements.append(ways)
-    return _all(search, parts), arrangements
+    return _put_together(search, singles, plans), arrangements
+
+
+def _hosted_by_singles(
+    singles: SingleUnits, m: int, i: int, tally: ByStrings, units: int
+) -> tuple[list[_Plan], int]:
+    """As `_hosted`, for inverters with one tracker, which carries strings of one length."""
+    lengths, counts = zip(*tally.wanted, strict=True)
+    most = tuple(min(singles.strings(m, i, length), count) for length, count in tally.wanted)
+    split = _single_shares(lengths, counts, most, units)
+    if split is None:
+        return [], 0
+    copies = Counter(split)
+    rows: list[int | Options] = []
+    for share in copies:
+        (length, strings) = next((n, s) for n, s in zip(lengths, share, strict=True) if s)
+        rows.append(singles.ask(m, i, length * strings, length))
+    return [(rows, list(copies.values()))], len(copies)
+
+
+@lru_cache(maxsize=1024)
+def _single_shares(
+    lengths: tuple[int, ...], counts: tuple[int, ...], most: tuple[int, ...], units: int
+) -> tuple[tuple[int, ...], ...] | None:
+    """Shares of units that take up to ``most`` strings of one of the lengths each."""
+    places = range(len(lengths))
+    hosted = frozenset(
+        tuple(strings if p == k else 0 for p in places) for k in places for strings in range(1, most[k] + 1)
+    )
+    return even_strings(hosted, lengths, counts, units)
 
 
 def _hosted(
     search: Search, m: int, i: int, space: Space, tally: ByStrings, units: int
-) -> tuple[list[Options], int]:
+) -> tuple[list[_Plan], int]:
     """Options of one pair with a number of units, and how many arrangements of one unit there are."""
     lengths = tuple(kind % FACE for kind, _ in tally.wanted)
     if not all(space.shortest <= length <= space.longest for length in lengths):
@@ -91,20 +140,20 @@ def _hosted(
             return [], 0
         tables = search.hosting(m, i, space, tally, tally.states - 1)
         if search.request.every:
-            return list(tables), ways[-1]
+            return [([table], []) for table in tables], ways[-1]
         first = next(tables)
-        return [first.take(search.rank(first)[:1])], ways[-1]
+        return [([first.take(search.rank(first)[:1])], [])], ways[-1]
     shares = {share_of(tally, state): state for state, w in enumerate(ways) if w and state}
     hosted = frozenset(s for s in shares if sum(n * c for n, c in zip(lengths, s, strict=True)) <= space.most)
     split = even_strings(hosted, lengths, tuple(count for _, count in tally.wanted), units)
     if split is None:
         return [], 0
     copies = Counter(split)
-    rows = []
+    rows: list[int | Options] = []
     for share in copies:
         first = next(search.hosting(m, i, space, tally, shares[share]))
         rows.append(first.take(search.rank(first)[:1]))
-    return [_joined(search, rows, list(copies.values()))], sum(ways[shares[s]] for s in copies)
+    return [(rows, list(copies.values()))], sum(ways[shares[s]] for s in copies)
 
 
 def _pairs(search: Search) -> Iterator[tuple[int, int]]:
@@ -137,15 +186,15 @@ def _inside(search: Search, m: int, i: int, total: int, units: int) -> bool:
     return bool(low * (1.0 - TOLERANCE) <= ratio <= high * (1.0 + TOLERANCE))
 
 
-def _joined(search: Search, rows: list[Options], copies: list[int]) -> Options:
-    table = join(rows)
-    m, i = int(table.module[0]), int(table.inverter[0])
-    return together(table, copies, float(search.points.pmax_w[m]), float(search.inverters.ac_power_w[i]))
-
-
-def _all(search: Search, parts: list[Options]) -> Options:
-    if parts:
-        return join(parts)
-    none = np.zeros(0, dtype=np.int64)
-    limits = search.limits(none, none)
-    return search.single_trackers(none, none, limits, every=True)[0]
+def _put_together(search: Search, singles: SingleUnits, plans: Sequence[_Plan]) -> Options:
+    """The options of all plans in one table; a plan without copies is a table of one-unit options as it is."""
+    rows = singles.table()
+    parts: list[Options] = []
+    for units, copies in plans:
+        table = join([rows.take(slice(u, u + 1)) if isinstance(u, int) else u for u in units])
+        if copies:
+            m, i = int(table.module[0]), int(table.inverter[0])
+            pmax_w, ac_power_w = float(search.points.pmax_w[m]), float(search.inverters.ac_power_w[i])
+            table = together(table, copies, pmax_w, ac_power_w)
+        parts.append(table)
+    return join(parts) if parts else rows
