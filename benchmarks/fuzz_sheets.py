@@ -48,7 +48,9 @@ def main(number: int = 10_000) -> None:
 
                 run()
     total = taken.total() + refused.total()
-    print(f"{total:,} files in {time.perf_counter() - began:.0f} s: {taken.total():,} taken, {refused.total():,} refused in one line")
+    print(
+        f"{total:,} files in {time.perf_counter() - began:.0f} s: {taken.total():,} taken, {refused.total():,} refused in one line"
+    )
     for form in sorted({*taken, *refused}):
         print(f"  {form}: {taken[form]:,} taken, {refused[form]:,} refused")
 

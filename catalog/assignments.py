@@ -100,7 +100,9 @@ def _spec(record: Module | Inverter, name: str) -> FieldSpec:
         return known[name]
     if name in specs(Inputs) and isinstance(record, Inverter):
         raise CatalogError(f"{name} is a value of a group of trackers: write inputs[1].{name}=...")
-    raise CatalogError(f"{kind}s have no field {name!r}{nearest(name, [*known, *(['inputs'] if kind == 'inverter' else [])])}")
+    raise CatalogError(
+        f"{kind}s have no field {name!r}{nearest(name, [*known, *(['inputs'] if kind == 'inverter' else [])])}"
+    )
 
 
 def _whole(text: str) -> tuple[Inputs, ...]:
@@ -115,7 +117,9 @@ def _change_group(groups: list[Inputs], number: str | None, part: str, value: st
     if part not in known:
         raise CatalogError(f"{text!r}: a group of trackers has no {part!r}{nearest(part, list(known))}")
     if number is None and len(groups) > 1:
-        raise CatalogError(f"{text!r}: there are {len(groups)} groups of trackers; say which, like inputs[1].{part}=...")
+        raise CatalogError(
+            f"{text!r}: there are {len(groups)} groups of trackers; say which, like inputs[1].{part}=..."
+        )
     place = int(number or 1)
     if not 1 <= place <= len(groups):
         raise CatalogError(f"{text!r}: there is no group {place} of trackers; it has {len(groups)}")

@@ -24,7 +24,8 @@ LISTS = tuple(origin.value for origin in MARKED_ORIGINS)
 
 _FIGURE = r"\d[\d.,' \u00a0]*"
 _RANGE = re.compile(
-    rf"({_FIGURE}?)\s*(?:V\s*)?(?:-|\u2013|\u2014|~|\.\.\.?|\u2026|to|bis|/)\s*({_FIGURE}?)\s*(?:V(?:\s*dc)?)?", re.IGNORECASE
+    rf"({_FIGURE}?)\s*(?:V\s*)?(?:-|\u2013|\u2014|~|\.\.\.?|\u2026|to|bis|/)\s*({_FIGURE}?)\s*(?:V(?:\s*dc)?)?",
+    re.IGNORECASE,
 )
 _SIZES = re.compile(rf"({_FIGURE}?)\s*(mm|cm|m|in)?\s*[x\u00d7*]\s*({_FIGURE}?)\s*(mm|cm|m|in)?(?:\s*[x\u00d7*]\s*{_FIGURE}?\s*(mm|cm|m|in)?)?", re.IGNORECASE)  # fmt: skip
 
@@ -156,14 +157,23 @@ def _with_unit(cell: Any, where: str, name: str, reading: Reading) -> Any:
     return cell
 
 
-def _inputs(own: Mapping[str, Any], units: Mapping[str, str], where: str, reading: Reading) -> tuple[Inputs, ...] | str:
+def _inputs(
+    own: Mapping[str, Any], units: Mapping[str, str], where: str, reading: Reading
+) -> tuple[Inputs, ...] | str:
     """Groups of inputs from columns; "2/1" or "26 A / 13 A" gives one value per tracker."""
     known = specs(Inputs)
     values: dict[str, list[Any]] = {}
     for name, cell in own.items():
-        parts = [cell] if not isinstance(cell, str) or name == "trackers" else re.split(r"\s*[/|;]\s*", cell.strip())
+        parts = (
+            [cell]
+            if not isinstance(cell, str) or name == "trackers"
+            else re.split(r"\s*[/|;]\s*", cell.strip())
+        )
         try:
-            values[name] = [value_of(part, known[name], reading.signs, f"{where}, {name}", units.get(name)) for part in parts]
+            values[name] = [
+                value_of(part, known[name], reading.signs, f"{where}, {name}", units.get(name))
+                for part in parts
+            ]
         except CatalogError as problem:
             raise reading.fault(problem, where, name) from None
     if not any(value is not None for some in values.values() for value in some):
@@ -186,7 +196,10 @@ def _inputs(own: Mapping[str, Any], units: Mapping[str, str], where: str, readin
     for k in range(trackers):
         group = Inputs(trackers=1, **{name: some[k if len(some) > 1 else 0] for name, some in values.items()})
         if groups and all(getattr(groups[-1], n) == getattr(group, n) for n in OF_INPUTS if n != "trackers"):
-            groups[-1] = Inputs(trackers=groups[-1].trackers + 1, **{n: some[k if len(some) > 1 else 0] for n, some in values.items()})
+            groups[-1] = Inputs(
+                trackers=groups[-1].trackers + 1,
+                **{n: some[k if len(some) > 1 else 0] for n, some in values.items()},
+            )
         else:
             groups.append(group)
     return tuple(groups)

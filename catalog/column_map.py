@@ -54,7 +54,9 @@ class ColumnMap:
 
     def confirmed(self) -> ColumnMap:
         """This map with every column beyond doubt."""
-        return replace(self, columns=tuple(replace(c, sure=True, remark="") if c.field else c for c in self.columns))
+        return replace(
+            self, columns=tuple(replace(c, sure=True, remark="") if c.field else c for c in self.columns)
+        )
 
     def with_fields(self, changes: Mapping[str, str]) -> ColumnMap:
         """This map with the fields of some headings as they are given; a blank field leaves a column out.
@@ -116,7 +118,9 @@ def proposed(headings: Sequence[str], kind: str | None = None) -> ColumnMap:
         If the headings could be either, or two of them mean one field beyond doubt.
     """
     found = {k: [meaning(h, k) for h in headings] for k in ([kind] if kind else KINDS)}
-    score = {k: (sum(m.sure for m in some), sum(m.field is not None for m in some)) for k, some in found.items()}
+    score = {
+        k: (sum(m.sure for m in some), sum(m.field is not None for m in some)) for k, some in found.items()
+    }
     best = max(score, key=score.__getitem__)
     if len([k for k in score if score[k] == score[best]]) > 1:
         raise CatalogError("the columns may be those of modules or of inverters; say which with --kind")
@@ -139,7 +143,7 @@ def _once(found: ColumnMap, given: frozenset[int] = frozenset()) -> ColumnMap:
         if len(sure) > 1:
             listed = " and ".join(repr(columns[k].heading) for k in sure[:2])
             raise CatalogError(
-                f"{listed} both mean {name}; take one out, or leave it out with --map \"{columns[sure[1]].heading}=\""
+                f'{listed} both mean {name}; take one out, or leave it out with --map "{columns[sure[1]].heading}="'
             )
         for k in several:
             if k != sure[0]:

@@ -156,7 +156,9 @@ def _near(tokens: frozenset[str], unit: str | None, kind: str, words: _Words) ->
         near = process.extractOne(text, list(by_text), scorer=fuzz.ratio, score_cutoff=_NEAR)
         if near:
             return _judged(by_text[near[0]], unit, False, "is near to known words")
-    inside = [(len(key), name) for key, name in words.known[kind].items() if key < tokens and len("".join(key)) > 2]
+    inside = [
+        (len(key), name) for key, name in words.known[kind].items() if key < tokens and len("".join(key)) > 2
+    ]
     if inside:
         most = max(inside)[0]
         names = {name for size, name in inside if size == most}

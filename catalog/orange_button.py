@@ -49,18 +49,30 @@ INVERTER: Mapping[str, tuple[str, ...]] = MappingProxyType({
     "weighted_efficiency_pct": ("InverterEfficiency", "InverterEfficiencyCEC"),
     "night_w": ("NightTare",),
 })  # fmt: skip
-FIELDS: Mapping[str, Mapping[str, tuple[str, ...]]] = MappingProxyType({"module": MODULE, "inverter": INVERTER})
+FIELDS: Mapping[str, Mapping[str, tuple[str, ...]]] = MappingProxyType(
+    {"module": MODULE, "inverter": INVERTER}
+)
 
 #: Where a field is taken from when its own place is empty: the maximum continuous AC power, power among the ratings.
 ELSEWHERE: Mapping[str, tuple[str, ...]] = MappingProxyType(
-    {"pmax_w": ("ModuleElectRatings", "PowerDC"), "ac_power_w": ("ACOutputs", "PowerACMax"), "model": ("ProdCode",)}
+    {
+        "pmax_w": ("ModuleElectRatings", "PowerDC"),
+        "ac_power_w": ("ACOutputs", "PowerACMax"),
+        "model": ("ProdCode",),
+    }
 )
 
 #: One tracker, an element of ``DCInput.MPPTs``.
 TRACKER: Mapping[str, str] = MappingProxyType(
-    {"strings_per_tracker": "MPPTInputStrings", "max_current_a": "CurrentDCMax", "max_isc_a": "CurrentShortCircuitMax"}
+    {
+        "strings_per_tracker": "MPPTInputStrings",
+        "max_current_a": "CurrentDCMax",
+        "max_isc_a": "CurrentShortCircuitMax",
+    }
 )
-WINDOW: Mapping[str, str] = MappingProxyType({"mppt_low_v": "VoltageMPPTMin", "mppt_high_v": "VoltageMPPTMax"})
+WINDOW: Mapping[str, str] = MappingProxyType(
+    {"mppt_low_v": "VoltageMPPTMin", "mppt_high_v": "VoltageMPPTMax"}
+)
 
 #: Units of the standard in the spelling of `catalog.units`.
 UNITS: Mapping[str, str] = MappingProxyType({

@@ -55,8 +55,14 @@ def plain_records(table: Table, reading: Reading) -> tuple[list[Module | Inverte
     records = [record for some in found for record in some]
     if len({(type(r), r.maker, r.model) for r in records}) < len(records):
         return None
-    places = [number for chosen in _kinds(columns).values() for number in (numbers if chosen is None else [numbers[k] for k in chosen])]
-    return records, [f"{table.place(number)} ({record.name})" for number, record in zip(places, records, strict=True)]
+    places = [
+        number
+        for chosen in _kinds(columns).values()
+        for number in (numbers if chosen is None else [numbers[k] for k in chosen])
+    ]
+    return records, [
+        f"{table.place(number)} ({record.name})" for number, record in zip(places, records, strict=True)
+    ]
 
 
 def _kinds(columns: dict[str, Sequence[str]]) -> dict[str, list[int] | None]:
@@ -181,4 +187,3 @@ def _provenance(
             seen[row] = read(row)
         found.append(seen[row])
     return found
-

@@ -8,12 +8,11 @@ origin; ``sources``, the documents of single values that come from another one t
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from dataclasses import replace
 from functools import cache
 from typing import Any
 
 from catalog.errors import CatalogError
-from catalog.inputs_text import EXAMPLE, parse_inputs
+from catalog.inputs_text import EXAMPLE
 from catalog.plausibility import findings_of
 from catalog.records import FieldSpec, Inputs, Inverter, Module, Origin, Source, specs
 from catalog.sheet_reading import Entry, Reading, nearest
@@ -56,7 +55,9 @@ def records_of(entries: Sequence[Entry], reading: Reading) -> list[Module | Inve
     first: dict[tuple[str, str, str], tuple[str, Module | Inverter]] = {}
     places = []
     if reading.given:
-        entries = _completed(entries, reading)
+        from catalog.sheet_given import completed
+
+        entries = completed(entries, reading)
     for entry in entries:
         record = _record(entry, reading)
         key = (entry.kind, record.maker, record.model)
@@ -131,38 +132,6 @@ def _record(entry: Entry, reading: Reading) -> Module | Inverter:
     return type_(
         **values, source=_source(entry, reading), origins=origins, sources=_sources(entry, reading, type_)
     )
-
-
-def _completed(entries: Sequence[Entry], reading: Reading) -> list[Entry]:
-    """Entries with the values that a person gives for all of them, where they state none; marked as entered."""
-    kinds = {entry.kind for entry in entries}
-    for name in reading.given:
-        known = [*dict.fromkeys(n for kind in sorted(kinds) for n in fields_of(kind))]
-        if name not in known:
-            near = nearest(name, known)
-            raise CatalogError(f"--set {name}: there is no such field" + (f"; did you mean {near}?" if near else ""))
-    found = []
-    for entry in entries:
-        cells = dict(entry.cells)
-        units = dict(entry.units)
-        marked = cells.get(Origin.ENTERED.value) or []
-        for name, text in reading.given.items():
-            if name in fields_of(entry.kind) and cells.get(name) in (None, "", [], ()):
-                cells[name] = _given_inputs(text) if name == "inputs" else text
-                units.pop(name, None)
-                if name not in ("maker", "model", *ABOUT):
-                    marked = [*marked, name]
-        if marked:
-            cells[Origin.ENTERED.value] = marked
-        found.append(replace(entry, cells=cells, units=units))
-    return found
-
-
-def _given_inputs(text: str) -> tuple[Inputs, ...]:
-    try:
-        return parse_inputs(text)
-    except CatalogError as problem:
-        raise CatalogError(f"--set inputs: {problem}") from None
 
 
 def _needed(entry: Entry, spec: FieldSpec) -> str:

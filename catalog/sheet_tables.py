@@ -109,14 +109,17 @@ def entries_of(
     at, known = heading_row(table.rows)
     if not known:
         raise reading.fault(
-            "no known column name; name the columns like maker, model, technology, pmax_w, voc_v", table.place(1)
+            "no known column name; name the columns like maker, model, technology, pmax_w, voc_v",
+            table.place(1),
         )
     heading = [_text(cell) for cell in table.rows[at]]
     rows = list(enumerate(table.rows[at + 1 :], start=at + 2))
     own = own_fields(heading)
     named = sum(1 for text in heading if text)
     # Headings such as "Voc (V)" are those of others, though they mean the same.
-    exact = sum(text.casefold() == (name or "").casefold() for text, name in zip(heading, own, strict=True) if text)
+    exact = sum(
+        text.casefold() == (name or "").casefold() for text, name in zip(heading, own, strict=True) if text
+    )
     if "kind" in own or 2 * exact >= named:
         columns = _own_columns(heading, own, table.place(at + 1), reading)
         columns.kind = kind if "kind" not in own else None
@@ -148,7 +151,12 @@ def _own_columns(heading: list[str], own: list[str | None], place: str, reading:
 
 
 def _foreign_columns(
-    heading: list[str], units: list[str], settle: Settle | None, kind: str | None, place: str, reading: Reading
+    heading: list[str],
+    units: list[str],
+    settle: Settle | None,
+    kind: str | None,
+    place: str,
+    reading: Reading,
 ) -> _Columns:
     shown = [f"{text} [{unit}]" if unit and text else text for text, unit in zip(heading, units, strict=True)]
     try:
@@ -207,7 +215,8 @@ def _entries(
         where = table.place(number)
         if len(row) > width and any(_text(cell) for cell in row[width:]):
             raise reading.fault(
-                f"has {len(row)} cells, the heading has {width}; put a cell with the separator in it in quotes", where
+                f"has {len(row)} cells, the heading has {width}; put a cell with the separator in it in quotes",
+                where,
             )
         cells = {name: _cell(row[k], table.guarded) for k, name in used if k < len(row)}
         if foreign and filled == 1 and not cells.get("model"):

@@ -18,11 +18,18 @@ from catalog.records import FieldSpec
 from catalog.units import BASES, coefficient_pct, converted, fits, relative, unit_of
 
 #: What people write where a datasheet gives no value.
-BLANKS = frozenset({"", "-", "--", "\u2013", "\u2014", "?", "n/a", "na", "n.a.", "#n/a", "not stated", "unknown", "tbd"})
+BLANKS = frozenset(
+    {"", "-", "--", "\u2013", "\u2014", "?", "n/a", "na", "n.a.", "#n/a", "not stated", "unknown", "tbd"}
+)
 
-_YES, _NO = frozenset({"yes", "y", "true", "1", "bifacial"}), frozenset({"no", "n", "false", "0", "monofacial"})
+_YES, _NO = (
+    frozenset({"yes", "y", "true", "1", "bifacial"}),
+    frozenset({"no", "n", "false", "0", "monofacial"}),
+)
 _PHASES = {
-    1: frozenset({"single", "single phase", "1 phase", "one phase", "1~", "1 ph", "1ph", "1p", "split", "split phase"}),
+    1: frozenset(
+        {"single", "single phase", "1 phase", "one phase", "1~", "1 ph", "1ph", "1p", "split", "split phase"}
+    ),
     2: frozenset({"two", "two phase", "2 phase", "2ph"}),
     3: frozenset({"three", "three phase", "3 phase", "3~", "3 ph", "3ph", "3p"}),
 }
@@ -33,7 +40,9 @@ _MAYBE_THOUSANDS = re.compile(r"[+-]?[1-9]\d{0,2}[.,]\d{3}")
 _GROUPED = re.compile(r"[+-]?[1-9]\d{0,2}(?:([ '\u2019.,])\d{3})(?:\1\d{3})*(?:([.,])\d+)?")
 _PARTS = re.compile(r"([+-]?[\d.,](?:[\d.,]|[ '\u2019](?=\d))*(?:e[+-]?\d+)?)\s*(.*)", re.IGNORECASE)
 # What a datasheet writes behind a value for its tolerance: "45 \u00b1 2", "45 (+/-2)".
-_TOLERANCE = re.compile(r"\(?\s*(?:\u00b1|\+/-|\+-)\s*\d+(?:[.,]\d+)?\s*(?:\u00b0\s*C|K|%)?\s*\)?", re.IGNORECASE)
+_TOLERANCE = re.compile(
+    r"\(?\s*(?:\u00b1|\+/-|\+-)\s*\d+(?:[.,]\d+)?\s*(?:\u00b0\s*C|K|%)?\s*\)?", re.IGNORECASE
+)
 _BLANK_SIGNS = str.maketrans({"\u2212": "-", "\u00a0": " ", "\u202f": " ", "\u2009": " "})
 
 
@@ -92,7 +101,9 @@ class DecimalSigns:
             self.point = self.point or what
 
 
-def value_of(cell: Any, spec: FieldSpec, signs: DecimalSigns, place: str = "", unit: str | None = None) -> Any:
+def value_of(
+    cell: Any, spec: FieldSpec, signs: DecimalSigns, place: str = "", unit: str | None = None
+) -> Any:
     """Value of one cell for a field; ``None`` where the cell is blank.
 
     Parameters

@@ -137,7 +137,7 @@ def write_sheets(path: str | Path, modules: Sequence[Module], inverters: Sequenc
     if ending == ".toml":
         from catalog.sheets_toml import write_toml as write
     elif ending == ".json":
-        from catalog.sheets_json import write_json as write
+        from catalog.sheets_json_write import write_json as write
     elif ending == ".xlsx":
         from catalog.sheets_xlsx import write_xlsx as write
     else:

@@ -36,7 +36,9 @@ def read_tables(text: str, reading: Reading) -> list[Table]:
     mark = max(known, key=known.__getitem__)
     if known[mark] < 2:
         head = "\n".join(text.splitlines()[:25])
-        score = {m: heading_row(list(csv.reader(io.StringIO(head), delimiter=m)))[1] for m in _MARKS if m in head}
+        score = {
+            m: heading_row(list(csv.reader(io.StringIO(head), delimiter=m)))[1] for m in _MARKS if m in head
+        }
         mark = max(score, key=score.__getitem__, default=mark)
     return [Table(_rows(text, mark, reading), guarded=True)]
 

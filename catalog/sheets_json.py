@@ -1,7 +1,7 @@
-"""Datasheets in the JSON of the open standard Orange Button (`catalog.orange_button`), read and written.
+"""Datasheets in the JSON of the open standard Orange Button (`catalog.orange_button`), read.
 
-What the standard has a place for stands there. The rest of a record (origins, sources, model parameters) is written as
-``ProdSpecifications``, the standard's own place for anything else, under names that begin with ``ferrule.``.
+What a record has no field for is kept aside and named; what `catalog.sheets_json_write` put beside the standard's own
+places is taken back.
 """
 
 from __future__ import annotations
@@ -9,23 +9,38 @@ from __future__ import annotations
 import json
 from collections import Counter
 from collections.abc import Iterator, Mapping, Sequence
-from pathlib import Path
 from typing import Any
 
-from catalog.cells import packed, unpacked
+from catalog.cells import unpacked
 from catalog.errors import CatalogError
+from catalog.headings import spec_of
 from catalog.inputs_text import format_inputs
-from catalog.orange_button import ELSEWHERE, FIELDS, PHASES, PRODUCTS, TECHNOLOGIES, TRACKER, UNITS, WINDOW, WRITTEN
-from catalog.records import Inputs, Inverter, Module, specs
-from catalog.sheet_entries import KINDS, fields_of
+from catalog.orange_button import (
+    ELSEWHERE,
+    FIELDS,
+    PHASES,
+    PRODUCTS,
+    TECHNOLOGIES,
+    TRACKER,
+    UNITS,
+    WINDOW,
+)
+from catalog.records import Inputs, Inverter, specs
+from catalog.sheet_entries import fields_of
 from catalog.sheet_reading import Entry, Reading
-from catalog.sheet_values import value_of
+from catalog.sheet_values import usable, value_of
 
-_OWN = "ferrule."
+#: Names of what `catalog.sheets_json_write` puts beside the standard's own places begin so.
+OWN = "ferrule."
 _DEEPEST = 6
-_MOST_TRACKERS = 200
+MOST_TRACKERS = 200
 #: Parts of a product that say nothing a datasheet record could hold, or that are taken in another way.
-_TAKEN = {("ProdType",), ("ModuleElectRatings", "ModuleRatingCondition"), ("ProdDatasheetURL",), ("DCInput", "MPPTNumber")}
+_TAKEN = {
+    ("ProdType",),
+    ("ModuleElectRatings", "ModuleRatingCondition"),
+    ("ProdDatasheetURL",),
+    ("DCInput", "MPPTNumber"),
+}
 
 
 def read_entries(text: str, reading: Reading) -> list[Entry]:
@@ -107,7 +122,9 @@ def _entry(
     # A series sold in several power classes shares its name; the code then tells them apart.
     if names[_name(product, "ProdName")] > 1 and _plain(product.get("ProdCode")) and "model" not in own:
         places["model"] = ("ProdCode",)
-    said = " ".join(str(own.get(name) or _plain(_at(product, places[name])) or "") for name in ("maker", "model")).strip()
+    said = " ".join(
+        str(own.get(name) or _plain(_at(product, places[name])) or "") for name in ("maker", "model")
+    ).strip()
     where = f"{PRODUCTS[kind]} {number}" + (f" ({said[:80]})" if said and said.isprintable() else "")
     taken = set(_TAKEN)
     cells: dict[str, Any] = {}
@@ -131,7 +148,7 @@ def _entry(
     for name, text in own.items():
         cells[name] = text
         units.pop(name, None)
-    left = [path for path in _leaves(product, ()) if path not in taken and path[0] != "ProdSpecifications" or path == ("ProdSpecifications",)]
+    left = [path for path in _leaves(product, ()) if path not in taken and path[0] != "ProdSpecifications"]
     left += [("ProdSpecifications",)] if _foreign_specifications(product) else []
     if left:
         reading.note(f"kept aside, no field for it: {_listed(left)}", where)
@@ -156,9 +173,6 @@ def _unit(node: Any, where: str, name: str, reading: Reading) -> str | None:
     if stated in (None, ""):
         return "fraction" if name == "weighted_efficiency_pct" else None
     unit = UNITS.get(stated) if isinstance(stated, str) else None
-    from catalog.headings import spec_of
-    from catalog.sheet_values import usable
-
     spec = spec_of(name)
     if unit is None or spec is None or not usable(unit, spec):
         raise reading.fault(f"is in {stated!r}, which is no unit of it that is known", where, name)
@@ -189,7 +203,11 @@ def _leaves(node: Any, path: tuple[str, ...]) -> Iterator[tuple[str, ...]]:
         first = _stc(node) if path == ("ModuleElectRatings",) else next(iter(node), None)
         for item in node:
             for leaf in _leaves(item, path):
-                yield leaf if item is first or path == ("DCInput", "MPPTs") else (*leaf[:-1], f"{leaf[-1]} (another)")
+                yield (
+                    leaf
+                    if item is first or path == ("DCInput", "MPPTs")
+                    else (*leaf[:-1], f"{leaf[-1]} (another)")
+                )
     elif _plain(node) is not None:
         yield path
 
@@ -199,24 +217,36 @@ def _trackers(
 ) -> set[tuple[str, ...]]:
     """Take the trackers (``DCInput.MPPTs``) into cells; returns the paths that were taken."""
     dc = product.get("DCInput") if isinstance(product.get("DCInput"), dict) else {}
-    listed = [m for m in dc.get("MPPTs", []) if isinstance(m, dict)] if isinstance(dc.get("MPPTs"), list) else []
+    listed = (
+        [m for m in dc.get("MPPTs", []) if isinstance(m, dict)] if isinstance(dc.get("MPPTs"), list) else []
+    )
     known = specs(Inputs) | specs(Inverter)
 
     def value(mppt: Mapping[str, Any], name: str, key: str) -> Any:
         node = mppt.get(key)
         try:
-            return value_of("" if _plain(node) is None else _plain(node), known[name], reading.signs, "", _unit(node, where, name, reading))
+            return value_of(
+                "" if _plain(node) is None else _plain(node),
+                known[name],
+                reading.signs,
+                "",
+                _unit(node, where, name, reading),
+            )
         except CatalogError as problem:
-            raise problem if str(problem).startswith(str(reading.path)) else reading.fault(problem, where, key) from None
+            raise (
+                problem if str(problem).startswith(str(reading.path)) else reading.fault(problem, where, key)
+            ) from None
 
-    ends = {name: [v for m in listed if (v := value(m, name, key)) is not None] for name, key in WINDOW.items()}
+    ends = {
+        name: [v for m in listed if (v := value(m, name, key)) is not None] for name, key in WINDOW.items()
+    }
     for name, some in ends.items():
         if some:
             cells[name] = max(some) if name == "mppt_low_v" else min(some)
             if len(set(some)) > 1:
                 reading.note(f"differs between trackers; {cells[name]:g} V holds for all", where, name)
     groups: list[Inputs] = []
-    for mppt in listed[: _MOST_TRACKERS + 1]:
+    for mppt in listed[: MOST_TRACKERS + 1]:
         ratings = {name: value(mppt, name, key) for name, key in TRACKER.items()}
         last = groups[-1] if groups else None
         if last and all(getattr(last, name) == rating for name, rating in ratings.items()):
@@ -224,21 +254,25 @@ def _trackers(
         else:
             groups.append(Inputs(trackers=1, **ratings))
     number = _plain(dc.get("MPPTNumber"))
-    if isinstance(number, int) and not isinstance(number, bool) and 0 < number <= _MOST_TRACKERS:
+    if isinstance(number, int) and not isinstance(number, bool) and 0 < number <= MOST_TRACKERS:
         if len(groups) == 1 and groups[0].trackers == 1:
             # One element that stands for all trackers alike.
             groups = [Inputs(trackers=number, **{name: getattr(groups[0], name) for name in TRACKER})]
         elif not groups:
             groups = [Inputs(trackers=number)]
         elif len(listed) != number:
-            raise reading.fault(f"is {number}, but {len(listed)} trackers are listed; correct one of them", where, "MPPTNumber")
+            raise reading.fault(
+                f"is {number}, but {len(listed)} trackers are listed; correct one of them",
+                where,
+                "MPPTNumber",
+            )
     if groups:
         cells["inputs"] = format_inputs(groups)
     return {("DCInput", "MPPTs", key) for key in (*WINDOW.values(), *TRACKER.values())}
 
 
 def _own_values(product: Mapping[str, Any], kind: str) -> dict[str, Any]:
-    """What `write_json` wrote beside the standard's own places."""
+    """What `catalog.sheets_json_write` wrote beside the standard's own places."""
     listed = product.get("ProdSpecifications")
     found = {}
     for item in listed if isinstance(listed, list) else ():
@@ -250,82 +284,9 @@ def _own_values(product: Mapping[str, Any], kind: str) -> dict[str, Any]:
 
 def _specification(item: Any) -> str | None:
     name = _plain(item.get("SpecificationName")) if isinstance(item, dict) else None
-    return name.removeprefix(_OWN) if isinstance(name, str) and name.startswith(_OWN) else None
+    return name.removeprefix(OWN) if isinstance(name, str) and name.startswith(OWN) else None
 
 
 def _foreign_specifications(product: Mapping[str, Any]) -> bool:
     listed = product.get("ProdSpecifications")
     return bool(listed) and not (isinstance(listed, list) and all(_specification(item) for item in listed))
-
-
-def write_json(path: Path, records: Sequence[Module | Inverter]) -> None:
-    """Write records as a list of product objects."""
-    text = json.dumps([_product(record) for record in records], ensure_ascii=False, allow_nan=False, indent=1)
-    path.write_text(text + "\n", encoding="utf-8", newline="\n")
-
-
-def _product(record: Module | Inverter) -> dict[str, Any]:
-    kind = "module" if isinstance(record, Module) else "inverter"
-    product: dict[str, Any] = {"ProdType": {"Value": PRODUCTS[kind]}}
-    rest = packed(record)
-    rest.pop("kind")
-    for name, place in FIELDS[kind].items():
-        value = getattr(record, name)
-        element = None if value is None else _element(name, value, specs(KINDS[kind])[name].unit)
-        if element is not None:
-            _put(product, place, element)
-            del rest[name]
-    if isinstance(record, Module):
-        _put(product, ("ModuleElectRatings", "ModuleRatingCondition"), {"Value": "STC"})
-        _put(product, ("ModuleElectRatings", "PowerDC"), {"Value": record.pmax_w, "Unit": "W"})
-    else:
-        _put_trackers(product, record, rest)
-    product["ProdSpecifications"] = [
-        {"SpecificationName": {"Value": _OWN + name}, "SpecificationValue": {"Value": _text(cell)}} for name, cell in rest.items()
-    ]
-    return product
-
-
-def _text(cell: Any) -> str:
-    return repr(cell) if isinstance(cell, float) else str(cell)
-
-
-def _element(name: str, value: Any, unit: str) -> dict[str, Any] | None:
-    """A value as an element of the standard; ``None`` where the standard cannot hold it exactly."""
-    words = {"technology": TECHNOLOGIES, "phases": PHASES}.get(name)
-    if words:
-        return next(({"Value": word} for word, own in words.items() if own == value), None)
-    if unit == "%":
-        share = float(f"{value / 100:.15g}")
-        from catalog.units import converted
-
-        return {"Value": share, "Unit": WRITTEN[unit]} if converted(share, "fraction", "%") == value else None
-    return {"Value": value, "Unit": WRITTEN[unit]} if unit in WRITTEN else {"Value": value}
-
-
-def _put(product: dict[str, Any], path: Sequence[str], element: dict[str, Any]) -> None:
-    node: Any = product
-    for key in path[:-1]:
-        new: Any = [{}] if key.endswith("s") and key in ("ModuleElectRatings", "ACOutputs") else {}
-        node = node.setdefault(key, new)
-        node = node[0] if isinstance(node, list) else node
-    node[path[-1]] = element
-
-
-def _put_trackers(product: dict[str, Any], record: Inverter, rest: dict[str, Any]) -> None:
-    """Trackers one by one, each with the window; groups that this does not show stay among the rest too."""
-    window = {key: {"Value": getattr(record, name), "Unit": "V"} for name, key in WINDOW.items()}
-    known = specs(Inputs)
-    listed = []
-    for group in record.inputs:
-        ratings = {
-            key: {"Value": getattr(group, name)} | ({"Unit": known[name].unit} if known[name].unit else {})
-            for name, key in TRACKER.items()
-            if getattr(group, name) is not None
-        }
-        listed += [window | ratings] * min(group.trackers, _MOST_TRACKERS)
-    dc = product.setdefault("DCInput", {})
-    dc["MPPTNumber"] = {"Value": len(listed)}
-    dc["MPPTs"] = listed
-    for name in WINDOW:
-        del rest[name]

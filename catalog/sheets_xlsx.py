@@ -46,7 +46,11 @@ def read_tables(data: bytes, reading: Reading) -> list[Table]:
             # What openpyxl leaves out (styles, printer settings) is nothing that is read here.
             warnings.simplefilter("ignore")
             book = load_workbook(io.BytesIO(data), read_only=True, data_only=True, keep_links=False)
-        tables = [Table(_rows(sheet, reading), sheet.title) for sheet in book.worksheets if sheet.sheet_state == "visible"]
+        tables = [
+            Table(_rows(sheet, reading), sheet.title)
+            for sheet in book.worksheets
+            if sheet.sheet_state == "visible"
+        ]
     except CatalogError:
         raise
     # A damaged workbook makes openpyxl, and the XML parser below it, fail in any way there is.
@@ -103,7 +107,8 @@ def _rows(sheet: Any, reading: Reading) -> list[list[Any]]:
         cells += len(row)
         if number > _MOST_ROWS or len(row) > _MOST_COLUMNS or cells > _MOST_CELLS:
             raise reading.fault(
-                f"has more than {_MOST_ROWS:,} rows or {_MOST_COLUMNS} columns; part it", f"sheet {sheet.title!r}"
+                f"has more than {_MOST_ROWS:,} rows or {_MOST_COLUMNS} columns; part it",
+                f"sheet {sheet.title!r}",
             )
         rows.append([_plain(cell) for cell in row])
     while rows and all(cell is None for cell in rows[-1]):

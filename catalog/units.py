@@ -35,7 +35,9 @@ _ABSOLUTE = {
 BASES = {"voc_coef_pct": "voc_v", "isc_coef_pct": "isc_a", "pmax_coef_pct": "pmax_w", "vmp_coef_pct": "vmp_v"}
 
 _KNOWN = frozenset(
-    {name for table in _FACTORS.values() for name in table} | set(_ABSOLUTE) | {"K", "degF", "VA", "kVA", "MVA"}
+    {name for table in _FACTORS.values() for name in table}
+    | set(_ABSOLUTE)
+    | {"K", "degF", "VA", "kVA", "MVA"}
 )
 _SPELLINGS = {
     "volt": "V", "volts": "V", "vdc": "V", "vac": "V", "v dc": "V", "v ac": "V", "kvdc": "kV",
@@ -76,8 +78,10 @@ def _by_case(text: str) -> str | None:
 
 def fits(unit: str, wanted: str) -> bool:
     """Whether a value in a unit can be had in the wanted one."""
-    return unit in _FACTORS.get(wanted, ()) or (wanted == "%/K" and unit in _ABSOLUTE) or (
-        wanted == "degC" and unit in ("K", "degF")
+    return (
+        unit in _FACTORS.get(wanted, ())
+        or (wanted == "%/K" and unit in _ABSOLUTE)
+        or (wanted == "degC" and unit in ("K", "degF"))
     )
 
 

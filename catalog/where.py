@@ -21,9 +21,21 @@ EXAMPLE = "ac_power_w >= 5000 and phases == 1"
 
 #: Trackers of all groups of inputs together.
 _TRACKERS = FieldSpec("trackers", int, "", "trackers in all", True)
-_TRACKERS_SQL = '(SELECT SUM(i."trackers") FROM inputs i WHERE i."record_id" = r."id" AND i."revision" = v."revision")'
+_TRACKERS_SQL = (
+    '(SELECT SUM(i."trackers") FROM inputs i WHERE i."record_id" = r."id" AND i."revision" = v."revision")'
+)
 
-_COMPARISONS = {"==": "=", "=": "=", "!=": "<>", "<>": "<>", "<": "<", "<=": "<=", ">": ">", ">=": ">=", "~": "~"}
+_COMPARISONS = {
+    "==": "=",
+    "=": "=",
+    "!=": "<>",
+    "<>": "<>",
+    "<": "<",
+    "<=": "<=",
+    ">": ">",
+    ">=": ">=",
+    "~": "~",
+}
 _TURNED = {"=": "=", "<>": "<>", "<": ">", "<=": ">=", ">": "<", ">=": "<="}
 _TOKEN = re.compile(
     r"""\s*(?:(?P<number>[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?)(?:\s*(?P<unit>%/\S+|%|[A-Za-z\u00b0]+(?:/[A-Za-z\u00b0]+)?))?
@@ -81,7 +93,11 @@ def kinds_of(text: str, kinds: Sequence[str]) -> tuple[str, ...]:
     CatalogError
         Where there is none; fields with near names are told.
     """
-    used = [t.value for t in _tokens(text) if t.sort == "word" and t.value.casefold() not in (*_WORDS, *_FLAGS, "unknown")]
+    used = [
+        t.value
+        for t in _tokens(text)
+        if t.sort == "word" and t.value.casefold() not in (*_WORDS, *_FLAGS, "unknown")
+    ]
     left = tuple(kind for kind in kinds if all(name in _known(kind) for name in used))
     if left:
         return left
@@ -106,7 +122,9 @@ def _tokens(text: str) -> list[Token]:
     while text[at:].strip():
         match = _TOKEN.match(text, at)
         if not match:
-            raise CatalogError(f"--where: {text[at:].strip()[:20]!r} is not understood; write it like \"{EXAMPLE}\"")
+            raise CatalogError(
+                f'--where: {text[at:].strip()[:20]!r} is not understood; write it like "{EXAMPLE}"'
+            )
         sort = match.lastgroup or ""
         if sort == "unit" or match["number"]:
             unit, end = match["unit"] or "", match.end()
@@ -136,7 +154,7 @@ class _Parser:
 
     def whole(self) -> Condition:
         if not self._tokens:
-            raise CatalogError(f"--where: the condition is empty; write it like \"{EXAMPLE}\"")
+            raise CatalogError(f'--where: the condition is empty; write it like "{EXAMPLE}"')
         sql = self._any()
         if self._peek():
             self._fault("'and' or 'or' is wanted", self._peek())
@@ -191,7 +209,11 @@ class _Parser:
 
     def _operand(self) -> Token:
         token = self._peek()
-        if token is None or token.sort == "mark" or (token.sort == "word" and token.value.casefold() in _WORDS):
+        if (
+            token is None
+            or token.sort == "mark"
+            or (token.sort == "word" and token.value.casefold() in _WORDS)
+        ):
             self._fault("a field or a value is wanted", token)
         self._next += 1
         return token
@@ -225,7 +247,9 @@ class _Parser:
                 self._fault(f"{spec.name} is a text: compare it by ==, != or ~ with one in quotes", value)
             return self._with_text(column, sign, value.value[1:-1])
         if value.sort != "number" or sign == "~":
-            self._fault(f"{spec.name} is a number{f' in {spec.unit}' if spec.unit not in ('', '1') else ''}", value)
+            self._fault(
+                f"{spec.name} is a number{f' in {spec.unit}' if spec.unit not in ('', '1') else ''}", value
+            )
         return f"({column} {sign} {self._param(self._number(value, spec))})"
 
     def _with_text(self, column: str, sign: str, text: str) -> str:
@@ -241,7 +265,11 @@ class _Parser:
             return token.value
         unit = unit_of(token.unit)
         if unit is None or not fits(unit, spec.unit) or relative(unit):
-            self._fault(f"{token.unit!r} is no unit of {spec.name}" + (f", which is in {spec.unit}" if spec.unit else ""), token)
+            self._fault(
+                f"{token.unit!r} is no unit of {spec.name}"
+                + (f", which is in {spec.unit}" if spec.unit else ""),
+                token,
+            )
         return converted(token.value, unit, spec.unit)
 
     def _is_field(self, token: Token) -> bool:

@@ -25,7 +25,7 @@ def pairs(texts: Sequence[str], option: str, example: str) -> dict[str, str]:
     for text in texts:
         name, mark, value = text.rpartition("=") if option == "--map" else text.partition("=")
         if not mark or not name.strip():
-            raise CatalogError(f"{option} {text!r}: write it like {option} \"{example}\"")
+            raise CatalogError(f'{option} {text!r}: write it like {option} "{example}"')
         found[name.strip()] = value.strip()
     return found
 
@@ -92,7 +92,9 @@ class Columns:
             # No catalog yet: the load makes it.
             return None
         found = ColumnMap.from_bytes(data) if data else None
-        same = found is not None and [c.heading.casefold() for c in found.columns] == [c.heading.casefold() for c in proposed.columns]
+        same = found is not None and [c.heading.casefold() for c in found.columns] == [
+            c.heading.casefold() for c in proposed.columns
+        ]
         return found if same else None
 
     def _show(self, found: ColumnMap, remark: str) -> None:
@@ -109,7 +111,7 @@ class Columns:
             first = found.doubtful[0]
             raise CatalogError(
                 f"not sure of {len(found.doubtful)} column{'s' if len(found.doubtful) > 1 else ''}: {listed}. --yes accepts"
-                f" them as shown, --map \"{first.heading}={first.field}\" says one, --map \"{first.heading}=\" leaves it out"
+                f' them as shown, --map "{first.heading}={first.field}" says one, --map "{first.heading}=" leaves it out'
             )
         said = {}
         for column in found.doubtful:

@@ -114,6 +114,8 @@ class Entering:
 
         values = self.values()
         type_ = KINDS[self.kind]
-        blank = {spec.name: "?" if spec.type is str else None for spec in specs(type_).values() if spec.required}
+        blank = {
+            spec.name: "?" if spec.type is str else None for spec in specs(type_).values() if spec.required
+        }
         found = findings(type_(**(blank | values)))
         return [f.message for f in found if f.severity == severity and f.field in values]

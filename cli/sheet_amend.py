@@ -37,7 +37,8 @@ def amend(
     ],
     note: Annotated[str, typer.Option(metavar="TEXT", help="A remark for the history.")] = "",
     expected: Annotated[
-        int | None, typer.Option("--expected", metavar="REV", min=1, help="Only if this revision still counts.")
+        int | None,
+        typer.Option("--expected", metavar="REV", min=1, help="Only if this revision still counts."),
     ] = None,
     kind: KindOption = None,
     catalog: CatalogOption = None,
@@ -66,7 +67,8 @@ def amend(
 def undo(
     name: NameArgument,
     expected: Annotated[
-        int | None, typer.Option("--expected", metavar="REV", min=1, help="Only if this revision still counts.")
+        int | None,
+        typer.Option("--expected", metavar="REV", min=1, help="Only if this revision still counts."),
     ] = None,
     kind: KindOption = None,
     catalog: CatalogOption = None,

@@ -19,7 +19,8 @@ def export(
     file: Annotated[
         Path,
         typer.Argument(
-            metavar="FILE", help="File to write; its ending (.csv, .xlsx, .toml, .json) decides the form.",
+            metavar="FILE",
+            help="File to write; its ending (.csv, .xlsx, .toml, .json) decides the form.",
             show_default=False,
         ),
     ],
@@ -30,7 +31,11 @@ def export(
     kind: KindOption = None,
     where: Annotated[
         str | None,
-        typer.Option(metavar="CONDITION", help="Only records that meet it; as with 'ferrule sheet find'.", show_default=False),
+        typer.Option(
+            metavar="CONDITION",
+            help="Only records that meet it; as with 'ferrule sheet find'.",
+            show_default=False,
+        ),
     ] = None,
     force: Annotated[bool, typer.Option("--force", help="Write over a file that exists.")] = False,
     catalog: CatalogOption = None,
@@ -51,12 +56,16 @@ def export(
         chosen = _chosen(opened, names or [], kinds, where)
         modules, inverters = (of_kind(opened, k, chosen[k]) if chosen[k] else [] for k in KINDS)
     if not modules and not inverters:
-        raise CatalogError(f"there is nothing to write: no {' or '.join(kinds)} is asked for that the catalog holds")
+        raise CatalogError(
+            f"there is nothing to write: no {' or '.join(kinds)} is asked for that the catalog holds"
+        )
     write_sheets(file, modules, inverters)
     say(f"{len(modules):,} modules and {len(inverters):,} inverters: {file}")
 
 
-def _chosen(catalog: Catalog, names: list[str], kinds: tuple[str, ...], where: str | None) -> dict[str, list[int]]:
+def _chosen(
+    catalog: Catalog, names: list[str], kinds: tuple[str, ...], where: str | None
+) -> dict[str, list[int]]:
     """Ids by kind of the records that are asked for."""
     from catalog.where import condition, kinds_of
     from cli.choosing import choose
@@ -70,7 +79,9 @@ def _chosen(catalog: Catalog, names: list[str], kinds: tuple[str, ...], where: s
         met = {kind: catalog.matching(kind, condition(where, kind)) for kind in kinds_of(where, kinds)}
     for kind in kinds:
         if not names:
-            chosen[kind] = met.get(kind, []) if met is not None else [named.id for named in catalog.names(kind)]
+            chosen[kind] = (
+                met.get(kind, []) if met is not None else [named.id for named in catalog.names(kind)]
+            )
         elif met is not None:
             chosen[kind] = [id_ for id_ in chosen[kind] if id_ in met.get(kind, [])]
     return chosen

@@ -99,7 +99,11 @@ def _by_values(
     from catalog.names import find as search
     from catalog.where import condition, kinds_of
 
-    met = [(kind, id_) for kind in kinds_of(where, kinds) for id_ in catalog.matching(kind, condition(where, kind))]
+    met = [
+        (kind, id_)
+        for kind in kinds_of(where, kinds)
+        for id_ in catalog.matching(kind, condition(where, kind))
+    ]
     if not query:
         return [(*record, None) for record in met[:limit]], len(met)
     wanted = set(met)
@@ -125,7 +129,11 @@ def _show(
         records = [r for k, r, _ in hits if k == kind]
         print_table([c for c, _ in columns], [[text(r) for _, text in columns] for r in records])
     if total is not None:
-        say(f"{total:,} in all." if total <= limit else f"The first {limit} of {total:,}; --limit N shows more.")
+        say(
+            f"{total:,} in all."
+            if total <= limit
+            else f"The first {limit} of {total:,}; --limit N shows more."
+        )
     elif len(hits) == limit:
         say(f"The first {limit}; more words or --limit N show others.")
 

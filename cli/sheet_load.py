@@ -11,13 +11,13 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from catalog.errors import CatalogError
-from cli.columns import Columns, pairs
 from cli.kinds import asked_kinds
 from cli.opening import CatalogOption, location, open_catalog
 
 if TYPE_CHECKING:
     from catalog.loading import Progress
     from catalog.sheetfiles import SheetFile
+    from cli.columns import Columns
 
 PUBLIC_TABLES = "cec"
 
@@ -48,7 +48,8 @@ def load(
         ),
     ] = None,
     kind: Annotated[
-        str | None, typer.Option("--kind", metavar="KIND", help="What the rows are, where a table does not tell.")
+        str | None,
+        typer.Option("--kind", metavar="KIND", help="What the rows are, where a table does not tell."),
     ] = None,
     columns: Annotated[
         list[str] | None,
@@ -80,6 +81,8 @@ def load(
     Example: ferrule sheet load cec
     """
     began = time.perf_counter()
+    from cli.columns import Columns, pairs
+
     settled = Columns(catalog, pairs(columns or (), "--map", "Power (W)=pmax_w"), yes)
     values = pairs(given or (), "--set", "bifacial=no")
     (kind,) = asked_kinds(kind) if kind else (None,)

@@ -50,7 +50,11 @@ def _damaged(draw, data: bytes, most: int = 5) -> bytes:
     for _ in range(draw(st.integers(0, most))):
         at = draw(st.integers(0, max(len(found) - 1, 0)))
         length = draw(st.integers(0, 4))
-        found[at : at + length] = draw(st.one_of(st.binary(max_size=3), st.sampled_from((b"\n", b",", b'"', b"[", b"}", b"-", b"1e9", b"\xff"))))
+        found[at : at + length] = draw(
+            st.one_of(
+                st.binary(max_size=3), st.sampled_from((b"\n", b",", b'"', b"[", b"}", b"-", b"1e9", b"\xff"))
+            )
+        )
     return bytes(found)
 
 
@@ -80,14 +84,42 @@ def _table(draw) -> bytes:
     return "\n".join(quoted).encode("utf-8", "surrogatepass")
 
 
-_VALUES = st.one_of(st.none(), st.booleans(), st.integers(), st.floats(), st.text(max_size=4), st.just("MonoSi"), st.just("Three"))
-_UNITS = st.sampled_from(("V", "kV", "A", "W", "kW", "VA", "mm", "Cel", "F", "percent_per_Cel", "V_per_Cel", "decimal_percent", "", 7, None))
+_VALUES = st.one_of(
+    st.none(),
+    st.booleans(),
+    st.integers(),
+    st.floats(),
+    st.text(max_size=4),
+    st.just("MonoSi"),
+    st.just("Three"),
+)
+_UNITS = st.sampled_from(
+    (
+        "V",
+        "kV",
+        "A",
+        "W",
+        "kW",
+        "VA",
+        "mm",
+        "Cel",
+        "F",
+        "percent_per_Cel",
+        "V_per_Cel",
+        "decimal_percent",
+        "",
+        7,
+        None,
+    )
+)
 
 
 def _tree(node):
     """The shape of a sound document with random values, units and losses."""
     if isinstance(node, dict) and "Value" in node:
-        return st.one_of(st.just(node), st.builds(lambda v, u: {"Value": v, "Unit": u}, _VALUES, _UNITS), _VALUES)
+        return st.one_of(
+            st.just(node), st.builds(lambda v, u: {"Value": v, "Unit": u}, _VALUES, _UNITS), _VALUES
+        )
     if isinstance(node, dict):
         return st.fixed_dictionaries({}, optional={k: _tree(v) for k, v in node.items()})
     if isinstance(node, list):

@@ -43,7 +43,9 @@ def test_amending_keeps_the_old_value_readable(ferrule, record):
 
 
 def test_history_tells_from_whom_what_and_when(ferrule, small_catalog):
-    ferrule("sheet", "amend", "af6k 270p", "noct_c=46", "max_series_fuse_a=20 A", "--note", "by phone", *SOURCE)
+    ferrule(
+        "sheet", "amend", "af6k 270p", "noct_c=46", "max_series_fuse_a=20 A", "--note", "by phone", *SOURCE
+    )
     out = ferrule("sheet", "history", "af6k 270p").out
     assert "revision 2" in out and "amended, from datasheet rev C, page 2" in out and "note: by phone" in out
     assert "noct_c: 45 degC -> 46 degC (entered)" in out
@@ -73,7 +75,9 @@ def test_groups_of_trackers(ferrule, record):
     assert ferrule("sheet", "amend", "qn-8000 duo", "inputs[2].max_isc_a=16 A", *SOURCE).status == 0
     first, second = record("QN-8000 Duo").inputs
     assert first == TWO_GROUPS.inputs[0]
-    assert second == Inputs(trackers=2, strings_per_tracker=1, max_current_a=11.0, max_isc_a=16.0, max_power_w=4000.0)
+    assert second == Inputs(
+        trackers=2, strings_per_tracker=1, max_current_a=11.0, max_isc_a=16.0, max_power_w=4000.0
+    )
     ferrule("sheet", "amend", "qn-8000 duo", "inputs=3 trackers: 20 A", *SOURCE)
     assert record("QN-8000 Duo").inputs == (Inputs(trackers=3, max_current_a=20.0),)
 
@@ -81,12 +85,22 @@ def test_groups_of_trackers(ferrule, record):
 def test_ratings_of_trackers_whose_number_is_assumed_need_the_number(ferrule, record):
     ran = ferrule("sheet", "amend", "qn-5000", "inputs.max_isc_a=20", *SOURCE)
     assert ran.status == 2 and "assumed" in ran.err and "inputs.trackers=" in ran.err
-    assert ferrule("sheet", "amend", "qn-5000", "inputs.trackers=2", "inputs.max_isc_a=20", *SOURCE).status == 0
+    assert (
+        ferrule("sheet", "amend", "qn-5000", "inputs.trackers=2", "inputs.max_isc_a=20", *SOURCE).status == 0
+    )
     assert record("QN-5000 [240V]").inputs == (Inputs(trackers=2, max_isc_a=20.0),)
 
 
 def test_values_in_other_units_and_taken_away(ferrule, record):
-    ferrule("sheet", "amend", "af6k 270p", "voc_coef_pct=-118 mV/K", "pmax_coef_pct=", "max_system_voltage_v=1 kV", *SOURCE)
+    ferrule(
+        "sheet",
+        "amend",
+        "af6k 270p",
+        "voc_coef_pct=-118 mV/K",
+        "pmax_coef_pct=",
+        "max_system_voltage_v=1 kV",
+        *SOURCE,
+    )
     now = record("AF6K-270P")
     # -0.118 V/K of 38.2 V.
     assert now.voc_coef_pct == pytest.approx(-0.308901, abs=1e-6)
@@ -138,7 +152,9 @@ def test_a_value_to_confirm_is_one_command_away(ferrule, small_catalog, record):
 def test_that_command_asks_for_the_number_of_trackers_where_it_is_assumed(ferrule, small_catalog, record):
     asked = Confirm("inverter", "max_isc_a", 14.4, "A", inputs=0)
     words = shlex.split(amend_command(INVERTER, asked).replace("\\\n", ""))
-    assert ferrule(*[word.replace("VALUE", "2").replace("DOCUMENT", "sheet") for word in words[1:]]).status == 0
+    assert (
+        ferrule(*[word.replace("VALUE", "2").replace("DOCUMENT", "sheet") for word in words[1:]]).status == 0
+    )
     assert record("QN-5000 [240V]").inputs == (Inputs(trackers=2, max_isc_a=2.0),)
     assert "trackers=" not in amend_command(TWO_GROUPS, Confirm("inverter", "max_isc_a", 14.4, "A", inputs=1))
 
@@ -163,8 +179,13 @@ def test_export_of_some_records(ferrule, small_catalog, tmp_path):
     file = tmp_path / "some.csv"
     assert "1 modules and 0 inverters" in ferrule("sheet", "export", file, "af6k 270p").out
     assert "exists" in ferrule("sheet", "export", file).err
-    assert "0 modules and 2 inverters" in ferrule("sheet", "export", file, "--kind", "inverter", "--force").out
-    assert "0 modules and 1 inverters" in ferrule("sheet", "export", file, "--where", "phases == 3", "--force").out
+    assert (
+        "0 modules and 2 inverters" in ferrule("sheet", "export", file, "--kind", "inverter", "--force").out
+    )
+    assert (
+        "0 modules and 1 inverters"
+        in ferrule("sheet", "export", file, "--where", "phases == 3", "--force").out
+    )
     assert ferrule("sheet", "export", tmp_path / "a.csv", "--where", "phases == 2").status == 2
     assert ".csv, .xlsx" in ferrule("sheet", "export", tmp_path / "a.pdf").err
 
@@ -182,7 +203,11 @@ def test_doubtful_columns_are_shown_and_confirmed_and_kept(ferrule, small_catalo
     ran = ferrule("sheet", "load", file, "--set", "bifacial=no")
     assert ran.status == 2
     assert "Voc (V)      " in ran.err and "voc_v in V" in ran.err
-    assert "not sure of 1 column" in ran.err and "--yes" in ran.err and '--map "Tempco Voc=voc_coef_pct"' in ran.err
+    assert (
+        "not sure of 1 column" in ran.err
+        and "--yes" in ran.err
+        and '--map "Tempco Voc=voc_coef_pct"' in ran.err
+    )
     assert ferrule("sheet", "load", file, "--set", "bifacial=no", "--yes").status == 0
     assert record("P-400").voc_coef_pct == -0.27
     # What was confirmed once holds for the next table with these headings.
@@ -205,5 +230,3 @@ def test_a_column_can_be_said(ferrule, small_catalog, tmp_path, record):
     ):
         ran = ferrule("sheet", "load", file, "--set", "bifacial=no", "--yes", "--map", said)
         assert ran.status == 2 and says in ran.err
-
-

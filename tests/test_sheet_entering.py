@@ -36,7 +36,10 @@ def lines_of(kind, answers):
 def test_a_module_is_asked_for_shown_and_kept(enter, small_catalog):
     ran = enter("module", *lines_of("module", MODULE), "yes")
     assert ran.status == 0
-    assert "Paper Sun P-400 (module" in ran.out and "Kept: Paper Sun P-400, from Paper Sun datasheet, rev B." in ran.out
+    assert (
+        "Paper Sun P-400 (module" in ran.out
+        and "Kept: Paper Sun P-400, from Paper Sun datasheet, rev B." in ran.out
+    )
     assert "voc_v [V]: open-circuit voltage (like 38.2)" in ran.err
     with Catalog.open(small_catalog) as catalog:
         module = next(m for m in catalog.modules() if m.model == "P-400")
@@ -49,9 +52,13 @@ def test_an_inverter_with_inputs_and_one_without(enter, small_catalog):
     answers = {"source": "sheet", "maker": "Paper Grid", "model": "G-10", "ac_power_w": "10 kW", "mppt_low_v": "180",
                "mppt_high_v": "850", "inputs": "2 trackers: 2 strings, 26 A, Isc 32 A", "phases": "three-phase"}  # fmt: skip
     assert enter("inverter", *lines_of("inverter", answers), "yes").status == 0
-    assert enter("inverter", *lines_of("inverter", answers | {"model": "G-11", "inputs": ""}), "yes").status == 0
+    assert (
+        enter("inverter", *lines_of("inverter", answers | {"model": "G-11", "inputs": ""}), "yes").status == 0
+    )
     with Catalog.open(small_catalog) as catalog:
-        known, unknown = (next(i for i in catalog.inverters() if i.model == model) for model in ("G-10", "G-11"))
+        known, unknown = (
+            next(i for i in catalog.inverters() if i.model == model) for model in ("G-10", "G-11")
+        )
     assert (known.ac_power_w, known.phases) == (10000.0, 3)
     assert known.inputs == (Inputs(trackers=2, strings_per_tracker=2, max_current_a=26.0, max_isc_a=32.0),)
     assert (unknown.inputs, unknown.origin("inputs")) == ((Inputs(trackers=1),), Origin.ASSUMED)
@@ -101,8 +108,21 @@ def test_a_draft_can_be_forgotten(enter, small_catalog):
 
 def test_back_goes_to_the_field_before_and_a_field_can_be_changed_at_the_end(enter, small_catalog):
     lines = lines_of("module", MODULE)
-    ran = enter("module", "sheet", "Paper Son", "back", "Paper Sun", *lines[2:], "maker", "Paper Sun Ltd", "perhaps", "yes")
-    assert ran.status == 0 and "now Paper Son" in ran.err and "'perhaps' is neither yes nor a field" in ran.err
+    ran = enter(
+        "module",
+        "sheet",
+        "Paper Son",
+        "back",
+        "Paper Sun",
+        *lines[2:],
+        "maker",
+        "Paper Sun Ltd",
+        "perhaps",
+        "yes",
+    )
+    assert (
+        ran.status == 0 and "now Paper Son" in ran.err and "'perhaps' is neither yes nor a field" in ran.err
+    )
     assert "Kept: Paper Sun Ltd P-400" in ran.out
 
 

@@ -169,7 +169,9 @@ def test_spellings_of_units(text, unit):
 )  # fmt: skip
 def test_temperature_coefficients_in_any_unit(read, heading, cell, pct):
     # -125 mV/K of 45.6 V is -0.125 / 45.6 * 100 % per kelvin.
-    assert read(f"{HEADING},{heading}\n{ROW},{cell}\n").modules[0].voc_coef_pct == pytest.approx(pct, abs=1e-6)
+    assert read(f"{HEADING},{heading}\n{ROW},{cell}\n").modules[0].voc_coef_pct == pytest.approx(
+        pct, abs=1e-6
+    )
 
 
 def test_units_stand_in_a_row_of_their_own(read):
@@ -183,10 +185,22 @@ def test_units_stand_in_a_row_of_their_own(read):
 
 @pytest.mark.parametrize(
     ("cell", "value"),
-    [("1.500", 1500.0), ("1 500", 1500.0), ("1\u202f500", 1500.0), ("1500", 1500.0), ("1'500", 1500.0), ("1.500,0", 1500.0)],
+    [
+        ("1.500", 1500.0),
+        ("1 500", 1500.0),
+        ("1\u202f500", 1500.0),
+        ("1500", 1500.0),
+        ("1'500", 1500.0),
+        ("1.500,0", 1500.0),
+    ],
 )
 def test_thousands_where_commas_are_decimal(read, cell, value):
-    text = f"{HEADING};Max. system voltage (V)".replace(",", ";") + "\n" + ROW.replace(",", ";").replace(".", ",") + f";{cell}\n"
+    text = (
+        f"{HEADING};Max. system voltage (V)".replace(",", ";")
+        + "\n"
+        + ROW.replace(",", ";").replace(".", ",")
+        + f";{cell}\n"
+    )
     assert read(text).modules[0].max_system_voltage_v == value
 
 
@@ -196,7 +210,9 @@ def test_thousands_where_points_are_decimal(read, cell, value):
     assert read(text).modules[0].max_system_voltage_v == value
 
 
-INVERTER = "Manufacturer;Model;Rated AC power (W);Min. MPP voltage;Max. MPP voltage\nPaper Grid;G-10;{};180;850\n"
+INVERTER = (
+    "Manufacturer;Model;Rated AC power (W);Min. MPP voltage;Max. MPP voltage\nPaper Grid;G-10;{};180;850\n"
+)
 
 
 def test_a_number_that_may_be_two_is_refused_where_nothing_tells(read):
@@ -221,7 +237,12 @@ def test_titles_remarks_ranges_sizes_and_inputs(read):
     )
     sheet = read(text)
     (inverter,) = sheet.inverters
-    assert (inverter.ac_power_w, inverter.mppt_low_v, inverter.mppt_high_v, inverter.phases) == (10000.0, 180.0, 850.0, 3)
+    assert (inverter.ac_power_w, inverter.mppt_low_v, inverter.mppt_high_v, inverter.phases) == (
+        10000.0,
+        180.0,
+        850.0,
+        3,
+    )
     assert inverter.inputs == (
         Inputs(trackers=1, strings_per_tracker=2, max_current_a=26.0, max_isc_a=32.0),
         Inputs(trackers=1, strings_per_tracker=1, max_current_a=13.0, max_isc_a=16.0),
@@ -241,7 +262,9 @@ def test_doubtful_columns_are_refused_or_settled(read):
     with pytest.raises(CatalogError, match="not sure what these columns are: Tempco Voc: voc_coef_pct"):
         read(text)
     assert read(text, settle=ColumnMap.confirmed).modules[0].voc_coef_pct == -0.27
-    assert read(text, settle=lambda m: m.with_fields({"tempco voc": "voc_coef_pct in V/K"}).confirmed()).modules[0].voc_coef_pct == pytest.approx(-0.592105)
+    assert read(
+        text, settle=lambda m: m.with_fields({"tempco voc": "voc_coef_pct in V/K"}).confirmed()
+    ).modules[0].voc_coef_pct == pytest.approx(-0.592105)
     assert read(text, settle=lambda m: m.with_fields({"Tempco Voc": ""})).modules[0].voc_coef_pct is None
 
 
@@ -299,7 +322,20 @@ def test_a_workbook_of_others(read):
     book = openpyxl.Workbook()
     sheet = book.active
     sheet.append(["Season 2031"])
-    sheet.append(["Manufacturer", "Model", "Cell type", "Bifacial", "Pmax (W)", "Voc (V)", "Isc (A)", "Vmp (V)", "Imp (A)", "Bifaciality"])
+    sheet.append(
+        [
+            "Manufacturer",
+            "Model",
+            "Cell type",
+            "Bifacial",
+            "Pmax (W)",
+            "Voc (V)",
+            "Isc (A)",
+            "Vmp (V)",
+            "Imp (A)",
+            "Bifaciality",
+        ]
+    )
     sheet.append(["Paper Sun", 400, "Mono-c-Si", True, 400, 45.6, 11.2, 37.9, 10.56, 0.7])
     sheet["J3"].number_format = "0 %"
     book.create_sheet("remarks").append(["nothing of use"])
@@ -329,7 +365,10 @@ SOUND = workbook([HEADING.split(","), ROW.split(",")])
     [
         (tampered(SOUND, xl__media__blank=b"\0" * 2**25), "unpacks to"),
         (tampered(SOUND, **{"xl__externalLinks__externalLink1_xml": b"<a/>"}), "links to other files"),
-        (tampered(SOUND, **{"xl__bomb_xml": b'<!DOCTYPE a [<!ENTITY b "bb">]><a>&b;</a>'}), "definitions that no workbook needs"),
+        (
+            tampered(SOUND, **{"xl__bomb_xml": b'<!DOCTYPE a [<!ENTITY b "bb">]><a>&b;</a>'}),
+            "definitions that no workbook needs",
+        ),
         (SOUND[: len(SOUND) // 2], "is no workbook"),
         (b"PK\x03\x04 not really", "is no workbook"),
         (workbook([["a"] * 600, ["b"] * 600]), "columns; part it"),
@@ -354,7 +393,9 @@ FORMULAS = ("=1+1", "+cmd", "-2", "@SUM(A1)", "'quoted", "'=1", "x;=1+1", 'a,"=2
 
 @pytest.mark.parametrize("ending", ["csv", "xlsx", "toml", "json"])
 def test_texts_that_look_like_formulas_are_harmless_and_come_back(tmp_path, ending):
-    modules = [replace(MODULES[0], maker="Alderfell", model=text, source=Source(text, text)) for text in FORMULAS]
+    modules = [
+        replace(MODULES[0], maker="Alderfell", model=text, source=Source(text, text)) for text in FORMULAS
+    ]
     path = tmp_path / f"a.{ending}"
     write_sheets(path, modules, [])
     assert read_sheets(path).modules == modules
@@ -402,7 +443,10 @@ MACHINE = {
 }  # fmt: skip
 
 
-@pytest.mark.parametrize("shape", [lambda p: p, lambda p: [p], lambda p: {"ProdModules": [p]}, lambda p: {"Catalog": {"items": [p]}}])
+@pytest.mark.parametrize(
+    "shape",
+    [lambda p: p, lambda p: [p], lambda p: {"ProdModules": [p]}, lambda p: {"Catalog": {"items": [p]}}],
+)
 def test_open_data_of_a_module(read, shape):
     found = read(json.dumps(shape(PRODUCT)), "a.json")
     (m,) = found.modules
@@ -410,12 +454,21 @@ def test_open_data_of_a_module(read, shape):
     assert (m.pmax_w, m.voc_v, m.isc_a, m.vmp_v, m.imp_a) == (400.0, 45.6, 11.2, 37.9, 10.56)
     assert (m.voc_coef_pct, m.pmax_coef_pct, m.noct_c) == pytest.approx((-0.274123, -0.35, 45.0))
     assert (m.max_system_voltage_v, m.length_m, m.width_m) == (1500.0, 1.722, 1.134)
-    assert any("kept aside" in n and "ProdCell.CellColor" in n and "VoltageOpenCircuit (another)" in n for n in found.notes)
+    assert any(
+        "kept aside" in n and "ProdCell.CellColor" in n and "VoltageOpenCircuit (another)" in n
+        for n in found.notes
+    )
 
 
 def test_open_data_of_an_inverter(read):
     (i,) = read(json.dumps([MACHINE]), "a.json").inverters
-    assert (i.ac_power_w, i.ac_voltage_v, i.phases, i.max_dc_voltage_v, i.start_voltage_v) == (10000.0, 400.0, 3, 1000.0, 200.0)
+    assert (i.ac_power_w, i.ac_voltage_v, i.phases, i.max_dc_voltage_v, i.start_voltage_v) == (
+        10000.0,
+        400.0,
+        3,
+        1000.0,
+        200.0,
+    )
     assert (i.mppt_low_v, i.mppt_high_v, i.weighted_efficiency_pct) == (180.0, 850.0, 97.5)
     assert i.inputs == (Inputs(trackers=2, strings_per_tracker=2, max_current_a=26.0, max_isc_a=32.0),)
 

@@ -54,7 +54,7 @@ QN5, QN8 = "QN-5000 [240V]", "QN-8000 Duo"
         ("mppt_high_v < max_dc_voltage_v", [QN8]),
         ("(phases == 1 or phases == 3) and ac_power_w < 6000", [QN5]),
         ("phases == 1 or phases == 3 and ac_power_w < 6000", [QN5]),
-        ("\"it's\" == model or phases == 3", [QN8]),
+        ('"it\'s" == model or phases == 3', [QN8]),
     ],
 )
 def test_what_conditions_find(found, text, models):
@@ -106,7 +106,14 @@ def test_fields_tell_the_kind():
         kinds_of("voc_v > 40 and phases == 1", kinds)
 
 
-COMPARE = {"==": operator.eq, "!=": operator.ne, "<": operator.lt, "<=": operator.le, ">": operator.gt, ">=": operator.ge}
+COMPARE = {
+    "==": operator.eq,
+    "!=": operator.ne,
+    "<": operator.lt,
+    "<=": operator.le,
+    ">": operator.gt,
+    ">=": operator.ge,
+}
 
 
 def _numbers(type_):
@@ -150,7 +157,28 @@ def test_conditions_mean_what_python_means_by_them(found, data):
 
 
 WORDS = st.sampled_from(
-    ("ac_power_w", "phases", "model", "and", "or", "not", "(", ")", "==", ">=", "~", "5", "5 kW", "unknown", "yes", '"a"', "'", "x", "1e9", "%")
+    (
+        "ac_power_w",
+        "phases",
+        "model",
+        "and",
+        "or",
+        "not",
+        "(",
+        ")",
+        "==",
+        ">=",
+        "~",
+        "5",
+        "5 kW",
+        "unknown",
+        "yes",
+        '"a"',
+        "'",
+        "x",
+        "1e9",
+        "%",
+    )
 )
 
 
