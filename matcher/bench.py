@@ -25,16 +25,19 @@ from matcher.options import Options, Unit, join
 from matcher.request import Request
 from matcher.rules import RuleSet
 from matcher.search import Search
-from matcher.several import even_split, together
+from matcher.several import together
 from matcher.shared import free_space
 
 #: A window of DC/AC ratios that shuts nothing out: what the ratio is worth is for the reader to decide.
 ANY_RATIO = (1e-9, 1e9)
 
 
-def with_diode(module: Module) -> Module:
-    """The module with the six parameters that its values give, so that they are fitted once only."""
-    if module.a_ref is not None:
+def with_diode(module: Module, always: bool = False) -> Module:
+    """The module with the six parameters that its values give, so that they are fitted once only.
+
+    Where a coefficient of Vmp is stated, voltages need no model, and it is fitted only if ``always``.
+    """
+    if module.a_ref is not None or (module.vmp_coef_pct is not None and not always):
         return module
     diode = diode_parameters(module)
     if diode is None:
@@ -108,9 +111,7 @@ class Bench:
         whole, rest = divmod(total, units)
         if bits >> whole & 1 and (not rest or bits >> (whole + 1) & 1):
             return tuple([whole + 1] * rest + [whole] * (units - rest))
-        if not reach.on_units(bits, units, total) >> total & 1:
-            return None
-        return even_split(reach.members(bits), total, units)
+        return reach.split(bits, total, units)
 
     def around(self, i: int, total: int, units: int) -> tuple[int | None, int | None]:
         """Module counts next below and next above ``total`` that the units take."""

@@ -70,7 +70,8 @@ class ClimateWindow:
 
     def _hottest_vmp(self, volts: float) -> float | None:
         if self._vmp is None:
-            table = vmp(self._module, self._cell, diode_parameters(self._module))
+            stated = self._module.vmp_coef_pct is not None
+            table = vmp(self._module, self._cell, None if stated else diode_parameters(self._module))
             assert table is not None  # a module without Vmp in the heat is never matched
             self._vmp = table
         below = np.flatnonzero(~(self._vmp >= volts))

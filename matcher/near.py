@@ -20,7 +20,6 @@ from matcher.climate import ClimateWindow
 from matcher.limits import TOLERANCE, voltage_cap
 from matcher.options import Unit, label
 from matcher.request import Request
-from matcher.several import even_split
 
 #: Where counts below and above can be wired, a count whose nearest arrangement misses a limit by more than
 #: this share, or only with what is left over, is called the wrong count: it is the count that wants changing.
@@ -291,7 +290,7 @@ def _with_more_strings(space: Space, extra: int) -> tuple:
 
 def _wired(pair: Pair, space: Space, total: int, units: int) -> Nearest:
     """One way of wiring the count in a space that takes it, and its checks."""
-    split = even_split(reach.members(reach.one_unit(space)), total, units)
+    split = reach.split(reach.one_unit(space), total, units)
     assert split is not None
     wired = reach.any_wiring(space, pair.inverter, split)
     return wired, checks_of(pair, wired)

@@ -79,8 +79,8 @@ def swap_part(
     trackers = [t for unit in wired for _ in range(unit.copies) for t in unit.trackers]
     place = {m.name: k for k, m in enumerate(modules)}
     others = [m for m in modules if m.name != old.name]
-    old = with_diode(old)
-    near = [with_diode(m) for m in _nearest(old, others, nearest)]
+    old = with_diode(old, always=True)
+    near = [with_diode(m, always=True) for m in _nearest(old, others, nearest)]
     own = design_points([old], site, rules, plane)
     if own.reasons[0] is not None:
         raise MatcherError(f"{old.name} cannot be matched: {own.reasons[0]}")

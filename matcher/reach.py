@@ -14,7 +14,7 @@ from catalog.records import Inverter
 from matcher.arrangements import ByStrings, Space, distinct_lengths
 from matcher.checks import Tracker
 from matcher.options import Unit
-from matcher.several import even_strings
+from matcher.several import even_split, even_strings
 
 
 #: Sets with more members than this are added by convolution.
@@ -77,6 +77,25 @@ def _as_array(bits: int) -> np.ndarray:
 def members(bits: int) -> list[int]:
     """The counts of a set, ascending."""
     return np.flatnonzero(_as_array(bits)).tolist()
+
+
+def split(one: int, total: int, units: int) -> tuple[int, ...] | None:
+    """Modules of each unit, as even as can be, each a count of ``one``; ``None`` where they do not add up.
+
+    Counts far from the mean are left out before `even_split` goes through them: what can be done within some
+    width around the mean has its evenest split within twice that width.
+    """
+    if total < units or not on_units(one, units, total) >> total & 1:
+        return None
+    mean, width = total // units, 1
+    while not on_units(_around(one, mean, width), units, total) >> total & 1:
+        width *= 2
+    return even_split(members(_around(one, mean, 2 * width)), total, units)
+
+
+def _around(bits: int, mean: int, width: int) -> int:
+    low = max(mean - width, 0)
+    return (bits >> low << low) & ((1 << (mean + width + 2)) - 1)
 
 
 def below(bits: int, count: int) -> int | None:

@@ -206,6 +206,13 @@ def test_part_of_the_modules(demo):
     assert losses["Klassik 275P"] < 0.1 < 3 < losses["QF-400H"]
 
 
+def test_only_what_lies_in_stock_in_sufficient_number(demo, ferrule, small_catalog):
+    every, held = (json.loads(demo(*ARRAY, *more, "--json").out)["totals"] for more in ((), ("--in-stock",)))
+    assert 0 < held["records_considered"] <= every["records_considered"]
+    ran = ferrule("swap", "-m", "AF6K-270P", "-i", "QN-5000", "--count", 20, "--low", -12, "--high", 36, "--in-stock")
+    assert ran.status == 2 and "no module is in stock" in ran.err
+
+
 @pytest.mark.parametrize(
     ("change", "said"),
     [
@@ -214,7 +221,6 @@ def test_part_of_the_modules(demo):
         (("--replace", "roof"), "it is module or inverter"),
         (("--count", 22), "say how the array is wired"),
         (("--strings", "1x40"), "None"),
-        (("--in-stock",), "no module is in stock"),
     ],
 )
 def test_bad_input_is_one_line(demo, change, said):

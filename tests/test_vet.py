@@ -279,13 +279,17 @@ def test_a_bundle_that_lacks_a_value_has_no_verdict(demo):
         ((*ONE[1:], "--low", "-5"), "give both design temperatures"),
         ((*ONE[1:], "--strings", "2x11|1x12,1x13"), "a tracker takes strings of one length"),
         ((*ONE[1:], "--strings", "1x13"), "make them agree"),
-        ((*ONE[1:], "--in-stock"), "no inverter is in stock"),
         (("nowhere.csv",), "cannot be read"),
     ],
 )
 def test_bad_input_is_one_line(demo, arguments, said):
     ran = demo("vet", *arguments)
     assert ran.status == 2 and said in ran.err and ran.err.count("\n") == 1 and not ran.out
+
+
+def test_in_stock_needs_a_stock(ferrule, small_catalog):
+    ran = ferrule("vet", "-m", "AF9B-440", "--count", 40, "-i", "QN-8000 Duo", "--low", -12, "--high", 36, "--in-stock")
+    assert ran.status == 2 and "no inverter is in stock" in ran.err
 
 
 def test_the_demos_list(demo, tmp_path):
