@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 import typer
 
 from catalog.errors import CatalogError
+from cli.console import note
 from cli.opening import CatalogOption, open_catalog
 from cli.siting import (
     AzimuthOption, CapOption, HighOption, LatOption, LonOption, LowOption, MountingOption, RearOption,
@@ -131,6 +132,7 @@ def fit(
         extra |= add_energy(found, year, energy, enough)
     if out is not None:
         fit_files.write(found, out, year, with_checks=checks or not request.every, why=why, extra=extra)
+        note(f"Written to {out}.")
     if json:
         fit_files.print_document(found, year.weather, with_checks=checks or not request.every, why=why, extra=extra)
     elif out is None or fit_screen.on_terminal():

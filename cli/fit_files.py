@@ -12,6 +12,7 @@ from pathlib import Path
 from typing import IO, TYPE_CHECKING, Any
 
 from catalog.errors import CatalogError
+from cli.console import note
 from cli.documents import inverter_key, module_key, write_fit
 from matcher.options import label
 
@@ -69,7 +70,10 @@ def print_document(
 
 @contextmanager
 def replacing(path: Path, binary: bool = False) -> Iterator[IO[Any]]:
-    """A file of UTF-8 text (or bytes) that takes the place of ``path`` only once it is whole."""
+    """A file of UTF-8 text (or bytes) that takes the place of ``path`` only once it is whole.
+
+    A file that was there is kept beside it, with a ``~`` behind its name: nobody's work is written over.
+    """
     folder = path.parent if str(path.parent) else Path()
     try:
         handle, name = tempfile.mkstemp(dir=folder, prefix=f".{path.name}.", suffix=".part")
@@ -79,6 +83,10 @@ def replacing(path: Path, binary: bool = False) -> Iterator[IO[Any]]:
         with os.fdopen(handle, "wb") if binary else os.fdopen(handle, "w", encoding="utf-8", newline="") as stream:
             yield stream
         os.chmod(name, 0o666 & ~_umask())
+        if path.is_file():
+            before = path.with_name(f"{path.name}~")
+            os.replace(path, before)
+            note(f"{path} was there before; it is kept as {before}.")
         os.replace(name, path)
     except OSError as error:
         Path(name).unlink(missing_ok=True)

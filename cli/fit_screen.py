@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import sys
 from collections.abc import Iterator, Sequence
+from dataclasses import replace
 from itertools import groupby
 from typing import TYPE_CHECKING
 
@@ -65,6 +66,7 @@ def show_options(fit: Fit, year: SiteYear, limit: int) -> list[Option]:
         if more > 0:
             say(f"... and {more:,} more (--limit N shows more, --out FILE.csv holds all of them).")
         _confirm_lines(fit, options)
+        _notes_line(options)
     return options
 
 
@@ -145,7 +147,7 @@ def _options_tables(fit: Fit, options: Sequence[Option], has_year: bool) -> None
 
 
 _HEADINGS = {
-    Verdict.FITS: "fits: every rating is on record and holds",
+    Verdict.FITS: "fits: every check that can stop it holds by the ratings on record",
     Verdict.TO_CONFIRM: "to-confirm: nothing on record speaks against it, but a safety rating is not on record",
 }
 
@@ -227,6 +229,19 @@ def _confirm_lines(fit: Fit, options: Sequence[Option]) -> None:
             say(f"#{o.rank}  {own}: {'; '.join(words)}", indent=2)
     if len(waiting) > 5:
         say("(the document holds them for every option: --json)", indent=2)
+
+
+def _notes_line(options: Sequence[Option]) -> None:
+    """Say what is not on record of the checks that stop nothing, where the shown options leave any open."""
+    fields = dict.fromkeys(
+        field_words(replace(c.confirm, inputs=None))
+        for o in options
+        for c in o.checks
+        if not c.stop and c.confirm is not None
+    )
+    if fields:
+        say()
+        say(f"Not on record, and no reason to stop: {'; '.join(fields)} (--checks shows what rests on it).")
 
 
 def _amend_lines(fit: Fit, options: Sequence[Option]) -> None:

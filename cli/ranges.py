@@ -17,7 +17,8 @@ def number_range(text: str, option: str) -> tuple[float, float]:
     try:
         bounds = (float(low), float(high if dots else low))
     except ValueError:
-        raise CatalogError(f"{option} {text}: write a number, or a range with two dots such as 0.9..1.4") from None
+        example = "0.9..1.4" if option == "--ratio" else "56..64"
+        raise CatalogError(f"{option} {text}: write a number, or a range with two dots such as {example}") from None
     if not 0 < bounds[0] <= bounds[1] < float("inf"):
         raise CatalogError(f"{option} {text}: the range must be above 0 and run from low to high")
     return bounds

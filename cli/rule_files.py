@@ -61,7 +61,8 @@ def read_rule_set(path: str) -> RuleSet:
             raise CatalogError(f"rule set {path}: cold_voltage must be one of {', '.join(COLD_METHODS)}")
         changes["cold_voltage"] = entries["cold_voltage"]
     base = RULE_SETS[based_on]
-    changes["clauses"] = {**base.clauses, **_clauses(path, entries.get("clauses", {}))}
+    own = _own_clauses(changes)
+    changes["clauses"] = {**base.clauses, **own, **_clauses(path, entries.get("clauses", {}))}
     rules = replace(base, **changes)
     if rules.cold_voltage == "hourly" and "cold_margin_pct" not in entries:
         raise CatalogError(f"rule set {path}: cold_voltage = \"hourly\" needs the margin you choose, cold_margin_pct")
@@ -70,6 +71,28 @@ def read_rule_set(path: str) -> RuleSet:
     if rules.fuse_high is not None and rules.fuse_low > rules.fuse_high:
         raise CatalogError(f"rule set {path}: fuse_low {rules.fuse_low:g} is above fuse_high {rules.fuse_high:g}")
     return rules
+
+
+#: Checks whose clause no longer stands behind them where an entry is changed.
+_BEHIND = {
+    "isc_factor": ("short-circuit", "string-fuse"),
+    "fuse_low": ("string-fuse",),
+    "fuse_high": ("string-fuse",),
+    "voltage_cap_v": ("voltage-cap",),
+    "cold_voltage": ("max-dc-voltage", "system-voltage", "voltage-cap"),
+}
+
+
+def _own_clauses(changes: dict[str, Any]) -> dict[str, str]:
+    """What stands behind the checks that the file changes: the file, not the code that it is based on."""
+    found: dict[str, str] = {}
+    for field, checks in _BEHIND.items():
+        if field in changes:
+            value = changes[field] if isinstance(changes[field], str) else f"{changes[field]:g}"
+            for check in checks:
+                before = f"{found[check]}, " if check in found else f"rule set {changes['name']}: "
+                found[check] = f"{before}{field} {value}"
+    return found
 
 
 def _number(path: str, field: str, value: object, low: float, high: float) -> float:

@@ -217,7 +217,7 @@ class _Sheets:
             *[("Caution", line) for line in CAUTIONS],
             (
                 "Verdicts",
-                "fits: every rating is on record and holds. to-confirm: nothing on record speaks"
+                "fits: every check that can stop it holds by the ratings on record. to-confirm: nothing on record speaks"
                 " against it, but a safety rating is not on record; the sheet To confirm names what"
                 " settles it.",
             ),

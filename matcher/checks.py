@@ -259,7 +259,8 @@ def _string_fuse(pair: Pair, most_strings: int) -> Check:
         return _check(pair, "string-fuse", value, fuse, "A", Verdict.FITS, remark="one or two strings need none")
     if fuse is None:
         confirm = Confirm("module", "max_series_fuse_a", value, "A")
-        return _check(pair, "string-fuse", value, None, "A", Verdict.TO_CONFIRM, confirm=confirm)
+        remark = "with a lower rating string fuses are needed"
+        return _check(pair, "string-fuse", value, None, "A", Verdict.TO_CONFIRM, confirm=confirm, remark=remark)
     remark = None
     if not _holds_max(value, fuse):
         low, high = fuse_range(pair.rules, pair.points, fuse)

@@ -28,10 +28,11 @@ class Order(StrEnum):
 def in_words(order: Order, clip_cap_pct: float, has_losses: bool) -> str:
     """The order as a sentence, for above the table."""
     first = "what fits before what is to be confirmed"
+    ties = "ties by fewer string lengths, then by the larger cold-voltage margin"
     if order is Order.LEAST_INVERTER and has_losses:
         return (
             f"{first}; then by falling DC/AC ratio while no more than {clip_cap_pct:g} % is clipped,"
-            " then by rising clipping loss"
+            f" then by rising clipping loss; {ties}"
         )
     words = {
         Order.LEAST_INVERTER: "by falling DC/AC ratio (no clipping figure)",
@@ -41,7 +42,7 @@ def in_words(order: Order, clip_cap_pct: float, has_losses: bool) -> str:
         Order.ENERGY: "by falling yearly energy",
         Order.COST: "by rising cost of modules and inverters",
     }
-    return f"{first}; then {words[order]}"
+    return f"{first}; then {words[order]}; {ties}"
 
 
 def phase(clipping_pct: np.ndarray, clip_cap_pct: float) -> np.ndarray:

@@ -37,7 +37,7 @@ def test_the_demo_tells_question_answer_reasons_doubts_cautions_and_what_next(sc
         "24 of them. The buyer asks: Which inverters take Marzipan Photovoltaik Klassik 270P at Butterfield"
         in said
     )
-    assert "fits: every rating is on record" in said
+    assert "fits: every check that can stop it holds" in said
     assert "to-confirm:" in said and "To confirm on the datasheets before ordering" in said
     assert "In short: the least inverter" in said
     assert "max-dc-voltage" in said and "IEC 62548" in said
