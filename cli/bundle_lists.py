@@ -10,7 +10,7 @@ from catalog.errors import CatalogError
 
 if TYPE_CHECKING:
     from catalog.names import NameIndex
-    from catalog.tabular import Table, TableRow
+    from catalog.tabular import TableRow
 
 #: Words that head the columns (common practice, no source), by what they hold.
 HEADINGS: dict[str, tuple[str, ...]] = {

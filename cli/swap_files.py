@@ -6,7 +6,7 @@ import csv
 import json
 import sys
 from pathlib import Path
-from typing import IO, TYPE_CHECKING, Any
+from typing import IO, TYPE_CHECKING, Any, TypeAlias
 
 from catalog.errors import CatalogError
 from cli.cautions import CAUTIONS
@@ -24,7 +24,8 @@ SWAP_SCHEMA = "ferrule.swap/1"
 
 FORMS = (".csv", ".xlsx", ".json")
 
-Full = "list[tuple[Fit, Option]]"
+#: The first candidates worked out in full.
+Full: TypeAlias = "list[tuple[Fit, Option]]"
 
 
 def write(question: Question, full: Full, out: str) -> None:

@@ -7,8 +7,8 @@ from typing import TYPE_CHECKING
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
 from cli.facts import confirm_words
+from cli.fit_screen import climate_window
 from cli.vet_words import window_short
-from matcher.anyclimate import Window
 from matcher.options import label
 
 if TYPE_CHECKING:
@@ -99,7 +99,7 @@ def _show_modules(question: Question, full: list[tuple[Fit, Option]]) -> None:
     rows = [["old", question.module.name, question.vetted.verdict, f"{question.module.pmax_w:.0f}", "", "", "", _size(question.module)]]
     rows[0] += ["" if own is None else f"{own.dc_ac_ratio:.2f}"]
     rows[0] += [] if not clips else ["" if own is None else number(own.clipping_loss_pct, 2)]
-    rows[0] += [window_short(question.vetted.window)]
+    rows[0] += [_own_window(question)]
     for k, (fit, o) in enumerate(full):
         size = swaps.size_mm[k]
         row = [
@@ -107,7 +107,7 @@ def _show_modules(question: Question, full: list[tuple[Fit, Option]]) -> None:
             *(signed(swaps.changes[n][k]) for n in ("power", "vmp", "imp")),
             "x".join(signed(v, 0) for v in size) if size[0] == size[0] else "", f"{o.dc_ac_ratio:.2f}",
         ]  # fmt: skip
-        rows.append([*row, *([number(o.clipping_loss_pct, 2)] if clips else []), _window(o)])
+        rows.append([*row, *([number(o.clipping_loss_pct, 2)] if clips else []), climate_window(o)])
     print_table(columns, rows)
     _more(question, len(full))
     _margins(full)
@@ -120,8 +120,9 @@ def _size(module) -> str:
     return f"{module.length_m * 1000:.0f}x{module.width_m * 1000:.0f}"
 
 
-def _window(option: Option) -> str:
-    return window_short(Window(option.coldest_c, option.hottest_c))
+def _own_window(question: Question) -> str:
+    option = question.vetted.option
+    return window_short(question.vetted.window) if option is None else climate_window(option)
 
 
 def _show_inverters(question: Question, full: list[tuple[Fit, Option]]) -> None:
@@ -140,12 +141,12 @@ def _show_inverters(question: Question, full: list[tuple[Fit, Option]]) -> None:
     rows = [["old", question.inverter.name, question.vetted.verdict, f"{question.inverter.ac_power_w / 1000:.2f}", "",
              label(question.wired), "" if own is None else f"{own.dc_ac_ratio:.2f}"]]  # fmt: skip
     rows[0] += ["" if own is None else number(own.clipping_loss_pct, 2)] if clips else []
-    rows[0].append(window_short(question.vetted.window))
+    rows[0].append(_own_window(question))
     for k, (fit, o) in enumerate(full):
         inverter = fit.inverters[0]
         row = [str(k + 1), inverter.name, str(o.verdict), f"{inverter.ac_power_w / 1000:.2f}",
                signed(swaps.changes["power"][k]), o.label, f"{o.dc_ac_ratio:.2f}"]  # fmt: skip
-        rows.append([*row, *([number(o.clipping_loss_pct, 2)] if clips else []), _window(o)])
+        rows.append([*row, *([number(o.clipping_loss_pct, 2)] if clips else []), climate_window(o)])
     print_table(columns, rows)
     _more(question, len(full))
     _margins(full)

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
 from cli.facts import assumptions, confirm_words
+from cli.fit_screen import climate_window
 from cli.vet_words import bounds_known, cause, mend_words, short, window_short, window_words
 from matcher.options import label
 
@@ -141,4 +142,6 @@ def _line_row(line: Line) -> list[str]:
     if v is None:
         return [str(line.row.number), line.row.article, line.row.modules, line.verdict, "", line.reason]
     holds = "" if v.verdict == "no-verdict" else window_short(v.window)
+    if v.option is not None:
+        holds = climate_window(v.option)
     return [str(line.row.number), line.row.article, str(v.bundle.modules), line.verdict, holds, short(v)]
