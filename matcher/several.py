@@ -95,7 +95,8 @@ def _adding_up(
 
     allowed = 1
     for w, stride in zip(wanted, strides, strict=False):
-        allowed = sum(allowed << (k * stride) for k in range(w + 1))
+        # Every number of strings of this length up to the wanted one: a geometric series.
+        allowed *= ((1 << stride * (w + 1)) - 1) // ((1 << stride) - 1)
     places = [place(s) for s in shares]
     after = [1]
     for _ in range(units):
