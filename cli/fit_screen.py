@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
-from cli.facts import assumptions, at_least, confirm_words, holds_from, holds_to, number_of_options, whole
+from cli.facts import assumptions, at_least, confirm_words, field_words, holds_from, holds_to, number_of_options, whole
 from cli.quoting import amend_command
 from matcher.checks import Check, Confirm, Verdict, face_mark
 
