@@ -33,26 +33,36 @@ def console(stderr: bool = False) -> Console:
     return Console(file=stream, highlight=False, emoji=False, markup=False, width=width)
 
 
+#: Width below which a column is not folded further.
+_LEAST_FOLD = 12
+
+
 def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> None:
     """Print rows of text; numbers are set to the right and never wrapped."""
     from rich.table import Table
 
     rows = list(rows)
     table = Table(box=None, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold", show_edge=False)
+    needed = 0
     for k, column in enumerate(columns):
         # What must not fold keeps its width; the columns that may fold give way.
         whole = max(len(line) for text in (column.header, *(row[k] for row in rows)) for line in text.split("\n"))
+        least = min(column.min_width or _LEAST_FOLD, whole) if column.fold else whole
+        needed += least + 1
         table.add_column(
             column.header,
             justify="right" if column.number else "left",
             no_wrap=not column.fold,
             overflow="fold",
             vertical="top",
-            min_width=min(column.min_width or 0, whole) if column.fold else whole,
+            min_width=least,
         )
     for row in rows:
         table.add_row(*row)
-    console().print(table)
+    screen = console()
+    # A line that is too long is better than a value that is cut off.
+    screen.width = max(screen.width, needed)
+    screen.print(table)
 
 
 def say(text: str = "", indent: int = 0) -> None:

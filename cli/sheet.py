@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import typer
 
-from cli import sheet_amend, sheet_backup, sheet_enter, sheet_export, sheet_find, sheet_history, sheet_load, sheet_show
+from cli import sheet_amend, sheet_backup, sheet_enter, sheet_export, sheet_find, sheet_history, sheet_load, sheet_show, sheet_twins
 
 app = typer.Typer(no_args_is_help=True, help="The datasheets that are kept: load, enter, find, show, amend, export, history.")
 app.command("load")(sheet_load.load)
@@ -15,5 +15,6 @@ app.command("history")(sheet_history.history)
 app.command("undo")(sheet_amend.undo)
 app.command("enter")(sheet_enter.enter)
 app.command("export")(sheet_export.export)
+app.command("twins")(sheet_twins.twins)
 app.command("backup")(sheet_backup.backup)
 app.command("restore")(sheet_backup.restore)

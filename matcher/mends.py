@@ -16,6 +16,10 @@ TRIED = 60
 NEAR_POWER = 2.0
 
 
+#: DC/AC ratio up to which another inverter is offered: one that is far too small mends nothing.
+HIGHEST_RATIO = 1.5
+
+
 @dataclass(frozen=True, slots=True)
 class Mend:
     """One change that makes a bundle sound.
@@ -64,8 +68,10 @@ def mends(
         if bench.takes(i, total, k) and add("units", abs(k - units) / units, total, k, i):
             break
     unsure: int | None = None
+    module_w = float(bench.fit.points.pmax_w[0])
     for other in candidates:
-        if not bench.takes(other, total, units):
+        too_small = total * module_w > HIGHEST_RATIO * units * _power(bench, other)
+        if too_small or not bench.takes(other, total, units):
             continue
         size = abs(log(_power(bench, other) / _power(bench, i)))
         add("inverter", size, total, units, other)
