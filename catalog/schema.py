@@ -91,9 +91,11 @@ def checked_version(database: Database) -> int | None:
         If the catalog is of a newer program, or it is another database.
     """
     if not database.has_table("meta"):
-        if database.has_table():
+        if not database.has_table():
+            return None
+        # Another process may have made the tables between the two looks.
+        if not database.has_table("meta"):
             raise CatalogError(f"{database.label} is a database, but no catalog of Ferrule's: name another")
-        return None
     with database.reading() as run:
         version = stored_version(run)
     if version is None:
