@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import random
 import resource
 import tempfile
 from pathlib import Path
@@ -33,13 +34,14 @@ def _project(folder: Path, form: str, pairs: int) -> None:
     paths: list[Path] = []
     seconds, done = 0.0, 0
     # Parts from all over the table: makers differ in how many twins they have.
-    numbers = range(len(parts.modules) // 20, len(parts.modules), len(parts.modules) // 7)
+    # Drawn, not in their order: neighbours in the table are alike, and twins are worked out once a part.
+    numbers = random.Random(1).sample(range(len(parts.modules)), 12)
     for count, number in enumerate(numbers, 1):
         cost, path = best_of(1, lambda number=number: task.make(parts.modules[number], folder, number))
         seconds += cost.cpu_s
         done += len(parts.modules[number]) * len(inverters())
         paths.append(path)
-        if count in (1, 3, len(numbers)):
+        if count in (3, 6, len(numbers)):
             peak = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1000
             row(f"  {count} of {len(parts.modules)}", f"{done:,}", f"{seconds:.2f}", f"{seconds / done * 1e6:.2f}", f"{peak:.0f}")
     joining, _ = best_of(1, lambda: assemble(form, paths, folder / f"pairs{form}"))
