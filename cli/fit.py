@@ -77,7 +77,7 @@ def fit(
     With --module, the inverters that take it; with --inverter, the modules it takes; with both, every
     arrangement of that pair. Exit status: 0 something fits, 1 nothing fits, 2 bad input.
 
-    Example: ferrule fit --module "af6k 270p" --low -12 --high 38
+    Example: ferrule fit --module "klassik 270p" --low -12 --high 37
     """
     if module is None and inverter is None:
         raise CatalogError("name what you have: --module NAME, --inverter NAME, or both")

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import sys
+from typing import Annotated
 
 import typer
 
 from catalog.errors import CatalogError
+from cli.groups import Group
 from matcher.errors import MatcherError
 
 BAD_INPUT = 2
@@ -14,13 +16,44 @@ INTERRUPTED = 130
 
 app = typer.Typer(
     name="ferrule",
-    help="Which PV modules and inverters go together, in which strings, how sure that is, and what it costs in clipping.",
+    cls=Group,
     no_args_is_help=True,
     # Plain help: markup would take a unit such as [degC] for a tag and drop it.
     rich_markup_mode=None,
     context_settings={"help_option_names": ["--help", "-h"], "max_content_width": 100},
     pretty_exceptions_enable=False,
 )
+
+
+def _print_version(asked: bool) -> None:
+    if asked:
+        from importlib.metadata import PackageNotFoundError, version
+
+        try:
+            print(f"ferrule {version('ferrule')}")
+        except PackageNotFoundError:
+            print("ferrule, run from its source without being installed")
+        raise typer.Exit
+
+
+@app.callback()
+def ferrule(
+    version: Annotated[
+        bool, typer.Option("--version", callback=_print_version, is_eager=True, help="Show the version and exit.")
+    ] = False,
+) -> None:
+    """Which PV modules and inverters go together, in which strings, how sure that is, and what it
+    costs in clipping.
+
+    \b
+    First steps:
+      ferrule demo                   an invented distributor's question, answered end to end
+      ferrule sheet load cec         the public CEC tables, into a catalog of your own
+      ferrule fit --module "canadian solar cs6k-275m" --low -12 --high 37
+                                     the inverters that take this module, in which strings
+
+    Every command has a help with an example: ferrule fit --help.
+    """
 
 
 def _register() -> None:
@@ -67,7 +100,13 @@ def run(arguments: list[str] | None = None) -> int:
         if not hasattr(error, "format_message"):
             raise
         message = error.format_message()
-        return _refused(f"{message} (see 'ferrule --help')" if message else "") if message else BAD_INPUT
+        if "\n" in message:
+            # A command that does nothing by itself: its help, whole.
+            print(message, file=sys.stderr)
+            return BAD_INPUT
+        context = getattr(error, "ctx", None)
+        where = context.command_path if context else "ferrule"
+        return _refused(f"{message} (see '{where} --help')")
 
 
 def _refused(line: str, status: int = BAD_INPUT) -> int:

@@ -47,7 +47,7 @@ def amend(
 
     Values of trackers are those of a group, the first being 1: inputs[1].max_isc_a=32.
 
-    Example: ferrule sheet amend "af6k 270p" max_system_voltage_v=1000 --source "datasheet rev C, page 2"
+    Example: ferrule sheet amend "old faithful 4.6" max_dc_voltage_v=600 --source "datasheet rev C, page 2"
     """
     from catalog.assignments import changes_of
     from catalog.records import Source
@@ -75,7 +75,7 @@ def undo(
 ) -> None:
     """Make what counted before the last change count again, as a new revision. Repeated, it goes further back.
 
-    Example: ferrule sheet undo "af6k 270p"
+    Example: ferrule sheet undo "old faithful 4.6"
     """
     with open_catalog(catalog) as opened:
         found, before = record_of(opened, name, asked_kinds(kind))

@@ -44,10 +44,10 @@ def export(
 
     The .json is that of the open standard Orange Button.
 
-    Example: ferrule sheet export mine.csv "af6k 270p"
+    Example: ferrule sheet export mine.csv "klassik 270p"
     """
     from catalog.sheetfiles import write_sheets
-    from cli.console import say
+    from cli.console import counted, say
 
     if file.exists() and not force:
         raise CatalogError(f"{file} exists: name another file, or write over it with --force")
@@ -60,7 +60,7 @@ def export(
             f"there is nothing to write: no {' or '.join(kinds)} is asked for that the catalog holds"
         )
     write_sheets(file, modules, inverters)
-    say(f"{len(modules):,} modules and {len(inverters):,} inverters: {file}")
+    say(f"{counted(len(modules), 'module')} and {counted(len(inverters), 'inverter')}: {file}")
 
 
 def _chosen(

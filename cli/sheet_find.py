@@ -48,7 +48,7 @@ def find(
 
     Exit status: 0 something found, 1 nothing found, 2 bad input.
 
-    Example: ferrule sheet find af6k 270
+    Example: ferrule sheet find klassik 270
     """
     kinds = asked_kinds(kind)
     query = " ".join(words or ())

@@ -25,7 +25,7 @@ def history(
 ) -> None:
     """Show all revisions of a record, the latest first: when, how, from which document, and what changed.
 
-    Example: ferrule sheet history "af6k 270p"
+    Example: ferrule sheet history "old faithful 4.6"
     """
     with open_catalog(catalog) as opened:
         found, record = record_of(opened, name, asked_kinds(kind))

@@ -29,7 +29,7 @@ def show(
 ) -> None:
     """Show one record whole: every value with its unit, its origin and the document it was read from.
 
-    Example: ferrule sheet show "af6k 270p"
+    Example: ferrule sheet show "klassik 270p"
     """
     kinds = asked_kinds(kind)
     with open_catalog(catalog) as opened:

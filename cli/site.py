@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from catalog.errors import CatalogError
+from cli.groups import Group
 from cli.opening import CatalogOption, open_catalog
 from cli.site_weather import missing_temperatures, pair, say_weather, weather_facts
 from cli.siting import (
@@ -29,7 +30,7 @@ if TYPE_CHECKING:
 LIST_SCHEMA = "ferrule.sites/1"
 SCHEMA = "ferrule.site/1"
 
-app = typer.Typer(no_args_is_help=True, help="Sites that are kept by name: add, list, show, drop.")
+app = typer.Typer(cls=Group, no_args_is_help=True, help="Sites that are kept by name: add, list, show, drop.")
 
 NameArgument = Annotated[str, typer.Argument(metavar="NAME", help="Name of the site.", show_default=False)]
 JsonOption = Annotated[bool, typer.Option("--json", help="Print the result as a document.")]
@@ -139,7 +140,7 @@ def list_(as_json: JsonOption = False, catalog: CatalogOption = None) -> None:
 def show(name: NameArgument, as_json: JsonOption = False, catalog: CatalogOption = None) -> None:
     """Show one site, and what its weather file holds.
 
-    Example: ferrule site show "Low Wharf"
+    Example: ferrule site show "Butterfield Barn"
     """
     with open_catalog(catalog) as opened:
         site = opened.site(name)
@@ -167,7 +168,7 @@ def show(name: NameArgument, as_json: JsonOption = False, catalog: CatalogOption
 def drop(name: NameArgument, as_json: JsonOption = False, catalog: CatalogOption = None) -> None:
     """Forget a site; its weather file stays.
 
-    Example: ferrule site drop "Low Wharf"
+    Example: ferrule site drop Wharf
     """
     with open_catalog(catalog) as opened:
         site = opened.site(name)

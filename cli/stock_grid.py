@@ -48,7 +48,7 @@ def grid(
     No pair takes more modules than are in stock. What goes with nothing is listed with the check that stops its
     nearest pair. Exit status: 0 something goes together, 1 nothing does, 2 bad input.
 
-    Example: ferrule stock grid --low -12 --high 38
+    Example: ferrule stock grid --low -12 --high 37
     """
     if out is not None and Path(out).suffix.lower() not in FORMS:
         raise CatalogError(f"--out {out}: the ending decides the form, {', '.join(FORMS[:-1])} or {FORMS[-1]}")

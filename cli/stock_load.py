@@ -31,7 +31,7 @@ def load(
     and model where there are any. Each article is matched to a record. What is not sure is listed with candidates and
     waits for a decision ('ferrule stock review'); decisions are kept and hold for the lists that follow.
 
-    Example: ferrule stock load stock.csv
+    Example: ferrule stock load seed_catalog/stock.csv
     """
     from catalog.stock_file import read_stock_file
     from cli.console import note, say

@@ -56,7 +56,7 @@ def sweep(
     that was broken off goes on where it was: give the same command again. Exit status: 0 something fits,
     1 nothing fits, 2 bad input.
 
-    Example: ferrule sweep --low -12 --high 38 --inverters "sunwright 5" --out pairs.csv
+    Example: ferrule sweep --low -12 --high 37 --inverters viola --out pairs.csv
     """
     from cli.sweep_files import assemble, form_of
 

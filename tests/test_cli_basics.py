@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import ctypes
+import importlib.metadata
 import os
 import re
 import shlex
@@ -67,14 +68,100 @@ def test_finding_a_record_waits_for_no_table_library(small_catalog):
     assert imported(ran.stderr).isdisjoint({"pvlib", "pandas", "scipy", "sqlmodel", "sqlalchemy"})
 
 
+def groups(command=None, path: tuple[str, ...] = ()) -> Iterator[tuple[str, ...]]:
+    """Every group with its words, the command itself first."""
+    command = command or typer.main.get_command(app)
+    if hasattr(command, "commands"):
+        yield path
+        for name, sub in command.commands.items():
+            yield from groups(sub, (*path, name))
+
+
+GROUPS = list(groups())
+GROUP_IDS = [" ".join(("ferrule", *path)) for path in GROUPS]
+
+
+@pytest.mark.parametrize("words", GROUPS, ids=GROUP_IDS)
+def test_a_group_alone_prints_its_help_and_is_bad_input(ferrule, words):
+    asked = ferrule(*words, "--help")
+    assert (asked.status, asked.err) == (0, "")
+    assert ferrule(*words) == (2, "", asked.out)
+
+
+@pytest.mark.parametrize("words", [*GROUPS, *LEAVES], ids=" ".join)
+def test_a_help_fits_100_columns_and_nothing_in_it_is_cut(ferrule, monkeypatch, words):
+    monkeypatch.setenv("COLUMNS", "100")
+    out = ferrule(*words, "--help").out
+    assert max(map(len, out.splitlines())) <= 100
+    # What may be repeated has its dots behind a bracket.
+    assert not re.search(r"\w\.\.\.$", out, re.MULTILINE)
+
+
+def test_the_help_begins_with_the_first_steps(ferrule):
+    out = ferrule("--help").out
+    steps = re.findall(r"^    (ferrule .+?)(?:   .*)?$", out, re.MULTILINE)
+    assert [step.split()[1] for step in steps] == ["demo", "sheet", "fit"]
+    for step in steps:
+        words = shlex.split(step)[1:]
+        path = next(path for path in LEAVES if tuple(words[: len(path)]) == path)
+        LEAVES[path].make_context(" ".join(path), words[len(path) :])
+    # The README runs the last one, with the tables that the one before loads.
+    name = shlex.split(steps[-1])[3]
+    assert f'-m "{name}"' in (ROOT / "README.md").read_text(encoding="utf-8")
+
+
+def test_the_version_is_that_of_the_installed_package(ferrule, monkeypatch):
+    monkeypatch.setattr(importlib.metadata, "version", {"ferrule": "9.8.7"}.__getitem__)
+    assert ferrule("--version") == (0, "ferrule 9.8.7\n", "")
+
+
+def completed(ferrule, capsys, monkeypatch, typed: str) -> list[str]:
+    """What a shell is offered for the last word."""
+    monkeypatch.setenv("_FERRULE_COMPLETE", "complete_bash")
+    monkeypatch.setenv("COMP_WORDS", typed)
+    monkeypatch.setenv("COMP_CWORD", str(typed.count(" ")))
+    with pytest.raises(SystemExit, match="0"):
+        ferrule()
+    return capsys.readouterr().out.split()
+
+
+@pytest.mark.parametrize(
+    ("typed", "offered"),
+    [("ferrule sh", ["sheet"]), ("ferrule sheet am", ["amend"]), ("ferrule fit --mod", ["--module", "--module-price"])],
+)
+def test_a_shell_completes_commands_and_options(ferrule, capsys, monkeypatch, typed, offered):
+    assert completed(ferrule, capsys, monkeypatch, typed) == offered
+
+
+def example(words: tuple[str, ...]) -> list[str]:
+    """The example of a command's help, as words, without the leading ``ferrule``."""
+    found = re.search(r"Example: ferrule (.+?)(?:\n\n|\Z)", LEAVES[words].help or "", re.DOTALL)
+    assert found, "the help has no line 'Example: ferrule ...'"
+    return shlex.split(found[1])
+
+
+#: Examples that are run where their outcome is looked at: in the README, and in tests/test_sheet_entering.py.
+RUN_ELSEWHERE = {("demo",), ("sheet", "load"), ("sheet", "enter")}
+#: What has to be done before an example can be run.
+BEFORE = {("sheet", "undo"): ("sheet", "amend"), ("sheet", "restore"): ("sheet", "backup"), ("site", "drop"): ("site", "add")}
+
+
 @pytest.mark.parametrize("words", LEAVES, ids=" ".join)
-def test_every_command_has_a_help_with_an_example_that_parses(words):
-    command = LEAVES[words]
-    example = re.search(r"Example: (ferrule .+?)(?:\n\n|\Z)", command.help or "", re.DOTALL)
-    assert example, "the help has no line 'Example: ferrule ...'"
-    typed = shlex.split(example[1])
-    assert tuple(typed[1 : 1 + len(words)]) == words
-    command.make_context(" ".join(words), typed[1 + len(words) :])
+def test_every_command_has_a_help_with_an_example_that_can_be_pasted(
+    ferrule, demo_catalog, tmp_path, monkeypatch, words
+):
+    """In a clone, on the catalog of the demo."""
+    typed = example(words)
+    assert tuple(typed[: len(words)]) == words
+    LEAVES[words].make_context(" ".join(words), typed[len(words) :])
+    if words in RUN_ELSEWHERE:
+        return
+    monkeypatch.chdir(tmp_path)
+    (tmp_path / "seed_catalog").symlink_to(ROOT / "seed_catalog")
+    if words in BEFORE:
+        assert ferrule(*example(BEFORE[words])).status == 0
+    ran = ferrule(*typed)
+    assert ran.status == 0, ran.err
 
 
 @pytest.mark.parametrize(
@@ -85,6 +172,8 @@ def test_every_command_has_a_help_with_an_example_that_parses(words):
         (("fitt",), "fit"),
         (("sheet", "find", "x", "--lmit", "3"), "--limit"),
         (("fit", "--modul", "x"), "--module"),
+        (("load", "cec"), "'ferrule sheet load' or 'ferrule stock load'"),
+        (("sheet", "fit"), "'ferrule fit'"),
     ],
 )
 def test_an_unknown_word_names_the_near_one(ferrule, typed, near):
