@@ -4,12 +4,12 @@ from __future__ import annotations
 
 import hashlib
 import json
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import asdict, dataclass, replace
 
 from catalog.errors import CatalogError
 from catalog.headings import COMPOSED, OF_INPUTS, Meaning, meaning, parted, spec_of
-from catalog.records import Inverter, Module, specs
+from catalog.records import FieldSpec, Inverter, Module, specs
 from catalog.units import fits, unit_of
 
 KINDS: Mapping[str, type] = {"module": Module, "inverter": Inverter}
@@ -51,6 +51,14 @@ class ColumnMap:
     def signature(self) -> str:
         """The same for tables with the same headings, whatever their rows."""
         return signature([c.heading for c in self.columns])
+
+    def without(self, given: Collection[str] = ()) -> tuple[FieldSpec, ...]:
+        """Fields that a record needs and no column gives, but for those that are ``given`` otherwise."""
+        there = {*given, *(c.field for c in self.columns)}
+        if COMPOSED[0] in there:
+            there |= {"mppt_low_v", "mppt_high_v"}
+        needed = specs(KINDS[self.kind]).values()
+        return tuple(spec for spec in needed if spec.required and spec.name not in there)
 
     def confirmed(self) -> ColumnMap:
         """This map with every column beyond doubt."""

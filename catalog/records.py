@@ -142,6 +142,16 @@ def _is_crystalline(technology: str) -> bool:
     return not any(w in words for w in _OTHER_CELLS) and any(w in words for w in _CRYSTALLINE)
 
 
+def names_cells(technology: str) -> bool:
+    """Whether the words of a technology name any kind of cell."""
+    words = technology.casefold()
+    return any(w in words for w in (*_OTHER_CELLS, *_CRYSTALLINE))
+
+
+#: What a technology may say, for those who are asked; words such as PERC, TOPCon or half-cell may stand behind.
+TECHNOLOGIES = ("Mono-c-Si", "Multi-c-Si", "Heterojunction", "CdTe", "CIGS", "Thin film")
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Inputs:
     """A group of like trackers of one inverter. Currents and power are per tracker."""

@@ -14,7 +14,7 @@ from typing import Any
 from catalog.errors import CatalogError
 from catalog.inputs_text import EXAMPLE
 from catalog.plausibility import findings_of
-from catalog.records import FieldSpec, Inputs, Inverter, Module, Origin, Source, specs
+from catalog.records import TECHNOLOGIES, FieldSpec, Inputs, Inverter, Module, Origin, Source, specs
 from catalog.sheet_reading import Entry, Reading, nearest
 from catalog.sheet_values import Coefficient, value_of
 from catalog.units import BASES
@@ -22,6 +22,11 @@ from catalog.units import BASES
 KINDS: Mapping[str, type] = {"module": Module, "inverter": Inverter}
 MARKED_ORIGINS = (Origin.ENTERED, Origin.DERIVED, Origin.ASSUMED)
 ABOUT = ("source", "source_revision", *(o.value for o in MARKED_ORIGINS), "sources")
+
+#: A kind with its article.
+AN = {"module": "a module", "inverter": "an inverter"}
+
+_SUCH_AS = {"technology": TECHNOLOGIES[0], "bifacial": "no"}
 
 _TEXT = {
     name: FieldSpec(name, str, "", name, False) for name in ("source", "source_revision", "name", "revision")
@@ -96,6 +101,7 @@ def checked_records(
 def _record(entry: Entry, reading: Reading) -> Module | Inverter:
     type_ = KINDS[entry.kind]
     values: dict[str, Any] = {}
+    missing: list[FieldSpec] = []
     units = entry.units
     for name, spec in specs(type_).items():
         try:
@@ -109,7 +115,11 @@ def _record(entry: Entry, reading: Reading) -> Module | Inverter:
         if value is not None:
             values[name] = value
         elif spec.required:
-            raise reading.fault(_needed(entry, spec), entry.where, name)
+            missing.append(spec)
+    if len(missing) == 1:
+        raise reading.fault(_needed(entry, missing[0]), entry.where, missing[0].name)
+    if missing:
+        raise reading.fault(_all_needed(entry, missing), entry.where)
     for name, base in BASES.items():
         if isinstance(values.get(name), Coefficient):
             if not values[base] > 0:
@@ -134,15 +144,40 @@ def _record(entry: Entry, reading: Reading) -> Module | Inverter:
     )
 
 
+def what_is_needed(spec: FieldSpec) -> str:
+    """What a field holds, for someone who is asked for it."""
+    if spec.name == "technology":
+        return f"{spec.meaning}, such as {', '.join(TECHNOLOGIES[:-1])} or {TECHNOLOGIES[-1]}"
+    if spec.type is bool:
+        return "yes or no"
+    return f"{spec.meaning} in {spec.unit}" if spec.unit not in ("", "1") else spec.meaning
+
+
+def set_option(spec: FieldSpec) -> str | None:
+    """The option that gives a field for all rows at once; ``None`` for what like rows never share."""
+    if spec.name == "model" or spec.type not in (str, bool):
+        return None
+    return f"--set {spec.name}={_SUCH_AS.get(spec.name, '...')}"
+
+
 def _needed(entry: Entry, spec: FieldSpec) -> str:
-    unit = f" in {spec.unit}" if spec.unit not in ("", "1") else ""
-    kind = {"module": "a module", "inverter": "an inverter"}[entry.kind]
-    what = f"{kind} needs it ({spec.meaning}{unit}{', yes or no' if spec.type is bool else ''})"
+    what = f"{AN[entry.kind]} needs it ({what_is_needed(spec)})"
     if spec.name in entry.meant:
         return f"is missing, {what}; is {entry.meant[spec.name]!r} meant? then rename it to {spec.name}"
-    if spec.type in (str, bool) and spec.name != "model":
-        what += f"; for all rows at once: --set {spec.name}={'no' if spec.type is bool else '...'}"
+    option = set_option(spec)
+    if option:
+        what += f"; for all rows at once: {option}"
     return f"is blank, {what}" if spec.name in entry.cells else f"is missing, {what}"
+
+
+def _all_needed(entry: Entry, missing: Sequence[FieldSpec]) -> str:
+    said = []
+    for spec in missing:
+        meant = f"; is {entry.meant[spec.name]!r} meant?" if spec.name in entry.meant else ""
+        said.append(f"{spec.name} ({what_is_needed(spec)}{meant})")
+    options = " ".join(filter(None, map(set_option, missing)))
+    mend = f"; for all rows at once, with what is true of them: {options}" if options else ""
+    return f"{AN[entry.kind]} needs also {', '.join(said[:-1])} and {said[-1]}{mend}"
 
 
 def _inputs(entry: Entry, reading: Reading) -> tuple[Inputs, ...]:

@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import replace
 
 from catalog.errors import CatalogError
 from catalog.inputs_text import parse_inputs
-from catalog.records import Inputs, Origin
-from catalog.sheet_entries import ABOUT, fields_of
+from catalog.records import FieldSpec, Inputs, Origin, names_cells, specs
+from catalog.sheet_entries import ABOUT, KINDS, fields_of, what_is_needed
 from catalog.sheet_reading import Entry, Reading, nearest
+from catalog.sheet_values import DecimalSigns, value_of
 
 
 def completed(entries: Sequence[Entry], reading: Reading) -> list[Entry]:
@@ -22,6 +23,7 @@ def completed(entries: Sequence[Entry], reading: Reading) -> list[Entry]:
             raise CatalogError(
                 f"--set {name}: there is no such field" + (f"; did you mean {near}?" if near else "")
             )
+        _check(name, reading.given[name], kinds)
     found = []
     for entry in entries:
         cells = dict(entry.cells)
@@ -37,6 +39,26 @@ def completed(entries: Sequence[Entry], reading: Reading) -> list[Entry]:
             cells[Origin.ENTERED.value] = marked
         found.append(replace(entry, cells=cells, units=units))
     return found
+
+
+def _check(name: str, text: str, kinds: Iterable[str]) -> None:
+    """Refuse a value that cannot be, before it is told of the first row that it would stand in."""
+    spec = _spec(name, kinds)
+    if not any(c.isalnum() for c in text):
+        want = what_is_needed(spec) if spec else "what the datasheets say"
+        raise CatalogError(f"--set {name}={text}: says nothing; write {want}")
+    if spec is None:
+        return
+    try:
+        value_of(text, spec, DecimalSigns())
+    except CatalogError as problem:
+        raise CatalogError(f"--set {name}: {problem}") from None
+    if name == "technology" and not names_cells(text):
+        raise CatalogError(f"--set technology={text}: names no kind of cell; write the {what_is_needed(spec)}")
+
+
+def _spec(name: str, kinds: Iterable[str]) -> FieldSpec | None:
+    return next((specs(KINDS[kind])[name] for kind in kinds if name in specs(KINDS[kind])), None)
 
 
 def _given_inputs(text: str) -> tuple[Inputs, ...]:

@@ -16,7 +16,7 @@ from catalog.column_map import ColumnMap, proposed
 from catalog.errors import CatalogError
 from catalog.headings import meaning, spec_of
 from catalog.records import FieldSpec
-from catalog.sheet_entries import ABOUT, KINDS, fields_of
+from catalog.sheet_entries import ABOUT, AN, KINDS, fields_of
 from catalog.sheet_reading import Entry, Reading
 from catalog.units import unit_of
 
@@ -269,10 +269,9 @@ def _kind(cells: Mapping[str, Any], where: str, reading: Reading) -> str:
             else "part the two, or say which it is in a column 'kind'"
         )
         raise reading.fault(
-            f"is a field of {_AN[other]}, and the row has those of {_AN[kind]}; {mend}", where, only[other][0]
+            f"is a field of {AN[other]}, and the row has those of {AN[kind]}; {mend}", where, only[other][0]
         )
     return kind
 
 
 _PAIRS = (("module", FIELDS["module"], "inverter"), ("inverter", FIELDS["inverter"], "module"))
-_AN = {"module": "a module", "inverter": "an inverter"}

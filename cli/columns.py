@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 import sys
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 
 from catalog.column_map import ColumnMap, MappedColumn
 from catalog.errors import CatalogError
+from catalog.records import FieldSpec
+from catalog.sheet_entries import set_option, what_is_needed
+from cli.console import counted
 from cli.opening import open_catalog
 
 _KEY = "said/columns/"
@@ -34,12 +37,14 @@ def pairs(texts: Sequence[str], option: str, example: str) -> dict[str, str]:
 class Columns:
     """Settles the columns of tables while files are read (see `catalog.sheet_tables`).
 
-    ``said`` are fields by heading from the command line; ``yes`` accepts what is doubtful.
+    ``said`` are fields by heading from the command line; ``yes`` accepts what is doubtful; ``given`` are the fields
+    that the command line gives for all rows.
     """
 
     catalog: str | None
     said: Mapping[str, str]
     yes: bool
+    given: Collection[str] = ()
     settled: list[ColumnMap] = field(default_factory=list)
     _used: set[str] = field(default_factory=set)
 
@@ -49,7 +54,7 @@ class Columns:
         Raises
         ------
         CatalogError
-            Where columns are doubtful and nobody is there to ask.
+            Where columns are doubtful and nobody is there to ask, or no column gives what every record needs.
         """
         found, before = self._kept(proposed) or proposed, "as kept from a table with these headings"
         headings = {" ".join(c.heading.casefold().split()) for c in found.columns}
@@ -59,8 +64,13 @@ class Columns:
         if own:
             found = found.with_fields(own)
         self._show(found, remark)
+        lacking = found.without(self.given)
+        asking = not self.yes and sys.stdin.isatty() and sys.stderr.isatty()
+        doubtful = () if self.yes or asking else found.doubtful
+        if doubtful or lacking:
+            raise CatalogError("\n".join(_wanted(found, doubtful, lacking)))
         if found.doubtful:
-            found = found.confirmed() if self.yes else self._asked(found)
+            found = self._asked(found) if asking else found.confirmed()
             self.settled.append(found)
         elif own:
             self.settled.append(found)
@@ -106,13 +116,6 @@ class Columns:
 
     def _asked(self, found: ColumnMap) -> ColumnMap:
         """The map with what a person says of every doubtful column."""
-        if not (sys.stdin.isatty() and sys.stderr.isatty()):
-            listed = "; ".join(f"{c.heading!r} = {c.field}? ({c.remark})" for c in found.doubtful)
-            first = found.doubtful[0]
-            raise CatalogError(
-                f"not sure of {len(found.doubtful)} column{'s' if len(found.doubtful) > 1 else ''}: {listed}. --yes accepts"
-                f' them as shown, --map "{first.heading}={first.field}" says one, --map "{first.heading}=" leaves it out'
-            )
         said = {}
         for column in found.doubtful:
             print(f"{column.heading}: {_meant(column)} -- Enter accepts, n leaves it out, or name a field: ",
@@ -126,6 +129,33 @@ class Columns:
             elif answer and answer.casefold() not in ("y", "yes"):
                 said[column.heading] = answer
         return found.with_fields(said).confirmed()
+
+
+def _wanted(
+    found: ColumnMap, doubtful: Sequence[MappedColumn], lacking: Sequence[FieldSpec]
+) -> Iterator[str]:
+    """All that a person has to say before a table can be loaded, and the options that say it."""
+    parts = [f"{counted(len(doubtful), 'column')} to confirm"] if doubtful else []
+    parts += [f"{counted(len(lacking), 'value')} that no column gives"] if lacking else []
+    yield " and ".join(parts) + ":"
+    for column in doubtful:
+        yield f"  {column.heading!r} is {_meant(column).replace(' ? (', '? (')}"
+    for spec in lacking:
+        yield f"  {spec.name}: {what_is_needed(spec)}"
+    left = [c.heading for c in found.columns if c.field is None and c.heading]
+    if lacking and left:
+        yield f"  columns left out so far: {', '.join(map(repr, left))}"
+    options = ["--yes"] if doubtful else []
+    options += [set_option(spec) or f"--set {spec.name}=..." for spec in lacking if spec.name != "model"]
+    if options:
+        with_what = ", with what is true of all rows" if lacking else ""
+        yield f"  add to the command{with_what}: {' '.join(options)}"
+    if doubtful:
+        first = doubtful[0]
+        yield f'  or say one column: --map "{first.heading}={first.field}"; --map "{first.heading}=" leaves it out'
+    elif lacking:
+        name = lacking[-1].name
+        yield f'  or say which column it is: --map "{left[0] if left else "HEADING"}={name}"'
 
 
 def _meant(column: MappedColumn) -> str:

@@ -39,6 +39,12 @@ _LEAST_FOLD = 12
 
 def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> None:
     """Print rows of text; numbers are set to the right and never wrapped."""
+    for line in table_lines(columns, rows):
+        print(line)
+
+
+def table_lines(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> list[str]:
+    """The lines of a table as `print_table` prints them."""
     from rich.table import Table
 
     rows = list(rows)
@@ -62,7 +68,9 @@ def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> Non
     screen = console()
     # A line that is too long is better than a value that is cut off.
     screen.width = max(screen.width, needed)
-    screen.print(table)
+    with screen.capture() as captured:
+        screen.print(table)
+    return captured.get().splitlines()
 
 
 def say(text: str = "", indent: int = 0) -> None:
@@ -76,15 +84,28 @@ def note(text: str) -> None:
 
 
 def _wrapped(text: str, indent: int, stderr: bool) -> None:
+    for line in paragraph(text, indent, stderr):
+        print(line, file=sys.stderr if stderr else sys.stdout)
+
+
+def paragraph(text: str, indent: int = 0, stderr: bool = False) -> list[str]:
+    """The lines of a paragraph as `say` prints them."""
     import textwrap
 
-    screen = console(stderr)
-    if not text:
-        print(file=screen.file)
-        return
     pad = " " * indent
-    print(textwrap.fill(text, screen.width, initial_indent=pad, subsequent_indent=pad, break_long_words=False,
-                        break_on_hyphens=False), file=screen.file)  # fmt: skip
+    return textwrap.wrap(text, console(stderr).width, initial_indent=pad, subsequent_indent=pad,
+                         break_long_words=False, break_on_hyphens=False) or [""]  # fmt: skip
+
+
+#: Lines of a short answer where no terminal says how high it is, and the least that a terminal is taken for.
+_PAGE, _LEAST_PAGE = 40, 30
+
+
+def page_lines() -> int:
+    """Lines that a short answer may have: a terminal holds them and the prompt that follows."""
+    import shutil
+
+    return max(shutil.get_terminal_size().lines, _LEAST_PAGE) - 1 if sys.stdout.isatty() else _PAGE
 
 
 def print_json(document: Any) -> None:
@@ -97,3 +118,8 @@ def print_json(document: Any) -> None:
 def number(value: float | None, digits: int = 0) -> str:
     """A number as text; blank where it is not known."""
     return "" if value is None else f"{value:,.{digits}f}"
+
+
+def counted(number: int, what: str, many: str | None = None) -> str:
+    """How many of something: "1 module", "2 modules", "1,200 entries" (``many`` is its plural, where no s makes it)."""
+    return f"{number:,} {what if number == 1 else many or what + 's'}"

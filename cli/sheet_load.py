@@ -83,29 +83,25 @@ def load(
     began = time.perf_counter()
     from cli.columns import Columns, pairs
 
-    settled = Columns(catalog, pairs(columns or (), "--map", "Power (W)=pmax_w"), yes)
     values = pairs(given or (), "--set", "bifacial=no")
+    settled = Columns(catalog, pairs(columns or (), "--map", "Power (W)=pmax_w"), yes, values)
     (kind,) = asked_kinds(kind) if kind else (None,)
     found = _read(what, modules, inverters, settled, kind, values)
     with _progress() as tell, open_catalog(catalog, create=True) as opened:
         report = opened.load(found.modules, found.inverters, tell)
         settled.keep(opened)
-    from cli.console import note, say
+    from cli.console import counted, note, say
 
     for line in found.notes[:_REMARKS]:
         note(line)
     if len(found.notes) > _REMARKS:
-        note(f"... and {len(found.notes) - _REMARKS:,} more remarks")
+        note(f"... and {counted(len(found.notes) - _REMARKS, 'more remark')}")
     say(
-        f"{_counted(len(found.modules), 'module')} and {_counted(len(found.inverters), 'inverter')}:"
+        f"{counted(len(found.modules), 'module')} and {counted(len(found.inverters), 'inverter')}:"
         f" {report.new:,} new, {report.changed:,} changed, {report.unchanged:,} unchanged,"
         f" in {time.perf_counter() - began:.1f} s."
     )
     say(f"Catalog: {location(catalog)}")
-
-
-def _counted(number: int, what: str) -> str:
-    return f"{number:,} {what}{'' if number == 1 else 's'}"
 
 
 def _read(
@@ -129,7 +125,15 @@ def _read(
         raise CatalogError(
             f"{option} belongs to 'ferrule sheet load {PUBLIC_TABLES}'; name datasheet files without it"
         )
-    files = [_file(Path(name), columns, kind, given) for name in what]
+    files, problems = [], []
+    for name in what:
+        try:
+            files.append(_file(Path(name), columns, kind, given))
+        except CatalogError as problem:
+            problems.append(str(problem))
+    if problems:
+        # One try tells what is wrong with all of the files.
+        raise CatalogError("\n".join(dict.fromkeys(problems)))
     columns.check_used()
     return SheetFile(
         [record for file in files for record in file.modules],

@@ -177,13 +177,13 @@ def test_what_is_exported_comes_back_unchanged(ferrule, small_catalog, tmp_path,
 
 def test_export_of_some_records(ferrule, small_catalog, tmp_path):
     file = tmp_path / "some.csv"
-    assert "1 modules and 0 inverters" in ferrule("sheet", "export", file, "af6k 270p").out
+    assert "1 module and 0 inverters" in ferrule("sheet", "export", file, "af6k 270p").out
     assert "exists" in ferrule("sheet", "export", file).err
     assert (
         "0 modules and 2 inverters" in ferrule("sheet", "export", file, "--kind", "inverter", "--force").out
     )
     assert (
-        "0 modules and 1 inverters"
+        "0 modules and 1 inverter"
         in ferrule("sheet", "export", file, "--where", "phases == 3", "--force").out
     )
     assert ferrule("sheet", "export", tmp_path / "a.csv", "--where", "phases == 2").status == 2
@@ -204,7 +204,7 @@ def test_doubtful_columns_are_shown_and_confirmed_and_kept(ferrule, small_catalo
     assert ran.status == 2
     assert "Voc (V)      " in ran.err and "voc_v in V" in ran.err
     assert (
-        "not sure of 1 column" in ran.err
+        "1 column to confirm:" in ran.err
         and "--yes" in ran.err
         and '--map "Tempco Voc=voc_coef_pct"' in ran.err
     )
@@ -230,3 +230,41 @@ def test_a_column_can_be_said(ferrule, small_catalog, tmp_path, record):
     ):
         ran = ferrule("sheet", "load", file, "--set", "bifacial=no", "--yes", "--map", said)
         assert ran.status == 2 and says in ran.err
+
+
+def test_all_that_a_table_lacks_is_told_at_once_with_the_options_to_add(ferrule, small_catalog, tmp_path):
+    file = tmp_path / "season.csv"
+    file.write_text(TABLE.replace("Cell type;", "").replace("mono;", ""))
+    ran = ferrule("sheet", "load", file)
+    assert ran.status == 2 and "1 column to confirm and 2 values that no column gives" in ran.err
+    (line,) = [line for line in ran.err.splitlines() if "add to the command" in line]
+    options = line.partition(": ")[2].split()
+    assert options == ["--yes", "--set", "technology=Mono-c-Si", "--set", "bifacial=no"]
+    assert ferrule("sheet", "load", file, *options).status == 0
+
+
+def test_what_an_inverter_table_lacks_is_told_at_once(ferrule, small_catalog, tmp_path):
+    file = tmp_path / "inverters.csv"
+    file.write_text("Manufacturer,Model,Power,Max DC (V),Trackers\nPaper Sun,I-5,5000,1000,2\n")
+    ran = ferrule("sheet", "load", file)
+    assert "2 columns to confirm and 2 values that no column gives" in ran.err
+    assert "--yes --set mppt_low_v=... --set mppt_high_v=..." in ran.err
+
+
+@pytest.mark.parametrize("text", ["...", "Gold"])
+def test_a_technology_that_names_no_cells_is_refused_with_those_that_may_stand_there(
+    ferrule, small_catalog, tmp_path, text
+):
+    file = tmp_path / "season.csv"
+    file.write_text(TABLE.replace("Cell type;", "").replace("mono;", ""))
+    ran = ferrule("sheet", "load", file, "--yes", "--set", f"technology={text}", "--set", "bifacial=no")
+    assert ran.status == 2 and f"--set technology={text}: " in ran.err and "Mono-c-Si, Multi-c-Si" in ran.err
+
+
+def test_a_table_under_our_own_headings_tells_all_that_a_row_lacks(ferrule, small_catalog, tmp_path):
+    own, other = tmp_path / "own.csv", tmp_path / "other.csv"
+    own.write_text("maker,model,pmax_w,voc_v,isc_a,vmp_v,imp_a\nPaper Sun,P-1,400,45.6,11.2,37.9,10.56\n")
+    other.write_text("maker,model,ac_power_w\nPaper Sun,I-1,5000\n")
+    ran = ferrule("sheet", "load", own, other)
+    assert ran.status == 2 and "--set technology=Mono-c-Si --set bifacial=no" in ran.err
+    assert "needs also mppt_low_v" in ran.err, "both files are told of"
