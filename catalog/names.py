@@ -1,7 +1,7 @@
 """Names of records: what a person types, found; what a supplier wrote, resolved.
 
-`look_up` takes a name that is meant to be one record (a command line), `find` serves a search as one
-types, `resolve` reads suppliers' free text, `twins` lists models that several makers sell. All are pure
+`look_up` takes a name that is meant to be one record (a command line), `find` and `search` serve one as it is
+typed, `resolve` reads suppliers' free text, `twins` lists models that several makers sell. All are pure
 functions over a list of `Named`; a `NameIndex` in its place keeps the work on the names for the next call.
 
 A name that could be two records is never decided here, and digits decide: a 270 W type is no typing
@@ -52,6 +52,14 @@ class LookUp:
     match: int | None
     candidates: list[Candidate]
     ambiguous: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Found:
+    """The first records that answer a search, and how many there are; ``None`` where names are merely near."""
+
+    candidates: list[Candidate]
+    total: int | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -167,18 +175,20 @@ def find(query: str, names: Names, limit: int = 20) -> list[Candidate]:
     words found inside; shorter names first. Where no name holds all words, names with small typing errors in
     their letters, then the nearest names that hold the query's digits.
     """
+    return search(query, names, limit).candidates
+
+
+def search(query: str, names: Names, limit: int = 20) -> Found:
+    """As `find`, with the number of all records that answer; of names that are merely near none is the last."""
     index = as_index(names)
     text = namekeys.squeezed(query)
     key = namekeys.compact(query)
     if not key or not len(index) or limit < 1:
-        return []
-    rows = holding(text, key, index, unfinished=True)
+        return Found([], 0)
+    rows = holding(text, key, index, unfinished=True) or slips(text, index)
     if rows:
-        return _ranked(rows, text, key, index)[:limit]
-    rows = slips(text, index)
-    if rows:
-        return _ranked(rows, text, key, index)[:limit]
-    return _nearest(text, key, index, limit)
+        return Found(_ranked(rows, text, key, index)[:limit], len(rows))
+    return Found(_nearest(text, key, index, limit), None)
 
 
 def resolve(text: str, names: Names, limit: int = 5) -> Resolution:

@@ -13,7 +13,7 @@ from typing import Any, NamedTuple
 
 from catalog.errors import CatalogError
 from catalog.near import nearest
-from catalog.records import FieldSpec, Inverter, Module, specs
+from catalog.records import FieldSpec, Inputs, Inverter, Module, specs
 from catalog.units import converted, fits, relative, unit_of
 
 KINDS: dict[str, type] = {"module": Module, "inverter": Inverter}
@@ -24,6 +24,17 @@ _TRACKERS = FieldSpec("trackers", int, "", "trackers in all", True)
 _TRACKERS_SQL = (
     '(SELECT SUM(i."trackers") FROM inputs i WHERE i."record_id" = r."id" AND i."revision" = v."revision")'
 )
+
+#: What each group of inputs has; whether it is known can be asked for. ``inputs`` are the trackers as a whole.
+_OF_GROUPS = ("inputs", *(name for name in specs(Inputs) if name != "trackers"))
+_ASSUMED_SQL = """(v."origins" LIKE '%"inputs":"assumed"%')"""
+_BLANK_SQL = (
+    '(EXISTS (SELECT 1 FROM inputs i WHERE i."record_id" = r."id" AND i."revision" = v."revision"'
+    ' AND i."{name}" IS NULL))'
+)
+
+#: Fields that are named where someone asks for none that there is.
+_OFTEN = ("maker", "model", "technology", "pmax_w", "voc_v", "isc_a", "ac_power_w", "max_dc_voltage_v", "phases", "trackers")
 
 _COMPARISONS = {
     "==": "=",
@@ -98,10 +109,11 @@ def kinds_of(text: str, kinds: Sequence[str]) -> tuple[str, ...]:
         for t in _tokens(text)
         if t.sort == "word" and t.value.casefold() not in (*_WORDS, *_FLAGS, "unknown")
     ]
-    left = tuple(kind for kind in kinds if all(name in _known(kind) for name in used))
+    names = {kind: {*_known(kind), *(_OF_GROUPS if kind == "inverter" else ())} for kind in kinds}
+    left = tuple(kind for kind in kinds if all(name in names[kind] for name in used))
     if left:
         return left
-    everything = dict.fromkeys(name for kind in kinds for name in _known(kind))
+    everything = dict.fromkeys(name for kind in kinds for name in (*_known(kind), *sorted(names[kind])))
     for name in used:
         if name not in everything:
             _unknown_field(name, list(everything))
@@ -113,7 +125,11 @@ def _known(kind: str) -> dict[str, FieldSpec]:
 
 
 def _unknown_field(name: str, known: list[str]) -> None:
-    raise CatalogError(f"--where: there is no field {name!r}{nearest(name, known)} (texts stand in quotes)")
+    hint = nearest(name, known)
+    if not hint.startswith("; near"):
+        some = [n for n in _OFTEN if n in known]
+        hint = f"; there is {', '.join(some)} and what else 'ferrule sheet show' lists"
+    raise CatalogError(f"--where: there is no field {name!r}{hint} (texts stand in quotes)")
 
 
 def _tokens(text: str) -> list[Token]:
@@ -147,6 +163,7 @@ class _Parser:
     def __init__(self, text: str, kind: str) -> None:
         self._text = text
         self._known = _known(kind)
+        self._grouped = kind == "inverter"
         self._tokens = _tokens(text)
         self._next = 0
         self._depth = 0
@@ -219,6 +236,9 @@ class _Parser:
         return token
 
     def _compared(self, left: Token, sign: str, right: Token, at: Token) -> str:
+        for one, other in ((left, right), (right, left)):
+            if self._grouped and one.sort == "word" and one.value in _OF_GROUPS:
+                return self._of_groups(one, sign, other)
         if self._is_field(left) and self._is_field(right):
             one, other = self._known[left.value], self._known[right.value]
             if (one.type is str) != (other.type is str) or bool in (one.type, other.type) or sign == "~":
@@ -231,6 +251,18 @@ class _Parser:
         if not self._is_field(left):
             self._fault("one side is a field", left)
         return self._with_value(self._known[left.value], self._column(left), sign, right)
+
+    def _of_groups(self, name: Token, sign: str, value: Token) -> str:
+        """Whether something is known of the trackers."""
+        asked = value.sort == "word" and value.value.casefold() == "unknown"
+        if not asked or sign not in ("=", "<>"):
+            self._fault(
+                f"{name.value} may differ from tracker to tracker: ask for == unknown or != unknown, or for the"
+                " number of trackers",
+                value,
+            )
+        sql = _ASSUMED_SQL if name.value == "inputs" else _BLANK_SQL.format(name=name.value)
+        return sql if sign == "=" else f"(NOT {sql})"
 
     def _with_value(self, spec: FieldSpec, column: str, sign: str, value: Token) -> str:
         word = value.value.casefold() if value.sort == "word" else ""

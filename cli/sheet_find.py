@@ -56,7 +56,7 @@ def find(
         raise CatalogError("name words of a maker or model, or a condition with --where")
     with open_catalog(catalog) as opened:
         if where is None:
-            found, total = _by_words(opened, query, kinds, limit), None
+            found, total = _by_words(opened, query, kinds, limit)
         else:
             found, total = _by_values(opened, query, where, kinds, limit)
         records = {
@@ -70,8 +70,8 @@ def find(
 
         document: dict[str, Any] = {"schema": SCHEMA, "query": query}
         if where is not None:
-            document |= {"where": where, "total": total}
-        print_json(document | {"found": [_entry(*hit) for hit in hits]})
+            document["where"] = where
+        print_json(document | {"total": total, "found": [_entry(*hit) for hit in hits]})
     elif hits:
         _show(query, hits, limit, total)
     else:
@@ -83,12 +83,15 @@ def find(
     return 0 if hits else NOTHING_FOUND
 
 
-def _by_words(catalog: Catalog, query: str, kinds: Sequence[str], limit: int) -> list[tuple[str, int, float]]:
-    """Kind, id and score of the records whose names are most like the words."""
-    from catalog.names import find as search
+def _by_words(
+    catalog: Catalog, query: str, kinds: Sequence[str], limit: int
+) -> tuple[list[tuple[str, int, float | None]], int | None]:
+    """Kind, id and score of the first records with such names, and how many there are, if they are more than near."""
+    from catalog.names import search
 
     known = all_names(catalog, kinds)
-    return [(*known.records[c.id], c.score) for c in search(query, known.names, limit)]
+    found = search(query, known.names, limit)
+    return [(*known.records[c.id], c.score) for c in found.candidates], found.total
 
 
 def _by_values(
@@ -117,7 +120,7 @@ def _show(
     query: str, hits: Sequence[tuple[str, Module | Inverter, float | None]], limit: int, total: int | None
 ) -> None:
     from catalog.namekeys import compact
-    from cli.console import print_table, say
+    from cli.console import counted, print_table, say
 
     best = compact(hits[0][1].name)
     if not all(compact(word) in best for word in query.split()):
@@ -128,14 +131,11 @@ def _show(
         columns = _COLUMNS[kind]()
         records = [r for k, r, _ in hits if k == kind]
         print_table([c for c, _ in columns], [[text(r) for _, text in columns] for r in records])
-    if total is not None:
-        say(
-            f"{total:,} in all."
-            if total <= limit
-            else f"The first {limit} of {total:,}; --limit N shows more."
-        )
-    elif len(hits) == limit:
-        say(f"The first {limit}; more words or --limit N show others.")
+    if total is not None and total > len(hits):
+        narrower = "more words narrow it" if query else "a narrower condition asks for fewer"
+        say(f"{len(hits):,} of {counted(total, 'record')} shown; {narrower}, --limit {total} shows all.")
+    elif total is not None:
+        say(f"{counted(total, 'record')}.")
 
 
 def _module_columns() -> list[tuple[Column, Callable[[Module], str]]]:

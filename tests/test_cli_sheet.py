@@ -211,7 +211,8 @@ def test_find_heeds_kind_and_limit(ferrule, small_catalog):
     assert {entry["kind"] for entry in inverters} == {"inverter"}
     assert {entry["trackers"] for entry in inverters} == {1, 3}
     assert ferrule("sheet", "find", "quillon", "--kind", "module", "--json").status == 1
-    assert "The first 1" in ferrule("sheet", "find", "alderfell", "--limit", 1).out
+    assert "1 of 2 records shown" in ferrule("sheet", "find", "alderfell", "--limit", 1).out
+    assert "2 records." in ferrule("sheet", "find", "alderfell").out
 
 
 def test_find_says_where_names_are_merely_near(ferrule, small_catalog):

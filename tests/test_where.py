@@ -47,6 +47,10 @@ QN5, QN8 = "QN-5000 [240V]", "QN-8000 Duo"
         ("max_dc_voltage_v == unknown", [QN5]),
         ("max_dc_voltage_v != unknown", [QN8]),
         ("trackers > 1", [QN8]),
+        # Of the one, nobody says how many trackers there are.
+        ("inputs == unknown", [QN5]),
+        ("inputs != unknown and phases == 3", [QN8]),
+        ("max_isc_a == unknown", [QN5]),
         ('maker == "quillon"', [QN5, QN8]),
         ('model ~ "duo"', [QN8]),
         ('model ~ "%"', []),
@@ -73,6 +77,9 @@ def test_flags_and_texts_of_modules(found):
     [
         ("", "the condition is empty"),
         ("acpower_w > 5", "no field 'acpower_w'; near to it: ac_power_w"),
+        ("hallo > 5", "there is maker, model, ac_power_w, max_dc_voltage_v, phases, trackers and what else"),
+        ("max_isc_a > 20", "may differ from tracker to tracker: ask for == unknown"),
+        ("inputs", "a comparison is wanted"),
         ("ac_power_w", "a comparison is wanted"),
         ("ac_power_w >", "a field or a value is wanted at its end"),
         ("ac_power_w > 5 phases == 1", "'and' or 'or' is wanted at 'phases == 1'"),
@@ -193,7 +200,7 @@ def test_whatever_is_typed_is_a_condition_or_one_line(text):
 
 def test_find_by_values(ferrule, small_catalog):
     ran = ferrule("sheet", "find", "--where", "ac_power_w >= 5000 and phases == 1")
-    assert ran.status == 0 and QN5 in ran.out and QN8 not in ran.out and "1 in all" in ran.out
+    assert ran.status == 0 and QN5 in ran.out and QN8 not in ran.out and "1 record." in ran.out
     assert ferrule("sheet", "find", "duo", "--where", "ac_power_w >= 5000").out.count("QN-") == 1
     assert ferrule("sheet", "find", "--where", "ac_power_w > 1 MW").status == 1
     ran = ferrule("sheet", "find", "--where", "ac_pwr > 1")
