@@ -82,7 +82,7 @@ def parabola(inverters: InverterColumns, row: np.ndarray, volts: np.ndarray) -> 
     return c2, c1, c0
 
 
-def _start_power(inverters: InverterColumns, row: np.ndarray) -> np.ndarray:
+def start_power(inverters: InverterColumns, row: np.ndarray) -> np.ndarray:
     """DC power below which the inverter delivers nothing [W]; 0 with a constant efficiency."""
     return np.nan_to_num(inverters.sandia[row, 0], nan=0.0)
 
@@ -101,7 +101,7 @@ def to_losses(ac_sum: np.ndarray, free: np.ndarray, delivered: np.ndarray) -> Lo
     return Losses(power, current, delivered / 1000.0)
 
 
-def _ac(dc: np.ndarray, c2: np.ndarray, c1: np.ndarray, c0: np.ndarray, start: np.ndarray) -> np.ndarray:
+def ac_power(dc: np.ndarray, c2: np.ndarray, c1: np.ndarray, c0: np.ndarray, start: np.ndarray) -> np.ndarray:
     """AC power [W] without the power limit, never below 0."""
     ac = c2 * dc
     ac += c1
@@ -154,7 +154,7 @@ def block_losses(
     with np.errstate(invalid="ignore"):
         held = np.fmin(unheld, current * at)  # no limit in the dark is no number, and holds nothing
     curve = parabola(inverters, np.full(len(kinds), row), at)
-    start = _start_power(inverters, np.array([row]))[0]
+    start = start_power(inverters, np.array([row]))[0]
     limit = inverters.ac_power_w[row]
     sums = np.empty((3, k))
     limited = bool((held < unheld).any())
@@ -196,12 +196,12 @@ def count_bounds(
     if year is None or not has_model(inverters)[row]:
         return np.full(len(counts), np.nan), np.full(len(counts), np.nan)
     curve = parabola(inverters, np.full(len(lengths), row), lengths[:, None] * year.vmp_v)
-    start = _start_power(inverters, np.array([row]))[0]
+    start = start_power(inverters, np.array([row]))[0]
     limit = inverters.ac_power_w[row]
     least, most = np.empty(len(counts)), np.empty(len(counts))
     for j, modules in enumerate(counts):
         dc = np.broadcast_to(modules * year.power_w, curve[0].shape)
-        ac = _ac(dc, *curve, np.full((len(lengths), 1), start))
+        ac = ac_power(dc, *curve, np.full((len(lengths), 1), start))
         low, high = ac.min(axis=0), ac.max(axis=0)
         produced = high @ year.hours
         least[j] = np.maximum(low - limit, 0.0) @ year.hours / produced * 100.0 if produced > 0 else 0.0
