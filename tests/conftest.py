@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import shutil
 from collections.abc import Callable, Iterator
 from pathlib import Path
@@ -13,6 +14,38 @@ import pytest
 
 if TYPE_CHECKING:
     from postgres_server import PostgresServer
+
+
+#: More workers than this only take memory.
+MOST_WORKERS = 8
+
+
+@pytest.hookimpl(tryfirst=True)
+def pytest_cmdline_main(config: pytest.Config) -> None:
+    """Run the whole suite on all cores by pytest-xdist, but a topic in this process; ``-n`` says otherwise."""
+    asked = config.option
+    whole = all(os.path.isdir(argument) for argument in config.args) and not asked.keyword
+    in_worker = hasattr(config, "workerinput")
+    if whole and not in_worker and getattr(asked, "numprocesses", 0) is None and asked.dist == "no":
+        asked.numprocesses, asked.dist = "auto", "worksteal"
+        asked.maxprocesses = asked.maxprocesses or MOST_WORKERS
+
+
+def _made_once(factory: pytest.TempPathFactory, name: str, make: Callable[[Path], None]) -> Path:
+    """A file that all workers share: the first that wants it makes it, the others wait for it."""
+    if "PYTEST_XDIST_WORKER" not in os.environ:
+        path = factory.mktemp("shared") / name
+        make(path)
+        return path
+    from filelock import FileLock
+
+    path = factory.getbasetemp().parent / name
+    with FileLock(f"{path}.lock"):
+        if not path.exists():
+            draft = path.with_name(f"draft-{name}")
+            make(draft)
+            draft.replace(path)
+    return path
 
 
 class Ran(NamedTuple):
@@ -57,10 +90,11 @@ def cec_catalog(tmp_path_factory: pytest.TempPathFactory) -> Path:
     from catalog.cec import read_cec_inverters, read_cec_modules
     from catalog.store import Catalog
 
-    path = tmp_path_factory.mktemp("cec") / "cec.sqlite"
-    with Catalog.open(path, create=True) as catalog:
-        catalog.load(read_cec_modules(), read_cec_inverters())
-    return path
+    def make(path: Path) -> None:
+        with Catalog.open(path, create=True) as catalog:
+            catalog.load(read_cec_modules(), read_cec_inverters())
+
+    return _made_once(tmp_path_factory, "cec.sqlite", make)
 
 
 @pytest.fixture
@@ -82,9 +116,10 @@ def demo_path(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """The demo's catalog. It is shared: copy it."""
     from cli.main import run
 
-    path = tmp_path_factory.mktemp("demo") / "demo.sqlite"
-    assert run(["demo", "--keep", str(path)]) == 0
-    return path
+    def make(path: Path) -> None:
+        assert run(["demo", "--keep", str(path)]) == 0
+
+    return _made_once(tmp_path_factory, "demo.sqlite", make)
 
 
 @pytest.fixture
