@@ -19,7 +19,7 @@ if TYPE_CHECKING:
 
     from catalog.database import Database, Run
 
-VERSION = 2
+VERSION = 3
 
 
 def _add_stock(session: Session) -> None:
@@ -39,8 +39,13 @@ def _add_stock(session: Session) -> None:
         session.connection().exec_driver_sql(statement)
 
 
+def _add_named(session: Session) -> None:
+    """Version 3: the full name that a stock list gives an article beside its text, to match it again later."""
+    session.connection().exec_driver_sql("ALTER TABLE stock ADD COLUMN named TEXT NOT NULL DEFAULT ''")
+
+
 #: By the version that they lead to.
-MIGRATIONS: Mapping[int, Callable[[Session], None]] = {2: _add_stock}
+MIGRATIONS: Mapping[int, Callable[[Session], None]] = {2: _add_stock, 3: _add_named}
 
 
 def stored_version(run: Run) -> int | None:

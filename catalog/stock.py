@@ -52,8 +52,14 @@ class StockItem:
 
     @property
     def label(self) -> str:
-        """Article and text, as a person would find it in the list."""
-        return f"{self.article}: {self.text}" if self.article and self.text else self.article or self.text
+        """Article, text and the name that the list gives, as a person would find it in the list."""
+        return f"{self.article}: {self.words}" if self.article and self.words else self.article or self.words
+
+    @property
+    def words(self) -> str:
+        """Text, and the name that the list gives beside it."""
+        beside = self.named and self.named.casefold() not in self.text.casefold()
+        return f"{self.text} ({self.named})" if beside and self.text else self.text or self.named
 
     @property
     def open(self) -> bool:
@@ -163,16 +169,16 @@ def read_stock(run: Run) -> list[StockItem]:
     """All lines that are kept, in the order of their lists."""
     rows = run(
         'SELECT t."id", t."kind", t."record_id", t."quantity", t."unit_price", t."currency", t."place", t."article",'
-        ' t."text", t."confidence", s."name", s."revision" FROM stock t JOIN source s ON s."id" = t."source_id"'
+        ' t."text", t."named", t."confidence", s."name", s."revision" FROM stock t JOIN source s ON s."id" = t."source_id"'
         ' ORDER BY t."id"',
         {},
     )
     return [
         StockItem(
             id=id_, kind=kind, record=record, quantity=quantity, unit_price=price, currency=currency, place=place,
-            article=article, text=text, confidence=confidence, source=Source(name, revision),
+            article=article, text=text, named=named, confidence=confidence, source=Source(name, revision),
         )
-        for id_, kind, record, quantity, price, currency, place, article, text, confidence, name, revision in rows
+        for id_, kind, record, quantity, price, currency, place, article, text, named, confidence, name, revision in rows
     ]  # fmt: skip
 
 
@@ -207,12 +213,28 @@ def keep_list(session: Session, run: Run, items: Sequence[StockItem], created_at
         {
             "id": id_, "kind": i.kind, "record_id": i.record, "quantity": i.quantity, "unit_price": i.unit_price,
             "currency": i.currency, "place": i.place, "article": i.article, "text": i.text,
-            "confidence": i.confidence, "source_id": sources.id_of(i.source), "loaded_at": created_at,
+            "named": i.named, "confidence": i.confidence, "source_id": sources.id_of(i.source), "loaded_at": created_at,
         }
         for id_, i in enumerate(items, start=first)
     ]  # fmt: skip
     if rows:
         connection.execute(insert(StockRow.__table__), rows)
+
+
+def keep_matches(session: Session, items: Iterable[StockItem]) -> None:
+    """Keep the records of lines that waited for a decision; lines that were decided meanwhile stay."""
+    from sqlalchemy import bindparam, or_, update
+
+    from catalog.tables import StockRow
+
+    table = StockRow.__table__
+    rows = [{"row": i.id, "kind_": i.kind, "record_": i.record, "how": i.confidence} for i in items]
+    is_open = or_(*(table.c.confidence == how for how in OPEN))
+    statement = update(table).where(table.c.id == bindparam("row"), is_open)
+    statement = statement.values(
+        kind=bindparam("kind_"), record_id=bindparam("record_"), confidence=bindparam("how")
+    )
+    session.connection().execute(statement, rows)
 
 
 def keep_decision(session: Session, run: Run, item: StockItem, record: tuple[str, int] | None, created_at: str) -> int:

@@ -277,6 +277,22 @@ class Catalog:
             keep_list(session, run, items, _now(), add=add)
         return items
 
+    def match_waiting(self) -> list[StockItem]:
+        """Match the articles that wait for a decision once more, as records may have come since; return the matched."""
+        from catalog.stock import keep_matches, matched, read_decisions
+
+        waiting = {item.id: item for item in self.stock() if item.open}
+        if not waiting:
+            return []
+        names = self.name_indexes()
+        with self._database.reading() as run:
+            decisions = read_decisions(run)
+        changed = [i for i in matched(waiting.values(), names, decisions) if i.confidence != waiting[i.id].confidence]
+        if changed:
+            with self._database.writing() as (session, _):
+                keep_matches(session, changed)
+        return [item for item in changed if not item.open]
+
     def decide_stock(self, item: StockItem, record: tuple[str, int] | None) -> int:
         """Keep which record (kind, id) an article means, ``None`` for none; see `catalog.stock.keep_decision`."""
         from catalog.stock import keep_decision

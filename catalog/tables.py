@@ -80,6 +80,7 @@ class StockRow(SQLModel, table=True):
     place: str
     article: str
     text: str = Field(sa_type=Text)
+    named: str = Field(sa_type=Text)
     confidence: str
     source_id: int = Field(foreign_key="source.id")
     loaded_at: str

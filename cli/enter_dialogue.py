@@ -104,6 +104,7 @@ def _confirm(catalog: Catalog, draft: Entering) -> int:
     """Show the whole record, and keep it if that is wanted."""
     from catalog.plausibility import findings
     from cli.console import say
+    from cli.stock_review import say_matched
     from cli.sheet_show import print_record
 
     known = {spec.name: spec for spec in asked_fields(draft.kind)}
@@ -115,6 +116,7 @@ def _confirm(catalog: Catalog, draft: Entering) -> int:
             kept = catalog.enter(record)
             catalog.keep(_KEY + draft.kind, b"")
             say(f"Kept: {kept.name}, from {kept.source}.")
+            say_matched(catalog)
             return 0
         if answer in known:
             try:

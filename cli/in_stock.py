@@ -63,6 +63,7 @@ def stock_lots(catalog: Catalog) -> dict[int, list[StockItem]]:
     items = catalog.stock()
     if not items:
         raise CatalogError("no stock list is kept: load one with 'ferrule stock load FILE'")
+    note_waiting(items)
     lots: dict[int, list[StockItem]] = {}
     for item in items:
         if item.record is not None:
@@ -70,6 +71,44 @@ def stock_lots(catalog: Catalog) -> dict[int, list[StockItem]]:
     if not lots:
         raise CatalogError("no article in stock is matched to a record yet: 'ferrule stock review'")
     return lots
+
+
+def note_waiting(items: Sequence[StockItem]) -> None:
+    """Say on stderr how many articles no search can see, as nobody has decided what they are."""
+    from cli.console import note
+
+    line = waiting_line(items)
+    if line:
+        note(line)
+
+
+def waiting_line(items: Sequence[StockItem]) -> str:
+    """How many articles wait for a decision, and how it is made; blank where none does."""
+    from catalog.stock import decision_key
+    from cli.console import counted
+
+    waiting = len({decision_key(item) for item in items if item.open})
+    waits = "waits" if waiting == 1 else "wait"
+    return f"{counted(waiting, 'article')} in stock {waits} for a decision: ferrule stock review" if waiting else ""
+
+
+def held(catalog: Catalog, kind: str) -> dict[int, int]:
+    """Pieces in stock by the id of the record, of one kind; says how many articles wait for a decision.
+
+    Raises
+    ------
+    CatalogError
+        Where no record of the kind is on a stock list.
+    """
+    found: dict[int, int] = {}
+    items = catalog.stock()
+    note_waiting(items)
+    for item in items:
+        if item.kind == kind and item.record is not None:
+            found[item.record] = found.get(item.record, 0) + item.quantity
+    if not found:
+        raise CatalogError(f"--in-stock: no {kind} is in stock; load a list with 'ferrule stock load FILE'")
+    return found
 
 
 def only_in_stock(catalog: Catalog, lots: Lots, kind: str) -> list[Any]:

@@ -15,7 +15,7 @@ from cli.kinds import asked_kinds
 from cli.opening import CatalogOption, location, open_catalog
 
 if TYPE_CHECKING:
-    from catalog.loading import Progress
+    from catalog.loading import LoadReport, Progress
     from catalog.sheetfiles import SheetFile
     from cli.columns import Columns
 
@@ -82,14 +82,23 @@ def load(
     """
     began = time.perf_counter()
     from cli.columns import Columns, pairs
+    from cli.console import say
+    from cli.stock_review import say_matched
 
     values = pairs(given or (), "--set", "bifacial=no")
     settled = Columns(catalog, pairs(columns or (), "--map", "Power (W)=pmax_w"), yes, values)
     (kind,) = asked_kinds(kind) if kind else (None,)
     found = _read(what, modules, inverters, settled, kind, values)
-    with _progress() as tell, open_catalog(catalog, create=True) as opened:
-        report = opened.load(found.modules, found.inverters, tell)
+    with open_catalog(catalog, create=True) as opened:
+        with _progress() as tell:
+            report = opened.load(found.modules, found.inverters, tell)
         settled.keep(opened)
+        _say_loaded(found, report, time.perf_counter() - began)
+        say_matched(opened)
+    say(f"Catalog: {location(catalog)}")
+
+
+def _say_loaded(found: SheetFile, report: LoadReport, seconds: float) -> None:
     from cli.console import counted, note, say
 
     for line in found.notes[:_REMARKS]:
@@ -98,10 +107,8 @@ def load(
         note(f"... and {counted(len(found.notes) - _REMARKS, 'more remark')}")
     say(
         f"{counted(len(found.modules), 'module')} and {counted(len(found.inverters), 'inverter')}:"
-        f" {report.new:,} new, {report.changed:,} changed, {report.unchanged:,} unchanged,"
-        f" in {time.perf_counter() - began:.1f} s."
+        f" {report.new:,} new, {report.changed:,} changed, {report.unchanged:,} unchanged, in {seconds:.1f} s."
     )
-    say(f"Catalog: {location(catalog)}")
 
 
 def _read(

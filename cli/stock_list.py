@@ -37,14 +37,17 @@ def list_(
 
     Example: ferrule stock list --kind inverter
     """
+    from cli.in_stock import note_waiting
+
     kinds = asked_kinds(kind)
     with open_catalog(catalog) as opened:
-        items = opened.stock()
+        items = everything = opened.stock()
         names = {n.id: n for k in ("module", "inverter") for n in opened.names(k)}
     if kind is not None:
         items = [item for item in items if item.kind in kinds]
     if open_:
         items = [item for item in items if item.open]
+    note_waiting(everything)
     if out is not None:
         _write(items, names, out)
     if as_json:
@@ -89,7 +92,7 @@ def _show(items: Sequence[StockItem], names: Mapping[int, Named]) -> None:
     currencies = {item.currency for item in items if item.currency}
     one = currencies.pop() if len(currencies) == 1 else None
     columns = [
-        Column("article"),
+        Column("article", fold=True),
         Column("record", fold=True, min_width=24),
         Column("match"),
         Column("pieces", number=True),
@@ -101,13 +104,9 @@ def _show(items: Sequence[StockItem], names: Mapping[int, Named]) -> None:
         price = number(item.unit_price, 2)
         if not one and item.currency:
             price += f" {item.currency}"
-        called = names[item.record].name if item.record is not None else f"? {item.text or item.article}"
-        rows.append([item.article[:20], called, item.confidence, number(item.quantity), price, item.place])
+        called = names[item.record].name if item.record is not None else f"? {item.words or item.article}"
+        rows.append([item.article, called, item.confidence, number(item.quantity), price, item.place])
     print_table(columns, rows)
-    waiting = sum(item.open for item in items)
-    if waiting:
-        say()
-        say(f"{waiting:,} wait for a decision: 'ferrule stock review'.")
 
 
 _COLUMNS = (
@@ -133,7 +132,8 @@ def _write(items: Sequence[StockItem], names: Mapping[int, Named], out: str) -> 
 
 
 def _values(item: StockItem, names: Mapping[int, Named]) -> list[Any]:
-    record = names[item.record].name if item.record is not None else None
+    # What the list calls a record that is not known goes out as it came in.
+    record = names[item.record].name if item.record is not None else item.named or None
     return [item.article or None, item.kind, item.text or None, record, item.confidence, item.quantity, item.unit_price,
             item.currency, item.place or None]  # fmt: skip
 

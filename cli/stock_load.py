@@ -34,7 +34,7 @@ def load(
     Example: ferrule stock load seed_catalog/stock.csv
     """
     from catalog.stock_file import read_stock_file
-    from cli.console import note, say
+    from cli.console import counted, note, say
     from cli.stock_review import say_open
 
     found = read_stock_file(file, currency)
@@ -45,7 +45,7 @@ def load(
             note(line)
         say(summary(items))
         if before:
-            say(f"Beside the {before:,} lines before." if add else f"In the place of the {before:,} lines before.")
+            say(f"{'Beside' if add else 'In the place of'} the {counted(before, 'line')} before.")
         say_open(opened, items)
 
 
@@ -56,9 +56,11 @@ _HOW = {
 
 def summary(items: Sequence[StockItem]) -> str:
     """How many lines there are, and how they came to their records."""
+    from cli.console import counted
+
     number = Counter(item.confidence for item in items)
     matched = ", ".join(f"{number[how]:,} {words}" for how, words in _HOW.items() if number[how])
-    said = f"{len(items):,} lines in stock: {sum(number[how] for how in _HOW):,} matched to records"
+    said = f"{counted(len(items), 'line')} in stock: {sum(number[how] for how in _HOW):,} matched to records"
     said += f" ({matched})" if matched else ""
     left = number["left-out"]
     waiting = number["choose"] + number["none"]

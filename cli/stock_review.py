@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import shlex
 import sys
 from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, Annotated
@@ -18,6 +19,8 @@ if TYPE_CHECKING:
 
 #: Open articles that are printed with their candidates.
 _SHOWN = 20
+#: Candidates of an article: of those that come near, and where none does.
+_NEAR, _FAR = 5, 3
 
 
 def review(catalog: CatalogOption = None) -> None:
@@ -31,6 +34,7 @@ def review(catalog: CatalogOption = None) -> None:
     from cli.console import say
 
     with open_catalog(catalog) as opened:
+        say_matched(opened)
         if not sys.stdin.isatty():
             if not say_open(opened, opened.stock()):
                 say("Nothing waits for a decision.")
@@ -51,7 +55,7 @@ def decide(
     Example: ferrule stock decide LL-M13 "Marzipan Photovoltaik Klassik 270P"
     """
     from cli.choosing import choose
-    from cli.console import say
+    from cli.console import counted, say
     from cli.kinds import KINDS
 
     if (name is None) != none:
@@ -64,12 +68,26 @@ def decide(
             record = choose(opened, name, kinds)
             called = _name_of(opened, record)
         lines = sum(opened.decide_stock(item, record) for item in _unlike(items))
-    say(f"{items[0].label}: {called} ({lines:,} {'line' if lines == 1 else 'lines'}).")
+    say(f"{items[0].label}: {called} ({counted(lines, 'line')}).")
+
+
+def say_matched(catalog: Catalog) -> None:
+    """Match what waits for a decision once more, and say what is sure by now."""
+    from cli.console import counted, say
+
+    found = _unlike(catalog.match_waiting())
+    if not found:
+        return
+    say(f"{counted(len(found), 'article')} in stock that waited for a decision {'is' if len(found) == 1 else 'are'} sure now:")
+    for item in found[:_SHOWN]:
+        say(f"{item.label}: {_name_of(catalog, (item.kind, item.record))}", indent=2)
+    if len(found) > _SHOWN:
+        say(f"... and {len(found) - _SHOWN:,} more", indent=2)
 
 
 def say_open(catalog: Catalog, items: Sequence[StockItem]) -> int:
     """Print the articles that wait for a decision, with candidates; return how many there are."""
-    from cli.console import say
+    from cli.console import counted, say
 
     waiting = _unlike([item for item in items if item.open])
     if not waiting:
@@ -78,27 +96,39 @@ def say_open(catalog: Catalog, items: Sequence[StockItem]) -> int:
     say()
     say("Not sure which record is meant:")
     for item in waiting[:_SHOWN]:
-        say(f"{item.label} ({item.quantity:,} pieces)", indent=2)
+        say(f"{item.label} ({counted(item.quantity, 'piece')})", indent=2)
         for _, line in _candidates(item, names):
             say(line, indent=6)
+        if item.confidence == "none":
+            say(_not_loaded(item), indent=6)
     if len(waiting) > _SHOWN:
         say(f"... and {len(waiting) - _SHOWN:,} more", indent=2)
-    first = waiting[0].article or waiting[0].text
-    say(f'Decide with \'ferrule stock review\', or one by one: ferrule stock decide "{first}" "Maker Model" (or --none).')
+    first = shlex.quote(waiting[0].article or waiting[0].text)
+    say("Decide with 'ferrule stock review' on a terminal, or one by one (--none: no record of the catalog):")
+    print(f'  ferrule stock decide {first} "Maker Model"')
     return len(waiting)
+
+
+def _not_loaded(item: StockItem) -> str:
+    """What to do where no record comes near."""
+    return (
+        "No record is near to it. Its datasheet may not be loaded yet: 'ferrule sheet load FILE' or"
+        f" 'ferrule sheet enter {item.kind or 'module'}', then it is matched again."
+    )
 
 
 def _candidates(item: StockItem, names: Mapping[str, NameIndex]) -> list[tuple[Suggestion, str]]:
     from catalog.stock import suggestions
 
     called = {(kind, n.id): n.name for kind, index in names.items() for n in index.names}
-    found = suggestions(item, names)
+    # Where none is near, more of them are noise.
+    found = suggestions(item, names, _FAR if item.confidence == "none" else _NEAR)
     return [(s, f"{k}  {called[s.kind, s.id]}") for k, s in enumerate(found, start=1)]
 
 
 def _ask_all(catalog: Catalog) -> int:
     """Ask for every open article; return how many were decided."""
-    from cli.console import note, say
+    from cli.console import counted, note, say
 
     names = catalog.name_indexes()
     done = 0
@@ -106,10 +136,12 @@ def _ask_all(catalog: Catalog) -> int:
         now = next((i for i in catalog.stock() if i.id == item.id), item)
         if not now.open:
             continue  # decided together with one of the same text
-        say(f"{item.label} ({item.quantity:,} pieces{', ' + item.place if item.place else ''})")
+        say(f"{item.label} ({counted(item.quantity, 'piece')}{', ' + item.place if item.place else ''})")
         found = _candidates(item, names)
         for _, line in found:
             say(line, indent=2)
+        if item.confidence == "none":
+            say(_not_loaded(item), indent=2)
         while True:
             answer = typer.prompt("number, name, none, q", default="", show_default=False).strip()
             if answer.casefold() == "q":

@@ -165,13 +165,10 @@ def _asked(
 
 def _held(catalog: Catalog, records: Sequence, kind: str, needed: int) -> Sequence:
     """Records of which enough pieces are in stock."""
-    held: dict[int, int] = {}
-    for item in catalog.stock():
-        if item.kind == kind and item.record is not None:
-            held[item.record] = held.get(item.record, 0) + item.quantity
-    if not held:
-        raise CatalogError(f"--in-stock: no {kind} is in stock; load a list with 'ferrule stock load FILE'")
-    return [r for r in records if held.get(r.id, 0) >= needed]
+    from cli.in_stock import held
+
+    there = held(catalog, kind)
+    return [r for r in records if there.get(r.id, 0) >= needed]
 
 
 def explained(catalog: Catalog, question: Question, limit: int) -> list[tuple[Fit, Option]]:

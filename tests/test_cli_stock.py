@@ -70,7 +70,7 @@ def test_loading_says_what_was_matched_and_what_waits(run: Run):
     assert "30 lines in stock: 29 matched to records (29 by the full name), 1 to review." in said
     assert "In the place of the 30 lines before." in said
     assert "LL-M13: MARZIPAN KLASSIK poly 60 cells" in said and "1 Marzipan Photovoltaik Klassik 270P" in said
-    assert 'ferrule stock decide "LL-M13"' in said
+    assert 'ferrule stock decide LL-M13 "Maker Model"' in said
 
 
 def test_a_bad_list_changes_nothing(run: Run, tmp_path: Path):
@@ -86,7 +86,8 @@ def test_the_list_fits_the_screen_and_names_what_waits(run: Run):
     lines = ran.out.splitlines()
     assert max(map(len, lines)) <= 100
     assert any(line.split()[:5] == ["LL-I03", "Sinewright", "Viola", "5", "named"] for line in lines)
-    assert "price EUR" in lines[0] and "1 wait for a decision" in ran.out
+    assert "price EUR" in lines[0]
+    assert ran.err == "1 article in stock waits for a decision: ferrule stock review\n"
 
 
 def test_the_document_of_the_stock(run: Run):
@@ -157,6 +158,59 @@ def test_review_asks_on_a_terminal(run: Run, monkeypatch: pytest.MonkeyPatch):
     items = document(run("stock", "list", "--json"))["items"]
     (item,) = [i for i in items if i["article"] == "LL-M13"]
     assert item["record"]["model"] == "Klassik 275P" and item["match"] == "decided"
+
+
+WAITING = "No,Manufacturer,Model,Description,Qty\nA-1,Paper Sun,P-400,mono black,12\nA-2,,,Paper Sun P-410,1\n"
+SHEET = """maker,model,technology,bifacial,pmax_w,voc_v,isc_a,vmp_v,imp_a
+Paper Sun,P-400,Mono-c-Si,no,400,45.6,11.2,37.9,10.56
+Paper Sun,P-410,Mono-c-Si,no,410,45.8,11.4,38.1,10.77
+"""
+
+
+@pytest.mark.parametrize("loaded_first", [True, False])
+def test_articles_whose_datasheet_is_loaded_later_are_matched_again(
+    run: Run, shelf: Path, tmp_path: Path, loaded_first: bool
+):
+    (tmp_path / "list.csv").write_text(WAITING)
+    (tmp_path / "sheet.csv").write_text(SHEET)
+    said = " ".join(run("stock", "load", tmp_path / "list.csv").out.split())
+    assert "A-1: mono black (Paper Sun P-400)" in said and "may not be loaded yet: 'ferrule sheet load FILE'" in said
+    assert "A-2" in run("stock", "list").out and "2 articles in stock wait" in run("stock", "list").err
+    if loaded_first:
+        ran = run("sheet", "load", tmp_path / "sheet.csv")
+    else:
+        from catalog.sheetfiles import read_sheets
+
+        with Catalog.open(shelf) as catalog:
+            catalog.load(read_sheets(tmp_path / "sheet.csv").modules, [])
+        ran = run("stock", "review")
+        assert "Nothing waits for a decision." in ran.out
+    assert "2 articles in stock that waited for a decision are sure now:" in ran.out
+    assert "A-1: mono black (Paper Sun P-400): Paper Sun P-400" in ran.out
+    assert {i["match"] for i in document(run("stock", "list", "--json"))["items"]} == {"named", "sure"}
+    assert "sure now" not in run("stock", "review").out
+
+
+def test_what_waits_is_said_wherever_the_stock_is_asked(run: Run):
+    waits = "1 article in stock waits for a decision: ferrule stock review"
+    for command in (
+        ("stock", "list", "--json"),
+        ("fit", "-m", "klassik 270p", "-i", "viola 5", *CLIMATE, "--in-stock"),
+        ("vet", "-m", "klassik 270p", "--count", "40", "-i", "viola 5", *CLIMATE, "--in-stock"),
+        ("swap", "-m", "klassik 270p", "-i", "viola 5", "--strings", "1x8|1x8", *CLIMATE, "--in-stock"),
+    ):
+        ran = run(*command)
+        assert ran.status < 2 and waits in ran.err and waits not in ran.out
+
+
+def test_long_articles_are_shown_whole(run: Run, tmp_path: Path):
+    article, text = "A-" + "123456789-" * 5, "Something nobody knows " * 4
+    (tmp_path / "list.csv").write_text(f"article,text,qty,price,currency,place\n{article},{text},1,5,EUR,Hall 1\n")
+    run("stock", "load", tmp_path / "list.csv")
+    out = run("stock", "list").out
+    assert max(map(len, out.splitlines())) <= 100
+    assert article in out.replace("\n", "").replace(" ", "") or all(p in out for p in article.split("-"))
+    assert out.count("nobody") == 4
 
 
 # Fit
