@@ -14,10 +14,9 @@ from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
-import typer
 
 from catalog.store import Catalog
-from cli.main import app
+from cli.main import command as whole
 
 ROOT = Path(__file__).parents[1]
 HEAVY = ("pvlib", "pandas", "scipy", "sqlmodel", "sqlalchemy", "numpy", "rapidfuzz")
@@ -33,7 +32,7 @@ def in_a_shell(
 
 def leaves(command=None, path: tuple[str, ...] = ()) -> Iterator[tuple[tuple[str, ...], object]]:
     """Every command with its words."""
-    command = command or typer.main.get_command(app)
+    command = command or whole()
     for name, sub in getattr(command, "commands", {}).items():
         yield from leaves(sub, (*path, name))
     if not hasattr(command, "commands"):
@@ -70,7 +69,7 @@ def test_finding_a_record_waits_for_no_table_library(small_catalog):
 
 def groups(command=None, path: tuple[str, ...] = ()) -> Iterator[tuple[str, ...]]:
     """Every group with its words, the command itself first."""
-    command = command or typer.main.get_command(app)
+    command = command or whole()
     if hasattr(command, "commands"):
         yield path
         for name, sub in command.commands.items():
