@@ -8,6 +8,7 @@ from collections.abc import Sequence
 from pathlib import Path
 
 from catalog.cells import packed
+from catalog.raw_tables import separated_rows
 from catalog.records import Inverter, Module, specs
 from catalog.sheet_reading import Reading
 from catalog.sheet_tables import KNOWN, Table, heading_row, key_of
@@ -30,7 +31,7 @@ def read_tables(text: str, reading: Reading) -> list[Table]:
     if text.startswith("sep="):
         # A spreadsheet's own line about the separator; it stays a row, so that row numbers are those of the file.
         mark = text[4:5]
-        return [Table(_rows(text, mark if mark in _MARKS else ",", reading), guarded=True)]
+        return [Table(separated_rows(text, mark if mark in _MARKS else ",", reading.fault), guarded=True)]
     line = text.lstrip("\r\n").partition("\n")[0]
     known = {mark: sum(key_of(cell.strip('" \r')) in _OWN for cell in line.split(mark)) for mark in _MARKS}
     mark = max(known, key=known.__getitem__)
@@ -40,19 +41,7 @@ def read_tables(text: str, reading: Reading) -> list[Table]:
             m: heading_row(list(csv.reader(io.StringIO(head), delimiter=m)))[1] for m in _MARKS if m in head
         }
         mark = max(score, key=score.__getitem__, default=mark)
-    return [Table(_rows(text, mark, reading), guarded=True)]
-
-
-def _rows(text: str, mark: str, reading: Reading) -> list[list[str]]:
-    rows: list[list[str]] = []
-    reader = csv.reader(io.StringIO(text, newline=""), delimiter=mark, strict=True)
-    try:
-        rows.extend(reader)
-    except csv.Error as problem:
-        raise reading.fault(
-            f"the quotes do not match ({problem}); correct the row", f"row {len(rows) + 1}"
-        ) from None
-    return rows
+    return [Table(separated_rows(text, mark, reading.fault), guarded=True)]
 
 
 def write_csv(path: Path, records: Sequence[Module | Inverter]) -> None:

@@ -126,15 +126,19 @@ class _List:
                 if item is not None:
                     items.append(item)
         if bad:
-            more = [f"... and {len(bad) - _TOLD:,} more bad rows"] if len(bad) > _TOLD else []
+            left = len(bad) - _TOLD
+            more = [f"... and {left:,} more bad row{'s' if left > 1 else ''}"] if left > 0 else []
             raise CatalogError("\n  ".join([*bad[:_TOLD], *more, "nothing was kept: correct these rows and load the list again"]))
         if not items:
             raise CatalogError(f"{self.table.path}: has a heading and no rows of modules or inverters")
         if self.free:
-            self._note(f"{self.free:,} prices are 0, which was taken for not known")
+            prices = "1 price is" if self.free == 1 else f"{self.free:,} prices are"
+            self._note(f"{prices} 0, which was taken for not known")
         if self.other_kinds:
             words = ", ".join(sorted(self.other_kinds)[:6])
-            self._note(f"{sum(self.other_kinds.values()):,} rows are of other kinds and were left out: {words}")
+            others = sum(self.other_kinds.values())
+            left = "1 row of other kinds was" if others == 1 else f"{others:,} rows of other kinds were"
+            self._note(f"{left} left out: {words}")
         return StockFile(items, self.notes)
 
     def _note(self, line: str) -> None:

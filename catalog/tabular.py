@@ -6,31 +6,25 @@ the separator of a CSV file, and the sheet of a workbook. Lines above the headin
 
 from __future__ import annotations
 
-import csv
-import io
-import zipfile
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
-from datetime import date, time
 from pathlib import Path
 
 from catalog.errors import CatalogError
+from catalog.raw_tables import Fault, separated_rows, worksheet_rows
 
 ENDINGS = (".csv", ".tsv", ".txt", ".xlsx", ".xlsm")
 
 #: What a cell holds; blank ones hold ``None``, texts are stripped.
-Cell = str | int | float | bool | date | time | None
+Cell = str | int | float | bool | None
 
 #: The heading is looked for in so many rows.
 _HEADING_WITHIN = 30
 
 _SEPARATORS = ",;\t|"
 
-#: A workbook that is larger when unpacked, or packed more tightly, is no list that people keep [bytes; ratio].
-_UNPACKED = 400_000_000
-_PACKED_RATIO = 400
-_COLUMNS = 300
-_ROWS = 1_048_576
+#: Rows that are too wide are told one by one up to this number.
+_TOLD = 10
 
 
 @dataclass(frozen=True, slots=True)
@@ -85,10 +79,14 @@ def read_table(path: str | Path, known: Callable[[str], bool]) -> Table:
         raise CatalogError(f"{path}: cannot be read ({problem.strerror}); check the path") from None
     if not data.strip():
         raise CatalogError(f"{path}: is empty")
+
+    def fault(message: str, *place: str) -> CatalogError:
+        return CatalogError(f"{', '.join((str(path), *place))}: {message}")
+
     if ending in (".xlsx", ".xlsm"):
-        return _best(path, _sheets(path, data), known)
+        return _best(path, _sheets(data, fault), known)
     text, notes = _text(path, data)
-    return _best(path, _separated(path, text), known, notes)
+    return _best(path, _separated(text, fault), known, notes)
 
 
 def _best(path: Path, tables: Iterator[list[list[Cell]]], known: Callable[[str], bool], notes: tuple[str, ...] = ()) -> Table:
@@ -107,14 +105,13 @@ def _best(path: Path, tables: Iterator[list[list[Cell]]], known: Callable[[str],
 
 def _rows(path: Path, rows: list[list[Cell]], head: int, headings: Sequence[str]) -> Iterator[TableRow]:
     width = len(headings)
-    for number, row in enumerate(rows[head + 1 :], start=head + 2):
-        if all(cell is None for cell in row):
-            continue
-        if any(cell is not None for cell in row[width:]):
-            raise CatalogError(
-                f"{path}, row {number}: has {len(row)} cells, the heading has {width}; put a cell with the separator"
-                " in it in quotes"
-            )
+    below = [(n, row) for n, row in enumerate(rows[head + 1 :], start=head + 2) if any(c is not None for c in row)]
+    wide = [(n, len(row)) for n, row in below if any(cell is not None for cell in row[width:])]
+    if wide:
+        lines = [f"{path}, row {n}: has {cells} cells, the heading has {width}" for n, cells in wide[:_TOLD]]
+        more = [f"... and {len(wide) - _TOLD:,} more"] if len(wide) > _TOLD else []
+        raise CatalogError("\n  ".join([*lines, *more]) + "; put a cell with the separator in it in quotes")
+    for number, row in below:
         yield TableRow(number, tuple([*row[:width], *[None] * (width - len(row))]))
 
 
@@ -135,75 +132,33 @@ def _text(path: Path, data: bytes) -> tuple[str, tuple[str, ...]]:
         return text, (f"{path}: is not in UTF-8 (line {line}); read as Windows-1252, check accents and currency signs",)
 
 
-def _separated(path: Path, text: str) -> Iterator[list[list[Cell]]]:
+def _separated(text: str, fault: Fault) -> Iterator[list[list[Cell]]]:
     """Rows by each separator that the text may have."""
     problem: CatalogError | None = None
     some = False
     for mark in _SEPARATORS:
         if mark not in text and mark != ",":
             continue
-        rows: list[list[Cell]] = []
         try:
-            for row in csv.reader(io.StringIO(text, newline=""), delimiter=mark, strict=True):
-                rows.append([cell.strip() or None for cell in row])
-        except csv.Error as error:
-            problem = CatalogError(f"{path}, row {len(rows) + 1}: the quotes do not match ({error}); correct the row")
+            rows = separated_rows(text, mark, fault)
+        except CatalogError as error:
+            problem = error
             continue
         some = True
-        yield rows
+        yield [[_cell(cell) for cell in row] for row in rows]
     if problem is not None and not some:
         raise problem
 
 
-def _sheets(path: Path, data: bytes) -> Iterator[list[list[Cell]]]:
-    """Rows of each visible sheet of a workbook."""
-    _check_package(path, data)
-    import warnings
-
-    import openpyxl
-
-    book = None
-    try:
-        with warnings.catch_warnings():
-            warnings.simplefilter("ignore")
-            book = openpyxl.load_workbook(io.BytesIO(data), read_only=True, data_only=True, keep_links=False)
-            for sheet in book.worksheets:
-                if sheet.sheet_state == "visible":
-                    yield [_plain(row) for row in sheet.iter_rows(max_col=_COLUMNS, max_row=_ROWS, values_only=True)]
-    except (CatalogError, GeneratorExit, MemoryError):
-        raise
-    except Exception as error:
-        # Damaged packages end in errors of many kinds (of zip, XML, dates, missing parts).
-        reason = " ".join(str(error).split())[:120]
-        raise CatalogError(f"{path}: is a damaged workbook ({reason}); save it again") from None
-    finally:
-        if book is not None:
-            book.close()
+def _sheets(data: bytes, fault: Fault) -> Iterator[list[list[Cell]]]:
+    """Rows of each visible sheet of a workbook, without blank cells at their ends."""
+    for _, rows in worksheet_rows(data, fault):
+        plain = [[_cell(cell) for cell in row] for row in rows]
+        for row in plain:
+            while row and row[-1] is None:
+                row.pop()
+        yield plain
 
 
-def _plain(row: Sequence[object]) -> list[Cell]:
-    cells = [_cell(value) for value in row]
-    while cells and cells[-1] is None:
-        cells.pop()
-    return cells
-
-
-def _cell(value: object) -> Cell:
-    if isinstance(value, str):
-        return value.strip() or None
-    if value is None or isinstance(value, (bool, int, float, date, time)):
-        return value
-    return str(value)
-
-
-def _check_package(path: Path, data: bytes) -> None:
-    """Refuse what is no workbook, unpacks to far more than a list can be, or draws on other files."""
-    try:
-        parts = zipfile.ZipFile(io.BytesIO(data)).infolist()
-    except (zipfile.BadZipFile, ValueError, OverflowError):
-        raise CatalogError(f"{path}: is no .xlsx workbook, or it is damaged or locked by a password; save it again") from None
-    size = sum(part.file_size for part in parts)
-    if size > _UNPACKED or (size > 50_000_000 and size > _PACKED_RATIO * len(data)):
-        raise CatalogError(f"{path}: would be {size / 1e6:,.0f} MB unpacked, which is no list; save the one sheet as .csv")
-    if any(part.filename.casefold().startswith("xl/externallinks/") for part in parts):
-        raise CatalogError(f"{path}: takes values from other workbooks; save it with values in place of the links, or as .csv")
+def _cell(value: Cell) -> Cell:
+    return value.strip() or None if isinstance(value, str) else value

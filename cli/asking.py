@@ -23,7 +23,13 @@ def rule_set(name: str) -> RuleSet:
 
         return read_rule_set(name)
     if name not in RULE_SETS:
-        raise CatalogError(f"--rules {name}: there is no such rule set; choose {' or '.join(RULE_SETS)}, or a file that ends in .toml")
+        from catalog.near import nearest
+
+        hint = nearest(name, RULE_SETS, 1).replace("; near to it: ", "; did you mean ")
+        mean = f"{hint}?" if "mean" in hint else ";"
+        raise CatalogError(
+            f"--rules {name}: there is no such rule set{mean} choose {' or '.join(RULE_SETS)}, or a file that ends in .toml"
+        )
     return RULE_SETS[name]
 
 

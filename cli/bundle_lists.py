@@ -177,7 +177,10 @@ class Reader:
         if not candidates:
             return f"no {self._kind} of the catalog is like {text!r}"
         near = " or ".join(self._name[c.id] for c in candidates[:3])
-        return f"{self._kind} {text!r}: choose among {near}"
+        if len(candidates) == 1:
+            return f"{self._kind} {text!r}: did you mean {near}? write it so"
+        more = " or others" if len(candidates) > 3 else ""
+        return f"{self._kind} {text!r}: choose among {near}{more}"
 
 
 def whole(text: str, what: str) -> int | str:

@@ -101,7 +101,7 @@ def test_an_old_code_page_is_read_and_said(tmp_path):
 def test_other_goods_are_left_out_and_said(tmp_path):
     found = read_stock_file(written(tmp_path, "kind,text,qty\nsolar panel,A,1\nbattery,B,2\nHybrid inverter,C,3\n"))
     assert [(i.kind, i.text) for i in found.items] == [("module", "A"), ("inverter", "C")]
-    assert "1 rows are of other kinds and were left out: battery" in found.notes[0]
+    assert "1 row of other kinds was left out: battery" in found.notes[0]
 
 
 def test_every_bad_row_is_told_with_row_and_column(tmp_path):
@@ -149,15 +149,33 @@ def test_a_currency_for_prices_without_one(tmp_path):
     assert "--currency shells" in refusal(path, "shells")
 
 
-def test_a_workbook_that_unpacks_to_too_much_is_refused(tmp_path):
+@pytest.mark.parametrize(
+    ("name", "content", "said"),
+    [
+        ("xl/worksheets/sheet1.xml", b"\0" * 2**25, "unpacks to"),
+        ("xl/worksheets/sheet1.xml", b'<!DOCTYPE a [<!ENTITY b "bb">]><a>&b;</a>', "definitions that no workbook needs"),
+        ("xl/externalLinks/externalLink1.xml", b"<a/>", "links to other files"),
+        ("xl/workbook.xml", b"<a/>", "no workbook that can be read"),
+    ],
+)
+def test_a_workbook_that_could_do_harm_or_is_damaged_is_refused(tmp_path, name, content, said):
+    """The same guard stands before stock lists as before datasheets."""
     import zipfile
 
-    path = tmp_path / "bomb.xlsx"
+    path = tmp_path / "stock.xlsx"
     with zipfile.ZipFile(path, "w", zipfile.ZIP_DEFLATED) as file:
-        file.writestr("xl/worksheets/sheet1.xml", b"\0" * 60_000_000)
-    assert "MB unpacked" in refusal(path)
+        file.writestr(name, content)
+    line = refusal(path)
+    assert line.startswith(f"{path}: ") and said in line and "\n" not in line
     path.write_bytes(b"PK\x03\x04 torn")
-    assert "no .xlsx workbook" in refusal(path)
+    assert "is no workbook (XLSX)" in refusal(path)
+
+
+def test_every_row_that_is_too_wide_is_told(tmp_path):
+    path = written(tmp_path, "text,qty\n" + "A,1,2\n" * 13)
+    lines = refusal(path).splitlines()
+    assert lines[0] == f"{path}, row 2: has 3 cells, the heading has 2" and len(lines) == 11
+    assert lines[-1] == "  ... and 3 more; put a cell with the separator in it in quotes"
 
 
 def test_currencies():
