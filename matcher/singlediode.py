@@ -125,37 +125,34 @@ def fit_six_parameters(
     """
     import numpy as np
     from pvlib.ivtools.sdm import fit_desoto_batzelis
+    from scipy.optimize.elementwise import find_root
 
-    vmp, imp, voc, isc, voc_coef, isc_coef, pmax_coef = np.broadcast_arrays(
+    rated = np.broadcast_arrays(
         *(np.atleast_1d(np.asarray(v, dtype=float)) for v in
           (vmp_v, imp_a, voc_v, isc_a, voc_coef_pct, isc_coef_pct, pmax_coef_pct))
     )  # fmt: skip
-    alpha_sc, beta_voc = isc_coef / 100 * isc, voc_coef / 100 * voc
+    temperatures = np.array([_COEF_LOW_C, 25.0, _COEF_HIGH_C])
 
-    def closed_form(adjust: np.ndarray) -> SixParameters:
+    def closed_form(adjust: np.ndarray, *rated: np.ndarray) -> SixParameters:
+        vmp, imp, voc, isc, voc_coef, isc_coef, _ = rated
+        alpha_sc, beta_voc = isc_coef / 100 * isc, voc_coef / 100 * voc
         found = fit_desoto_batzelis(vmp, imp, voc, isc, alpha_sc * (1 - adjust / 100), beta_voc * (1 + adjust / 100))
         return SixParameters(alpha_sc, **{n: found[n] for n in SIX_PARAMETERS[:-1]}, Adjust=adjust)
 
-    def miss(adjust: np.ndarray) -> np.ndarray:
-        params = closed_form(adjust)
-        low, at_25, high = (
-            v * i for v, i in (max_power_point(params, 1000.0, t) for t in (_COEF_LOW_C, 25.0, _COEF_HIGH_C))
-        )
-        return (high - low) / (_COEF_HIGH_C - _COEF_LOW_C) / at_25 * 100 - pmax_coef
+    def miss(adjust: np.ndarray, *rated: np.ndarray) -> np.ndarray:
+        params = closed_form(adjust, *rated)
+        at_each = SixParameters(*(np.asarray(getattr(params, f.name))[..., None] for f in fields(SixParameters)))
+        vmp, imp = max_power_point(at_each, 1000.0, temperatures)
+        low, at_25, high = np.moveaxis(vmp * imp, -1, 0)
+        return (high - low) / (_COEF_HIGH_C - _COEF_LOW_C) / at_25 * 100 - rated[-1]
 
     with np.errstate(all="ignore"):
         grid = np.linspace(-98.0, 98.0, 50)
-        misses = np.stack([miss(np.full(vmp.shape, a)) for a in grid], axis=-1)
+        misses = miss(grid, *(values[:, None] for values in rated))
         crosses = misses[:, :-1] * misses[:, 1:] <= 0  # NaN crosses nothing
         # The root nearest to no adjustment.
         k = np.where(crosses, np.abs(grid[:-1] + 2.0), np.inf).argmin(axis=1)
-        low, high, at_low = grid[k], grid[k + 1], misses[np.arange(vmp.size), k]
-        for _ in range(48):
-            middle = (low + high) / 2
-            at_middle = miss(middle)
-            same = (at_middle > 0) == (at_low > 0)
-            low, high = np.where(same, middle, low), np.where(same, high, middle)
-        found = closed_form((low + high) / 2)
+        found = closed_form(find_root(miss, (grid[k], grid[k + 1]), args=tuple(rated)).x, *rated)
     none = ~crosses.any(axis=1)
     return SixParameters(*(np.where(none, np.nan, getattr(found, f.name)) for f in fields(SixParameters)))
 
