@@ -29,7 +29,7 @@ def run() -> None:
 def _project(folder: Path, form: str, pairs: int) -> None:
     task = Task(tuple(inverters()), Request(SITE), condense_plane(plane()), None, DC_LOSS_PCT, form)
     parts = Parts(task, modules(), folder / f"pairs{form}")
-    assert task.columns is not None
+    assert task.takers is not None
     row(f"parts as {form}", "pairs", "s", "us/pair", "peak MB")
     paths: list[Path] = []
     seconds, done = 0.0, 0

@@ -15,7 +15,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from catalog.errors import CatalogError
-from cli.fit_files import blank, replacing, safe
+from cli.fit_files import replacing, safe
 from matcher.options import Options, label
 
 if TYPE_CHECKING:
@@ -81,23 +81,27 @@ def assemble(form: str, parts: Sequence[Path], out: Path) -> None:
 
 def labels(options: Options) -> tuple[list[str], np.ndarray]:
     """The different arrangements in words, and which of them each option has, shape (n,)."""
-    columns = (getattr(options, f.name) for f in fields(options))
-    wiring = np.hstack([values for values in columns if values.ndim == 2])
-    _, first, which = np.unique(wiring, axis=0, return_index=True, return_inverse=True)
-    return [label(options.wired(k)) for k in first.tolist()], which.ravel()
+    which = np.zeros(len(options), dtype=np.int64)
+    for f in fields(options):
+        values = getattr(options, f.name)
+        for column in values.T if values.ndim == 2 else ():
+            if (column != column[:1]).any():
+                which = np.unique(which * (int(column.max()) + 1) + column, return_inverse=True)[1]
+    _, first = np.unique(which, return_index=True)
+    return [label(options.wired(k)) for k in first.tolist()], which
 
 
 def _write_csv(found: Bests, modules: Sequence[Module], inverters: Sequence[Inverter], stream: Any) -> None:
     t = found.options
     words, which = labels(t)
-    # What does not depend on names is put into words once for all twins.
-    tails = [
-        f"{'to-confirm' if unsure else 'fits'},{count},{words[k]},{ratio:.6g},{blank(clipping)},{blank(kwh)},{margin:.7g}\r\n"
-        for unsure, count, k, ratio, clipping, kwh, margin in zip(
-            t.to_confirm.tolist(), t.modules.tolist(), which.tolist(), t.ratio.tolist(), t.clipping_pct.tolist(),
-            t.yearly_kwh.tolist(), t.margin_pct.tolist(), strict=True,
-        )
-    ]  # fmt: skip
+    verdicts = np.array(["fits", "to-confirm"], dtype=object)[t.to_confirm.astype(np.int8)]
+    columns = (verdicts, t.modules, np.array(words, dtype=object)[which], t.ratio, t.clipping_pct, t.yearly_kwh, t.margin_pct)
+    # What does not depend on names is put into words once for all twins, and all of it at once.
+    cells = [None] * (len(columns) * len(t))
+    for k, column in enumerate(columns):
+        cells[k :: len(columns)] = column.tolist()
+    text = "%s,%d,%s,%.6g,%.7g,%.7g,%.7g\r\n" * len(t) % tuple(cells)
+    tails = text.replace(",nan", ",").splitlines(keepends=True)
     inverter_names = [_cells(i.maker, i.model) for i in inverters]
     for module, rows in zip(modules, found.rows.tolist(), strict=True):
         name = _cells(module.maker, module.model)

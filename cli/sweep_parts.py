@@ -20,8 +20,7 @@ from typing import TYPE_CHECKING
 from catalog.errors import CatalogError
 from catalog.records import Inverter, Module
 from cli.sweep_files import write_part
-from matcher.columns import InverterColumns
-from matcher.sweep import bests
+from matcher.sweep import Takers, bests
 
 if TYPE_CHECKING:
     from matcher.moduleyear import PlaneYear
@@ -49,13 +48,13 @@ class Task:
     form: str
 
     @cached_property
-    def columns(self) -> InverterColumns:
-        """The inverters as arrays."""
-        return InverterColumns.of(self.inverters)
+    def takers(self) -> Takers:
+        """The inverters as arrays, twins once."""
+        return Takers.of_records(self.inverters)
 
     def make(self, modules: Sequence[Module], folder: Path, number: int) -> Path:
         """Make one part; its file carries its number and how many pairs of it go together."""
-        found = bests(modules, self.columns, self.request, self.plane, self.dc_loss_pct, self.hourly)
+        found = bests(modules, self.takers, self.request, self.plane, self.dc_loss_pct, self.hourly)
         path = folder / f"{number:05d}-{int((found.rows >= 0).sum())}{self.form}"
         write_part(self.form, path, found, modules, self.inverters)
         return path
@@ -67,7 +66,7 @@ class Parts:
     def __init__(self, task: Task, modules: Sequence[Module], out: Path) -> None:
         self.task = task
         self.folder = out.with_name(f"{out.name}.parts")
-        several = int((~task.columns.single).sum())
+        several = int((~task.takers.distinct.single)[task.takers.of].sum())
         size = max(1, min(512, _PAIRS // (len(task.inverters) + _SEVERAL_TRACKERS * several)))
         self.modules = [modules[k : k + size] for k in range(0, len(modules), size)]
         self._key = _key_of(task, modules, size)

@@ -22,22 +22,15 @@ from matcher.errors import MatcherError
 from matcher.limits import PairLimits, at_most, pair_limits
 from matcher.moduleyear import ModuleYear
 from matcher.options import Options, build, join
-from matcher.order import Order, ranked, sort_keys
+from matcher.order import ranked, sort_keys
 from matcher.request import Request
 from matcher.shelf import Shelf
-from matcher.shortlist import Heads, can_estimate, candidates, estimate, margin
-from matcher.singlelosses import single_losses
+from matcher.singlepairs import SinglePairs
 from matcher.singles import expand
 
 #: An inverter of several trackers with no more arrangements than this is worked out whole.
 WHOLE = 2_000
 WHOLE_EVERY = 50_000
-
-#: Options worked out at once.
-PART = 400_000
-#: Options among which the best of each pair are sought at once, and the modules that they may have: bounds memory.
-PART_OF_BESTS = 100_000
-MODULES_OF_BESTS = 2_000
 
 #: Options that can be sorted at once.
 MOST_AT_ONCE = 5_000_000
@@ -121,101 +114,15 @@ class Search:
         MatcherError
             Where all are asked for and there are more than can be sorted at once.
         """
-        expansion = expand(limits, self.max_strings(module, inverter))
-        total = int(expansion.sizes.sum())
+        lines = expand(limits, self.max_strings(module, inverter))
+        total = int(lines.sizes.sum())
         if every and total > MOST_AT_ONCE:
             raise MatcherError(
                 f"{total:,} arrangements are too many to list at once; narrow the ratio window or the module count"
             )
-        tables, pairs = [], []
-        per_module = total // max(1, len(np.unique(module)))
-        size = PART if every else min(PART_OF_BESTS, MODULES_OF_BESTS * max(1, per_module))
-        for first, last in expansion.parts(size):
-            pair, strings, in_series = expansion.part(first, last)
-            if every:
-                options = self._single_options(module[pair], inverter[pair], limits, pair, strings, in_series)
-            else:
-                options, pair = self._single_bests(module, inverter, limits, pair, strings, in_series)
-            tables.append(options)
-            pairs.append(pair)
-        return join(tables), np.concatenate(pairs), expansion.sizes
-
-    def _single_bests(
-        self, module: np.ndarray, inverter: np.ndarray, limits: PairLimits, pair: np.ndarray,
-        strings: np.ndarray, in_series: np.ndarray,
-    ) -> tuple[Options, np.ndarray]:  # fmt: skip
-        """The best option of each pair of those given, and its pair."""
-
-        def work_out(chosen: np.ndarray) -> Options:
-            p = pair[chosen]
-            return self._single_options(module[p], inverter[p], limits, p, strings[chosen], in_series[chosen])
-
-        chosen = np.arange(len(pair))
-        if self.request.order is Order.LEAST_INVERTER and len(pair):
-            estimate = self._estimate(module, inverter, pair, strings, in_series)
-            sure = ~self._unsure(inverter[pair], limits, pair, in_series)
-            chosen = candidates(pair, strings * in_series, estimate, sure, self.request.clip_cap_pct)
-            options = work_out(chosen)
-            off = np.abs(options.clipping_pct - estimate[chosen]) > margin(estimate[chosen]) / 2
-            if off.any():
-                # An inverter for which the estimate is no good: all options of its pairs.
-                again = np.zeros(len(limits.most), dtype=bool)
-                again[pair[chosen[off]]] = True
-                more = np.setdiff1d(np.flatnonzero(again[pair]), chosen, assume_unique=True)
-                options, chosen = join([options, work_out(more)]), np.concatenate([chosen, more])
-        else:
-            options = work_out(chosen)
-        of = pair[chosen]
-        order = self.rank(options)
-        of, options = of[order], options.take(order)
-        _, best = np.unique(of, return_index=True)
-        return options.take(best), of[best]
-
-    def _estimate(
-        self, module: np.ndarray, inverter: np.ndarray, pair: np.ndarray, strings: np.ndarray, in_series: np.ndarray
-    ) -> np.ndarray:
-        """Clipping loss of options with one tracker [%], about; NaN where it must be worked out."""
-        if self.year is None or not self.year.shows_clipping:
-            return np.zeros(len(pair))
-        # Options of one pair and string length stand together.
-        ahead = np.diff(pair, prepend=-1) != 0
-        ahead |= np.diff(in_series, prepend=-1) != 0
-        first = np.flatnonzero(ahead)
-        head = pair[first]
-        year, line = self.year, np.zeros(len(head), dtype=np.int64)
-        if year.power_w.ndim == 2:
-            several, line = np.unique(module[head], return_inverse=True)
-            hours = year.hours[several] if year.hours.ndim == 2 else year.hours
-            year = replace(year, power_w=year.power_w[several], vmp_v=year.vmp_v[several], hours=hours)
-        heads = Heads.of(year, self.request.clip_cap_pct)
-        found = estimate(
-            heads, self.inverters, line, inverter[head], in_series[first], np.cumsum(ahead) - 1, strings
-        )
-        found[~can_estimate(self.inverters)[inverter[pair]]] = np.nan
-        return found
-
-    def _single_options(
-        self, m: np.ndarray, i: np.ndarray, limits: PairLimits, pair: np.ndarray, strings: np.ndarray,
-        in_series: np.ndarray,
-    ) -> Options:  # fmt: skip
-        unsure = self._unsure(i, limits, pair, in_series)
-        if self.year is None:
-            losses = Losses.unknown(len(m))
-        else:
-            line = m if self.year.power_w.ndim == 2 else None
-            losses = single_losses(self.year, self.inverters, i, strings, in_series, line)
-        return build(
-            m.astype(np.int32), i.astype(np.int32), unsure,
-            strings[:, None].astype(np.int32), in_series[:, None].astype(np.int32),
-            np.zeros((len(m), 1), dtype=np.int16),
-            pmax_w=self.points.pmax_w[m], ac_power_w=self.inverters.ac_power_w[i],
-            voc_cold_v=self.points.voc_cold_v[m], voltage_limit_v=limits.voltage_limit_v[pair], losses=losses,
-        )  # fmt: skip
-
-    def _unsure(self, i: np.ndarray, limits: PairLimits, pair: np.ndarray, in_series: np.ndarray) -> np.ndarray:
-        """Whether a safety rating is missing for options with one tracker each, shape (n,)."""
-        unsure = (in_series < limits.sure_from[pair]) | (in_series > limits.sure_to[pair])
-        return unsure | np.isnan(self.inverters.max_isc_a[i])
+        pairs = SinglePairs(self, module, inverter, limits)
+        options, pair = pairs.every(lines) if every else pairs.bests(lines)
+        return options, pair, lines.sizes
 
     def space(self, m: int, i: int, limits: PairLimits | None = None) -> Space:
         """All arrangements of one pair inside the limits, which are the request's where none are given."""

@@ -1,11 +1,12 @@
 """Which options can be the first of their pair, so that the losses of all the others need not be worked out.
 
 In the order of least inverter the first option of a pair is the largest array that clips no more than the cap.
-For inverters with one tracker the loss of every option is estimated here from a few sums of the year, exact
-for an inverter whose efficiency does not follow the voltage of single hours: with the AC power a parabola of
-the DC power at one mean voltage, what lies above the limit is a sum of the first three moments of the hours
-above it. What the estimate leaves within `MARGIN_PCT` of the decision is worked out by `matcher.clipping`,
-and each of those must meet its estimate to half of that, else all options of its pair are worked out.
+For inverters with one tracker the loss is estimated here from a few sums of the year, exact for an inverter
+whose efficiency does not follow the voltage of single hours: with the AC power a parabola of the DC power at
+one mean voltage, what lies above the limit is a sum of the first three moments of the hours above it. The loss
+grows with the number of strings, so for each string length the numbers near the cap are found by halving.
+What the estimate leaves within `MARGIN_PCT` of the decision is worked out by `matcher.clipping`, and each of
+those must meet its estimate to half of that, else all options of its pair are worked out.
 """
 
 from __future__ import annotations
@@ -89,36 +90,81 @@ class Heads:
         return self.moments[:, line * (classes + 1)]
 
 
-def estimate(
-    heads: Heads, inverters: InverterColumns, line: np.ndarray, inverter: np.ndarray, in_series: np.ndarray,
-    of: np.ndarray, strings: np.ndarray,
-) -> np.ndarray:  # fmt: skip
-    """Clipping loss by the power limit [%], shape (n,), about.
+@dataclass(frozen=True, slots=True, eq=False)
+class Estimates:
+    """Clipping losses by the power limit, about, of string lengths (k,) with any number of strings.
 
-    ``line``, ``inverter`` and ``in_series`` describe string lengths (k,); option j has ``strings[j]`` strings
-    of the length ``of[j]``, both (n,). 0 where there is no efficiency model or no year, NaN where the efficiency
-    follows the voltage too much for an estimate.
+    ``line`` is the year of each, ``clipped`` and ``total`` are the coefficients (3, k) of what lies above the
+    limit and of the whole in modules squared, modules and 1; ``enough_w`` is the DC power at the limit.
+    ``wild`` marks efficiencies that follow the voltage too much for an estimate.
     """
-    limit = inverters.ac_power_w[inverter]
-    with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
-        (c2, c1, c0), enough = _at_limit(inverters, inverter, in_series * heads.head_vmp_v[line], limit)
-        short = limit - c0
-        wild = np.zeros(len(line), dtype=bool)
-        for volts in (heads.low_vmp_v, heads.high_vmp_v):
-            shifted = _at_limit(inverters, inverter, in_series * volts[line], limit)[1] / enough
-            wild |= np.abs(shifted - 1.0) > _WILD
-        t2, t1, t0 = (c[:, 0] for c in parabola(inverters, inverter, (in_series * heads.vmp_v[line])[:, None]))
-        hours, energy, square = heads.whole(line)
-        t2, t1, t0 = t2 * square, t1 * energy, t0 * hours
 
-        modules = (strings * in_series[of]).astype(float)
-        hours, energy, square = heads.above(line[of], enough[of] / modules)
-        clipped = (c2[of] * modules * square + c1[of] * energy) * modules - short[of] * hours
-        total = (t2[of] * modules + t1[of]) * modules + t0[of]
-        found = np.nan_to_num(clipped / total * 100.0, nan=0.0, posinf=0.0, neginf=0.0)
-    wild |= ~(enough > 0) & has_model(inverters)[inverter]
-    found[wild[of]] = np.nan
-    return found
+    heads: Heads
+    line: np.ndarray
+    in_series: np.ndarray
+    clipped: np.ndarray
+    total: np.ndarray
+    enough_w: np.ndarray
+    wild: np.ndarray
+
+    @classmethod
+    def of(
+        cls, heads: Heads, inverters: InverterColumns, line: np.ndarray, inverter: np.ndarray, in_series: np.ndarray,
+        modules: np.ndarray,
+    ) -> Estimates:  # fmt: skip
+        """Of string lengths on inverters with up to so many modules, index and count arrays of shape (k,)."""
+        limit = inverters.ac_power_w[inverter]
+        with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+            (c2, c1, c0), enough = _at_limit(inverters, inverter, in_series * heads.head_vmp_v[line], limit)
+            wild = ~(enough > 0) & has_model(inverters)[inverter]
+            # Where more DC power gives less AC power, the loss need not grow with the strings.
+            wild |= 2.0 * c2 * heads.highest_w[line] * modules + c1 <= 0
+            for volts in (heads.low_vmp_v, heads.high_vmp_v):
+                shifted = _at_limit(inverters, inverter, in_series * volts[line], limit)[1] / enough
+                wild |= np.abs(shifted - 1.0) > _WILD
+            whole = parabola(inverters, inverter, (in_series * heads.vmp_v[line])[:, None])
+            hours, energy, square = heads.whole(line)
+            total = np.stack([c[:, 0] * sums for c, sums in zip(whole, (square, energy, hours), strict=True)])
+        return cls(heads, line, in_series, np.stack([c2, c1, c0 - limit]), total, enough, wild)
+
+    def loss_pct(self, of: np.ndarray, strings: np.ndarray) -> np.ndarray:
+        """Loss [%] of options (n,): ``strings[j]`` strings of the length number ``of[j]``.
+
+        0 where there is no efficiency model or no year, NaN where it is wild.
+        """
+        modules = (strings * self.in_series[of]).astype(float)
+        with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
+            hours, energy, square = self.heads.above(self.line[of], self.enough_w[of] / modules)
+            c2, c1, c0 = self.clipped[:, of]
+            t2, t1, t0 = self.total[:, of]
+            clipped = (c2 * modules * square + c1 * energy) * modules + c0 * hours
+            found = clipped / ((t2 * modules + t1) * modules + t0) * 100.0
+        found = np.nan_to_num(found, nan=0.0, posinf=0.0, neginf=0.0)
+        found[self.wild[of]] = np.nan
+        return found
+
+    def near(self, clip_cap_pct: float, fewest: np.ndarray, most: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        """The numbers of strings, first and last of each length (k,), among which the first of a pair can be.
+
+        From the most strings that surely clip no more than the cap to the most that perhaps do; where even
+        the fewest do not, to the most that may clip as little. All from ``fewest`` to ``most`` where it is wild.
+        """
+        lengths = np.arange(len(fewest))
+        least = self.loss_pct(lengths, fewest)
+        surely = self._last(fewest, most, np.full(len(fewest), (clip_cap_pct - MARGIN_PCT) / (1.0 + MARGIN_SHARE)))
+        top = np.maximum(clip_cap_pct, least + margin(least))
+        perhaps = self._last(fewest, most, (top + MARGIN_PCT) / (1.0 - MARGIN_SHARE))
+        return np.where(self.wild, fewest, surely), np.where(self.wild, most, perhaps)
+
+    def _last(self, fewest: np.ndarray, most: np.ndarray, top: np.ndarray) -> np.ndarray:
+        """The most strings of each length (k,) whose loss is not above ``top`` [%]; at least the fewest."""
+        low, high = fewest.copy(), most.copy()
+        while len(open_ := np.flatnonzero(low < high)):
+            middle = (low[open_] + high[open_] + 1) // 2
+            below = self.loss_pct(open_, middle) <= top[open_]
+            low[open_] = np.where(below, middle, low[open_])
+            high[open_] = np.where(below, high[open_], middle - 1)
+        return low
 
 
 def _at_limit(

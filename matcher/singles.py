@@ -24,25 +24,32 @@ class Expansion:
     ways: np.ndarray
     sizes: np.ndarray
 
-    def parts(self, size: int) -> Iterator[tuple[int, int]]:
-        """Ranges of lines, whole pairs each, with about ``size`` arrangements; at least one range."""
-        first, held = 0, 0
-        ends = np.append(np.flatnonzero(np.diff(self.pair)) + 1, len(self.pair))
-        before = np.append(0, np.cumsum(self.ways))
-        for end in ends:
-            held = before[end] - before[first]
-            if held >= size:
-                yield first, int(end)
-                first = int(end)
-        if first < len(self.pair) or first == 0:
-            yield first, len(self.pair)
+    def parts(self, size: int, weight: np.ndarray | None = None) -> Iterator[Expansion]:
+        """Lines in parts, whole pairs each, with about ``size`` arrangements; at least one part.
 
-    def part(self, first: int, last: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-        """Arrangements of a range of lines: pair, strings and modules in series, arrays (n,)."""
-        ways = self.ways[first:last]
-        line = np.repeat(np.arange(first, last), ways)
-        nth = np.arange(len(line)) - np.repeat(np.cumsum(ways) - ways, ways)
-        return self.pair[line], self.from_strings[line] + nth, self.in_series[line]
+        ``weight`` (lines,) counts in the place of the arrangements where it is given.
+        """
+        ends = np.append(np.flatnonzero(np.diff(self.pair)) + 1, len(self.pair))
+        before = np.append(0, np.cumsum(self.ways if weight is None else weight))
+        first = 0
+        while first < len(self.pair) or first == 0:
+            # The first end of a pair at which the size is reached.
+            k = int(np.searchsorted(before[ends], before[first] + size))
+            end = int(ends[min(k, len(ends) - 1)])
+            yield self.take(slice(first, end))
+            if end == first:
+                return
+            first = end
+
+    def take(self, lines: slice | np.ndarray) -> Expansion:
+        """Some lines; the sizes of the pairs stay."""
+        return Expansion(*(a[lines] for a in (self.pair, self.in_series, self.from_strings, self.ways)), self.sizes)
+
+    def options(self) -> tuple[np.ndarray, np.ndarray]:
+        """The line and the strings of each arrangement, arrays (n,)."""
+        line = np.repeat(np.arange(len(self.ways)), self.ways)
+        nth = np.arange(len(line)) - np.repeat(np.cumsum(self.ways) - self.ways, self.ways)
+        return line, self.from_strings[line] + nth
 
 
 def expand(limits: PairLimits, max_strings: np.ndarray) -> Expansion:

@@ -35,6 +35,20 @@ class Bests:
     rows: np.ndarray
 
 
+@dataclass(frozen=True, slots=True, eq=False)
+class Takers:
+    """The inverters of a sweep: those that differ as columns, and which of them each one is, shape (n,)."""
+
+    distinct: InverterColumns
+    of: np.ndarray
+
+    @classmethod
+    def of_records(cls, inverters: Sequence[Inverter]) -> Takers:
+        """Of a list of inverters."""
+        of, firsts = _twins(inverters)
+        return cls(InverterColumns.of([inverters[k] for k in firsts]), of)
+
+
 def years_of(modules: Sequence[Module], plane: PlaneYear, dc_loss_pct: float) -> ModuleYear:
     """Years of several modules on one condensed plane, shape (modules, classes); NaN where there is no model."""
     year = module_years(diodes_of(modules), plane, dc_loss_pct)
@@ -46,7 +60,7 @@ def years_of(modules: Sequence[Module], plane: PlaneYear, dc_loss_pct: float) ->
 
 def bests(
     modules: Sequence[Module],
-    inverters: InverterColumns,
+    inverters: Takers,
     request: Request,
     plane: PlaneYear | None,
     dc_loss_pct: float,
@@ -67,9 +81,8 @@ def bests(
     """
     request = replace(request, every=False)
     module_of, distinct_modules = _twins(modules)
-    inverter_of, distinct_inverters = _twins(inverters.records)
     modules = [modules[k] for k in distinct_modules]
-    columns = InverterColumns.of([inverters.records[k] for k in distinct_inverters])
+    columns = inverters.distinct
     year = None if plane is None else years_of(modules, plane, dc_loss_pct)
     points = design_points(modules, request.site, request.rules, hourly)
     search = Search(tuple(modules), columns, request, points, year)
@@ -92,7 +105,7 @@ def bests(
             best = search.best(m, i, search.space(m, i))
             if best is not None:
                 add(best)
-    return Bests(join(tables), rows[module_of[:, None], inverter_of[None, :]])
+    return Bests(join(tables), rows[module_of[:, None], inverters.of[None, :]])
 
 
 def _twins(records: Sequence[Module] | Sequence[Inverter]) -> tuple[np.ndarray, list[int]]:

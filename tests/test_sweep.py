@@ -17,10 +17,10 @@ import pytest
 from catalog.cec import read_cec_inverters, read_cec_modules
 from catalog.records import Inputs, Inverter, Module, Site
 from matcher import shortlist
-from matcher.columns import InverterColumns
 from matcher.fit import Request, fit
 from matcher.moduleyear import ModuleYear, PlaneYear, condense_plane, plane_year
-from matcher.sweep import bests, years_of
+from matcher.singles import expand
+from matcher.sweep import Takers, bests, years_of
 from matcher.weather import clear_sky_weather, read_weather
 from random_records import random_inverter, random_module
 
@@ -77,7 +77,7 @@ def best_by_going_through_all(module: Module, inverter: Inverter, request: Reque
 )
 def test_best_of_every_pair_is_the_first_of_all_its_options(plane, modules, inverters, cap, ratio, weather):
     request = Request(SITE, ratio=ratio, clip_cap_pct=cap)
-    found = bests(modules, InverterColumns.of(inverters), request, plane if weather else None, 2.0)
+    found = bests(modules, Takers.of_records(inverters), request, plane if weather else None, 2.0)
     years = years_of(modules, plane, 2.0)
     rng = np.random.default_rng(5)
     compared = 0
@@ -103,13 +103,16 @@ def test_best_of_every_pair_is_the_first_of_all_its_options(plane, modules, inve
 def test_few_options_are_worked_out_and_estimates_are_near(plane, modules, inverters, monkeypatch):
     # What makes the sweep quick: the losses of few options are worked out, and estimates do not call for more.
     asked = []
-    monkeypatch.setattr("matcher.search.candidates", lambda *a: asked.append((len(a[0]), found := shortlist.candidates(*a))) or found)
+    monkeypatch.setattr("matcher.singlepairs.candidates", lambda *a: asked.append((len(a[0]), found := shortlist.candidates(*a))) or found)
+    single = []
+    monkeypatch.setattr("matcher.search.expand", lambda *a: single.append(found := expand(*a)) or found)
     plain = [i for i in inverters[::9] if i.Pso is not None]
-    columns = InverterColumns.of(plain)
+    columns = Takers.of_records(plain)
     found = bests(modules[:12], columns, Request(SITE), plane, 2.0)
-    options, kept = sum(n for n, _ in asked), sum(len(k) for _, k in asked)
+    options = sum(int(e.sizes.sum()) for e in single)
+    near, kept = sum(n for n, _ in asked), sum(len(k) for _, k in asked)
     pairs = int((found.rows >= 0).sum())
-    assert options > 20 * pairs and kept < 2.5 * pairs
+    assert options > 20 * pairs and near < options / 3 and kept < 2.5 * pairs
 
 
 def test_estimate_of_clipping_is_within_a_quarter_of_its_margin(modules):
@@ -122,10 +125,12 @@ def test_estimate_of_clipping_is_within_a_quarter_of_its_margin(modules):
         found = fit([module], plain, Request(SITE, every=True), year)
         t = found.table
         near = t.take(np.flatnonzero((t.clipping_pct > 1) & (t.clipping_pct < 3)))
-        estimated = shortlist.estimate(
+        in_series, strings = near.in_series[:, 0], near.strings[:, 0]
+        estimates = shortlist.Estimates.of(
             shortlist.Heads.of(year, 2.0), found.search.inverters, np.zeros(len(near), dtype=np.int64), near.inverter,
-            near.in_series[:, 0], np.arange(len(near)), near.strings[:, 0],
+            in_series, strings * in_series,
         )  # fmt: skip
+        estimated = estimates.loss_pct(np.arange(len(near)), strings)
         assert len(near) > 20
         assert np.max(np.abs(estimated - near.clipping_pct) / shortlist.margin(estimated)) < 0.25
 
@@ -136,7 +141,7 @@ def test_random_pairs_with_several_trackers(plane):
         module = random_module(rng)
         inverter = random_inverter(rng, module, SITE)
         request = Request(SITE, combiner=rng.random() < 0.2)
-        found = bests([module], InverterColumns.of([inverter]), request, None, 2.0)
+        found = bests([module], Takers.of_records([inverter]), request, None, 2.0)
         try:
             expected = best_by_going_through_all(module, inverter, request, None)
         except Exception:
