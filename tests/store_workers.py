@@ -1,4 +1,4 @@
-"""Processes that read and write one catalog at once, or are killed while they write."""
+"""What tests of the store share: a refusal to open, and processes that use one catalog at once, or are killed."""
 
 from __future__ import annotations
 
@@ -12,6 +12,7 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 
+import pytest
 from catalog_records import INVERTER, MODULE, REV_C, TABLE_2024, TWO_GROUPS
 
 from catalog.errors import CatalogError
@@ -220,3 +221,12 @@ def _load(location: str, until: float) -> tuple[int, int]:
             loads += 1
             time.sleep(0.1)
     return loads, 0
+
+
+def refusal(path: str | Path, **how: bool) -> str:
+    """The line with which a catalog is not opened."""
+    with pytest.raises(CatalogError) as refused, Catalog.open(path, **how):
+        pass
+    line = str(refused.value)
+    assert "\n" not in line
+    return line
