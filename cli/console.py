@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import sys
-from collections.abc import Iterable, Sequence
+import time
+from collections.abc import Callable, Iterable, Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
@@ -106,6 +108,30 @@ def page_lines() -> int:
     import shutil
 
     return max(shutil.get_terminal_size().lines, _LEAST_PAGE) - 1 if sys.stdout.isatty() else _PAGE
+
+
+@contextmanager
+def on_terminal(done_word: str, things: str) -> Iterator[Callable[[int, int], None]]:
+    """Progress of a long task, as one line that is written anew and goes when it is over; silent in a pipe."""
+    if not sys.stderr.isatty():
+        yield lambda done, of: None
+        return
+    begin = last = time.monotonic()
+
+    def progress(done: int, of: int) -> None:
+        nonlocal last
+        now = time.monotonic()
+        if now - last >= 0.5:
+            last = now
+            left = (now - begin) * (of - done) / done
+            line = f"{done_word} {done:,} of {of:,} {things}, about {left:,.0f} s left"
+            print(f"\r{line:<70}", end="", file=sys.stderr, flush=True)
+
+    try:
+        yield progress
+    finally:
+        if last > begin:
+            print(f"\r{'':<70}\r", end="", file=sys.stderr, flush=True)
 
 
 def print_json(document: Any) -> None:

@@ -94,7 +94,7 @@ def _answer(catalog: Catalog, path: Path) -> None:
     from cli import fit_screen
     from cli.asking import request_of
     from cli.choosing import choose_module
-    from cli.console import say
+    from cli.console import paragraph
     from cli.years import site_year
     from matcher.fit import fit as search
 
@@ -107,22 +107,21 @@ def _answer(catalog: Catalog, path: Path) -> None:
 
     shelf = _shelf(catalog)
     left = shelf[MODULE]
-    say(
-        f"The demo: Loam & Lantern, an invented distributor, has {len(catalog.names('module'))} types of"
-        f" modules and {len(inverters)} of inverters. {left.quantity} {module.name} are left ({left.place}),"
-        f" and a customer at {site.name} would take {COUNT} of them. The buyer asks:"
-    )
-    say()
-    options = fit_screen.show_options(found, year, limit=10)
-    say()
-    say(_in_short(found, options, shelf))
-    say()
-    fit_screen.checks_table(found, options[0])
-    _say_misses(found)
-    say()
-    fit_screen.show_grounds(found, year)
-    say()
-    _say_next(path)
+    options = list(found.options(10))
+    blocks = [
+        paragraph(
+            f"The demo: Loam & Lantern, an invented distributor, has {len(catalog.names('module'))} types of"
+            f" modules and {len(inverters)} of inverters. {left.quantity} {module.name} are left ({left.place}),"
+            f" and a customer at {site.name} would take {COUNT} of them. The buyer asks:"
+        ),
+        paragraph(fit_screen.question(found)),
+        *fit_screen.options_blocks(found, year, options),
+        paragraph(_in_short(found, options, shelf)),
+        [*fit_screen.checks_lines(found, options[0]), *_misses(found)],
+        fit_screen.grounds_lines(found, year),
+        _next(path),
+    ]
+    print("\n".join(fit_screen.joined(blocks)))
 
 
 def _shelf(catalog: Catalog) -> dict[str, StockItem]:
@@ -162,25 +161,34 @@ def _ordered(found: Fit, option: Option, shelf: Mapping[str, StockItem]) -> str:
     return f"#{option.rank}, {option.units} x {_name(found, option)} ({price}, {lot.quantity} on the shelf)"
 
 
-def _say_misses(found: Fit) -> None:
+def _misses(found: Fit) -> list[str]:
     """Why the others are not in the list: the nearest that a rating stops."""
-    from cli.console import say
+    from cli.console import paragraph
 
     stopped = [(found.inverters[k].name, r) for k, r in found.rejections() if r.failed[0] != "ratio-window"]
-    for name, reason in stopped[:1]:
-        say(f"Not in the list, for example: {name}, stopped by {', '.join(reason.failed)}: {reason.nearest}.")
+    return [
+        line
+        for name, reason in stopped[:1]
+        for line in paragraph(
+            f"Not in the list, for example: {name}, stopped by {', '.join(reason.failed)}: {reason.nearest}."
+        )
+    ]
 
 
-def _say_next(path: Path) -> None:
-    """Commands to go on with, ready to be copied: not wrapped."""
-    from cli.console import say
+def _next(path: Path) -> list[str]:
+    """Commands to go on with, ready to be copied: folded as a shell understands it."""
+    from cli.console import WIDTH, paragraph
 
-    where = f'--catalog "{path}"'
-    say("Go on from here; 'ferrule sheet load cec' loads the public tables into a catalog of your own:")
-    for line in (
-        f'ferrule fit -m "klassik 270p" --site "{SITE}" --count {COUNT} --units {UNITS} --in-stock --by cost {where}',
-        f'ferrule stock grid --site "{SITE}" {where}',
-        f'ferrule fit -m "klassik 270p" -i "viola 5" --low -12 --high 37 {where}',
-        f'ferrule sheet show "old faithful 4.6" {where}',
-    ):
-        print(f"  {line}")
+    words = "Go on from here; 'ferrule sheet load cec' loads the public tables into a catalog of your own:"
+    commands = (
+        (f'ferrule fit -m "klassik 270p" --count {COUNT} --units {UNITS} --site "{SITE}"', "--in-stock --by cost"),
+        (f'ferrule stock grid --site "{SITE}"', ""),
+        (f'ferrule fit -m "klassik 270p" -i "viola 5" --site "{SITE}"', ""),
+        ('ferrule sheet show "old faithful 4.6"', ""),
+    )
+    lines = paragraph(words)
+    for first, rest in commands:
+        more = f'{rest} --catalog "{path}"'.strip()
+        whole = f"  {first} {more}"
+        lines += [whole] if len(whole) <= WIDTH else [f"  {first} \\", f"    {more}"]
+    return lines

@@ -16,6 +16,9 @@ if TYPE_CHECKING:
 #: Nowhere on Earth is the air colder (Vostok, 1983: -89.2 degC).
 COLDEST_ON_EARTH_C = -90.0
 
+#: Stands for an end of the climate window that no place on Earth reaches.
+NO_LIMIT = "no limit"
+
 #: Stands for the cold end of the climate window where the cold voltage comes from hourly weather.
 FROM_HOURS = "file"
 
@@ -75,7 +78,7 @@ def confirm_line(option: Option) -> str:
 
 
 def holds_from(option: Option) -> float | str | None:
-    """Coldest air temperature at which the option holds [degC]; "any" where no place on Earth is colder.
+    """Coldest air temperature at which the option holds [degC]; `NO_LIMIT` where no place on Earth is colder.
 
     ``None`` while a voltage maximum is to be confirmed: what is not known bounds it. `FROM_HOURS` where the
     cold voltage is that of the hours of a weather file, which no single temperature stands for.
@@ -84,20 +87,20 @@ def holds_from(option: Option) -> float | str | None:
         return None
     if option.cold_by_hours:
         return FROM_HOURS
-    return "any" if option.coldest_c is None or option.coldest_c < COLDEST_ON_EARTH_C else option.coldest_c
+    return NO_LIMIT if option.coldest_c is None or option.coldest_c < COLDEST_ON_EARTH_C else option.coldest_c
 
 
 def holds_to(option: Option) -> float | str | None:
-    """Hottest air temperature at which the option holds [degC], "any", or ``None`` as for `holds_from`."""
+    """Hottest air temperature at which the option holds [degC], `NO_LIMIT`, or ``None`` as for `holds_from`."""
     if any(c.field == "voc_coef_pct" for c in option.confirm):
         return None
-    return "any" if option.hottest_c is None else option.hottest_c
+    return NO_LIMIT if option.hottest_c is None else option.hottest_c
 
 
 def climate_words(option: Option, low_c: float, high_c: float) -> str:
     """The climate window in words; where a value to confirm bounds it, the design temperatures stand in."""
     low, high = holds_from(option), holds_to(option)
-    if low == high == "any":
+    if low == high == NO_LIMIT:
         return "any temperature"
     waits = ", once confirmed" if low is None or high is None else ""
     if low == FROM_HOURS:

@@ -28,6 +28,7 @@ if TYPE_CHECKING:
     from matcher.energy import Enough
     from matcher.moduleyear import PlaneYear
     from matcher.request import Request
+    from matcher.shelf import Shelf
 
 NOTHING_FITS = 1
 
@@ -47,7 +48,7 @@ def fit(
     every: Annotated[bool, typer.Option("--every", help="Every arrangement, not the best one of each record.")] = False,
     checks: Annotated[bool, typer.Option("--checks", help="Show every check of the options shown (and put them into documents).")] = False,
     why: Annotated[bool, typer.Option("--why", help="Say of the records without option what stops them and what would change that.")] = False,
-    limit: Annotated[int, typer.Option(metavar="N", min=1, help="Options shown on screen.")] = 20,
+    limit: Annotated[int | None, typer.Option(metavar="N", min=1, help="Options shown on screen; without it as many as the screen holds, at most 20.")] = None,
     json: Annotated[bool, typer.Option("--json", help="Print the document ferrule.fit/1 instead of tables.")] = False,
     out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file; its ending decides the form: .csv, .xlsx, .json or .html.")] = None,
     site: SiteOption = None,
@@ -112,13 +113,13 @@ def fit(
     from dataclasses import replace
 
     from cli import fit_files, fit_screen
-    from cli.fit_growth import add_growth, show_growth
+    from cli.fit_growth import add_growth, growth_lines, show_growth
     from cli.years import cold_plane
     from matcher.fit import fit as search
 
     plane = cold_plane(request)
     if energy is not None:
-        enough = _enough(request, modules, inverters, year, energy, plane)
+        enough = _enough(request, modules, inverters, year, energy, plane, stock.shelf if stock else None)
         request = replace(request, counts=(enough.modules, enough.modules))
         if stock is not None:
             stock.check_count(request)
@@ -136,15 +137,18 @@ def fit(
     if json:
         fit_files.print_document(found, year.weather, with_checks=checks or not request.every, why=why, extra=extra)
     elif out is None or fit_screen.on_terminal():
-        if energy is not None:
-            from cli.fit_energy import show_energy
+        before = [] if stock is None else list(stock.notes)
+        if by_count and limit is None and not checks:
+            show_growth(found, year, worth, before)
+        else:
+            if energy is not None:
+                from cli.fit_energy import energy_lines
 
-            show_energy(found, year, energy, enough)
-        if by_count:
-            show_growth(found, worth)
-        if stock is not None:
-            fit_screen.say_lines(stock.notes)
-        fit_screen.show(found, year, limit=limit, checks=checks, why=why)
+                before += energy_lines(found, year, energy, enough)
+            if by_count:
+                print("\n".join([*growth_lines(found, worth), ""]))
+            wanted = None if energy is None else energy.yearly_kwh
+            fit_screen.show(found, year, limit=limit, checks=checks, why=why, before=before, wanted_kwh=wanted)
     return 0 if found.totals.records_with_option else NOTHING_FITS
 
 
@@ -181,13 +185,14 @@ def _enough(
     year: SiteYear,
     energy: EnergyWanted,
     plane: PlaneYear | None,
+    shelf: Shelf | None,
 ) -> Enough:
     """The smallest module count that yields the energy."""
     from matcher.energy import fewest_modules
 
     if year.year is None:
         raise CatalogError(f"an energy needs weather: {year.why_not}, or --sun-hours with --module")
-    return fewest_modules(modules, inverters, request, year.year, energy.yearly_kwh, plane)
+    return fewest_modules(modules, inverters, request, year.year, energy.yearly_kwh, plane, shelf)
 
 
 def _records(

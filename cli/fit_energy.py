@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import asdict
 from typing import TYPE_CHECKING, Any
 
-from cli.console import say
+from cli.console import counted
 from cli.documents import inverter_key, module_key
 from cli.fit_screen import wiring
 
@@ -13,26 +13,40 @@ if TYPE_CHECKING:
     from cli.wanted import EnergyWanted
     from cli.years import SiteYear
     from matcher.energy import Chain, Enough
-    from matcher.fit import Fit
+    from matcher.fit import Fit, Option
 
 
-def show_energy(fit: Fit, year: SiteYear, energy: EnergyWanted, enough: Enough) -> None:
-    """Print the module count, and the chain of the option that yields most with it."""
-    best, links = enough.best, _chain(fit, year, enough)
-    say(f"{energy.yearly_kwh:,.0f} kWh a year: {enough.modules:,} modules are the fewest that yield it.")
-    say(
-        f"Most with them: {best.yearly_kwh:,.0f} kWh, {fit.modules[best.module].name} as {wiring(best)} on"
-        f" {fit.inverters[best.inverter].name} ({best.verdict})."
-    )
+def energy_lines(fit: Fit, year: SiteYear, energy: EnergyWanted, enough: Enough) -> list[str]:
+    """The module count, whether what fits reaches the energy with it, and the chain of the option that yields most."""
+    best, proven, links = enough.best, enough.proven, _chain(fit, year, enough)
+    count = counted(enough.modules, "module")
+    fewest = "is the fewest that yields it" if enough.modules == 1 else "are the fewest that yield it"
+    said = f"{energy.yearly_kwh:,.0f} kWh a year: {count} {fewest}, {_named(fit, best)}."
+    if proven is None:
+        said += " It is to confirm, and nothing that fits yields so much."
+    elif proven.modules > best.modules:
+        said += (
+            f" It is to confirm; of what fits it takes {proven.modules:,}, {_named(fit, proven)}:"
+            f" --count {proven.modules} in place of the energy lists them."
+        )
+    elif best.verdict is not proven.verdict:
+        said += f" It is to confirm; of what fits with as many, {_named(fit, proven)}."
+    lines = [said]
     if links is not None:
         clipping = "not known" if links.clipping is None else f"{links.clipping:.1%}"
-        say(
+        lines.append(
             f"The chain: {links.irradiation_kwh_m2:,.0f} kWh/m2 on the array a year; module {links.module:.1%}, DC wiring"
             f" {links.dc_wiring:.1%}, inverter {links.inverter:.1%}, clipping {clipping}; their product, the system:"
             f" {links.system:.1%}."
         )
-    say("Options that follow have this count; one with less in the column kWh/year falls short.")
-    say()
+    return lines
+
+
+def _named(fit: Fit, o: Option) -> str:
+    return (
+        f"{fit.modules[o.module].name} as {wiring(o)} on {fit.inverters[o.inverter].name}"
+        f" ({o.yearly_kwh:,.0f} kWh, {o.verdict})"
+    )
 
 
 def add_energy(fit: Fit, year: SiteYear, energy: EnergyWanted, enough: Enough) -> dict[str, Any]:
@@ -42,12 +56,20 @@ def add_energy(fit: Fit, year: SiteYear, energy: EnergyWanted, enough: Enough) -
         "energy": {
             "wanted_kwh": energy.yearly_kwh,
             "modules": enough.modules,
-            "yearly_kwh": enough.best.yearly_kwh,
-            "module": module_key(fit, enough.best.module),
-            "inverter": inverter_key(fit, enough.best.inverter),
-            "label": enough.best.label,
+            **_entry(fit, enough.best),
+            "verdict": str(enough.best.verdict),
+            "fits": None if enough.proven is None else {"modules": enough.proven.modules, **_entry(fit, enough.proven)},
             "chain": None if links is None else asdict(links) | {"system": links.system},
         }
+    }
+
+
+def _entry(fit: Fit, o: Option) -> dict[str, Any]:
+    return {
+        "yearly_kwh": o.yearly_kwh,
+        "module": module_key(fit, o.module),
+        "inverter": inverter_key(fit, o.inverter),
+        "label": o.label,
     }
 
 

@@ -2,17 +2,18 @@
 
 from __future__ import annotations
 
+import math
 import sys
 from collections.abc import Iterator, Sequence
-from dataclasses import replace
 from itertools import groupby
 from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
-from cli.console import Column, number, print_table, say
-from cli.facts import assumptions, at_least, confirm_words, field_words, holds_from, holds_to, number_of_options, whole
-from cli.quoting import amend_command
-from matcher.checks import Check, Confirm, Verdict, face_mark
+from cli.console import Column, counted, number, page_lines, paragraph, table_lines
+from cli.facts import NO_LIMIT, assumptions, at_least, holds_from, holds_to, number_of_options, whole
+from cli.fit_confirm import amend_commands, confirm_lines, not_on_record
+from cli.fit_short import in_short
+from matcher.checks import Check, Verdict, face_mark
 
 if TYPE_CHECKING:
     from cli.years import SiteYear
@@ -26,60 +27,167 @@ def on_terminal() -> bool:
     return sys.stdout.isatty()
 
 
-def show(fit: Fit, year: SiteYear, *, limit: int, checks: bool, why: bool) -> None:
-    """Print the answer."""
-    options = show_options(fit, year, limit)
-    _amend_lines(fit, options)
-    if checks or fit.is_pair:
-        for option in options if checks else options[:1]:
-            say()
-            checks_table(fit, option)
-    if fit.is_pair and not options:
+#: Options on screen where nobody says how many; the height of the screen bounds them further.
+MOST = 20
+
+#: Options that a short answer shows in any case, where there are so many.
+LEAST = 8
+
+#: A short answer that is too long leaves these away, one after the other.
+_WHOLE, _NO_CHECKS, _RANGES, _TIGHT = range(4)
+
+#: Options that it shows where even then it is too long: names that take two lines.
+_FEWEST = 5
+
+
+def show(
+    fit: Fit, year: SiteYear, *, limit: int | None, checks: bool, why: bool, before: Sequence[str] = (),
+    wanted_kwh: float | None = None,
+) -> None:
+    """Print the answer: no more than a screen of it, unless a number of options, checks or reasons are asked for.
+
+    ``before`` are paragraphs that stand ahead of it; options are held against ``wanted_kwh`` a year.
+    """
+    options = list(fit.options(limit or MOST))
+    shown, level = len(options), _WHOLE
+    lines = _page(fit, year, options, shown, level, before, checks, why, wanted_kwh)
+    if limit is None and not checks and not why:
+        room = page_lines()
+        while len(lines) > room and (shown > _FEWEST or level < _TIGHT):
+            least = LEAST if shown > LEAST or level < _TIGHT else _FEWEST
+            if shown > least:
+                shown = max(least, shown - max(1, (len(lines) - room) // 2))
+            else:
+                shown, level = len(options), level + 1
+            lines = _page(fit, year, options, shown, level, before, checks, why, wanted_kwh)
+    print("\n".join(lines))
+
+
+def _page(
+    fit: Fit, year: SiteYear, options: Sequence[Option], number: int, level: int, before: Sequence[str],
+    checks: bool, why: bool, wanted_kwh: float | None,
+) -> list[str]:  # fmt: skip
+    """The lines of the answer with so many of the options."""
+    shown = options[:number]
+    blocks = [[line for text in before for line in paragraph(text)], paragraph(question(fit))]
+    if shown:
+        blocks += options_blocks(fit, year, shown, level, wanted_kwh)
+        blocks.append(paragraph(in_short(fit, options, brief=level >= _TIGHT)))
+    elif fit.is_pair:
         (_, reason), *_ = fit.rejections()
-        say(f"Stopped by {', '.join(reason.failed)}: {reason.nearest}.")
-    elif why:
-        _why_table(fit, limit)
-    elif not options:
-        say("--why says what stops each of them, and what would change that.")
-    say()
-    show_grounds(fit, year)
+        stopped = f"Stopped by {', '.join(reason.failed)}: {reason.nearest}."
+        blocks.append([*paragraph(answer(fit, ())), *paragraph(stopped)])
+    else:
+        said = [answer(fit, ()), *([] if why else nothing_fits(fit))]
+        blocks.append([line for text in said for line in paragraph(text)])
+    if checks:
+        blocks += [checks_lines(fit, o) for o in shown]
+    elif fit.is_pair and shown:
+        blocks.append(checks_lines(fit, shown[0]) if level < _NO_CHECKS else paragraph(checks_in_short(shown[0])))
+    if why and not fit.is_pair:
+        blocks.append(_why_lines(fit, number or MOST))
+    blocks.append(grounds_lines(fit, year))
+    return joined(blocks, blank=level < _TIGHT)
 
 
-def say_lines(lines: Sequence[str]) -> None:
-    """Print lines, and an empty one where there are any."""
-    for line in lines:
-        say(line)
-    if lines:
-        say()
+def options_blocks(
+    fit: Fit, year: SiteYear, options: Sequence[Option], level: int = 0, wanted_kwh: float | None = None
+) -> list[list[str]]:
+    """Answer and order, the options as a table for each verdict, and what to confirm of them."""
+    order = fit.order.rpartition("; ties")[0] if level >= _TIGHT else fit.order
+    tables = list(_options_tables(fit, options, year.year is not None, wanted_kwh))
+    if wanted_kwh is not None:
+        tables[-1] += paragraph(f"reaches %: of the {wanted_kwh:,.0f} kWh wanted; less than 100 falls short.")
+    tables[-1] += _see_more(fit, len(options))
+    # What waits for values is said twice more: above the table, and in short.
+    head = [*paragraph(answer(fit, () if level >= _TIGHT else options)), *paragraph(f"Order: {order}.")]
+    return [head, *tables, *_confirm_blocks(fit, options, level)]
 
 
-def show_options(fit: Fit, year: SiteYear, limit: int) -> list[Option]:
-    """Print question, answer, the first options and what to confirm of them; return these options."""
-    say(question(fit))
-    say()
-    options = list(fit.options(limit))
-    say(answer(fit, options))
-    if options:
-        say(f"Order: {fit.order}.")
-        _options_tables(fit, options, year.year is not None)
-        more = number_of_options(fit) - len(options)
-        if more > 0:
-            say(f"... and {more:,} more (--limit N shows more, --out FILE.csv holds all of them).")
-        _confirm_lines(fit, options)
-        _notes_line(options)
-    return options
+def joined(blocks: Sequence[Sequence[str]], blank: bool = True) -> list[str]:
+    """Blocks of lines one below the other, with an empty line between them or without."""
+    lines: list[str] = []
+    for block in blocks:
+        if any(block):
+            lines += [""] * (blank and bool(lines)) + list(block)
+    return lines
 
 
-def show_grounds(fit: Fit, year: SiteYear) -> None:
-    """Print what the answer rests on, and the cautions."""
-    for line in year.notes or (f"No clipping figure: {year.why_not}.",):
-        say(line)
+def _see_more(fit: Fit, shown: int) -> list[str]:
+    """How to see what is not shown."""
+    more = number_of_options(fit) - shown
+    if more <= 0:
+        return []
+    ways = [f"--limit {50 if shown < 50 else 10 * shown}", *([] if fit.request.every else ["--every"]), "--checks"]
+    return paragraph(f"... and {more:,} more ({', '.join(ways)} show more; --out FILE.csv holds all of them).")
+
+
+def _confirm_blocks(fit: Fit, options: Sequence[Option], level: int) -> list[list[str]]:
+    """What to confirm of the options, what else is not on record, and how to put it there."""
+    waiting = next((o for o in options if o.confirm), None)
+    confirm: list[str] = []
+    if waiting is not None:
+        texts = confirm_lines(fit, options, brief=level >= _RANGES)
+        each = "" if not any(" to " in text for text in texts) else " (--checks says what each needs)"
+        confirm = [f"To confirm on the datasheets before ordering{each}:"]
+        confirm += [line for text in texts for line in paragraph(text, indent=2)]
+    blocks, notes = [confirm], not_on_record(options)
+    if notes and level < _NO_CHECKS:
+        blocks.append(paragraph(notes))
+    if waiting is not None and level < _RANGES:
+        blocks[-1] += [f"What you have read goes on record by a command, here for #{waiting.rank}:"]
+        # Not wrapped as text: it is there to be copied.
+        blocks[-1] += [f"  {line}" for command in amend_commands(fit, waiting) for line in command.splitlines()]
+    return blocks
+
+
+def grounds_lines(fit: Fit, year: SiteYear) -> list[str]:
+    """What the answer rests on, and the cautions."""
+    grounds = list(year.notes or (f"No clipping figure: {year.why_not}.",))
     if year.year is not None and year.year.shows_clipping:
-        say(HOURLY_MEANS)
-    for line in assumptions(fit):
-        say(line)
-    for line in CAUTIONS:
-        say(line)
+        grounds.append(HOURLY_MEANS)
+    return paragraph(" ".join([*grounds, *assumptions(fit)])) + paragraph(" ".join(CAUTIONS))
+
+
+def nothing_fits(fit: Fit) -> list[str]:
+    """Why nothing fits, as far as it can be said at once."""
+    said = []
+    if fit.request.counts is not None:
+        said.append(_counts_that_go(fit))
+    elif int((~fit.found).sum()) <= _REASONS_AT_ONCE:
+        (k, reason), *_ = fit.rejections()
+        name = (fit.inverters if fit.lists_inverters else fit.modules)[k].name
+        stopped = f", stopped by {', '.join(reason.failed)}" if reason.failed else ""
+        said.append(f"The nearest is {name}{stopped}: {reason.nearest}.")
+    return [*said, "--why says what stops each of them, and what would change that."]
+
+
+#: Records whose reasons are gone through without being asked for.
+_REASONS_AT_ONCE = 100
+
+
+def _counts_that_go(fit: Fit) -> str:
+    """The module counts next to the asked ones that some record takes."""
+    from matcher.nearest_counts import nearest_counts
+
+    low, high = fit.request.ratio
+    window = f"inside the DC/AC ratios of {low:.2f} to {high:.2f}"
+    smaller, larger = nearest_counts(fit)
+    if smaller is None and larger is None:
+        return f"No module count at all goes {window}."
+    words = []
+    for found, what in ((smaller, "the most below"), (larger, "the fewest above")):
+        if found is not None:
+            name = (fit.inverters if fit.lists_inverters else fit.modules)[
+                found.inverter if fit.lists_inverters else found.module
+            ].name
+            units = f"{found.units:,} x " if found.units > 1 else ""
+            words.append(f"{counted(found.modules, 'module')} ({what}; {units}{name})")
+    if larger is None:
+        words[0] = words[0].replace("the most below", "the most that any takes")
+    if smaller is None:
+        words[0] = words[0].replace("the fewest above", "the fewest that any takes")
+    return f"What goes {window}: {' and '.join(words)}."
 
 
 def question(fit: Fit) -> str:
@@ -97,7 +205,7 @@ def question(fit: Fit) -> str:
     low, high = r.ratio
     count = ""
     if r.counts is not None:
-        count = f", {_span(r.counts)} modules"
+        count = f", {_span(r.counts)} module{'s' if r.counts != (1, 1) else ''}"
     if r.strings is not None:
         count = ", exactly the strings " + ", ".join(_strings(r))
     if r.several:
@@ -116,7 +224,7 @@ def _strings(request: Request) -> Iterator[str]:
 
 
 def _span(counts: tuple[int, int]) -> str:
-    return str(counts[0]) if counts[0] == counts[1] else f"{counts[0]} to {counts[1]}"
+    return f"{counts[0]:,}" if counts[0] == counts[1] else f"{counts[0]:,} to {counts[1]:,}"
 
 
 def answer(fit: Fit, options: Sequence[Option]) -> str:
@@ -137,13 +245,13 @@ def answer(fit: Fit, options: Sequence[Option]) -> str:
     return words
 
 
-def _options_tables(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
+def _options_tables(
+    fit: Fit, options: Sequence[Option], has_year: bool, wanted_kwh: float | None
+) -> Iterator[list[str]]:
     """One table per verdict, which is why the verdict needs no column."""
     for _, alike in groupby(options, key=lambda o: o.verdict):
         some = list(alike)
-        say()
-        say(_HEADINGS[some[0].verdict])
-        _options_table(fit, some, has_year)
+        yield [*paragraph(_HEADINGS[some[0].verdict]), *_options_table(fit, some, has_year, wanted_kwh)]
 
 
 _HEADINGS = {
@@ -152,7 +260,7 @@ _HEADINGS = {
 }
 
 
-def _options_table(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
+def _options_table(fit: Fit, options: Sequence[Option], has_year: bool, wanted_kwh: float | None) -> list[str]:
     shelf = fit.search.shelf
     columns = [Column("#", number=True)]
     if not fit.is_pair:
@@ -162,6 +270,8 @@ def _options_table(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
     columns += [Column("wiring", fold=True), Column("mod.", number=True), Column("DC/AC", number=True)]
     if has_year:
         columns += [Column("clip %", number=True), Column("kWh/year", number=True)]
+    if wanted_kwh is not None:
+        columns += [Column("reaches %", number=True)]
     if shelf is not None and shelf.currency is not None:
         columns += [Column(f"cost {shelf.currency}", number=True)]
     columns += [Column("holds at degC", number=True)]
@@ -170,19 +280,21 @@ def _options_table(fit: Fit, options: Sequence[Option], has_year: bool) -> None:
         row = [str(o.rank)]
         if not fit.is_pair:
             row += _listed(fit, o)
-        row += [wiring(o), str(o.modules), f"{o.dc_ac_ratio:.2f}"]
+        row += [wiring(o), f"{o.modules:,}", f"{o.dc_ac_ratio:.2f}"]
         if has_year:
             row += [number(o.clipping_loss_pct, 2), number(o.yearly_kwh)]
+        if wanted_kwh is not None:
+            row += ["" if o.yearly_kwh is None else f"{math.floor(o.yearly_kwh / wanted_kwh * 100.0 + 1e-6):,}"]
         if shelf is not None and shelf.currency is not None:
             row += [number(o.cost)]
         rows.append([*row, climate_window(o)])
-    print_table(columns, rows)
+    return table_lines(columns, rows)
 
 
 def _listed(fit: Fit, option: Option) -> list[str]:
     if fit.lists_inverters:
         inverter = fit.inverters[option.inverter]
-        return [inverter.name, f"{inverter.ac_power_w / 1000:.2f}"]
+        return [inverter.name, f"{inverter.ac_power_w / 1000:,.2f}"]
     module = fit.modules[option.module]
     return [module.name, f"{module.pmax_w:.0f}"]
 
@@ -206,81 +318,35 @@ def _unit_wiring(unit: Unit) -> str:
 def climate_window(option: Option) -> str:
     """Coldest to hottest air temperature at which the option holds.
 
-    ``any`` where nothing bounds it; ``?`` where a value that is to be confirmed would; whole degrees on the
+    "no limit" where nothing bounds it; ``?`` where a value that is to be confirmed would; whole degrees on the
     safe side.
     """
     low, high = holds_from(option), holds_to(option)
+    if low == high == NO_LIMIT:
+        return NO_LIMIT
     return f"{'?' if low is None else whole(low, cold=True)} to {'?' if high is None else whole(high, cold=False)}"
 
 
-def _confirm_lines(fit: Fit, options: Sequence[Option]) -> None:
-    waiting = [o for o in options if o.confirm]
-    if not waiting:
-        return
-    say()
-    say("To confirm on the datasheets before ordering:")
-    shared = _shared(fit, waiting)
-    for line in shared:
-        say(line, indent=2)
-    own = "inverter" if fit.lists_inverters else "module"
-    for o in waiting[:5]:
-        words = [confirm_words(c) for c in o.confirm if c.record == own]
-        if words:
-            say(f"#{o.rank}  {own}: {'; '.join(words)}", indent=2)
-    if len(waiting) > 5:
-        say("(the document holds them for every option: --json)", indent=2)
-
-
-def _notes_line(options: Sequence[Option]) -> None:
-    """Say what is not on record of the checks that stop nothing, where the shown options leave any open."""
-    fields = dict.fromkeys(
-        field_words(replace(c.confirm, inputs=None))
-        for o in options
-        for c in o.checks
-        if not c.stop and c.confirm is not None
+def checks_lines(fit: Fit, option: Option) -> list[str]:
+    """Every check of one option as a table, below the option's name and what it costs."""
+    cost = "" if option.cost is None or fit.search.shelf is None else f", {option.cost:,.0f} {fit.search.shelf.currency}"
+    title = (
+        f"Checks of #{option.rank}: {fit.modules[option.module].name}, {wiring(option)} on"
+        f" {fit.inverters[option.inverter].name}{cost}"
     )
-    if fields:
-        say()
-        say(f"Not on record, and no reason to stop: {'; '.join(fields)} (--checks shows what rests on it).")
-
-
-def _amend_lines(fit: Fit, options: Sequence[Option]) -> None:
-    """Print the commands that put the values on record which the first waiting option asks for."""
-    waiting = next((o for o in options if o.confirm), None)
-    if waiting is None:
-        return
-    say(f"What you have read goes on record by a command, here for #{waiting.rank}:")
-    for command in _amend_commands(fit, waiting):
-        # Not wrapped as text: it is there to be copied.
-        print(f"  {command}")
-
-
-def _amend_commands(fit: Fit, option: Option) -> list[str]:
-    """Commands that enter what an option waits for, one per record."""
-    records = {"module": fit.modules[option.module], "inverter": fit.inverters[option.inverter]}
-    asked = {kind: [c for c in option.confirm if c.record == kind] for kind in records}
-    return [amend_command(records[kind], *some) for kind, some in asked.items() if some]
-
-
-def _shared(fit: Fit, waiting: Sequence[Option]) -> list[str]:
-    """What the record that all options share is asked for: the largest value of each field."""
-    other = "module" if fit.lists_inverters else "inverter"
-    need: dict[str, Confirm] = {}
-    for o in waiting:
-        for c in o.confirm:
-            if c.record == other and (c.field not in need or (c.at_least or 0) > (need[c.field].at_least or 0)):
-                need[c.field] = c
-    name = (fit.modules if other == "module" else fit.inverters)[0].name
-    return [f"{name}: {confirm_words(c)} (for all of the above)" for c in need.values()]
-
-
-def checks_table(fit: Fit, option: Option) -> None:
-    """Print every check of one option."""
-    say(f"Checks of #{option.rank}: {fit.modules[option.module].name}, {option.label} on"
-        f" {fit.inverters[option.inverter].name}")  # fmt: skip
     columns = [Column("check"), Column("value", number=True), Column("limit", number=True), Column("unit"),
                Column("margin %", number=True), Column("verdict"), Column("rule", fold=True)]  # fmt: skip
-    print_table(columns, [_check_row(c) for c in option.checks])
+    return [*paragraph(title), *table_lines(columns, [_check_row(c) for c in option.checks])]
+
+
+def checks_in_short(option: Option) -> str:
+    """The checks of one option as a sentence: the one that is nearest to its limit."""
+    stops = [c for c in option.checks if c.stop and c.margin_pct is not None and c.unit != "1"]
+    if not stops:
+        return ""
+    c = min(stops, key=lambda c: c.margin_pct or 0.0)
+    value, limit, unit = _check_row(c)[1:4]
+    return f"#{option.rank} is nearest to its limit in {c.check}: {value} of {limit} {unit} ({c.margin_pct:.1f} % left); --checks shows all."
 
 
 def _check_row(c: Check) -> list[str]:
@@ -292,13 +358,13 @@ def _check_row(c: Check) -> list[str]:
     return [c.check, number(c.value, digits), number(c.limit, digits), unit, number(c.margin_pct, 1), str(c.verdict), rule]
 
 
-def _why_table(fit: Fit, limit: int) -> None:
+def _why_lines(fit: Fit, limit: int) -> list[str]:
     missed = fit.rejections()
     if not missed:
-        say("Every record considered has an option.")
-        return
+        return ["Every record considered has an option."]
     records = fit.inverters if fit.lists_inverters else fit.modules
-    say(f"Without option: {len(missed):,}; the nearest misses first.")
     columns = [Column("inverter" if fit.lists_inverters else "module", fold=True), Column("stopped by", fold=True),
                Column("nearest", fold=True)]  # fmt: skip
-    print_table(columns, [[records[k].name, ", ".join(r.failed), r.nearest] for k, r in missed[:limit]])
+    rows = [[records[k].name, ", ".join(r.failed), r.nearest] for k, r in missed[:limit]]
+    first = f", {limit:,} of them shown (--limit)" if limit < len(missed) else ""
+    return [f"Without option: {len(missed):,}{first}; the nearest misses first.", *table_lines(columns, rows)]

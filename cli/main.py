@@ -58,7 +58,7 @@ def ferrule(
 
 
 def _register() -> None:
-    from cli import demo, fit, sheet, site, stock, swap, sweep, vet
+    from cli import demo, fit, rules, sheet, site, stock, swap, sweep, vet
 
     app.command("fit")(fit.fit)
     app.command("vet")(vet.vet)
@@ -67,6 +67,7 @@ def _register() -> None:
     app.add_typer(stock.app, name="stock")
     app.add_typer(site.app, name="site")
     app.command("sweep")(sweep.sweep)
+    app.command("rules")(rules.rules)
     app.command("demo")(demo.demo)
 
 

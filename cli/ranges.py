@@ -1,8 +1,33 @@
-"""Ranges as they are written on the command line: ``60``, ``56..64``, ``0.9..1.4``."""
+"""Numbers and ranges as they are written on the command line: ``-12,5``, ``60``, ``56..64``, ``0.9..1.4``."""
 
 from __future__ import annotations
 
+import re
+
 from catalog.errors import CatalogError
+
+
+#: A number with a decimal point or comma, and behind it what may say the unit.
+_DEGREES = re.compile(r"([+\-\u2212]?(?:\d+(?:[.,]\d*)?|[.,]\d+)|nan)\s*(?:deg|\u00b0)?\s*([CFK]?)", re.IGNORECASE)
+
+
+def degrees(text: str, option: str) -> float:
+    """A temperature [degC], with a decimal point or comma.
+
+    Raises
+    ------
+    CatalogError
+        Where it is none, or in another unit: with what to write.
+    """
+    read = _DEGREES.fullmatch(text.strip())
+    if read is None:
+        raise CatalogError(f"{option} {text}: write the temperature in degC as a number, such as -12 or -12.5")
+    value, unit = float(read[1].replace(",", ".").replace("\u2212", "-")), read[2].upper()
+    if unit in ("F", "K"):
+        celsius = (value - 32.0) / 1.8 if unit == "F" else value - 273.15
+        name = "degF" if unit == "F" else "K"
+        raise CatalogError(f"{option} {text}: temperatures are in degC; {value:g} {name} is {option} {celsius:.1f}")
+    return value
 
 
 def number_range(text: str, option: str) -> tuple[float, float]:

@@ -9,15 +9,26 @@ import typer
 
 from catalog.errors import CatalogError
 from catalog.records import Site
+from cli.ranges import degrees
 
 if TYPE_CHECKING:
     from catalog.store import Catalog
 
 PANEL = "Site"
 
+
+def _low(text: str) -> float:
+    return degrees(text, "--low")
+
+
+def _high(text: str) -> float:
+    return degrees(text, "--high")
+
+
+
 SiteOption = Annotated[str | None, typer.Option("--site", metavar="NAME", help="A site that is kept (see 'ferrule site list').", rich_help_panel=PANEL)]  # noqa: E501
-LowOption = Annotated[float | None, typer.Option("--low", metavar="DEGC", help="Design low ambient temperature [degC].", rich_help_panel=PANEL)]  # noqa: E501
-HighOption = Annotated[float | None, typer.Option("--high", metavar="DEGC", help="Design high ambient temperature [degC].", rich_help_panel=PANEL)]  # noqa: E501
+LowOption = Annotated[float | None, typer.Option("--low", parser=_low, metavar="DEGC", help="Design low ambient temperature [degC].", rich_help_panel=PANEL)]  # noqa: E501
+HighOption = Annotated[float | None, typer.Option("--high", parser=_high, metavar="DEGC", help="Design high ambient temperature [degC].", rich_help_panel=PANEL)]  # noqa: E501
 MountingOption = Annotated[str | None, typer.Option("--mounting", metavar="HOW", help="open-rack, gap-roof, near-roof or integrated.", rich_help_panel=PANEL)]  # noqa: E501
 CapOption = Annotated[float | None, typer.Option("--voltage-cap", metavar="V", help="Cap on the DC voltage of the site [V].", rich_help_panel=PANEL)]  # noqa: E501
 RearOption = Annotated[float | None, typer.Option("--rear-share", metavar="SHARE", help="Rear irradiance of bifacial modules as a share of the front.", rich_help_panel=PANEL)]  # noqa: E501

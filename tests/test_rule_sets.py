@@ -22,7 +22,7 @@ from matcher.electrical import design_points
 from matcher.errors import MatcherError
 from matcher.fit import Request, fit
 from matcher.moduleyear import PlaneYear, plane_year
-from matcher.rules import IEC_62548, NEC_690, RuleSet
+from matcher.rules import IEC_62548, NEC_690, PRACTICE, RuleSet
 from matcher.weather import read_weather
 from random_records import cec_module, cec_rows
 
@@ -114,10 +114,30 @@ def test_each_wrong_entry_is_one_line_that_names_the_file(tmp_path, small_catalo
 def test_files_that_cannot_be_read(tmp_path, small_catalog, ferrule):
     (tmp_path / "raw.toml").write_bytes(b'name = "\xff"')
     (tmp_path / "folder.toml").mkdir()
-    for name, words in (("raw.toml", "no TOML file"), ("folder.toml", "directory"), ("none.toml", "No such file")):
+    for name, words in (("raw.toml", "no TOML file"), ("folder.toml", "directory"), ("none.toml", "there is no such file; name one")):
         ran = ferrule("fit", "-m", "AF6K-270P", "--low", "-12", "--high", "38", "--rules", tmp_path / name)
         assert ran.status == 2 and words in ran.err and ran.err.count("\n") == 1
     assert "no such rule set" in ferrule("fit", "-m", "AF6K-270P", "--low", "-1", "--high", "3", "--rules", "nec").err
+
+
+def test_all_faults_of_a_file_at_once(tmp_path):
+    text = 'name = "nec-690"\nbased_on = "x"\nfactor = 2\nisc_factor = 9\nfuse_low = 3\nfuse_high = 2\n[clauses]\nodd = "x"'
+    with pytest.raises(CatalogError) as refused:
+        read_rule_set(written(tmp_path, text))
+    for words in ("'factor' is not known", "name of its own", "based_on must", "isc_factor must", "fuse_low 3 is above", "'odd'"):
+        assert words in str(refused.value)
+
+
+@pytest.mark.parametrize("base", [IEC_62548, NEC_690], ids=lambda r: r.name)
+def test_a_printed_rule_set_is_a_file_to_start_from(tmp_path, ferrule, base):
+    printed = ferrule("rules", base.name).out
+    assert read_rule_set(written(tmp_path, printed)) == replace(base, name="my-rules")
+    # With every line in force it says the same, but for the cap, of which it shows the form only.
+    whole = "\n".join(line.removeprefix("# ") for line in printed.splitlines()[1:])
+    read = read_rule_set(written(tmp_path, whole))
+    assert replace(read, voltage_cap_v=None, clauses={}) == replace(base, name="my-rules", clauses={})
+    assert all(read.clause(check) == base.clause(check) for check in PRACTICE)
+    assert base.name in ferrule("rules").out and ferrule("rules", "nec").status == 2
 
 
 def test_a_file_that_an_editor_began_with_a_byte_order_mark(tmp_path):
@@ -256,7 +276,7 @@ def test_hourly_needs_weather_and_says_so(small_catalog, tmp_path, ferrule):
     assert "highest modelled Voc" in page.read_text(encoding="utf-8")
     screen = " ".join(ferrule(*asked, "--weather", DATA / "723170TYA.CSV").out.split())
     assert "highest modelled Voc" in screen and "3 %" in screen
-    assert "any to" not in screen  # nothing says that it holds in any cold
+    assert "no limit to" not in screen  # nothing says that it holds in any cold
 
 
 def test_hourly_needs_no_coefficient_of_voc_where_the_model_is_on_record():
@@ -275,5 +295,5 @@ def test_hourly_without_a_model_says_what_is_missing():
 
 
 def test_an_unknown_rule_set_is_refused():
-    with pytest.raises(CatalogError, match="No such file"):
+    with pytest.raises(CatalogError, match="there is no such file"):
         read_rule_set("nowhere/none.toml")

@@ -70,7 +70,7 @@ def test_a_climate_window_that_waits_for_a_value_is_blank(tmp_path: Path) -> Non
     assert row["holds down to [degC]"] is None
     assert "inverter: maximum DC input voltage of at least" in str(row["to confirm"])
     (row,) = rows(written(listing(inverters=(DUO,)), tmp_path), "Options")
-    assert row["holds down to [degC]"] == "any"
+    assert row["holds down to [degC]"] == "no limit"
 
 
 def test_every_table_has_a_frozen_header_and_filters(tmp_path: Path) -> None:
@@ -158,7 +158,7 @@ def test_only_the_first_options_are_explained_where_there_are_many(
     assert book["Checks"].freeze_panes == "B3"
     book = written(pair(), tmp_path, with_checks=True)
     assert [r["holds up to [degC]"] for r in rows(book, "Options")] == [
-        pytest.approx(o.hottest_c) if o.hottest_c is not None else "any" for o in pair().options()
+        pytest.approx(o.hottest_c) if o.hottest_c is not None else "no limit" for o in pair().options()
     ]
 
 
