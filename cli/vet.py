@@ -89,7 +89,6 @@ def vet(
             year = site_year(opened, place, chosen)
             plane = cold_plane(Request(place, rule))
         vetted = vetter.vet(bundle, place, year=year.year if year else None, plane=plane, like=like)
-    vetted = vetted if vetted.bench is not None else replace(vetted, bench=vetter.bench(chosen, vetted.site, plane))
     from cli.bundle_lists import BundleRow
     from cli.vet_lists import Line
 
@@ -161,10 +160,10 @@ def _available(catalog: Catalog, inverters: list[Inverter], in_stock: bool) -> l
     """Whether each inverter may take another's place; all may, where the stock does not matter."""
     if not in_stock:
         return None
-    held = {item.record for item in catalog.stock() if item.kind == "inverter" and item.quantity > 0}
-    if not held:
-        raise CatalogError("--in-stock: no inverter is in stock; load a list with 'ferrule stock load FILE'")
-    return [record.id in held for record in inverters]
+    from cli.in_stock import held
+
+    there = held(catalog, "inverter")
+    return [there.get(record.id, 0) > 0 for record in inverters]
 
 
 def _list(
@@ -172,7 +171,7 @@ def _list(
     everything: bool, json: bool, out: str | None,
 ) -> int:  # fmt: skip
     from cli.bundle_lists import read_bundles
-    from cli.console import note
+    from cli.console import note, on_terminal
     from cli.vet_files import print_document, write
     from cli.vet_lists import vet_rows
     from cli.vet_screen import show_list, summary
@@ -183,7 +182,9 @@ def _list(
     if not read.rows:
         raise CatalogError(f"{path}: no bundle stands below the heading")
     available = _available(catalog, catalog.inverters(), in_stock) if in_stock else None
-    lines = list(vet_rows(catalog, read.rows, site, like, rules, combiner, available))
+    with on_terminal("Vetted", "bundles") as progress:
+        vetted = vet_rows(catalog, read.rows, site, like, rules, combiner, available, progress)
+    lines = vetted.lines
     if out is not None:
         write(lines, out, rules)
         note(f"{summary(lines)} Written to {out}.")

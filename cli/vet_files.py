@@ -82,7 +82,7 @@ def entry(line: Line) -> dict[str, Any]:
         return found
     found |= {
         "module": v.bundle.module.name, "modules": v.bundle.modules, "units": v.bundle.units,
-        "inverter": v.bench.fit.inverters[v.bundle.inverter].name if v.bench is not None else row.inverter,
+        "inverter": v.inverter.name,
         "site": {"name": v.site.name, "design_low_c": v.site.design_low_c, "design_high_c": v.site.design_high_c,
                  "mounting": v.site.mounting, "solved": v.solved},
         "reason": v.reason or None, "failed": list(v.failed), "cause": cause(v.failed) or None,
@@ -97,7 +97,7 @@ def entry(line: Line) -> dict[str, Any]:
                     for c in (v.option.confirm if v.option is not None else ())],
         "climate": None if v.window is None else {"coldest_c": v.window.coldest_c, "hottest_c": v.window.hottest_c},
         "mends": [{"kind": m.kind, "modules": m.modules, "units": m.units,
-                   "inverter": v.bench.fit.inverters[m.inverter].name, "label": m.label, "verdict": m.verdict}
+                   "inverter": v.inverters[m.inverter].name, "label": m.label, "verdict": m.verdict}
                   for m in v.mends],
         "remarks": list(v.remarks),
     }  # fmt: skip
@@ -130,7 +130,7 @@ def _values(line: Line) -> list[Any]:
         return [row.number, row.article, line.verdict, row.module, None, row.inverter, None, row.site,
                 *[None] * 7, line.reason]  # fmt: skip
     o = v.option
-    inverter = v.bench.fit.inverters[v.bundle.inverter].name if v.bench is not None else row.inverter
+    inverter = v.inverter.name
     window = (None, None) if v.window is None else (v.window.coldest_c, v.window.hottest_c)
     return [
         row.number, row.article, line.verdict, v.bundle.module.name, v.bundle.modules, inverter, v.bundle.units,

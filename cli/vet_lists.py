@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -12,10 +12,15 @@ from cli.ranges import strings_of
 from matcher.errors import MatcherError
 
 if TYPE_CHECKING:
-    from catalog.records import Site
+    from catalog.records import Inverter, Site
     from catalog.store import Catalog
     from matcher.rules import RuleSet
-    from matcher.vet import Bundle, Vetted
+    from cli.vet_parts import Question
+    from cli.years import SitePlane
+    from matcher.moduleyear import PlaneYear
+    from matcher.vet import Vetted
+
+NOT_JUDGED = "not-judged"
 
 
 @dataclass(frozen=True, slots=True)
@@ -28,24 +33,62 @@ class Line:
     reason: str = ""
 
 
+@dataclass(frozen=True, slots=True)
+class VettedList:
+    """The lines of a list, and where clipping and energy of each site come from."""
+
+    lines: Sequence[Line]
+    years: Mapping[Site, SitePlane]
+
+
 def vet_rows(
     catalog: Catalog, rows: Sequence[BundleRow], site: Site | None, like: Site, rules: RuleSet, combiner: bool,
-    available: Sequence[bool] | None = None,
-) -> Iterator[Line]:  # fmt: skip
-    """Vet the rows of a list; a row's own site goes before the one for all."""
-    from catalog.names import NameIndex
-    from matcher.vet import Bundle, Vetter
+    available: Sequence[bool] | None = None, progress: Callable[[int, int], None] = lambda done, of: None,
+    jobs: int | None = None,
+) -> VettedList:  # fmt: skip
+    """Vet the rows of a list; a row's own site goes before the one for all.
+
+    ``progress`` is told how many of how many different bundles are done.
+    """
+    from cli.vet_parts import Task, vet_all
 
     inverters = catalog.inverters()
+    asked = _questions(catalog, rows, site, inverters)
+    different = {_key(q): q for q in asked if not isinstance(q, str)}
+    years = {s: _years(catalog, s, rules) for s in dict.fromkeys(s for _, s in different.values()) if s is not None}
+    task = Task(
+        tuple(inverters), rules, combiner, None if available is None else tuple(available), like,
+        {s: y.condensed.plane for s, y in years.items() if y.condensed.plane is not None},
+        {s: y.hourly for s, y in years.items() if y.hourly is not None},
+    )  # fmt: skip
+    keys, done = list(different), {}
+    for k, found in vet_all(task, list(different.values()), jobs):
+        done[keys[k]] = found
+        progress(len(done), len(keys))
+    lines = []
+    for row, question in zip(rows, asked, strict=True):
+        found = question if isinstance(question, str) else done[_key(question)]
+        if isinstance(found, str):
+            lines.append(Line(row, NOT_JUDGED, reason=found))
+        else:
+            lines.append(Line(row, found.verdict, found))
+    return VettedList(lines, {s: y.condensed for s, y in years.items()})
+
+
+def _questions(
+    catalog: Catalog, rows: Sequence[BundleRow], site: Site | None, inverters: Sequence[Inverter]
+) -> list[Question | str]:
+    """What each row asks, or why it asks nothing that can be judged."""
+    from catalog.names import NameIndex
+    from matcher.vet import Bundle
+
     place = {record.id: k for k, record in enumerate(inverters)}
-    vetter = Vetter(inverters, rules, combiner, available)
     names = {kind: Reader(NameIndex(catalog.names(kind)), kind) for kind in ("module", "inverter")}
     wanted = {names["module"].read(row.module) for row in rows}
     modules = {m.id: m for m in catalog.modules([w for w in wanted if isinstance(w, int)])}
     sites: dict[str, Site | str] = {}
-    done: dict[tuple[Bundle, Site | None], Vetted] = {}
 
-    for row in rows:
+    def asked(row: BundleRow) -> Question | str:
         read = {
             "module": names["module"].read(row.module),
             "inverter": names["inverter"].read(row.inverter),
@@ -53,20 +96,38 @@ def vet_rows(
             "units": whole(row.units, "number of inverters") if row.units else 1,
             "site": _site(catalog, row.site, sites) if row.site else site,
         }
-        wrong = next((v for v in read.values() if isinstance(v, str)), None)
-        if wrong is not None:
-            yield Line(row, "not-judged", reason=wrong)
-            continue
+        wrong = "; ".join(v for v in read.values() if isinstance(v, str))
+        if wrong:
+            return wrong
         try:
             strings = strings_of(row.strings) if row.strings else None
             bundle = Bundle(modules[read["module"]], place[read["inverter"]], read["modules"], read["units"], strings)
-            key = (bundle.module.id, bundle.inverter, bundle.modules, bundle.units, strings, read["site"])
-            if key not in done:
-                done[key] = vetter.vet(bundle, read["site"], like=like)
         except (CatalogError, MatcherError) as error:
-            yield Line(row, "not-judged", reason=str(error).removeprefix("--"))
-            continue
-        yield Line(row, done[key].verdict, done[key])
+            return str(error).removeprefix("--")
+        return bundle, read["site"]
+
+    return [asked(row) for row in rows]
+
+
+def _key(question: Question) -> tuple:
+    """What tells bundles apart, without going through the module's record."""
+    bundle, site = question
+    return bundle.module.id, bundle.inverter, bundle.modules, bundle.units, bundle.strings, site
+
+
+@dataclass(frozen=True, slots=True)
+class _Years:
+    """The years of a site's array: condensed for energy and clipping, and hour by hour where the rules take it."""
+
+    condensed: SitePlane
+    hourly: PlaneYear | None
+
+
+def _years(catalog: Catalog, site: Site, rules: RuleSet) -> _Years:
+    from cli.years import cold_plane, condensed_plane
+    from matcher.request import Request
+
+    return _Years(condensed_plane(catalog, site), cold_plane(Request(site, rules)))
 
 
 def _site(catalog: Catalog, name: str, known: dict[str, Site | str]) -> Site | str:

@@ -7,9 +7,9 @@ from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
-from cli.facts import assumptions, confirm_words
+from cli.facts import confirm_words
 from cli.fit_screen import climate_window
-from cli.vet_words import bounds_known, cause, mend_words, short, window_short, window_words
+from cli.vet_words import assumed, bounds_known, cause, mend_words, short, window_short, window_words
 from matcher.options import label
 
 if TYPE_CHECKING:
@@ -24,7 +24,6 @@ ONE_SCREEN = 18
 
 def show(vetted: Vetted, year: SiteYear | None, rules: bool = False) -> None:
     """Print one bundle: question, verdict, wiring, climate, reasons, changes, checks (and their ``rules``)."""
-    b = vetted.bundle
     say(f"{_question(vetted)}?")
     say()
     if vetted.verdict == "no-verdict":
@@ -51,19 +50,15 @@ def show(vetted: Vetted, year: SiteYear | None, rules: bool = False) -> None:
             say(line)
         if year.year is not None:
             say(HOURLY_MEANS)
-    assert vetted.bench is not None
-    fit = vetted.bench.fit
-    if fit.modules[0].noct_c is None:
-        say(assumptions(fit)[0])
-    if fit.inverters[b.inverter].origin("inputs") == "assumed":
-        say("Assumed: one tracker, as the inverter's source says nothing of trackers.")
+    for line in assumed(vetted):
+        say(line)
     for line in CAUTIONS:
         say(line)
 
 
 def _question(vetted: Vetted) -> str:
     b, site = vetted.bundle, vetted.site
-    name = vetted.bench.fit.inverters[b.inverter].name if vetted.bench is not None else "the inverter"
+    name = vetted.inverter.name
     where = "in which climates"
     if not vetted.solved:
         where = f"at {site.design_low_c:g} to {site.design_high_c:g} degC, {site.mounting}"

@@ -72,9 +72,7 @@ def bounds_known(vetted: Vetted) -> bool:
 
 def mend_words(mend: Mend, vetted: Vetted) -> str:
     """One change in words: "13 modules instead of 14 (1x13)"."""
-    assert vetted.bench is not None
-    bundle = vetted.bundle
-    inverters = vetted.bench.fit.inverters
+    bundle, inverters = vetted.bundle, vetted.inverters
     what = {
         "count": f"{mend.modules} modules instead of {bundle.modules}",
         "strings": "other strings",
@@ -83,6 +81,18 @@ def mend_words(mend: Mend, vetted: Vetted) -> str:
     }[mend.kind]
     doubt = ", to confirm" if mend.verdict == "to-confirm" else ""
     return f"{what} ({mend.label}{doubt})"
+
+
+def assumed(vetted: Vetted) -> list[str]:
+    """Values that a default stands in for."""
+    from matcher.electrical import ASSUMED_NOCT_C
+
+    lines = []
+    if vetted.bundle.module.noct_c is None:
+        lines.append(f"Assumed: NOCT {ASSUMED_NOCT_C:g} degC, which the module's record does not state.")
+    if vetted.inverter.origin("inputs") == "assumed":
+        lines.append("Assumed: one tracker, as the inverter's source says nothing of trackers.")
+    return lines
 
 
 def short(vetted: Vetted) -> str:
@@ -99,11 +109,10 @@ def short(vetted: Vetted) -> str:
     if not vetted.mends:
         return CAUSES[vetted.failed[0]]
     mend = vetted.mends[0]
-    assert vetted.bench is not None
     change = {
         "count": f"{mend.modules} modules would do",
         "strings": f"{mend.label} would do",
         "units": f"{mend.units} inverters would do",
-        "inverter": f"{vetted.bench.fit.inverters[mend.inverter].name} would do",
+        "inverter": f"{vetted.inverters[mend.inverter].name} would do",
     }[mend.kind]
     return f"{CAUSES[vetted.failed[0]]}; {change}" + (", to confirm" if mend.verdict == "to-confirm" else "")

@@ -13,7 +13,8 @@ import numpy as np
 
 from catalog.records import Site
 from matcher import reach
-from matcher.bench import Bench
+from matcher.bench import Bench, on_one_tracker
+from matcher.checks import ModulePoints
 from matcher.climate import ClimateWindow
 from matcher.electrical import design_points
 from matcher.fit import module_points
@@ -29,10 +30,15 @@ MILD_C = 25.0
 
 @dataclass(frozen=True, slots=True)
 class Window:
-    """Coldest and hottest ambient temperature [degC] of a way to wire; ``None`` where nothing known bounds it."""
+    """Coldest and hottest ambient temperature [degC] of a way to wire; ``None`` where nothing known bounds it.
+
+    An end is open where a value that is not on record may bound it more narrowly.
+    """
 
     coldest_c: float | None
     hottest_c: float | None
+    cold_open: bool = False
+    hot_open: bool = False
 
     def site(self, like: Site) -> Site | None:
         """A site at the edges, in whole degrees inside ordinary climates; ``None`` where no climate is left."""
@@ -41,15 +47,23 @@ class Window:
         return replace(like, design_low_c=float(low), design_high_c=float(high)) if low <= high else None
 
 
-class AnyClimate:
-    """Climate windows of one module on the inverters of a bench at `MILD_C`, whatever the site's temperatures."""
+def cool(mild: Site) -> Site:
+    """Where windows are solved: bounds in the cold from a mild day, bounds in the heat from a cool one."""
+    return replace(mild, design_low_c=MILD_C, design_high_c=ORDINARY_C[0])
 
-    def __init__(self, mild: Bench) -> None:
+
+class AnyClimate:
+    """Climate windows of one module on the inverters of a bench at `MILD_C`, whatever the site's temperatures.
+
+    ``points`` are the design values at the `cool` site, where they have been worked out with those of others.
+    """
+
+    def __init__(self, mild: Bench, points: ModulePoints | None = None) -> None:
         self.mild = mild
         module, request = mild.fit.modules[0], mild.fit.request
-        # Bounds in the cold are solved from a mild day, bounds in the heat from a cool one.
-        site = replace(request.site, design_low_c=MILD_C, design_high_c=ORDINARY_C[0])
-        points = module_points(design_points([module], site, request.rules), 0)
+        site = cool(request.site)
+        if points is None:
+            points = module_points(design_points([module], site, request.rules), 0)
         self._window = ClimateWindow(module, points, site, request.rules)
         self._counts: dict[tuple[int, int, int], tuple[int, int]] = {}
         self._pairs: dict[int, list[tuple[int, int]]] = {}
@@ -57,12 +71,22 @@ class AnyClimate:
     def of_lengths(self, i: int, shortest: int, longest: int) -> Window:
         """Window of any wiring with these lengths on inverter i."""
         inverter = self.mild.fit.inverters[i]
-        return Window(self._window.coldest(inverter, longest), self._window.hottest(inverter, shortest))
+        return Window(
+            self._window.coldest(inverter, longest), self._window.hottest(inverter, shortest),
+            self._window.cold_is_open(inverter, longest), self._window.heat_is_open(inverter),
+        )  # fmt: skip
 
     def widest(self, i: int, total: int, units: int) -> tuple[int, int] | None:
         """Shortest and longest string of the wiring with the widest window; ``None`` where no climate is left."""
-        space = self.mild.space(i)
-        if not units <= total <= units * space.most or not self._takes(i, 1, space.longest, total, units):
+        # Where it is cooler, strings may be shorter than those of the mild day.
+        space = replace(self.mild.space(i), shortest=1)
+        if not units <= total <= units * space.most:
+            return None
+        if units == 1 and self.mild.fit.search.inverters.single[i]:
+            # One tracker takes strings of one length: counting through sets is not needed.
+            alone = [n for _, n, _ in on_one_tracker(space, total)]
+            return next((p for p in self._by_width(i) if any(p[0] <= n <= p[1] for n in alone)), None) if alone else None
+        if not self._takes(i, 1, space.longest, total, units):
             return None
         for shortest, longest in self._by_width(i):
             if self._takes(i, shortest, longest, total, units):
@@ -73,19 +97,19 @@ class AnyClimate:
         """Pairs of lengths that leave a climate, the widest window first, then those that are alike."""
         if i in self._pairs:
             return self._pairs[i]
-        longest = self.mild.space(i).longest
-        windows = {n: self.of_lengths(i, n, n) for n in range(1, longest + 1)}
-        like = self.mild.fit.request.site
-        ranked = []
-        for low in windows:
-            for high in range(low, longest + 1):
-                window = Window(windows[high].coldest_c, windows[low].hottest_c)
-                site = window.site(like)
-                if site is not None:
-                    width = site.design_high_c - site.design_low_c
-                    # What no known rating bounds is to be confirmed, and worth less than what is known to hold.
-                    ranked.append((window.coldest_c is None, -width, high - low, high, low))
-        self._pairs[i] = [(low, high) for *_, high, low in sorted(ranked)]
+        inverter, lengths = self.mild.fit.inverters[i], range(1, self.mild.space(i).longest + 1)
+        unbounded = np.array([not self._window.known_maxima(inverter, n) for n in lengths], dtype=bool)
+        windows = [self.of_lengths(i, n, n) for n in lengths]
+        cold = np.array([w.coldest_c for w in windows], dtype=float)
+        hot = np.array([w.hottest_c for w in windows], dtype=float)
+        low = np.fmax(np.ceil(cold - 1e-6), ORDINARY_C[0])
+        high = np.fmin(np.floor(hot - 0.01), ORDINARY_C[1])
+        short, long = np.triu_indices(len(windows))
+        width = high[short] - low[long]
+        # What no known rating bounds is to be confirmed, and worth less than what is known to hold.
+        order = np.lexsort((short, long, long - short, -width, unbounded[long]))
+        order = order[width[order] >= 0]
+        self._pairs[i] = list(zip((short[order] + 1).tolist(), (long[order] + 1).tolist(), strict=True))
         return self._pairs[i]
 
     def _takes(self, i: int, shortest: int, longest: int, total: int, units: int) -> bool:
@@ -95,4 +119,4 @@ class AnyClimate:
             space = replace(self.mild.space(i), shortest=shortest, longest=longest, fewest=1)
             bits = reach.one_unit(replace(space, most=max(0, min(space.most, held))))
             self._counts[i, shortest, longest] = (held, bits)
-        return bool((bits if units == 1 else reach.on_units(bits, units, total)) >> total & 1)
+        return reach.adds_up(bits, total, units)

@@ -36,14 +36,7 @@ class ClimateWindow:
         """
         if self._rules.cold_voltage == "hourly":
             return None
-        cap = voltage_cap(self._site, self._rules)
-        known = [v for v in (inverter.max_dc_voltage_v, self._module.max_system_voltage_v) if v is not None]
-        if cap == cap:
-            known.append(cap)
-        if inverter.max_dc_voltage_v is None:
-            inferred = inverter.mppt_high_v
-            if longest * self._points.voc_cold_v <= inferred * (1.0 + TOLERANCE):
-                known.append(inferred)
+        known = self.known_maxima(inverter, longest)
         if not known:
             return None
         allowed = min(known) / (longest * self._module.voc_v)
@@ -54,6 +47,29 @@ class ClimateWindow:
             return None
         coldest = 25.0 + (allowed - 1.0) / (coefficient / 100.0)
         return coldest if coldest > ABSOLUTE_ZERO_C else None
+
+    def known_maxima(self, inverter: Inverter, longest: int) -> list[float]:
+        """Voltage maxima of strings up to this length that are on record or may be inferred [V]."""
+        cap = voltage_cap(self._site, self._rules)
+        known = [v for v in (inverter.max_dc_voltage_v, self._module.max_system_voltage_v) if v is not None]
+        if cap == cap:
+            known.append(cap)
+        if inverter.max_dc_voltage_v is None:
+            inferred = inverter.mppt_high_v
+            if longest * self._points.voc_cold_v <= inferred * (1.0 + TOLERANCE):
+                known.append(inferred)
+        return known
+
+    def cold_is_open(self, inverter: Inverter, longest: int) -> bool:
+        """Whether a voltage maximum that is not on record may bound the cold end more narrowly than `coldest`."""
+        if self._module.max_system_voltage_v is None:
+            return True
+        beyond = longest * self._points.voc_cold_v > inverter.mppt_high_v * (1.0 + TOLERANCE)
+        return inverter.max_dc_voltage_v is None and beyond
+
+    def heat_is_open(self, inverter: Inverter) -> bool:
+        """Whether a coefficient that is not on record may bound the hot end more narrowly than `hottest`."""
+        return inverter.start_voltage_v is not None and self._module.voc_coef_pct is None
 
     def hottest(self, inverter: Inverter, shortest: int) -> float | None:
         """Hottest ambient [degC] at which mppt-low and start still hold; ``None``: none up to 150 degC of the cell."""

@@ -25,14 +25,15 @@ def at_most(limit: np.ndarray, each: np.ndarray) -> np.ndarray:
     """Largest whole n with ``n * each <= limit``; `UNLIMITED` where either is unknown (NaN)."""
     with np.errstate(invalid="ignore", divide="ignore"):
         n = np.floor(limit / each * (1.0 + TOLERANCE))
-    return np.where(np.isnan(n), UNLIMITED, np.clip(n, 0, UNLIMITED)).astype(np.int64)
+    # fmin and fmax pass over NaN.
+    return np.fmax(np.fmin(n, UNLIMITED), 0).astype(np.int64)
 
 
 def at_least(limit: np.ndarray, each: np.ndarray) -> np.ndarray:
     """Smallest whole n with ``n * each >= limit``; 0 where either is unknown (NaN)."""
     with np.errstate(invalid="ignore", divide="ignore"):
         n = np.ceil(limit / each * (1.0 - TOLERANCE))
-    return np.where(np.isnan(n), 0, np.clip(n, 0, UNLIMITED)).astype(np.int64)
+    return np.fmin(np.fmax(n, 0), UNLIMITED).astype(np.int64)
 
 
 def voltage_cap(site: Site, rules: RuleSet) -> float:

@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Sequence
 from dataclasses import dataclass
 from math import log
 
-from catalog.records import Inverter
+import numpy as np
+
 from matcher.bench import Bench
+from matcher.checks import Verdict
+from matcher.columns import InverterColumns
 
 #: Inverters next in AC power that are tried in search of one that takes the bundle.
 TRIED = 60
@@ -38,14 +41,14 @@ class Mend:
 
 
 def mends(
-    bench: Bench, i: int, total: int, units: int, candidates: Iterable[int] = (), strings: bool = False
+    bench: Bench, i: int, total: int, units: int, candidates: np.ndarray, strings: bool = False
 ) -> list[Mend]:
     """Changes of one thing each that make ``total`` modules on ``units`` of inverter i sound, smallest first.
 
     Parameters
     ----------
     candidates
-        Inverters that may take its place, the nearest first (see `nearest_inverters`).
+        Inverters that may take its place, the nearest first (see `Neighbours`).
     strings
         The bundle's strings were given, so other strings may mend it.
     """
@@ -67,22 +70,9 @@ def mends(
     for k in sorted(others, key=lambda k: (abs(k - units), -k)):
         if bench.takes(i, total, k) and add("units", abs(k - units) / units, total, k, i):
             break
-    unsure: int | None = None
-    module_w = float(bench.fit.points.pmax_w[0])
-    for other in candidates:
-        too_small = total * module_w > HIGHEST_RATIO * units * _power(bench, other)
-        if too_small or not bench.takes(other, total, units):
-            continue
-        size = abs(log(_power(bench, other) / _power(bench, i)))
-        add("inverter", size, total, units, other)
-        if found[-1].verdict == "fits":
-            if unsure is not None:
-                del found[unsure]
-            break
-        if unsure is not None:
-            found.pop()
-        else:
-            unsure = len(found) - 1
+    other = _in_its_place(bench, total, units, candidates)
+    if other is not None:
+        add("inverter", abs(log(_power(bench, other) / _power(bench, i))), total, units, other)
     return sorted(found, key=lambda m: m.size)
 
 
@@ -90,17 +80,38 @@ def _power(bench: Bench, i: int) -> float:
     return bench.fit.inverters[i].ac_power_w
 
 
-def nearest_inverters(
-    inverters: tuple[Inverter, ...], i: int, tried: int = TRIED, only: Callable[[int], bool] = lambda _: True
-) -> list[int]:
-    """Inverters next to inverter i in AC power, nearest first; of the same power those of its maker first."""
-    own = inverters[i]
+def _in_its_place(bench: Bench, total: int, units: int, candidates: np.ndarray) -> int | None:
+    """The first inverter on which the bundle fits, else the first on which it would once a value is confirmed."""
+    columns = bench.fit.search.inverters
+    module_w = float(bench.fit.points.pmax_w[0])
+    large_enough = candidates[total * module_w <= HIGHEST_RATIO * units * columns.ac_power_w[candidates]]
+    may_take, may_fit = bench.likely(large_enough, total, units)
+    unsure = None
+    for other, sure in zip(large_enough[may_take].tolist(), may_fit[may_take].tolist(), strict=True):
+        if unsure is not None and not sure:
+            continue
+        outcome = bench.outcome(other, total, units)
+        if outcome is Verdict.FITS:
+            return other
+        if outcome is not None and unsure is None:
+            unsure = other
+    return unsure
 
-    def rank(j: int) -> tuple[float, bool, str]:
-        return abs(log(inverters[j].ac_power_w / own.ac_power_w)), inverters[j].maker != own.maker, inverters[j].name
 
-    near = [
-        j for j, other in enumerate(inverters)
-        if j != i and 1 / NEAR_POWER <= other.ac_power_w / own.ac_power_w <= NEAR_POWER and only(j)
-    ]  # fmt: skip
-    return sorted(near, key=rank)[:tried]
+class Neighbours:
+    """Inverters next to others in AC power."""
+
+    def __init__(self, columns: InverterColumns, available: Sequence[bool] | None = None) -> None:
+        self._power = np.log(columns.ac_power_w)
+        self._makers = np.unique([i.maker for i in columns.records], return_inverse=True)[1]
+        self._names = np.unique([i.name for i in columns.records], return_inverse=True)[1]
+        self._available = np.ones(len(self._power), dtype=bool) if available is None else np.array(available, dtype=bool)
+
+    def of(self, i: int, tried: int = TRIED) -> np.ndarray:
+        """Inverters next to inverter i in AC power, nearest first; of the same power those of its maker first."""
+        off = np.abs(self._power - self._power[i])
+        near = self._available & (off <= log(NEAR_POWER) + 1e-12)
+        near[i] = False
+        near = np.flatnonzero(near)
+        order = np.lexsort((self._names[near], self._makers[near] != self._makers[i], off[near]))
+        return near[order[:tried]]

@@ -281,7 +281,7 @@ def _first_wired(pair: Pair, spaces: Sequence[Space], total: int, units: int) ->
 
 
 def _takes(space: Space, total: int, units: int) -> bool:
-    return bool(reach.on_units(reach.one_unit(space), units, total) >> total & 1)
+    return reach.adds_up(reach.one_unit(space), total, units)
 
 
 def _with_more_strings(space: Space, extra: int) -> tuple:

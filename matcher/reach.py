@@ -63,7 +63,7 @@ def _sums(a: int, b: int, most: int) -> int:
         for shift in members(a):
             found |= b << shift
         return found & mask
-    size = a.bit_length() + b.bit_length()
+    size = 1 << (a.bit_length() + b.bit_length() - 1).bit_length()  # powers of two are the fast ones
     product = np.fft.irfft(np.fft.rfft(_as_array(a), size) * np.fft.rfft(_as_array(b), size), size)
     packed = np.packbits(product > 0.5, bitorder="little").tobytes()
     return int.from_bytes(packed, "little") & mask
@@ -76,7 +76,21 @@ def _as_array(bits: int) -> np.ndarray:
 
 def members(bits: int) -> list[int]:
     """The counts of a set, ascending."""
+    if bits.bit_count() <= _FEW:
+        found = []
+        while bits:
+            lowest = bits & -bits
+            found.append(lowest.bit_length() - 1)
+            bits ^= lowest
+        return found
     return np.flatnonzero(_as_array(bits)).tolist()
+
+
+def adds_up(one: int, total: int, units: int) -> bool:
+    """Whether some units, each with a count of ``one``, can take exactly ``total`` modules together."""
+    if units == 1:
+        return bool(one >> total & 1)
+    return _width(one, total, units, first=16, growth=8) is not None
 
 
 def split(one: int, total: int, units: int) -> tuple[int, ...] | None:
@@ -85,17 +99,34 @@ def split(one: int, total: int, units: int) -> tuple[int, ...] | None:
     Counts far from the mean are left out before `even_split` goes through them: what can be done within some
     width around the mean has its evenest split within twice that width.
     """
-    if total < units or not on_units(one, units, total) >> total & 1:
+    width = _width(one, total, units)
+    if width is None:
         return None
-    mean, width = total // units, 1
-    while not on_units(_around(one, mean, width), units, total) >> total & 1:
-        width *= 2
-    return even_split(members(_around(one, mean, 2 * width)), total, units)
+    few, low = _around(one, total // units, 2 * width)
+    return even_split([low + c for c in members(few)], total, units)
 
 
-def _around(bits: int, mean: int, width: int) -> int:
+def _width(one: int, total: int, units: int, first: int = 1, growth: int = 2) -> int | None:
+    """A width around the mean within which counts of ``one`` add up to the total; ``None`` where none do."""
+    if total < units:
+        return None
+    mean, width = total // units, first
+    one &= (1 << (total + 1)) - 1
+    while True:
+        # Counted from the low end, sums are small numbers.
+        few, low = _around(one, mean, width)
+        left = total - units * low
+        if on_units(few, units, left) >> left & 1:
+            return width
+        if not one >> (mean + width + 2) and not low:
+            return None
+        width *= growth
+
+
+def _around(bits: int, mean: int, width: int) -> tuple[int, int]:
+    """The counts of a set within a width of the mean, less a number; and that number."""
     low = max(mean - width, 0)
-    return (bits >> low << low) & ((1 << (mean + width + 2)) - 1)
+    return (bits >> low) & ((1 << (mean + width + 2 - low)) - 1), low
 
 
 def below(bits: int, count: int) -> int | None:
@@ -117,11 +148,33 @@ def any_wiring(space: Space, inverter: Inverter, counts: Sequence[int]) -> tuple
         copies[c] = copies.get(c, 0) + 1
     units = []
     for modules, times in copies.items():
+        like = _of_one_length(space, modules)
+        if like is not None:
+            units.append(Unit(times, like))
+            continue
         accepted = np.zeros(space.most + 1, dtype=bool)
         accepted[modules] = True
         block = next(space.listing(accepted))
         units.append(Unit(times, _trackers(inverter, block[int(np.argmin(distinct_lengths(block)))])))
     return tuple(units)
+
+
+def _of_one_length(space: Space, modules: int) -> tuple[Tracker, ...] | None:
+    """Like strings, the shortest that will do, shared as evenly as the trackers take them; ``None`` where none do."""
+    limits = [(g, group.max_strings) for g, group in enumerate(space.groups) for _ in range(group.trackers)]
+    held = sum(strings for _, strings in limits)
+    for n in range(space.shortest, min(space.longest, modules) + 1):
+        strings, rest = divmod(modules, n)
+        if rest or strings > held:
+            continue
+        # Those that take least are filled first, so that the others share what is left.
+        shares = [0] * len(limits)
+        by_limit = sorted(range(len(limits)), key=lambda k: limits[k][1])
+        for done, k in enumerate(by_limit):
+            shares[k] = min(limits[k][1], strings // (len(limits) - done))
+            strings -= shares[k]
+        return tuple(Tracker(limits[k][0], s, n) for k, s in enumerate(shares) if s)
+    return None
 
 
 def any_hosting(

@@ -11,7 +11,7 @@ import numpy as np
 
 from matcher.arrangements import FACE, ByStrings, Space
 from matcher.errors import MatcherError
-from matcher.limits import TOLERANCE, at_most
+from matcher.limits import TOLERANCE, PairLimits, at_most
 from matcher.options import Options, join
 from matcher.reach import share_of
 from matcher.search import Search
@@ -164,10 +164,14 @@ def _pairs(search: Search) -> Iterator[tuple[int, int]]:
 
 def free_space(search: Search, m: int, i: int, most: int) -> Space:
     """Arrangements of one unit with up to ``most`` modules, whatever its own DC/AC ratio."""
-    limits = search.limits(np.array([m]), np.array([i]))
-    held = at_most(search.inverters.max_array_power_w[i : i + 1], search.points.pmax_w[m : m + 1])
-    one = np.ones(1, dtype=np.int64)
-    return search.space(m, i, replace(limits, fewest=one, most=np.minimum(held, most)))
+    return search.space(m, i, free_limits(search, m, np.array([i]), most))
+
+
+def free_limits(search: Search, m: int, inverters: np.ndarray, most: int) -> PairLimits:
+    """Bounds of one module on some inverters, one unit each with up to ``most`` modules, whatever the ratio."""
+    limits = search.limits(np.full(len(inverters), m), inverters)
+    held = at_most(search.inverters.max_array_power_w[inverters], search.points.pmax_w[m : m + 1])
+    return replace(limits, fewest=np.ones(len(inverters), dtype=np.int64), most=np.minimum(held, most))
 
 
 def _wanted(search: Search, m: int, i: int) -> Iterator[tuple[int, int]]:

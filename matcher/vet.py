@@ -9,15 +9,17 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
+import numpy as np
 
 from catalog.records import Inverter, Module, Site
-from matcher.anyclimate import MILD_C, AnyClimate, Window
+from matcher.anyclimate import MILD_C, AnyClimate, Window, cool
 from matcher.bench import Bench, with_diode
 from matcher.checks import Check, Verdict, verdict
 from matcher.columns import InverterColumns
+from matcher.electrical import design_points
 from matcher.errors import MatcherError
-from matcher.fit import Option
-from matcher.mends import Mend, mends, nearest_inverters
+from matcher.fit import Option, module_points
+from matcher.mends import Mend, Neighbours, mends
 from matcher.moduleyear import ModuleYear, PlaneYear
 from matcher.near import Rejection, checks_of, count_stopped, no_length, no_string, stopped_by, strings_stopped
 from matcher.options import Unit
@@ -70,7 +72,7 @@ class Vetted:
     arrangement (or the given one) where there is a sound one; otherwise ``failed`` names the checks that stop the
     nearest one, whose ``checks`` and ``wired`` are given where it can be told. ``window`` is the climate window of
     the option, or, for an unsound bundle, of the arrangement that bears most; ``None`` where no climate is left.
-    ``site`` is what was judged at.
+    ``site`` is what was judged at. ``inverters`` are those that the bundle and the mends point into.
     """
 
     bundle: Bundle
@@ -85,7 +87,12 @@ class Vetted:
     window: Window | None = None
     mends: tuple[Mend, ...] = ()
     remarks: tuple[str, ...] = ()
-    bench: Bench | None = None
+    inverters: tuple[Inverter, ...] = ()
+
+    @property
+    def inverter(self) -> Inverter:
+        """The inverter of the bundle."""
+        return self.inverters[self.bundle.inverter]
 
     @property
     def sound(self) -> bool:
@@ -110,11 +117,53 @@ class Vetter:
     ) -> None:  # fmt: skip
         self.inverters = tuple(inverters)
         self._columns = InverterColumns.of(inverters)
-        self._rules, self._combiner, self._available = rules, combiner, available
+        self._rules, self._combiner = rules, combiner
+        self._neighbours = Neighbours(self._columns, available)
         self._benches: dict[tuple[object, Site], Bench] = {}
         self._climates: dict[tuple[object, Site], AnyClimate] = {}
-        self._nearest: dict[int, list[int]] = {}
         self._modules: dict[object, Module] = {}
+
+    def prepare(
+        self, modules: Sequence[Module], site: Site, *, condensed: PlaneYear | None = None, plane: PlaneYear | None = None,
+        dc_loss_pct: float = 0.0,
+    ) -> None:  # fmt: skip
+        """Work out what many modules of a list need at a site, all at once.
+
+        Parameters
+        ----------
+        condensed
+            Condensed year of the site's array, for energy and clipping.
+        plane
+            As for `vet`.
+        dc_loss_pct
+            Losses from the modules to the inverter, for energy and clipping [% of power].
+        """
+        from matcher.sweep import years_of
+
+        points = design_points(modules, site, self._rules, plane)
+        years = None if condensed is None else years_of(modules, condensed, dc_loss_pct)
+        for k, module in enumerate(modules):
+            year = None
+            if years is not None and not np.isnan(years.power_w[k]).all():
+                year = ModuleYear(years.power_w[k], years.vmp_v[k], years.hours)
+            self._benches[key_of(module), site] = Bench.of(
+                self._known(module), self._columns, site, self._rules, self._combiner, year, points=points.take(k)
+            )
+
+    def prepare_climates(self, modules: Sequence[Module], site: Site) -> None:
+        """As `prepare`, for solving for the climate at a place like this one."""
+        mild = mild_of(site)
+        self.prepare(modules, mild)
+        points = design_points(modules, cool(mild), self._rules)
+        for k, module in enumerate(modules):
+            if points.reasons[k] is None:
+                bench = self._benches[key_of(module), mild]
+                self._climates[key_of(module), mild] = AnyClimate(bench, module_points(points, k))
+
+    def forget(self) -> None:
+        """Let go of what was worked out for the modules so far."""
+        for kept in (self._benches, self._climates, self._modules):
+            kept.clear()
 
     def vet(
         self, bundle: Bundle, site: Site | None, *, year: ModuleYear | None = None, plane: PlaneYear | None = None,
@@ -151,7 +200,7 @@ class Vetter:
         return self._bench(module, site, plane=plane)
 
     def _anywhere(self, bundle: Bundle, like: Site, mending: bool) -> Vetted:
-        mild = replace(like, name=ANYWHERE.name, design_low_c=MILD_C, design_high_c=MILD_C)
+        mild = mild_of(like)
         bench = self._bench(bundle.module, mild)
         if bench.reason is not None:
             return _no_verdict(bundle, bench, mild, solved=True)
@@ -170,9 +219,7 @@ class Vetter:
         """The climate in which an unsound bundle would be sound; ``None`` also where no temperature decides."""
         if self._rules.cold_voltage == "hourly":
             return None
-        mild = replace(site, name=ANYWHERE.name, design_low_c=MILD_C, design_high_c=MILD_C, lat=None, lon=None,
-                       weather=None)  # fmt: skip
-        bench = self._bench(bundle.module, mild)
+        bench = self._bench(bundle.module, mild_of(site))
         return None if bench.reason is not None else self._widest(bundle, bench)
 
     def _widest(self, bundle: Bundle, mild: Bench) -> Window | None:
@@ -222,29 +269,27 @@ class Vetter:
         if mending:
             given = bundle.strings is not None or bundle.loads is not None
             changes = mends(
-                bench, bundle.inverter, bundle.modules, bundle.units, self._near(bundle.inverter), strings=given
+                bench, bundle.inverter, bundle.modules, bundle.units, self._neighbours.of(bundle.inverter), strings=given
             )
         return Vetted(
             bundle, str(Verdict.DOES_NOT_FIT), site, solved, None, outcome.nearest, outcome.failed, outcome.checks,
-            outcome.wired, window, tuple(changes), (), bench,
+            outcome.wired, window, tuple(changes), (), self.inverters,
         )  # fmt: skip
 
-    def _near(self, i: int) -> list[int]:
-        if i not in self._nearest:
-            available = self._available
-            only = (lambda _: True) if available is None else (lambda j: bool(available[j]))
-            self._nearest[i] = nearest_inverters(self.inverters, i, only=only)
-        return self._nearest[i]
+    def _known(self, module: Module) -> Module:
+        """The module with its model, fitted once."""
+        key = key_of(module)
+        if key not in self._modules:
+            self._modules[key] = with_diode(module)
+        return self._modules[key]
 
     def _bench(
         self, module: Module, site: Site, year: ModuleYear | None = None, plane: PlaneYear | None = None
     ) -> Bench:
-        key = (_key(module), site)
+        key = (key_of(module), site)
         special = year is not None or plane is not None
         if special or key not in self._benches:
-            if key[0] not in self._modules:
-                self._modules[key[0]] = with_diode(module)
-            known = self._modules[key[0]]
+            known = self._known(module)
             bench = Bench.of(known, self._columns, site, self._rules, self._combiner, year, plane)
             if special:
                 return bench
@@ -252,13 +297,21 @@ class Vetter:
         return self._benches[key]
 
     def _climate(self, module: Module, mild: Bench) -> AnyClimate:
-        key = (_key(module), mild.fit.request.site)
+        key = (key_of(module), mild.fit.request.site)
         if key not in self._climates:
             self._climates[key] = AnyClimate(mild)
         return self._climates[key]
 
 
-def _key(module: Module) -> object:
+def mild_of(site: Site) -> Site:
+    """A mild day at a place like this one, from which its climates are solved for."""
+    return replace(
+        site, name=ANYWHERE.name, design_low_c=MILD_C, design_high_c=MILD_C, lat=None, lon=None, weather=None
+    )
+
+
+def key_of(module: Module) -> object:
+    """What tells modules apart: the number of the record, or its name where it has none."""
     return module.id if module.id is not None else module.name
 
 
@@ -273,14 +326,15 @@ def _given(bench: Bench, i: int, wired: tuple[Unit, ...]) -> Option | Rejection:
 
 
 def _no_verdict(bundle: Bundle, bench: Bench, site: Site, solved: bool = False) -> Vetted:
-    return Vetted(bundle, NO_VERDICT, site, solved, reason=f"{bundle.module.name} cannot be matched: {bench.reason}")
+    reason = f"{bundle.module.name} cannot be matched: {bench.reason}"
+    return Vetted(bundle, NO_VERDICT, site, solved, reason=reason, inverters=bench.fit.inverters)
 
 
 def _sound(bundle: Bundle, option: Option, bench: Bench, site: Site, solved: bool) -> Vetted:
     window = Window(option.coldest_c, option.hottest_c)
     return Vetted(
         bundle, str(option.verdict), site, solved, option, checks=option.checks, wired=option.wired, window=window,
-        remarks=tuple(_remarks(option)), bench=bench,
+        remarks=tuple(_remarks(option)), inverters=bench.fit.inverters,
     )  # fmt: skip
 
 

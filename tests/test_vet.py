@@ -399,6 +399,6 @@ def test_only_what_is_in_stock_takes_an_inverters_place():
 def test_checks_of_several_units_name_the_worst():
     row = row_of("LL-B03")
     vetted = SEED.vet(seed_bundle(row), SITES[row["site"]])
-    pair = vetted.bench.pair(vetted.bundle.inverter)
+    pair = SEED.bench(vetted.bundle.module, vetted.site).pair(vetted.bundle.inverter)
     assert verdict(checks_of(pair, vetted.option.wired)) is vetted.option.verdict
     assert {c.check: c.value for c in vetted.checks}["string-inputs"] == 1
