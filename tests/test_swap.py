@@ -166,11 +166,9 @@ def test_a_mixed_string_is_held_against_the_limits_with_its_own_sum():
 
 
 @pytest.fixture
-def demo(ferrule, tmp_path):
+def demo(ferrule, demo_catalog):
     """The command on the demo's catalog."""
-    path = tmp_path / "demo.sqlite"
-    assert ferrule("demo", "--keep", path).status == 0
-    return lambda *arguments: ferrule("swap", *arguments, "--catalog", path)
+    return lambda *arguments: ferrule("swap", *arguments)
 
 
 ARRAY = ("-m", "klassik 270p", "-i", "viola 5", "--strings", "1x11|1x11", "--low", -12, "--high", 37)

@@ -234,11 +234,9 @@ def test_refusals():
 
 
 @pytest.fixture
-def demo(ferrule, tmp_path: Path):
+def demo(ferrule, demo_catalog: Path):
     """The command on the demo's catalog."""
-    path = tmp_path / "demo.sqlite"
-    assert ferrule("demo", "--keep", path).status == 0
-    return lambda *arguments: ferrule(*arguments, "--catalog", path)
+    return ferrule
 
 
 ONE = ("vet", "--module", "klassik 275p", "--count", 14, "--inverter", "fiddle 3")
