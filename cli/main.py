@@ -9,16 +9,14 @@ from typing import Annotated, Any
 import typer
 
 from catalog.errors import CatalogError
-from cli.groups import Group
+from cli.groups import Commands
 from matcher.errors import MatcherError
 
 BAD_INPUT = 2
 INTERRUPTED = 130
 
-app = typer.Typer(
+app = Commands(
     name="ferrule",
-    cls=Group,
-    no_args_is_help=True,
     # Plain help: markup would take a unit such as [degC] for a tag and drop it.
     rich_markup_mode=None,
     context_settings={"help_option_names": ["--help", "-h"], "max_content_width": 100},

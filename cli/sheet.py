@@ -2,12 +2,10 @@
 
 from __future__ import annotations
 
-import typer
-
 from cli import sheet_amend, sheet_backup, sheet_enter, sheet_export, sheet_find, sheet_history, sheet_load, sheet_show, sheet_twins
-from cli.groups import Group
+from cli.groups import Commands
 
-app = typer.Typer(cls=Group, no_args_is_help=True, help="The datasheets that are kept: load, enter, find, show, amend, export, history.")
+app = Commands(help="The datasheets that are kept: load, enter, find, show, amend, export, history.")
 app.command("load")(sheet_load.load)
 app.command("find")(sheet_find.find)
 app.command("show")(sheet_show.show)

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Annotated, Any
 import typer
 
 from catalog.errors import CatalogError
-from cli.groups import Group
+from cli.groups import Commands
 from cli.opening import CatalogOption, open_catalog
 from cli.site_weather import missing_temperatures, pair, say_weather, weather_facts
 from cli.siting import (
@@ -30,7 +30,7 @@ if TYPE_CHECKING:
 LIST_SCHEMA = "ferrule.sites/1"
 SCHEMA = "ferrule.site/1"
 
-app = typer.Typer(cls=Group, no_args_is_help=True, help="Sites that are kept by name: add, list, show, drop.")
+app = Commands(help="Sites that are kept by name: add, list, show, drop.")
 
 NameArgument = Annotated[str, typer.Argument(metavar="NAME", help="Name of the site.", show_default=False)]
 JsonOption = Annotated[bool, typer.Option("--json", help="Print the result as a document.")]

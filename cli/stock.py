@@ -2,12 +2,10 @@
 
 from __future__ import annotations
 
-import typer
-
 from cli import stock_grid, stock_list, stock_load, stock_review
-from cli.groups import Group
+from cli.groups import Commands
 
-app = typer.Typer(cls=Group, no_args_is_help=True, help="What is on the shelf, at what price: load, review, decide, list, grid.")
+app = Commands(help="What is on the shelf, at what price: load, review, decide, list, grid.")
 app.command("load")(stock_load.load)
 app.command("review")(stock_review.review)
 app.command("decide")(stock_review.decide)
