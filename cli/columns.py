@@ -12,6 +12,7 @@ from catalog.records import FieldSpec
 from catalog.sheet_entries import set_option, what_is_needed
 from cli.console import counted
 from cli.opening import open_catalog
+from cli.quoting import quoted
 
 _KEY = "said/columns/"
 
@@ -152,10 +153,11 @@ def _wanted(
         yield f"  add to the command{with_what}: {' '.join(options)}"
     if doubtful:
         first = doubtful[0]
-        yield f'  or say one column: --map "{first.heading}={first.field}"; --map "{first.heading}=" leaves it out'
+        one, none = quoted(f"{first.heading}={first.field}"), quoted(f"{first.heading}=")
+        yield f"  or say one column: --map {one}; --map {none} leaves it out"
     elif lacking:
-        name = lacking[-1].name
-        yield f'  or say which column it is: --map "{left[0] if left else "HEADING"}={name}"'
+        named = quoted(f"{left[0] if left else 'HEADING'}={lacking[-1].name}")
+        yield f"  or say which column it is: --map {named}"
 
 
 def _meant(column: MappedColumn) -> str:

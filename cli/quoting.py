@@ -14,6 +14,13 @@ if TYPE_CHECKING:
 _WIDTH = 96
 
 
+def quoted(word: str) -> str:
+    """A word as it is typed: in double quotes, which every shell knows, where it is not plain."""
+    if shlex.quote(word) == word:
+        return word
+    return shlex.quote(word) if any(mark in word for mark in '"$`\\!') else f'"{word}"'
+
+
 def amend_command(record: Module | Inverter, *confirms: Confirm) -> str:
     """The command that enters the values which a ``to-confirm`` verdict asked for.
 
@@ -39,7 +46,7 @@ def amend_command(record: Module | Inverter, *confirms: Confirm) -> str:
             # How many trackers there are is assumed too, so that is asked for with it.
             values.append(f"{group}.trackers=VALUE")
         values.append(f"{group}.{confirm.field}=VALUE")
-    quoted = [f'"{value}"' if "[" in value else value for value in dict.fromkeys(values)]
-    words = [f"ferrule sheet amend {shlex.quote(record.name)}", *quoted, "--source DOCUMENT"]
+    typed = [quoted(value) for value in dict.fromkeys(values)]
+    words = [f"ferrule sheet amend {quoted(record.name)}", *typed, "--source DOCUMENT"]
     line = " ".join(words)
     return line if len(line) <= _WIDTH else " \\\n    ".join([words[0], " ".join(words[1:])])

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import shlex
 import sys
 from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, Annotated
@@ -88,6 +87,7 @@ def say_matched(catalog: Catalog) -> None:
 def say_open(catalog: Catalog, items: Sequence[StockItem]) -> int:
     """Print the articles that wait for a decision, with candidates; return how many there are."""
     from cli.console import counted, say
+    from cli.quoting import quoted
 
     waiting = _unlike([item for item in items if item.open])
     if not waiting:
@@ -103,7 +103,7 @@ def say_open(catalog: Catalog, items: Sequence[StockItem]) -> int:
             say(_not_loaded(item), indent=6)
     if len(waiting) > _SHOWN:
         say(f"... and {len(waiting) - _SHOWN:,} more", indent=2)
-    first = shlex.quote(waiting[0].article or waiting[0].text)
+    first = quoted(waiting[0].article or waiting[0].text)
     say("Decide with 'ferrule stock review' on a terminal, or one by one (--none: no record of the catalog):")
     print(f'  ferrule stock decide {first} "Maker Model"')
     return len(waiting)

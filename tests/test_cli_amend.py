@@ -268,3 +268,11 @@ def test_a_table_under_our_own_headings_tells_all_that_a_row_lacks(ferrule, smal
     ran = ferrule("sheet", "load", own, other)
     assert ran.status == 2 and "--set technology=Mono-c-Si --set bifacial=no" in ran.err
     assert "needs also mppt_low_v" in ran.err, "both files are told of"
+
+
+@pytest.mark.parametrize("word", ["plain", "two words", "inputs[1].x=VALUE", 'say "x"', "it's", "a$b `c` !d \\e", "W (W)=x"])
+def test_what_is_to_be_pasted_is_one_word_to_a_shell(word):
+    from cli.quoting import quoted
+
+    assert shlex.split(quoted(word)) == [word]
+    assert quoted(word)[0] != "'" or set('"$`\\!') & set(word), "one kind of quotes where it can be"
