@@ -191,5 +191,5 @@ def _list(
     if json:
         print_document(lines, rules)
     elif out is None:
-        show_list(lines, everything)
+        show_list(vetted, everything)
     return 0 if all(line.vetted is not None and line.vetted.sound for line in lines) else UNSOUND

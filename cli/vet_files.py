@@ -119,6 +119,7 @@ def _check(c: Check) -> dict[str, Any]:
 _COLUMNS: tuple[tuple[str, int, int | None], ...] = (
     ("row", 6, 0), ("article", 14, None), ("verdict", 13, None), ("module", 30, None), ("modules", 9, 0),
     ("inverter", 30, None), ("inverters", 9, 0), ("site", 20, None), ("wiring", 22, None), ("DC/AC ratio", 8, 3),
+    ("clipping loss [%]", 8, 2), ("yearly energy [kWh]", 10, 0),
     ("coldest [degC]", 9, 1), ("hottest [degC]", 9, 1), ("cause", 22, None), ("smallest change", 40, None),
     ("to confirm", 50, None), ("reason or remark", 60, None),
 )  # fmt: skip
@@ -128,13 +129,14 @@ def _values(line: Line) -> list[Any]:
     row, v = line.row, line.vetted
     if v is None:
         return [row.number, row.article, line.verdict, row.module, None, row.inverter, None, row.site,
-                *[None] * 7, line.reason]  # fmt: skip
+                *[None] * 9, line.reason]  # fmt: skip
     o = v.option
     inverter = v.inverter.name
     window = (None, None) if v.window is None else (v.window.coldest_c, v.window.hottest_c)
     return [
         row.number, row.article, line.verdict, v.bundle.module.name, v.bundle.modules, inverter, v.bundle.units,
-        v.site.name, o.label if o else None, o.dc_ac_ratio if o else None, *window, cause(v.failed) or None,
+        v.site.name, o.label if o else None, o.dc_ac_ratio if o else None,
+        o.clipping_loss_pct if o else None, o.yearly_kwh if o else None, *window, cause(v.failed) or None,
         mend_words(v.mends[0], v) if v.mends else None, confirm_line(o) if o else None,
         v.reason or "; ".join(v.remarks) or None,
     ]  # fmt: skip

@@ -9,17 +9,19 @@ from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, number, print_table, say
 from cli.facts import confirm_words
 from cli.fit_screen import climate_window
-from cli.vet_words import assumed, bounds_known, cause, mend_words, short, window_short, window_words
+from cli.vet_words import assumed, cause, mend_words, short, window_short, window_words
 from matcher.options import label
 
 if TYPE_CHECKING:
-    from cli.vet_lists import Line
+    from cli.vet_lists import Line, VettedList
     from cli.years import SiteYear
     from matcher.checks import Check
     from matcher.vet import Vetted
 
+NO_CLIPPING_ANYWHERE = "No clipping figure: no site is given (--site, or --low and --high with --lat and --lon)."
+
 #: Lines of a list that fit one screen with what stands around them.
-ONE_SCREEN = 18
+ONE_SCREEN = 17
 
 
 def show(vetted: Vetted, year: SiteYear | None, rules: bool = False) -> None:
@@ -76,8 +78,7 @@ def _show_sound(vetted: Vetted) -> None:
     if option.clipping_loss_pct is not None:
         words += f", {option.clipping_loss_pct:.2f} % clipped, {number(option.yearly_kwh)} kWh/year"
     say(f"{words}.")
-    waits = "" if bounds_known(vetted) else ", once the values below are confirmed"
-    say(_sentence(window_words(vetted.window)).removesuffix(".") + f"{waits}.")
+    say(_sentence(window_words(vetted.window)))
     if option.confirm:
         say("To confirm on the datasheets before ordering:")
         for c in option.confirm:
@@ -104,21 +105,48 @@ def _check_row(c: Check) -> list[str]:
             number(c.margin_pct, 1), str(c.verdict), rule]  # fmt: skip
 
 
-def show_list(lines: Sequence[Line], everything: bool) -> None:
+def show_list(vetted: VettedList, everything: bool) -> None:
     """Print a line for each bundle, those that want attention first where not all can be shown."""
+    lines = vetted.lines
     shown = list(lines)
     if not everything and len(lines) > ONE_SCREEN:
         shown = sorted(lines, key=lambda line: _ATTENTION[line.verdict])[:ONE_SCREEN]
     say(summary(lines))
     say()
+    clips = any(clipping(line) is not None for line in lines)
     columns = [Column("row", number=True), Column("article", fold=True), Column("mod.", number=True), Column("verdict"),
+               *([Column("clip %", number=True)] if clips else []),
                Column("holds at degC", number=True), Column("wiring, or what is wrong", fold=True)]  # fmt: skip
-    print_table(columns, [_line_row(line) for line in shown])
+    print_table(columns, [_line_row(line, clips) for line in shown])
     if len(shown) < len(lines):
         say(f"... and {len(lines) - len(shown):,} more (--all shows them, --out FILE.xlsx holds all with their reasons).")
     say()
+    for line in year_words(vetted):
+        say(line)
     for line in CAUTIONS:
         say(line)
+
+
+def clipping(line: Line) -> float | None:
+    """Clipping loss of a bundle [%], where it is known."""
+    return None if line.vetted is None or line.vetted.option is None else line.vetted.option.clipping_loss_pct
+
+
+def year_words(vetted: VettedList) -> list[str]:
+    """Where clipping and energy of a list come from, site by site; or why there are none."""
+    if not vetted.years:
+        return [NO_CLIPPING_ANYWHERE]
+    if len(vetted.years) == 1:
+        (year,) = vetted.years.values()
+        lines = list(year.notes or (f"No clipping figure: {year.why_not}.",))
+    else:
+        # All that is to be said of several sites would bury the list.
+        known: dict[str, list[str]] = {}
+        for site, year in vetted.years.items():
+            what = f"No clipping figure ({year.why_not})" if year.plane is None else f"Weather: {year.weather}"
+            known.setdefault(what, []).append(site.name)
+        lines = [f"{what}, for {', '.join(sites)}." for what, sites in known.items()]
+    return lines + [HOURLY_MEANS] * any(year.plane is not None for year in vetted.years.values())
 
 
 def summary(lines: Sequence[Line]) -> str:
@@ -132,11 +160,13 @@ def summary(lines: Sequence[Line]) -> str:
 _ATTENTION = {"does-not-fit": 0, "not-judged": 1, "no-verdict": 2, "to-confirm": 3, "fits": 4}
 
 
-def _line_row(line: Line) -> list[str]:
+def _line_row(line: Line, clips: bool) -> list[str]:
     v = line.vetted
+    head = [str(line.row.number), line.row.article]
     if v is None:
-        return [str(line.row.number), line.row.article, line.row.modules, line.verdict, "", line.reason]
+        return [*head, line.row.modules, line.verdict, *[""] * (2 if clips else 1), line.reason]
     holds = "" if v.verdict == "no-verdict" else window_short(v.window)
     if v.option is not None:
         holds = climate_window(v.option)
-    return [str(line.row.number), line.row.article, str(v.bundle.modules), line.verdict, holds, short(v)]
+    clipped = [number(clipping(line), 2)] if clips else []
+    return [*head, str(v.bundle.modules), line.verdict, *clipped, holds, short(v)]

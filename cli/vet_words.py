@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from cli.facts import COLDEST_ON_EARTH_C
+from cli.facts import COLDEST_ON_EARTH_C, NO_LIMIT
 
 if TYPE_CHECKING:
     from matcher.anyclimate import Window
@@ -32,27 +32,42 @@ def cause(failed: tuple[str, ...]) -> str:
 
 
 def window_words(window: Window | None) -> str:
-    """A climate window as a sentence without its end."""
+    """A climate window as a sentence without its end; an end that a value to confirm may bound is told so."""
     if window is None:
         return "sound in no climate"
-    low = "" if window.coldest_c is None or window.coldest_c < COLDEST_ON_EARTH_C else f"{_up(window.coldest_c)}"
-    high = "" if window.hottest_c is None else f"{_down(window.hottest_c)}"
-    if not low and not high:
-        return "sound in any climate"
+    low, high = _ends(window)
     parts = []
-    if low:
+    if low is not None:
         parts.append(f"the lowest temperature on record is {low} degC or milder")
-    if high:
-        parts.append(f"the highest {'temperature on record ' if not low else ''}is {high} degC or cooler")
-    return "sound where " + " and ".join(parts)
+    if high is not None:
+        parts.append(f"the highest {'temperature on record ' if low is None else ''}is {high} degC or cooler")
+    waits = [
+        words for end, is_open, words in (
+            (low, window.cold_open, "how cold it may get"), (high, window.hot_open, "how hot it may get"),
+        ) if is_open and end is None
+    ]  # fmt: skip
+    said = "sound where " + " and ".join(parts) if parts else "sound in any climate"
+    if waits:
+        said = said if parts else "sound as far as is known"
+        return f"{said}; {' and '.join(waits)} waits for a value to confirm"
+    return said + (", once confirmed" if window.cold_open or window.hot_open else "")
 
 
 def window_short(window: Window | None) -> str:
-    """A climate window for a column: coldest to hottest [degC]."""
+    """A climate window for a column: coldest to hottest [degC]; ``?`` where a value to confirm would bound it."""
     if window is None:
         return "nowhere"
-    low = "any" if window.coldest_c is None or window.coldest_c < COLDEST_ON_EARTH_C else f"{_up(window.coldest_c)}"
-    return f"{low} to {'any' if window.hottest_c is None else _down(window.hottest_c)}"
+    low, high = _ends(window)
+    if low is None and high is None and not (window.cold_open or window.hot_open):
+        return NO_LIMIT
+    ends = ((low, window.cold_open), (high, window.hot_open))
+    return " to ".join(str(end) if end is not None else "?" if is_open else NO_LIMIT for end, is_open in ends)
+
+
+def _ends(window: Window) -> tuple[int | None, int | None]:
+    """Both ends in whole degrees on the safe side; ``None`` where nothing on record bounds the window on Earth."""
+    cold, hot = window.coldest_c, window.hottest_c
+    return None if cold is None or cold < COLDEST_ON_EARTH_C else _up(cold), None if hot is None else _down(hot)
 
 
 def _up(value: float) -> int:
@@ -62,12 +77,6 @@ def _up(value: float) -> int:
 
 def _down(value: float) -> int:
     return int((value + 1e-9) // 1)
-
-
-def bounds_known(vetted: Vetted) -> bool:
-    """Whether no value that is still to be confirmed could narrow the climate window."""
-    confirm = () if vetted.option is None else vetted.option.confirm
-    return not any(c.field in ("max_dc_voltage_v", "max_system_voltage_v", "voc_coef_pct") for c in confirm)
 
 
 def mend_words(mend: Mend, vetted: Vetted) -> str:

@@ -24,6 +24,7 @@ from matcher.fit import Fit, Option, Totals
 from matcher.limits import UNLIMITED
 from matcher.moduleyear import ModuleYear, PlaneYear
 from matcher.options import Options, Unit, build, join
+from matcher.order import ranked
 from matcher.request import Request
 from matcher.rules import RuleSet
 from matcher.search import Search
@@ -202,7 +203,10 @@ class Bench:
             if first is not None:
                 return first
             options = search.table(0, i, np.array([[w[:2]] for w in ways]), np.array([w[2] for w in ways]))
-            return options.take(search.rank(options)[:1])
+            asked, nothing = search.request, np.full(len(options), np.nan)
+            # All of one pair, so that names do not matter.
+            order = ranked(options, asked.order, asked.clip_cap_pct, np.zeros(len(options), dtype=np.int64), nothing)
+            return options.take(order[:1])
         unsure = not self._holds(i, modules, sure=True)
         block = next(_in_order(space, modules, unsure), None)
         first = None if block is None else self._within_cap(i, block[:1], unsure)

@@ -331,7 +331,11 @@ def _no_verdict(bundle: Bundle, bench: Bench, site: Site, solved: bool = False) 
 
 
 def _sound(bundle: Bundle, option: Option, bench: Bench, site: Site, solved: bool) -> Vetted:
-    window = Window(option.coldest_c, option.hottest_c)
+    waiting = {c.field for c in option.confirm}
+    window = Window(
+        option.coldest_c, option.hottest_c, bool(waiting & {"max_dc_voltage_v", "max_system_voltage_v"}),
+        "voc_coef_pct" in waiting,
+    )  # fmt: skip
     return Vetted(
         bundle, str(option.verdict), site, solved, option, checks=option.checks, wired=option.wired, window=window,
         remarks=tuple(_remarks(option)), inverters=bench.fit.inverters,
