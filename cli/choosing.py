@@ -7,10 +7,14 @@ from typing import TYPE_CHECKING
 
 from catalog.errors import CatalogError
 from cli.kinds import KINDS, all_names
+from cli.quoting import quoted
 
 if TYPE_CHECKING:
     from catalog.records import Inverter, Module
     from catalog.store import Catalog
+
+#: Candidates that are listed.
+_LISTED = 10
 
 
 def choose_module(catalog: Catalog, text: str) -> Module:
@@ -34,7 +38,7 @@ def choose(catalog: Catalog, text: str, kinds: Sequence[str] = KINDS) -> tuple[s
     from catalog.names import look_up
 
     known = all_names(catalog, kinds)
-    found = look_up(text, known.names)
+    found = look_up(text, known.names, limit=_LISTED + 1)
     if found.match is not None:
         return known.records[found.match]
     what = " or ".join(kinds)
@@ -44,7 +48,10 @@ def choose(catalog: Catalog, text: str, kinds: Sequence[str] = KINDS) -> tuple[s
         head = f"{text!r} could be several {'s or '.join(kinds)}s: write one of these in full"
     else:
         head = f"no {what} is called {text!r}; the nearest names are"
-    near = [known.names[c.id].name for c in found.candidates[:10]]
+    listed = found.candidates[:_LISTED]
+    near = [known.names[c.id].name for c in listed]
     if len(set(near)) < len(near):
-        near = [f"{known.names[c.id].name} (--kind {known.records[c.id][0]})" for c in found.candidates[:10]]
+        near = [f"{known.names[c.id].name} (--kind {known.records[c.id][0]})" for c in listed]
+    if found.ambiguous and len(found.candidates) > _LISTED:
+        near.append(f"... and more: 'ferrule sheet find {quoted(text)}' lists them")
     raise CatalogError("\n  ".join([head, *near]))

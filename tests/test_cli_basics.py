@@ -11,9 +11,11 @@ import subprocess
 import sys
 import tempfile
 from collections.abc import Iterator
+from dataclasses import replace
 from pathlib import Path
 
 import pytest
+from catalog_records import MODULES
 
 from catalog.store import Catalog
 from cli.main import command as whole
@@ -275,3 +277,14 @@ def test_a_reader_that_closes_the_pipe_hears_no_complaint(small_catalog):
         ["sh", "-c", f"{shlex.join(command)} | true"], capture_output=True, text=True, cwd=ROOT, timeout=120
     )
     assert ran.stderr == ""
+
+
+def test_of_many_candidates_some_are_listed_and_the_rest_is_a_command_away(ferrule, small_catalog):
+    with Catalog.open(small_catalog) as catalog:
+        catalog.load([replace(MODULES[0], id=None, model=f"Row {k}") for k in range(101, 113)], [])
+    ran = ferrule("fit", "-m", "alderfell row", "--low", "-5", "--high", "35")
+    head, *listed, more = ran.err.splitlines()
+    assert ran.status == 2 and head.startswith("ferrule: 'alderfell row' could be several")
+    assert len(listed) == 10
+    found = ferrule(*shlex.split(re.search(r"'ferrule (.+)'", more)[1]), "--limit", 50).out
+    assert sum("Row 1" in line for line in found.splitlines()) == 12
