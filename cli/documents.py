@@ -3,11 +3,15 @@
 from __future__ import annotations
 
 import json
+import sys
 from collections.abc import Iterator, Mapping
+from contextlib import nullcontext
 from typing import IO, TYPE_CHECKING, Any
 
 import numpy as np
 
+from cli.console import on_terminal
+from cli.facts import number_of_options
 from matcher.limits import voltage_cap
 
 if TYPE_CHECKING:
@@ -170,9 +174,14 @@ def write_fit(
     seen_modules: set[int] = set()
     seen_inverters: set[int] = set()
     stream.write(', "options": [')
-    for k, line in enumerate(_option_lines(fit, with_checks, seen_modules, seen_inverters)):
-        stream.write(",\n " if k else "\n ")
-        stream.write(line)
+    total = number_of_options(fit)
+    # A document that goes to the terminal itself is not to be mixed with words about it.
+    silent = nullcontext(lambda done, of: None)
+    with silent if stream is sys.stdout else on_terminal("Written", "options") as progress:
+        for k, line in enumerate(_option_lines(fit, with_checks, seen_modules, seen_inverters)):
+            stream.write(",\n " if k else "\n ")
+            stream.write(line)
+            progress(k + 1, total)
     stream.write("],\n")
     modules = {module_key(fit, m): module_entry(fit, m) for m in sorted(seen_modules)}
     if not modules and len(fit.modules) == 1:

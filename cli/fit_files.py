@@ -6,20 +6,20 @@ import csv
 import os
 import sys
 import tempfile
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Iterable, Iterator, Mapping
 from contextlib import contextmanager
 from pathlib import Path
 from typing import IO, TYPE_CHECKING, Any
 
 from catalog.errors import CatalogError
-from cli.console import note
+from cli.console import note, on_terminal
 from cli.documents import inverter_key, module_key, write_fit
-from matcher.options import label
+from cli.facts import number_of_options
+from matcher.options import Options, join
 
 if TYPE_CHECKING:
     from cli.years import SiteYear
     from matcher.fit import Fit
-    from matcher.options import Options
 
 FORMS = (".csv", ".json", ".xlsx", ".html", ".parquet")
 
@@ -114,23 +114,26 @@ def _rejected(fit: Fit, why: bool) -> list[dict[str, Any]] | None:
     ]  # fmt: skip
 
 
-#: Columns of the CSV form: header with unit, and the value of row k of a table of options.
-_COLUMNS: tuple[tuple[str, Callable[[Fit, Options, int], Any]], ...] = (
-    ("verdict", lambda f, t, k: "to-confirm" if t.to_confirm[k] else "fits"),
-    ("module_maker", lambda f, t, k: safe(f.modules[t.module[k]].maker)),
-    ("module_model", lambda f, t, k: safe(f.modules[t.module[k]].model)),
-    ("inverter_maker", lambda f, t, k: safe(f.inverters[t.inverter[k]].maker)),
-    ("inverter_model", lambda f, t, k: safe(f.inverters[t.inverter[k]].model)),
-    ("units", lambda f, t, k: t.units[k]),
-    ("modules", lambda f, t, k: t.modules[k]),
-    ("arrangement", lambda f, t, k: label(t.wired(k))),
-    ("dc_ac_ratio", lambda f, t, k: f"{t.ratio[k]:.6g}"),
-    ("clipping_loss_pct", lambda f, t, k: blank(t.clipping_pct[k])),
-    ("yearly_kwh", lambda f, t, k: blank(t.yearly_kwh[k])),
-    ("cold_voltage_margin_pct", lambda f, t, k: blank(t.margin_pct[k])),
-    ("string_lengths", lambda f, t, k: t.lengths[k]),
-    ("rules", lambda f, t, k: safe(f.request.rules.name)),
+#: Columns of the CSV form: header with unit, and the values of a table of options.
+_COLUMNS: tuple[tuple[str, Callable[[Fit, Options], list[Any]]], ...] = (
+    ("verdict", lambda f, t: ["to-confirm" if unsure else "fits" for unsure in t.to_confirm.tolist()]),
+    ("module_maker", lambda f, t: [safe(f.modules[m].maker) for m in t.module.tolist()]),
+    ("module_model", lambda f, t: [safe(f.modules[m].model) for m in t.module.tolist()]),
+    ("inverter_maker", lambda f, t: [safe(f.inverters[i].maker) for i in t.inverter.tolist()]),
+    ("inverter_model", lambda f, t: [safe(f.inverters[i].model) for i in t.inverter.tolist()]),
+    ("units", lambda f, t: t.units.tolist()),
+    ("modules", lambda f, t: t.modules.tolist()),
+    ("arrangement", lambda f, t: _labels(t)),
+    ("dc_ac_ratio", lambda f, t: [f"{ratio:.6g}" for ratio in t.ratio.tolist()]),
+    ("clipping_loss_pct", lambda f, t: list(map(blank, t.clipping_pct.tolist()))),
+    ("yearly_kwh", lambda f, t: list(map(blank, t.yearly_kwh.tolist()))),
+    ("cold_voltage_margin_pct", lambda f, t: list(map(blank, t.margin_pct.tolist()))),
+    ("string_lengths", lambda f, t: t.lengths.tolist()),
+    ("rules", lambda f, t: [safe(f.request.rules.name)] * len(t)),
 )
+
+#: Options that are put into words at once.
+_PART = 20_000
 
 
 def write_csv(fit: Fit, stream: IO[str]) -> None:
@@ -138,13 +141,44 @@ def write_csv(fit: Fit, stream: IO[str]) -> None:
     writer = csv.writer(stream)
     shelf = fit.search.shelf
     writer.writerow(["rank", *(header for header, _ in _COLUMNS), *(["cost", "currency"] if shelf else [])])
-    rank = 0
-    for table in fit.ranked():
-        costs = fit.search.cost(table).tolist() if shelf else []
-        for k in range(len(table)):
-            rank += 1
-            cost = [f"{costs[k]:.2f}", shelf.currency] if shelf and costs[k] == costs[k] else [""] * 2 if shelf else []
-            writer.writerow([rank, *(value(fit, table, k) for _, value in _COLUMNS), *cost])
+    rank, total = 0, number_of_options(fit)
+    with on_terminal("Written", "options") as progress:
+        for t in _parts(fit):
+            columns = [range(rank + 1, rank + len(t) + 1), *(values(fit, t) for _, values in _COLUMNS)]
+            if shelf:
+                costs = fit.search.cost(t).tolist()
+                columns += [["" if c != c else f"{c:.2f}" for c in costs], ["" if c != c else shelf.currency for c in costs]]
+            writer.writerows(zip(*columns, strict=True))
+            rank += len(t)
+            progress(rank, total)
+
+
+def _parts(fit: Fit) -> Iterator[Options]:
+    """All options in order, in tables of about one size."""
+    for table in gathered(fit.ranked(), _PART):
+        for first in range(0, len(table), _PART):
+            yield table.take(slice(first, first + _PART))
+
+
+def gathered(tables: Iterable[Options], rows: int) -> Iterator[Options]:
+    """The same tables in fewer and larger ones, of so many rows at least but the last."""
+    held: list[Options] = []
+    number = 0
+    for table in tables:
+        held.append(table)
+        number += len(table)
+        if number >= rows:
+            yield join(held)
+            held, number = [], 0
+    if held:
+        yield join(held)
+
+
+def _labels(options: Options) -> list[str]:
+    from cli.sweep_files import labels
+
+    words, which = labels(options)
+    return [words[k] for k in which.tolist()]
 
 
 def blank(value: float) -> str:

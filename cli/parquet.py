@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from catalog.errors import CatalogError
-from matcher.options import Options, join
+from matcher.options import Options
 
 if TYPE_CHECKING:
     import pyarrow
@@ -64,29 +64,17 @@ def write_fit(fit: Fit, stream: Any) -> None:
     """Write all options of a result, in order."""
     import pyarrow.parquet as pq
 
+    from cli.fit_files import gathered
+
     writer = None
     rank = 0
-    for options in _gathered(fit.ranked()):
+    for options in gathered(fit.ranked(), _ROW_GROUP):
         table = _table({"rank": np.arange(rank + 1, rank + len(options) + 1), **_fit_columns(fit, options)})
         rank += len(options)
         writer = writer or pq.ParquetWriter(stream, table.schema, **_COMPRESSION)
         writer.write_table(table, row_group_size=_ROW_GROUP)
     if writer is not None:
         writer.close()
-
-
-def _gathered(tables: Iterable[Options]) -> Iterable[Options]:
-    """The same tables in fewer and larger ones; at least one."""
-    held: list[Options] = []
-    rows = 0
-    for table in tables:
-        held.append(table)
-        rows += len(table)
-        if rows >= _ROW_GROUP:
-            yield join(held)
-            held, rows = [], 0
-    if held:
-        yield join(held)
 
 
 def _fit_columns(fit: Fit, t: Options) -> dict[str, Column]:

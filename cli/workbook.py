@@ -8,6 +8,7 @@ from typing import IO, TYPE_CHECKING, Any
 from catalog.errors import CatalogError
 from cli import facts
 from cli.cautions import CAUTIONS
+from cli.console import on_terminal
 from cli.fit_screen import answer, question
 from cli.worksheets import Column, Formats, Table, set_page
 
@@ -84,13 +85,15 @@ class _Sheets:
             note = f"Of {self.number:,} options, the checks of the first {EXPLAINED:,} are listed."
             self.checks.heading(note)
             self.confirm.heading(note.replace("checks", "values to confirm"))
-        for option in self._all():
-            first = first or [option]
-            self.options.row(self._option_row(option))
-            if option.rank <= EXPLAINED:
-                for values in self._check_rows(option):
-                    self.checks.row(values)
-                self._fill_confirm(option)
+        with on_terminal("Written", "options") as progress:
+            for option in self._all():
+                first = first or [option]
+                self.options.row(self._option_row(option))
+                if option.rank <= EXPLAINED:
+                    for values in self._check_rows(option):
+                        self.checks.row(values)
+                    self._fill_confirm(option)
+                progress(option.rank, self.number)
         for table in (self.options, self.confirm, self.checks):
             table.close()
         self._fill_basis(first)
