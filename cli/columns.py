@@ -144,8 +144,6 @@ def _wanted(
     for spec in lacking:
         yield f"  {spec.name}: {what_is_needed(spec)}"
     left = [c.heading for c in found.columns if c.field is None and c.heading]
-    if lacking and left:
-        yield f"  columns left out so far: {', '.join(map(repr, left))}"
     options = ["--yes"] if doubtful else []
     options += [set_option(spec) or f"--set {spec.name}=..." for spec in lacking if spec.name != "model"]
     if options:
@@ -155,9 +153,8 @@ def _wanted(
         first = doubtful[0]
         one, none = quoted(f"{first.heading}={first.field}"), quoted(f"{first.heading}=")
         yield f"  or say one column: --map {one}; --map {none} leaves it out"
-    elif lacking:
-        named = quoted(f"{left[0] if left else 'HEADING'}={lacking[-1].name}")
-        yield f"  or say which column it is: --map {named}"
+    if lacking and left:
+        yield f'  or, if one of the columns left out is meant ({", ".join(left)}): --map "HEADING=FIELD"'
 
 
 def _meant(column: MappedColumn) -> str:
