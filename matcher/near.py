@@ -97,10 +97,10 @@ def no_length(pair: Pair, space: Space, window: ClimateWindow) -> Rejection:
     excess, check, value, limit = over[0]
     fewer = n - 1
     if not fewer:
-        words = [f"a single module makes {value:.1f} V of {limit:g} V {_when(check)}"]
+        words = [f"a single module makes {value:,.1f} V of {limit:,g} V {_when(check)}"]
     else:
-        words = [f"{n} in series would be needed to reach {low_limit:g} V in the heat, and make {value:.1f} V of"
-                 f" {limit:g} V {_when(check)}"]  # fmt: skip
+        words = [f"{n} in series would be needed to reach {low_limit:,g} V in the heat, and make {value:,.1f} V of"
+                 f" {limit:,g} V {_when(check)}"]  # fmt: skip
     ways = list(_ways_out_of_length(pair, window, n, fewer, [o[1] for o in over], low, low_limit, each))
     if ways:
         words.append("it would take " + " or ".join(ways))
@@ -125,7 +125,7 @@ def _ways_out_of_length(
         if hottest is not None and pair.site.design_high_c - 20.0 <= hottest < pair.site.design_high_c:
             yield f"a design high {pair.site.design_high_c - hottest:.1f} K cooler with {_in_series(fewer)}"
         word = "a window from" if low == "mppt-low" else "a start voltage of"
-        yield f"{word} {np.floor(fewer * each):.0f} V for {_in_series(fewer)} (it has {low_limit:g} V)"
+        yield f"{word} {np.floor(fewer * each):,.0f} V for {_in_series(fewer)} (it has {low_limit:,g} V)"
 
 
 def no_string(pair: Pair) -> Rejection:
@@ -148,7 +148,7 @@ def _no_count(pair: Pair, space: Space, request: Request) -> Rejection:
         least = space.shortest * pmax
         return Rejection(
             ("array-power",),
-            f"the shortest string of {space.shortest} modules has {least:,.0f} W, the inverter takes {array:,.0f} W",
+            f"the shortest string, {_in_series(space.shortest)}, has {least:,.0f} W, the inverter takes {array:,.0f} W",
             least / array - 1.0,
         )
     low_units, high_units = request.units
@@ -195,7 +195,7 @@ def _outside_ratio(pair: Pair, counts: Sequence[int], request: Request) -> Rejec
     """Counts that can be wired, at a DC/AC ratio that is not asked for."""
     each = pair.points.pmax_w / pair.inverter.ac_power_w / request.units[0]
     misses = [_ratio_miss(c * each, request.ratio) for c in counts]
-    said = " or ".join(f"{c} modules (DC/AC {c * each:.3f})" for c in counts)
+    said = " or ".join(f"{_modules(c)} (DC/AC {c * each:.3f})" for c in counts)
     low, high = request.ratio
     words = f"it can be wired with {said}, outside the asked DC/AC ratio of {low:g} to {high:g}"
     sizes = [c * each for c in counts]
@@ -318,15 +318,18 @@ def _wrong_count(
     trackers = units * sum(g.trackers for g in space.groups)
     shared = f" on {units} units" if units > 1 else ""
     lengths = f"{space.shortest} to {space.longest}" if space.shortest < space.longest else str(space.longest)
-    words = f"no strings of {lengths} on {trackers} tracker{'s' if trackers > 1 else ''} add up to {total} modules"
+    words = f"no strings of {lengths} on {trackers:,} tracker{'s' if trackers > 1 else ''} add up to {_modules(total)}"
     near = [c for c in (smaller, larger) if c is not None]
     distance = min((abs(c - total) / total for c in near), default=1.0)
     return Rejection(("module-count",), f"{words}{shared}{_counts_that_work(smaller, larger)}", distance)
 
 
 def _counts_that_work(smaller: int | None, larger: int | None) -> str:
-    near = [str(c) for c in (smaller, larger) if c is not None]
-    return f"; {' or '.join(near)} modules can be wired" if near else ""
+    near = [c for c in (smaller, larger) if c is not None]
+    if not near:
+        return ""
+    ahead = f"{near[0]:,} or " if len(near) > 1 else ""
+    return f"; {ahead}{_modules(near[-1])} can be wired"
 
 
 def strings_stopped(
@@ -356,14 +359,14 @@ def stopped_by(pair: Pair, wired: tuple[Unit, ...], checks: Sequence[Check]) -> 
 
 
 _WHERE = {
-    "max-dc-voltage": "{value:.1f} V in the cold ({low:g} degC), the inverter takes {limit:g} V",
-    "system-voltage": "{value:.1f} V in the cold ({low:g} degC), the modules take {limit:g} V",
-    "voltage-cap": "{value:.1f} V in the cold ({low:g} degC), the cap is {limit:g} V",
-    "mppt-low": "{value:.1f} V in the heat ({high:g} degC), tracking begins at {limit:g} V",
-    "mppt-high": "{value:.1f} V at 25 degC, tracking ends at {limit:g} V",
-    "start": "{value:.1f} V in the heat ({high:g} degC), the inverter starts at {limit:g} V",
-    "short-circuit": "{value:.1f} A of design short-circuit current on a tracker that takes {limit:g} A",
-    "string-inputs": "{value:.0f} strings on a tracker with {limit:.0f} inputs",
+    "max-dc-voltage": "{value:,.1f} V in the cold ({low:g} degC), the inverter takes {limit:,g} V",
+    "system-voltage": "{value:,.1f} V in the cold ({low:g} degC), the modules take {limit:,g} V",
+    "voltage-cap": "{value:,.1f} V in the cold ({low:g} degC), the cap is {limit:,g} V",
+    "mppt-low": "{value:,.1f} V in the heat ({high:g} degC), tracking begins at {limit:,g} V",
+    "mppt-high": "{value:,.1f} V at 25 degC, tracking ends at {limit:,g} V",
+    "start": "{value:,.1f} V in the heat ({high:g} degC), the inverter starts at {limit:,g} V",
+    "short-circuit": "{value:,.1f} A of design short-circuit current on a tracker that takes {limit:,g} A",
+    "string-inputs": "{value:.0f} strings on a tracker that has inputs for {limit:.0f}",
     "array-power": "{value:,.0f} W of modules on an inverter that allows {limit:,.0f} W",
 }
 
@@ -373,6 +376,10 @@ def describe(check: Check, pair: Pair) -> str:
     return _WHERE[check.check].format(
         value=check.value, limit=check.limit, low=pair.site.design_low_c, high=pair.site.design_high_c
     )
+
+
+def _modules(n: int) -> str:
+    return f"{n:,} module{'s' if n != 1 else ''}"
 
 
 def _in_series(n: int) -> str:
