@@ -27,7 +27,7 @@ from report_cases import (
 )
 
 from catalog.records import Inputs
-from cli import facts, fit_files, report, series
+from cli import facts, fit_files, pages, report, series
 from cli.cautions import CAUTIONS
 from cli.drawing import spread
 from cli.fit_screen import question, wiring
@@ -94,7 +94,7 @@ def test_question_answer_options_reasons_and_cautions_are_there(tmp_path: Path) 
 def test_each_check_has_words_of_its_own(tmp_path: Path) -> None:
     fits = (listing(), pair(inverter=replace(DUO, inputs=(replace(DUO.inputs[0], max_power_w=8000.0),))))
     checks = {c.check for fit in fits for o in fit.options(3) for c in o.checks} | {"voltage-cap"}
-    assert checks == set(report.CHECK_WORDS)
+    assert checks == set(pages.CHECK_WORDS)
 
 
 def test_verdicts_are_words(tmp_path: Path) -> None:
@@ -293,4 +293,4 @@ def test_labels_are_moved_apart_and_stay_in_order() -> None:
 
 
 def test_units_stay_with_their_numbers() -> None:
-    assert report.typeset("at -12 °C, AF-270 of 5 V") == "at \u221212\u00a0°C, AF-270 of 5\u00a0V"
+    assert pages.typeset("at -12 °C, AF-270 of 5 V") == "at \u221212\u00a0°C, AF-270 of 5\u00a0V"

@@ -51,7 +51,7 @@
       row.hidden = !keep;
       if (keep) count += 1;
     });
-    shown.textContent = count === rows.length ? all : count + " of " + rows.length + " options match.";
+    shown.textContent = count === rows.length ? all : count + " of " + rows.length + " " + table.dataset.things + " match.";
   }
 
   heads.forEach((head, k) => {
