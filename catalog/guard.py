@@ -34,7 +34,7 @@ def check_records(records: Sequence[Module | Inverter]) -> None:
     if refused:
         k = min(refused)
         more = len(refused) - 1
-        others = f" (and {more} more record{'s' if more > 1 else ''} like it)" if more else ""
+        others = f" (and {more:,} more record{'s' if more > 1 else ''} like it)" if more else ""
         name = records[k].name if isinstance(records[k].name, str) else ""
         name = name.strip() or "a record without a name"
         raise CatalogError(f"{name}: {refused[k]}{others}; nothing was kept")

@@ -303,7 +303,7 @@ def _note_defaults(records: Sequence[Module | Inverter], reading: Reading) -> No
 
 
 def _some(count: int, what: str) -> str:
-    return f"{count} {what}{'' if count == 1 else 's'}"
+    return f"{count:,} {what}{'' if count == 1 else 's'}"
 
 
 def _check(records: Sequence[Module | Inverter], places: Sequence[str], reading: Reading) -> None:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS
-from cli.console import WIDTH, Column, print_table, say
+from cli.console import WIDTH, Column, counted, print_table, say
 from cli.grid_files import letter
 
 if TYPE_CHECKING:
@@ -27,7 +27,8 @@ def show(shown: Shown) -> None:
     )
     say()
     number = len(grid.modules) * len(grid.inverters)
-    say(f"{len(grid.pairs):,} of {number:,} pairs of {len(grid.modules):,} modules and {len(grid.inverters):,} inverters.")
+    kinds = f"{counted(len(grid.modules), 'module')} and {counted(len(grid.inverters), 'inverter')}"
+    say(f"{len(grid.pairs):,} of {counted(number, 'pair')} of {kinds}.")
     if grid.pairs:
         say(
             "F fits, C to confirm (a safety rating is not on record), then from how many to how many modules on one"
@@ -96,4 +97,4 @@ def _cell(pair: GridPair) -> str:
 
 def span(pair: GridPair) -> str:
     """Module counts from the fewest to the most."""
-    return f"{pair.fewest}" if pair.fewest == pair.most else f"{pair.fewest}-{pair.most}"
+    return f"{pair.fewest:,}" if pair.fewest == pair.most else f"{pair.fewest:,}-{pair.most:,}"

@@ -45,7 +45,7 @@ class OnShelf:
         """
         most = int(self.shelf.modules_at_most.max())
         if request.counts is not None and request.counts[0] > most:
-            raise CatalogError(f"{request.counts[0]:,} modules are needed, and no more than {most:,} of one type are in stock")
+            raise CatalogError(f"{request.counts[0]:,} modules are needed, and of no type are more than {most:,} in stock")
 
     def entry(self) -> dict[str, Any]:
         """The entry ``stock`` of a document."""

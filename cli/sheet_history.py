@@ -67,7 +67,7 @@ def _plain(value: Any) -> Any:
 
 
 def _print(kind: str, record: Module | Inverter, revisions: list[Revision]) -> None:
-    from cli.console import say
+    from cli.console import counted, say
 
     say(f"{record.name} ({kind}), revision {record.revision} counts")
     for revision in reversed(revisions):
@@ -77,7 +77,7 @@ def _print(kind: str, record: Module | Inverter, revisions: list[Revision]) -> N
         if revision.note:
             say(f"note: {revision.note}", indent=2)
         if revision.previous is None and revision.number == 1:
-            say(f"{len(revision.changes)} values", indent=2)
+            say(counted(len(revision.changes), "value"), indent=2)
             continue
         for change in revision.changes:
             say(change_text(change), indent=2)

@@ -6,7 +6,7 @@ from typing import Annotated
 
 import typer
 
-from cli.console import Column, print_table, say
+from cli.console import Column, counted, print_table, say
 from cli.kinds import KindOption, asked_kinds
 from cli.opening import CatalogOption, open_catalog
 
@@ -35,7 +35,7 @@ def twins(
     if not groups:
         say("No model stands under two makers' names.")
         return
-    say(f"{len(groups):,} model{'s' if len(groups) != 1 else ''} under two or more makers' names.")
+    say(f"{counted(len(groups), 'model')} under two or more makers' names.")
     print_table([Column("kind"), Column("model", fold=True), Column("makers", fold=True)], groups[:limit])
     if len(groups) > limit:
         say(f"... and {len(groups) - limit:,} more (--limit N shows more).")
