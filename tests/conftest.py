@@ -97,18 +97,24 @@ def cec_catalog(tmp_path_factory: pytest.TempPathFactory) -> Path:
     return _made_once(tmp_path_factory, "cec.sqlite", make)
 
 
-@pytest.fixture
-def small_catalog(tmp_path: Path) -> Path:
-    """A catalog with two modules, two inverters and a site, all invented; the test may change it."""
+@pytest.fixture(scope="session")
+def small_path(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    """The catalog of `small_catalog`. It is shared: copy it."""
     from catalog_records import INVERTERS, MODULES, SITE
 
     from catalog.store import Catalog
 
-    path = tmp_path / "small.sqlite"
+    path = tmp_path_factory.mktemp("small") / "small.sqlite"
     with Catalog.open(path, create=True) as catalog:
         catalog.load(MODULES, INVERTERS)
         catalog.add_site(SITE)
     return path
+
+
+@pytest.fixture
+def small_catalog(small_path: Path, tmp_path: Path) -> Path:
+    """A catalog with two modules, two inverters and a site, all invented; the test may change it."""
+    return Path(shutil.copy(small_path, tmp_path))
 
 
 @pytest.fixture(scope="session")
