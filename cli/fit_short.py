@@ -59,7 +59,7 @@ def _named(fit: Fit, o: Option) -> str:
 def _reason(fit: Fit, best: Option) -> str:
     """Why an option stands first, by the order that was asked for; empty where there is no figure to say it by."""
     r = fit.request
-    ratio = f"has the highest DC/AC ratio, {best.dc_ac_ratio:.2f}"
+    ratio = f"has the highest DC/AC ratio ({best.dc_ac_ratio:.2f})"
     if r.order is Order.COST:
         assert fit.search.shelf is not None
         return "" if best.cost is None else f"costs least, {best.cost:,.0f} {fit.search.shelf.currency}"

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import random
 from dataclasses import replace
 from pathlib import Path
@@ -95,6 +96,30 @@ def test_the_verdict_of_the_best_is_its_own(monkeypatch):
         inverter = box(inputs=(Inputs(trackers=2, strings_per_tracker=1, max_isc_a=limit),))
         found = fewest_modules([module], [inverter], Request(SITE), year, 20 * year.energy_kwh * 0.95)
         assert found.best.verdict == verdict
+
+
+@pytest.mark.parametrize("whole", [matcher.search.WHOLE, 0], ids=["listed", "best first"])
+def test_what_fits_is_told_apart_from_what_is_to_confirm(monkeypatch, whole):
+    """The 97 % inverter does not state its current and gets by with 20 modules, the 95 % one fits with 21."""
+    monkeypatch.setattr(matcher.search, "WHOLE", whole)
+    monkeypatch.setattr(matcher.fit, "WHOLE_EVERY", min(whole, matcher.fit.WHOLE_EVERY))
+    module = replace(MODULE, max_system_voltage_v=1000.0)
+    year = random_year(module, random.Random(3))
+
+    def made(efficiency: float, max_isc_a: float | None) -> Inverter:
+        inputs = (Inputs(trackers=2, strings_per_tracker=1, max_isc_a=max_isc_a),)
+        return box(ac_power_w=9000.0, weighted_efficiency_pct=efficiency, model=f"QN {efficiency}", inputs=inputs)
+
+    request, wanted = Request(SITE, ratio=(0.3, 1.5)), 20 * year.energy_kwh * 0.96
+    unsure, sure = made(97.0, None), made(95.0, 40.0)
+    found = fewest_modules([module], [unsure, sure], request, year, wanted)
+    assert (found.modules, found.best.verdict, found.best.inverter) == (20, "to-confirm", 0)
+    assert found.proven is not None
+    assert (found.proven.modules, found.proven.verdict, found.proven.inverter) == (21, "fits", 1)
+    assert found.proven.yearly_kwh >= wanted
+    assert fewest_modules([module], [unsure], request, year, wanted).proven is None
+    found = fewest_modules([module], [sure], request, year, wanted)
+    assert found.proven is found.best and found.modules == 21
 
 
 def test_of_several_inverters_the_one_that_gets_by_with_fewest():
@@ -245,6 +270,11 @@ def test_fit_prints_count_chain_and_options(small_catalog, ferrule):
     assert "modules are the fewest that yield it" in ran.out
     assert "DC wiring 98.0%, inverter 97.0%" in ran.out
     assert "by falling yearly energy" in ran.out
+    said = " ".join(ran.out.split())
+    assert "It is to confirm, and nothing that fits yields so much." in said
+    assert "reaches %: of the 8,000 kWh wanted; less than 100 falls short." in said
+    energy = json.loads(ferrule(*FIT, *PLACE, "--yearly-kwh", "8000", "--json").out)["energy"]
+    assert (energy["verdict"], energy["fits"]) == ("to-confirm", None)
 
 
 @pytest.mark.parametrize(

@@ -1,0 +1,155 @@
+"""The short answer of ``ferrule fit``: one screen, what stands first and why, what to read, and why nothing fits."""
+
+from __future__ import annotations
+
+import random
+import re
+from dataclasses import replace
+
+import pytest
+
+import cli.fit_growth
+import cli.fit_screen
+from catalog.errors import CatalogError
+from cli.fit_confirm import _of_their_own, ranks_words
+from cli.ranges import degrees
+from matcher.checks import Confirm, Verdict
+from matcher.errors import MatcherError
+from matcher.fit import Option, fit
+from matcher.nearest_counts import nearest_counts
+from random_records import random_case
+from test_engine_properties import request_of
+
+KLASSIK = ("fit", "-m", "klassik 270p")
+BARN = ("--site", "Butterfield Barn")
+QUESTIONS = [
+    (*KLASSIK, *BARN),
+    (*KLASSIK, *BARN, "--count", "24", "--units", "1..3", "--in-stock", "--by", "cost"),
+    (*KLASSIK, "-i", "viola 5", *BARN),
+    (*KLASSIK, "-i", "viola 5", *BARN, "--by-count", "--energy-price", "0.2", "--module-price", "150"),
+    (*KLASSIK, *BARN, "--yearly-kwh", "11100"),
+    ("fit", "-i", "old faithful 4.6", *BARN),
+]
+
+
+@pytest.mark.parametrize("words", QUESTIONS, ids=lambda w: " ".join(w[1:])[:40])
+def test_the_short_answer_fits_the_screen_and_uses_it(demo_catalog, ferrule, monkeypatch, words):
+    shown = []
+    for height in (29, 40, 60):
+        for module in (cli.fit_screen, cli.fit_growth):
+            monkeypatch.setattr(module, "page_lines", lambda height=height: height)
+        out = ferrule(*words).out
+        lines = out.splitlines()
+        assert len(lines) <= height
+        said = " ".join(out.split())
+        assert "qualified person decide" in said and "lethal voltages" in said and "cannot be switched off" in said
+        shown.append(sum(bool(re.match(r" *\d+ ", line)) for line in lines))
+    assert shown == sorted(shown)
+
+
+def test_a_number_of_options_that_is_asked_for_is_obeyed(demo_catalog, ferrule):
+    pair = (*KLASSIK, "-i", "viola 5", *BARN)
+
+    def ranks(*more: str) -> int:
+        return len(re.findall(r"^ *\d+ 1x", ferrule(*pair, *more).out, re.MULTILINE))
+
+    assert ranks("--limit", "3") == 3
+    assert ranks("--limit", "45") == 45
+    assert 8 <= ranks() <= 20
+    growth = ferrule(*pair, "--by-count")
+    assert "Order:" not in growth.out
+    assert "Order:" in ferrule(*pair, "--by-count", "--limit", "2").out
+
+
+def test_in_short_says_what_stands_first_and_what_would_overtake_it(demo_catalog, ferrule):
+    said = " ".join(ferrule(*QUESTIONS[1]).out.split())
+    # Prices of the demo: 24 modules at 31 EUR and one Viola 5 at 649 EUR; an Old Faithful is 150 EUR.
+    assert "In short: #1, Sinewright Viola 5, costs least, 1,393 EUR, of what fits." in said
+    assert "#5, Humdrum Electric Old Faithful 4.6, would stand before it: do not pay before" in said
+    # Two like strings of 12 or 11 and 13 of them: the same power; one length goes first.
+    said = " ".join(ferrule(*KLASSIK, "-i", "viola 5", *BARN, "--count", "24").out.split())
+    assert "#2-3 have the same power in other strings; #1 has fewer string lengths." in said
+    # 3 Fiddle 1.5 are 4.5 kW of AC power for 24 * 270 W = 6.48 kW.
+    said = " ".join(ferrule(*KLASSIK, *BARN, "--count", "24", "--units", "1..3").out.split())
+    assert "#1, 3 x Sinewright Fiddle 1.5, is the least inverter for them (4.50 kW, DC/AC 1.44) that clips" in said
+
+
+def _waiting(rank: int, at_least: float) -> Option:
+    confirm = Confirm("inverter", "max_dc_voltage_v", at_least, "V")
+    return Option(rank, Verdict.TO_CONFIRM, 0, 0, 12, (), 1.2, None, None, None, confirm=(confirm,))
+
+
+def test_what_to_confirm_is_grouped_by_value(demo_catalog, ferrule):
+    said = " ".join(ferrule(*KLASSIK, "-i", "old faithful 4.6", *BARN, "--limit", "4").out.split())
+    # 2 strings of 12 need more than the top of the MPPT window, those of 9 to 11 do not.
+    assert re.search(r"inverter: maximum DC input voltage of at least [\d.]+ V \(#1\) inverter", said)
+    assert re.search(r"maximum short-circuit current of one tracker of at least [\d.]+ A \(#1-4\)", said)
+    for brief, words in ((False, "600.0 V (#2), 500.0 V (#1, #3)"), (True, "500.0 to 600.0 V (#1-3)")):
+        (line,) = _of_their_own([_waiting(1, 500.0), _waiting(2, 600.0), _waiting(3, 500.0)], "inverter", brief)
+        assert line == f"inverter: maximum DC input voltage of at least {words}"
+    assert ranks_words([2, 4, 5, 6, 9]) == "#2, #4-6, #9"
+
+
+def test_costs_stand_in_checks_and_in_the_report(demo_catalog, ferrule, tmp_path):
+    asked = (*KLASSIK, *BARN, "--count", "24", "--in-stock")
+    assert "on Sinewright Viola 5, 1,393 EUR" in " ".join(ferrule(*asked, "--checks").out.split())
+    assert ferrule(*asked, "--out", tmp_path / "a.html").status == 0
+    page = (tmp_path / "a.html").read_text(encoding="utf-8")
+    assert "cost EUR" in page and "1,393.00" in page
+
+
+def test_a_count_that_nothing_takes_is_told_the_nearest_that_goes(demo_catalog, ferrule):
+    ran = ferrule(*KLASSIK, *BARN, "--count", "1000000")
+    assert ran.status == 1
+    said = " ".join(ran.out.split())
+    most = int(re.search(r"(\d+) modules \(the most that any takes", said)[1])
+    assert ferrule(*KLASSIK, *BARN, "--count", str(most)).status == 0
+    assert ferrule(*KLASSIK, *BARN, "--count", f"{most + 1}..{2 * most}").status == 1
+    strings = ferrule(*KLASSIK, *BARN, "--strings", "1x30")
+    assert strings.status == 1 and "The nearest is " in strings.out and "--why says" in strings.out
+
+
+def test_the_nearest_counts_are_the_nearest():
+    """Against the counts of every option that the search lists."""
+    tried = between = 0
+    for seed in range(60):
+        case = random_case(random.Random(seed))
+        whole = replace(request_of(case), counts=None)
+        try:
+            found = fit([case.module], [case.inverter], whole)
+        except MatcherError:
+            continue
+        if not 0 < found.totals.arrangements < 3000 or found.request.several:
+            continue
+        counts = {o.modules for o in found.options(full=False)}
+        gaps = sorted(set(range(1, max(counts) + 3)) - counts)
+        for asked in gaps[:: max(1, len(gaps) // 6)]:
+            empty = fit([case.module], [case.inverter], replace(whole, counts=(asked, asked)))
+            smaller, larger = nearest_counts(empty)
+            assert (smaller and smaller.modules) == max((c for c in counts if c < asked), default=None), f"seed {seed}"
+            assert (larger and larger.modules) == min((c for c in counts if c > asked), default=None), f"seed {seed}"
+            tried += 1
+            between += bool(smaller and larger)
+    assert tried > 40 and between > 3
+
+
+@pytest.mark.parametrize(
+    ("text", "celsius"), [("-12", -12.0), ("-12,5", -12.5), ("+38.5 °C", 38.5), ("\u22123degC", -3.0), (".5", 0.5)]
+)
+def test_temperatures_as_people_write_them(text, celsius):
+    assert degrees(text, "--low") == celsius
+
+
+@pytest.mark.parametrize(
+    ("text", "said"),
+    [
+        ("14F", "--low 14F: temperatures are in degC; 14 degF is --low -10.0"),  # 14 degF is -10 degC
+        ("-40 °F", "-40 degF is --low -40.0"),
+        ("273.15 K", "273.15 K is --low 0.0"),
+        ("cold", "--low cold: write the temperature in degC as a number"),
+        ("-12..30", "as a number"),
+    ],
+)
+def test_temperatures_in_other_units_are_told_what_to_write(text, said):
+    with pytest.raises(CatalogError, match=re.escape(said)):
+        degrees(text, "--low")
