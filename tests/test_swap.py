@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import json
+import shutil
 from dataclasses import replace
 
 import numpy as np
@@ -166,9 +167,10 @@ def test_a_mixed_string_is_held_against_the_limits_with_its_own_sum():
 
 
 @pytest.fixture
-def demo(ferrule, demo_catalog):
-    """The command on the demo's catalog."""
-    return lambda *arguments: ferrule("swap", *arguments)
+def demo(ferrule, demo_path, tmp_path):
+    """The command on the demo's catalog, beside which a test may have another."""
+    path = shutil.copy(demo_path, tmp_path / "demo.sqlite")
+    return lambda *arguments: ferrule("swap", *arguments, "--catalog", path)
 
 
 ARRAY = ("-m", "klassik 270p", "-i", "viola 5", "--strings", "1x11|1x11", "--low", -12, "--high", 37)
