@@ -7,7 +7,7 @@ origin; ``sources``, the documents of single values that come from another one t
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from functools import cache
 from typing import Any
 
@@ -27,6 +27,9 @@ ABOUT = ("source", "source_revision", *(o.value for o in MARKED_ORIGINS), "sourc
 AN = {"module": "a module", "inverter": "an inverter"}
 
 _SUCH_AS = {"technology": TECHNOLOGIES[0], "bifacial": "no"}
+
+#: Faults of a file that are told one by one.
+_TOLD = 10
 
 _TEXT = {
     name: FieldSpec(name, str, "", name, False) for name in ("source", "source_revision", "name", "revision")
@@ -54,7 +57,7 @@ def records_of(entries: Sequence[Entry], reading: Reading) -> list[Module | Inve
     Raises
     ------
     CatalogError
-        For the first entry that cannot be taken, with its place in the file.
+        For the entries that cannot be taken, a line each with its place in the file.
     """
     records = []
     first: dict[tuple[str, str, str], tuple[str, Module | Inverter]] = {}
@@ -63,15 +66,23 @@ def records_of(entries: Sequence[Entry], reading: Reading) -> list[Module | Inve
         from catalog.sheet_given import completed
 
         entries = completed(entries, reading)
+    bad: dict[str, list[str]] = {}
     for entry in entries:
-        record = _record(entry, reading)
-        key = (entry.kind, record.maker, record.model)
-        if key in first:
-            _same_or_fault(entry, record, *first[key], reading)
+        try:
+            record = _record(entry, reading)
+            key = (entry.kind, record.maker, record.model)
+            if key in first:
+                _same_or_fault(entry, record, *first[key], reading)
+                continue
+        except CatalogError as problem:
+            # Like faults of several rows are told once.
+            bad.setdefault(str(problem).replace(entry.where, "", 1), []).append(str(problem))
             continue
         first[key] = (entry.where, record)
         records.append(record)
         places.append(entry.where)
+    if bad:
+        raise CatalogError("\n".join(_told(list(bad.values()))))
     try:
         reading.signs.check()
     except CatalogError as problem:
@@ -81,6 +92,15 @@ def records_of(entries: Sequence[Entry], reading: Reading) -> list[Module | Inve
     if reading.signs.thousands:
         reading.note(f"marks between thousands were taken out, first in {reading.signs.thousands}")
     return checked_records(records, places, reading)
+
+
+def _told(faults: Sequence[Sequence[str]]) -> Iterator[str]:
+    """Lines of faults, like ones by their first."""
+    for like in faults[:_TOLD]:
+        yield like[0] + (f" ({_some(len(like) - 1, 'more record')} like it)" if len(like) > 1 else "")
+    left = sum(map(len, faults[_TOLD:]))
+    if left:
+        yield f"  ... and {_some(left, 'more record')} that cannot be taken"
 
 
 def checked_records(
@@ -174,7 +194,9 @@ def _all_needed(entry: Entry, missing: Sequence[FieldSpec]) -> str:
     said = []
     for spec in missing:
         meant = f"; is {entry.meant[spec.name]!r} meant?" if spec.name in entry.meant else ""
-        said.append(f"{spec.name} ({what_is_needed(spec)}{meant})")
+        holds = what_is_needed(spec)
+        about = meant if holds == spec.name else f"{holds}{meant}"
+        said.append(f"{spec.name} ({about.removeprefix('; ')})" if about else spec.name)
     options = " ".join(filter(None, map(set_option, missing)))
     mend = f"; for all rows at once, with what is true of them: {options}" if options else ""
     return f"{AN[entry.kind]} needs also {', '.join(said[:-1])} and {said[-1]}{mend}"

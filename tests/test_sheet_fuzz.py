@@ -22,7 +22,7 @@ def blank(tmp_path_factory) -> Path:
 
 @settings(max_examples=400, deadline=None, suppress_health_check=list(HealthCheck))
 @given(files)
-def test_files_are_taken_whole_or_refused_in_one_line(tmp_path_factory, blank, file):
+def test_files_are_taken_whole_or_refused_with_a_line_per_fault(tmp_path_factory, blank, file):
     folder = tmp_path_factory.mktemp("fuzz")
     with Catalog.open(shutil.copy(blank, folder)) as catalog:
         check(folder, catalog, *file)

@@ -225,7 +225,7 @@ def test_rows_are_numbered_as_a_spreadsheet_shows_them(refused):
 
 @settings(max_examples=150, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(st.data())
-def test_damaged_files_are_read_or_refused_in_one_line(tmp_path, data):
+def test_damaged_files_are_read_or_refused_in_a_line_per_fault(tmp_path, data):
     text, name = data.draw(st.sampled_from(((MODULES, "a.csv"), (INVERTERS, "a.csv"), (TOML, "a.toml"))))
     letters = list(text)
     for _ in range(data.draw(st.integers(1, 4))):
@@ -235,7 +235,19 @@ def test_damaged_files_are_read_or_refused_in_one_line(tmp_path, data):
     try:
         read_sheets(tmp_path / name)
     except CatalogError as problem:
-        assert str(problem).startswith(str(tmp_path / name)) and "\n" not in str(problem)
+        assert all(line.startswith(str(tmp_path / name)) for line in str(problem).split("\n"))
+
+
+def test_every_record_that_cannot_be_taken_is_told_like_faults_once(read):
+    head, row = MODULES.splitlines()[:2]
+    unlike = [row.replace(",400,", f",{k} kA,").replace("P-400", f"P-{k}") for k in range(11)]
+    like = [row.replace(",no,", ",perhaps,").replace("P-400", f"Q-{k}") for k in range(3)]
+    with pytest.raises(CatalogError) as caught:
+        read("\n".join([head, *like, *unlike]))
+    lines = str(caught.value).split("\n")
+    assert "row 2 (Paper Sun Q-0), bifacial" in lines[0] and lines[0].endswith("(2 more records like it)")
+    assert "row 5 (Paper Sun P-0), pmax_w" in lines[1]
+    assert len(lines) == 11 and lines[-1] == "  ... and 2 more records that cannot be taken"
 
 
 @pytest.mark.parametrize(
