@@ -14,7 +14,8 @@ from typing import Any
 from catalog.errors import CatalogError
 from catalog.inputs_text import EXAMPLE
 from catalog.plausibility import findings_of
-from catalog.records import TECHNOLOGIES, FieldSpec, Inputs, Inverter, Module, Origin, Source, specs
+from catalog.records import FieldSpec, Inputs, Inverter, Module, Origin, Source, specs
+from catalog.sheet_needs import all_needed, needed
 from catalog.sheet_reading import Entry, Reading, nearest
 from catalog.sheet_values import Coefficient, value_of
 from catalog.units import BASES
@@ -22,11 +23,6 @@ from catalog.units import BASES
 KINDS: Mapping[str, type] = {"module": Module, "inverter": Inverter}
 MARKED_ORIGINS = (Origin.ENTERED, Origin.DERIVED, Origin.ASSUMED)
 ABOUT = ("source", "source_revision", *(o.value for o in MARKED_ORIGINS), "sources")
-
-#: A kind with its article.
-AN = {"module": "a module", "inverter": "an inverter"}
-
-_SUCH_AS = {"technology": TECHNOLOGIES[0], "bifacial": "no"}
 
 #: Faults of a file that are told one by one.
 _TOLD = 10
@@ -137,9 +133,9 @@ def _record(entry: Entry, reading: Reading) -> Module | Inverter:
         elif spec.required:
             missing.append(spec)
     if len(missing) == 1:
-        raise reading.fault(_needed(entry, missing[0]), entry.where, missing[0].name)
+        raise reading.fault(needed(entry, missing[0]), entry.where, missing[0].name)
     if missing:
-        raise reading.fault(_all_needed(entry, missing), entry.where)
+        raise reading.fault(all_needed(entry, missing), entry.where)
     for name, base in BASES.items():
         if isinstance(values.get(name), Coefficient):
             if not values[base] > 0:
@@ -162,44 +158,6 @@ def _record(entry: Entry, reading: Reading) -> Module | Inverter:
     return type_(
         **values, source=_source(entry, reading), origins=origins, sources=_sources(entry, reading, type_)
     )
-
-
-def what_is_needed(spec: FieldSpec) -> str:
-    """What a field holds, for someone who is asked for it."""
-    if spec.name == "technology":
-        return f"{spec.meaning}, such as {', '.join(TECHNOLOGIES[:-1])} or {TECHNOLOGIES[-1]}"
-    if spec.type is bool:
-        return "yes or no"
-    return f"{spec.meaning} in {spec.unit}" if spec.unit not in ("", "1") else spec.meaning
-
-
-def set_option(spec: FieldSpec) -> str | None:
-    """The option that gives a field for all rows at once; ``None`` for what like rows never share."""
-    if spec.name == "model" or spec.type not in (str, bool):
-        return None
-    return f"--set {spec.name}={_SUCH_AS.get(spec.name, '...')}"
-
-
-def _needed(entry: Entry, spec: FieldSpec) -> str:
-    what = f"{AN[entry.kind]} needs it ({what_is_needed(spec)})"
-    if spec.name in entry.meant:
-        return f"is missing, {what}; is {entry.meant[spec.name]!r} meant? then rename it to {spec.name}"
-    option = set_option(spec)
-    if option:
-        what += f"; for all rows at once: {option}"
-    return f"is blank, {what}" if spec.name in entry.cells else f"is missing, {what}"
-
-
-def _all_needed(entry: Entry, missing: Sequence[FieldSpec]) -> str:
-    said = []
-    for spec in missing:
-        meant = f"; is {entry.meant[spec.name]!r} meant?" if spec.name in entry.meant else ""
-        holds = what_is_needed(spec)
-        about = meant if holds == spec.name else f"{holds}{meant}"
-        said.append(f"{spec.name} ({about.removeprefix('; ')})" if about else spec.name)
-    options = " ".join(filter(None, map(set_option, missing)))
-    mend = f"; for all rows at once, with what is true of them: {options}" if options else ""
-    return f"{AN[entry.kind]} needs also {', '.join(said[:-1])} and {said[-1]}{mend}"
 
 
 def _inputs(entry: Entry, reading: Reading) -> tuple[Inputs, ...]:

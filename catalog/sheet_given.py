@@ -8,7 +8,8 @@ from dataclasses import replace
 from catalog.errors import CatalogError
 from catalog.inputs_text import parse_inputs
 from catalog.records import FieldSpec, Inputs, Origin, names_cells, specs
-from catalog.sheet_entries import ABOUT, KINDS, fields_of, what_is_needed
+from catalog.sheet_entries import ABOUT, KINDS, fields_of
+from catalog.sheet_needs import what_is_needed
 from catalog.sheet_reading import Entry, Reading, nearest
 from catalog.sheet_values import DecimalSigns, value_of
 

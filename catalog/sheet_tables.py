@@ -16,7 +16,8 @@ from catalog.column_map import ColumnMap, proposed
 from catalog.errors import CatalogError
 from catalog.headings import meaning, spec_of
 from catalog.records import FieldSpec
-from catalog.sheet_entries import ABOUT, AN, KINDS, fields_of
+from catalog.sheet_entries import ABOUT, KINDS, fields_of
+from catalog.sheet_needs import AN
 from catalog.sheet_reading import Entry, Reading
 from catalog.units import unit_of
 

@@ -9,7 +9,7 @@ from dataclasses import dataclass, field
 from catalog.column_map import ColumnMap, MappedColumn
 from catalog.errors import CatalogError
 from catalog.records import FieldSpec
-from catalog.sheet_entries import set_option, what_is_needed
+from catalog.sheet_needs import set_option, what_is_needed
 from cli.console import counted
 from cli.opening import open_catalog
 from cli.quoting import quoted
