@@ -115,10 +115,11 @@ def joined(blocks: Sequence[Sequence[str]], blank: bool = True) -> list[str]:
 
 def _see_more(fit: Fit, shown: int) -> list[str]:
     """How to see what is not shown."""
-    more = number_of_options(fit) - shown
+    total = number_of_options(fit)
+    more = total - shown
     if more <= 0:
         return []
-    ways = [f"--limit {50 if shown < 50 else 10 * shown}", *([] if fit.request.every else ["--every"]), "--checks"]
+    ways = [f"--limit {min(total, 50 if shown < 50 else 10 * shown)}", *([] if fit.request.every else ["--every"]), "--checks"]
     return paragraph(f"... and {more:,} more ({', '.join(ways)} show more; --out FILE.csv holds all of them).")
 
 
@@ -137,7 +138,7 @@ def _confirm_blocks(fit: Fit, options: Sequence[Option], level: int) -> list[lis
     if waiting is not None and level < _RANGES:
         blocks[-1] += [f"What you have read goes on record by a command, here for #{waiting.rank}:"]
         # Not wrapped as text: it is there to be copied.
-        blocks[-1] += [f"  {line}" for command in amend_commands(fit, waiting) for line in command.splitlines()]
+        blocks[-1] += [line for command in amend_commands(fit, waiting) for line in f"  {command}".splitlines()]
     return blocks
 
 

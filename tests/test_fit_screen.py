@@ -35,7 +35,7 @@ QUESTIONS = [
 @pytest.mark.parametrize("words", QUESTIONS, ids=lambda w: " ".join(w[1:])[:40])
 def test_the_short_answer_fits_the_screen_and_uses_it(demo_catalog, ferrule, monkeypatch, words):
     shown = []
-    for height in (29, 40, 60):
+    for height in (29, 60):
         for module in (cli.fit_screen, cli.fit_growth):
             monkeypatch.setattr(module, "page_lines", lambda height=height: height)
         out = ferrule(*words).out
@@ -92,7 +92,7 @@ def test_what_to_confirm_is_grouped_by_value(demo_catalog, ferrule):
 
 def test_costs_stand_in_checks_and_in_the_report(demo_catalog, ferrule, tmp_path):
     asked = (*KLASSIK, *BARN, "--count", "24", "--in-stock")
-    assert "on Sinewright Viola 5, 1,393 EUR" in " ".join(ferrule(*asked, "--checks").out.split())
+    assert "on Sinewright Viola 5, 1,393 EUR" in " ".join(ferrule(*asked, "--checks", "--limit", "2").out.split())
     assert ferrule(*asked, "--out", tmp_path / "a.html").status == 0
     page = (tmp_path / "a.html").read_text(encoding="utf-8")
     assert "cost EUR" in page and "1,393.00" in page
