@@ -119,7 +119,8 @@ def figure(picture: Picture, caption: str) -> dict[str, str]:
 
 
 def typeset(text: str) -> str:
-    """Numbers kept together with their units, and true minus signs."""
+    """Numbers kept together with their units, true minus signs and the sign of degrees Celsius."""
+    text = text.replace("degC", "°C")
     text = re.sub(r"(?<=\d) (?=(?:%|°C|V|A|W|kWh)(?!\w))", "\u00a0", text)
     return re.sub(r"(?<![\w.])-(?=\d)", "\u2212", text)
 

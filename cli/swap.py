@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Annotated
+from typing import TYPE_CHECKING, Annotated, TypeAlias
 
 import typer
 
@@ -11,8 +11,9 @@ from catalog.errors import CatalogError
 from cli.opening import CatalogOption, open_catalog
 from cli.siting import (
     AzimuthOption, CapOption, HighOption, LatOption, LonOption, LowOption, MountingOption, RearOption,
-    SiteOption, TiltOption, WeatherOption, site_of,
+    SiteOption, TiltOption, WeatherOption,
 )  # fmt: skip
+from cli.vet import place_of
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -25,6 +26,9 @@ if TYPE_CHECKING:
     from matcher.rules import RuleSet
     from matcher.swap import Swaps
     from matcher.vet import Vetted, Vetter
+
+#: Candidates worked out in full, each with what it was worked out in.
+Full: TypeAlias = "list[tuple[Fit, Option]]"
 
 NOTHING_TAKES_ITS_PLACE = 1
 
@@ -49,6 +53,14 @@ class Question:
     records: Sequence[Module] | Sequence[Inverter]
     swaps: Swaps
     old_year: SiteYear | None
+    within_pct: float
+
+    @property
+    def within(self) -> int:
+        """Candidates whose power differs by no more than `within_pct`."""
+        if self.part is not None:
+            return 0
+        return int((abs(self.swaps.changes["power"]) <= self.within_pct + 1e-9).sum())
 
     @property
     def name(self) -> str:
@@ -67,9 +79,10 @@ def swap(
     in_stock: Annotated[bool, typer.Option("--in-stock", help="Only what is in stock in sufficient number.")] = False,
     rules: Annotated[str, typer.Option(metavar="NAME", help="Rule set: iec-62548, nec-690, or a file of your own, .toml.")] = "iec-62548",
     combiner: Annotated[bool, typer.Option("--combiner", help="Strings are paralleled in a combiner box: string inputs are waived.")] = False,
+    within: Annotated[float, typer.Option(metavar="PCT", min=0.0, help="How far the power of a like replacement may differ [%]; it is counted and bounds nothing.")] = 5.0,
     limit: Annotated[int, typer.Option(metavar="N", min=1, help="Candidates shown on screen.")] = 10,
     json: Annotated[bool, typer.Option("--json", help="Print the document ferrule.swap/1 instead of tables.")] = False,
-    out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file; its ending decides the form: .csv, .xlsx or .json.")] = None,
+    out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file; its ending decides the form: .csv, .xlsx, .json or .html.")] = None,
     site: SiteOption = None,
     low: LowOption = None,
     high: HighOption = None,
@@ -85,7 +98,7 @@ def swap(
 ) -> int:
     """Find what takes the place of a module (or an inverter) that cannot be had, with the wiring unchanged.
 
-    With --part, only some modules are replaced; then it tells what unlike modules in one string, and unlike
+    Without a site a candidate must hold in every climate that the array itself holds in. With --part, only some modules are replaced; then it tells what unlike modules in one string, and unlike
     strings on one tracker, cost. Exit status: 0 something takes its place, 1 nothing does, 2 bad input.
 
     Example: ferrule swap -m "klassik 270p" -i "viola 5" --strings "1x11|1x11" --low -12 --high 37
@@ -97,27 +110,29 @@ def swap(
     if (strings is None) == (count is None):
         raise CatalogError("say how the array is wired: --strings 2x11|1x12, or --count N for the best way")
     with open_catalog(catalog) as opened:
-        place = site_of(
-            opened, site, low=low, high=high, mounting=mounting, voltage_cap=voltage_cap, rear_share=rear_share,
-            lat=lat, lon=lon, tilt=tilt, azimuth=azimuth, weather=weather,
+        given = dict(mounting=mounting, voltage_cap=voltage_cap, rear_share=rear_share, lat=lat, lon=lon, tilt=tilt,
+                     azimuth=azimuth, weather=weather)  # fmt: skip
+        place, like = place_of(opened, site, low, high, given)
+        question = _asked(
+            opened, place, like, module, inverter, strings, count, units, replaced, part, in_stock, rules, combiner, within
         )  # fmt: skip
-        question = _asked(opened, place, module, inverter, strings, count, units, replaced, part, in_stock, rules, combiner)
-        from cli import swap_files, swap_screen
+        from cli import swap_files, swap_screen, table_files
+        from cli.console import print_json
 
         shown = EXPLAINED if out is not None or json else limit
         full = explained(opened, question, shown)
     if out is not None:
-        swap_files.write(question, full, out)
+        table_files.write(swap_files.forms(question, full), out)
     if json:
-        swap_files.print_document(question, full)
+        print_json(swap_files.document(question, full))
     elif out is None:
         swap_screen.show(question, full)
     return 0 if len(question.swaps) else NOTHING_TAKES_ITS_PLACE
 
 
 def _asked(
-    catalog: Catalog, site: Site, module: str, inverter: str, strings: str | None, count: int | None, units: int,
-    replaced: str, part: int | None, in_stock: bool, rules: str, combiner: bool,
+    catalog: Catalog, site: Site | None, like: Site, module: str, inverter: str, strings: str | None, count: int | None, units: int,
+    replaced: str, part: int | None, in_stock: bool, rules: str, combiner: bool, within: float,
 ) -> Question:  # fmt: skip
     from cli.asking import rule_set
     from cli.choosing import choose_inverter, choose_module
@@ -129,12 +144,18 @@ def _asked(
 
     rule = rule_set(rules)
     old, own = choose_module(catalog, module), choose_inverter(catalog, inverter)
-    year = site_year(catalog, site, old)
-    plane = cold_plane(Request(site, rule))
+    year = None if site is None else site_year(catalog, site, old)
+    plane = None if site is None else cold_plane(Request(site, rule))
     vetter: Vetter = Vetter([own], rule, combiner)
     # The strings are those of one inverter here, and all are wired alike.
     bundle = bundle_of(old, 0, count, 1 if strings is not None else units, strings)
-    vetted = vetter.vet(bundle, site, year=year.year, plane=plane, mending=False)
+    vetted = vetter.vet(bundle, site, year=year and year.year, plane=plane, mending=False, like=like)
+    if site is None:
+        if not vetted.sound:
+            raise CatalogError(
+                f"this wiring is sound in no climate with {old.name} itself; 'ferrule vet' says what would mend it"
+            )
+        site = vetted.site
     if not vetted.wired:
         raise CatalogError(
             f"this wiring cannot be kept, it is not sound with {old.name} itself: {vetted.reason or vetted.verdict};"
@@ -159,8 +180,9 @@ def _asked(
 
         swaps = swap_part(old, own, wired, part, records, site, rule, combiner, plane)
     return Question(
-        old, own, site, rule, combiner, vetted, wired, replaced == "inverter", in_stock, part, records, swaps, year
-    )
+        old, own, site, rule, combiner, vetted, wired, replaced == "inverter", in_stock, part, records, swaps, year,
+        within,
+    )  # fmt: skip
 
 
 def _held(catalog: Catalog, records: Sequence, kind: str, needed: int) -> Sequence:
@@ -171,7 +193,7 @@ def _held(catalog: Catalog, records: Sequence, kind: str, needed: int) -> Sequen
     return [r for r in records if there.get(r.id, 0) >= needed]
 
 
-def explained(catalog: Catalog, question: Question, limit: int) -> list[tuple[Fit, Option]]:
+def explained(catalog: Catalog, question: Question, limit: int) -> Full:
     """The first candidates of a whole replacement in full: checks, climate window and, where a year is known, clipping."""
     if question.part is not None:
         return []

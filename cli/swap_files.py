@@ -2,60 +2,30 @@
 
 from __future__ import annotations
 
-import csv
-import json
-import sys
-from pathlib import Path
-from typing import IO, TYPE_CHECKING, Any, TypeAlias
+from typing import TYPE_CHECKING, Any
 
-from catalog.errors import CatalogError
-from cli.cautions import CAUTIONS
 from cli.facts import confirm_line
-from cli.fit_files import replacing, safe
-from cli.swap_screen import CURRENT, PART_WORDS, VOLTAGE, answer, margin, order
+from cli.swap_screen import CURRENT, PART_WORDS, VOLTAGE, answer, margin, order, question_words
+from cli.table_files import Forms, Heading, Sheet, check_entry, confirm_entry, rules_entry, unit_entry
 from matcher.options import label
 
 if TYPE_CHECKING:
-    from cli.swap import Question
-    from matcher.fit import Fit, Option
+    from cli.swap import Full, Question
     from matcher.mixing import Mismatch
 
 SWAP_SCHEMA = "ferrule.swap/1"
 
-FORMS = (".csv", ".xlsx", ".json")
 
-#: The first candidates worked out in full.
-Full: TypeAlias = "list[tuple[Fit, Option]]"
+def forms(question: Question, full: Full) -> Forms:
+    """All candidates in all forms of a file."""
+    from cli.swap_report import write_page_of
 
-
-def write(question: Question, full: Full, out: str) -> None:
-    """Write all candidates to a file.
-
-    Raises
-    ------
-    CatalogError
-        Where the ending names no form, or the file cannot be written.
-    """
-    path = Path(out)
-    form = path.suffix.lower()
-    if form not in FORMS:
-        raise CatalogError(f"--out {out}: the ending decides the form, {', '.join(FORMS[:-1])} or {FORMS[-1]}")
-    with replacing(path, binary=form == ".xlsx") as stream:
-        if form == ".xlsx":
-            _write_workbook(question, full, stream)
-        elif form == ".json":
-            json.dump(document(question, full), stream, allow_nan=False, indent=1)
-        else:
-            writer = csv.writer(stream)
-            writer.writerow([name for name, _, _ in _columns(question)])
-            for values in _rows(question, full):
-                writer.writerow([_cell(v) for v in values])
-
-
-def print_document(question: Question, full: Full) -> None:
-    """Print the document on stdout."""
-    json.dump(document(question, full), sys.stdout, allow_nan=False, indent=1)
-    print()
+    return Forms(
+        lambda: [Sheet("Candidates", _columns(question), _rows(question, full))],
+        lambda: _basis(question, full),
+        lambda: document(question, full),
+        lambda stream: write_page_of(question, full, stream),
+    )
 
 
 def document(question: Question, full: Full) -> dict[str, Any]:
@@ -66,12 +36,9 @@ def document(question: Question, full: Full) -> dict[str, Any]:
         "module": {"maker": q.module.maker, "model": q.module.model, "pmax_w": q.module.pmax_w},
         "inverter": {"maker": q.inverter.maker, "model": q.inverter.model, "ac_power_w": q.inverter.ac_power_w},
         "site": {"name": q.site.name, "design_low_c": q.site.design_low_c, "design_high_c": q.site.design_high_c,
-                 "mounting": q.site.mounting},
-        "rules": {"name": q.rules.name, "isc_factor": q.rules.isc_factor},
-        "wiring": {"label": label(q.wired), "units": [
-            {"units": u.copies, "modules": u.modules,
-             "arrangement": [{"inputs": t.inputs, "strings": t.strings, "in_series": t.in_series} for t in u.trackers]}
-            for u in q.wired]},
+                 "mounting": q.site.mounting, "solved": q.vetted.solved},
+        "rules": rules_entry(q.rules),
+        "wiring": {"label": label(q.wired), "units": [unit_entry(u) for u in q.wired]},
         "replaces": "inverter" if q.replaces_inverter else "module",
         "part": q.part,
         "order": order(q),
@@ -82,7 +49,7 @@ def document(question: Question, full: Full) -> dict[str, Any]:
         return head
     head["candidates"] = [_entry(q, k, full) for k in range(len(swaps))]
     head["totals"] = {"records_considered": swaps.considered, "sound": len(swaps), "stopped": swaps.stopped,
-                      "unmatched": swaps.unmatched}  # fmt: skip
+                      "unmatched": swaps.unmatched, "within_pct": q.within_pct, "within": q.within}  # fmt: skip
     return head
 
 
@@ -101,9 +68,8 @@ def _entry(q: Question, k: int, full: Full) -> dict[str, Any]:
         o = full[k][1]
         entry |= {
             "label": o.label, "clipping_loss_pct": o.clipping_loss_pct, "yearly_kwh": o.yearly_kwh,
-            "checks": [{"check": c.check, "verdict": str(c.verdict), "value": c.value, "limit": c.limit, "unit": c.unit,
-                        "margin_pct": c.margin_pct, "rule": c.rule} for c in o.checks],
-            "confirm": [{"record": c.record, "field": c.field, "at_least": c.at_least} for c in o.confirm],
+            "checks": [check_entry(c) for c in o.checks],
+            "confirm": [confirm_entry(c) for c in o.confirm],
             "climate": {"coldest_c": o.coldest_c, "hottest_c": o.hottest_c},
         }  # fmt: skip
     return entry
@@ -116,7 +82,7 @@ def _part_entry(q: Question, k: int) -> dict[str, Any]:
         "rank": k + 1, "maker": record.maker, "model": record.model, "verdict": c.verdict,
         "trackers": [{"inputs": t.inputs, "strings": [{"old": o, "new": n} for o, n in t.strings]} for t in c.trackers],
         "mismatch": {"stc": _mismatch(c.stc), "hot": _mismatch(c.hot), "spread_stc": _mismatch(c.spread_stc)},
-        "confirm": [{"record": x.record, "field": x.field, "at_least": x.at_least} for x in c.confirm],
+        "confirm": [confirm_entry(x) for x in c.confirm],
     }  # fmt: skip
 
 
@@ -128,9 +94,8 @@ def _known(value: float) -> float | None:
     return None if value != value else float(value)
 
 
-def _columns(q: Question) -> list[tuple[str, int, int | None]]:
-    """Columns: header with unit, width in a workbook, digits after the point (None: text)."""
-    head: list[tuple[str, int, int | None]] = [("rank", 6, 0), ("verdict", 12, None), ("maker", 22, None), ("model", 28, None)]
+def _columns(q: Question) -> list[Heading]:
+    head: list[Heading] = [("rank", 6, 0), ("verdict", 12, None), ("maker", 22, None), ("model", 28, None)]
     if q.part is not None:
         return [*head, ("power [W]", 9, 0), ("wiring", 40, None), ("loss at STC [%]", 9, 2), ("loss in the heat [%]", 9, 2),
                 ("loss if spread [%]", 9, 2)]  # fmt: skip
@@ -165,35 +130,10 @@ def _rows(q: Question, full: Full) -> list[list[Any]]:
     return found
 
 
-def _cell(value: Any) -> Any:
-    if value is None:
-        return ""
-    if isinstance(value, float):
-        return f"{value:.6g}"
-    return safe(value) if isinstance(value, str) else value
-
-
-def _write_workbook(q: Question, full: Full, stream: IO[bytes]) -> None:
-    import xlsxwriter
-
-    from cli.worksheets import Column, Formats, Table
-
-    book = xlsxwriter.Workbook(stream, {"strings_to_formulas": False, "strings_to_urls": False})
-    formats = Formats(book)
-    table = Table(book, "Candidates", [Column(*c) for c in _columns(q)], formats)
-    for values in _rows(q, full):
-        table.row(values)
-    table.close()
-    basis = Table(book, "Rests on", [Column("what", 14), Column("words", 110)], formats)
-    what = f"{q.part} of the modules {q.name}" if q.part is not None else q.name
-    basis.row(["Question", f"What takes the place of {what}, wired as {label(q.wired)}?"])
-    basis.row(["Answer", answer(q)])
-    basis.row(["Order", order(q)])
+def _basis(q: Question, full: Full) -> list[tuple[str, str]]:
+    found = [("Question", question_words(q)), ("Answer", answer(q)), ("Order", order(q))]
     if q.part is not None:
-        basis.row(["Losses", PART_WORDS])
+        found.append(("Losses", PART_WORDS))
     elif len(q.swaps) > len(full):
-        basis.row(["Margins", f"Margins, clipping and values to confirm are told of the first {len(full)}."])
-    for line in CAUTIONS:
-        basis.row(["Caution", line])
-    basis.close()
-    book.close()
+        found.append(("Margins", f"Margins, clipping and values to confirm are told of the first {len(full)}."))
+    return found

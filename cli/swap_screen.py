@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
-from cli.console import Column, number, print_table, say
+from cli.console import Column, counted, number, print_table, say
 from cli.facts import confirm_words
 from cli.fit_screen import climate_window
 from cli.vet_words import window_short
@@ -25,12 +25,7 @@ PART_WORDS = (
 def show(question: Question, full: list[tuple[Fit, Option]]) -> None:
     """Print question, answer, candidates, what to confirm, cautions."""
     q = question
-    where = f"{q.site.design_low_c:g} to {q.site.design_high_c:g} degC, {q.site.mounting}"
-    if q.site.name != "as given":
-        where = f"{q.site.name} ({where})"
-    total = sum(u.copies * u.modules for u in q.wired)
-    what = f"{q.part} of the {total} {q.module.name}" if q.part is not None else q.name
-    say(f"What takes the place of {what}, wired as {label(q.wired)}, at {where}?")
+    say(question_words(q))
     if q.vetted.verdict == "does-not-fit":
         say(f"Note: this wiring is not sound with {q.module.name} itself: {q.vetted.reason}.")
     say()
@@ -51,8 +46,22 @@ def show(question: Question, full: list[tuple[Fit, Option]]) -> None:
         say(line)
 
 
+def question_words(question: Question) -> str:
+    """The question in a sentence."""
+    q = question
+    temperatures = f"{q.site.design_low_c:g} to {q.site.design_high_c:g} degC, {q.site.mounting}"
+    where = f"at {temperatures}"
+    if q.vetted.solved:
+        where = f"wherever it holds itself ({temperatures})"
+    elif q.site.name != "as given":
+        where = f"at {q.site.name} ({temperatures})"
+    total = sum(u.copies * u.modules for u in q.wired)
+    what = f"{q.part} of the {total} {q.module.name}" if q.part is not None else q.name
+    return f"What takes the place of {what}, wired as {label(q.wired)}, {where}?"
+
+
 def answer(question: Question) -> str:
-    """How many of how many."""
+    """How many are like it in power, and how many more keep the wiring sound, of how many."""
     swaps = question.swaps
     kind = "inverter" if question.replaces_inverter else "module"
     where = " in stock" if question.stock_only else ""
@@ -61,10 +70,14 @@ def answer(question: Question) -> str:
             f"{len(swaps)} of the {swaps.looked_at} {kind}s{where} that are nearest in current and voltage"
             f" (of {swaps.considered:,})."
         )
-    words = f"{len(swaps):,} of {swaps.considered:,} {kind}s{where}."
-    if swaps.unmatched:
-        words += f" {swaps.unmatched:,} lack a value to be judged at all."
-    return words if len(swaps) else f"Nothing: {words}"
+    of = f"of {counted(swaps.considered, kind)}{where}"
+    lacking = f" {swaps.unmatched:,} {'lacks' if swaps.unmatched == 1 else 'lack'} a value to be judged at all." * bool(swaps.unmatched)
+    if not len(swaps):
+        return f"Nothing: none {of} keeps the wiring sound.{lacking}"
+    like, more = question.within, len(swaps) - question.within
+    words = f"{like or 'None':,} within {question.within_pct:g} % of its power" if like else f"None within {question.within_pct:g} % of its power"
+    others = f"; {more:,} {'more ' if like else ''}of another power {'keeps' if more == 1 else 'keep'} the wiring sound" * bool(more)
+    return f"{words}{others} ({of}).{lacking}"
 
 
 def order(question: Question) -> str:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
+from functools import partial
 from typing import TYPE_CHECKING, Annotated
 
 import typer
@@ -35,7 +36,7 @@ def vet(
     checks: Annotated[bool, typer.Option("--checks", help="Show the clause or practice behind each check.")] = False,
     everything: Annotated[bool, typer.Option("--all", help="Show all lines of a list, not one screen of them.")] = False,
     json: Annotated[bool, typer.Option("--json", help="Print the document ferrule.vet/1 instead of tables.")] = False,
-    out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file; its ending decides the form: .csv, .xlsx or .json.")] = None,
+    out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file; its ending decides the form: .csv, .xlsx, .json or .html.")] = None,
     site: SiteOption = None,
     low: LowOption = None,
     high: HighOption = None,
@@ -66,12 +67,10 @@ def vet(
     with open_catalog(catalog) as opened:
         given = dict(mounting=mounting, voltage_cap=voltage_cap, rear_share=rear_share, lat=lat, lon=lon, tilt=tilt,
                      azimuth=azimuth, weather=weather)  # fmt: skip
-        place, like = _place(opened, site, low, high, given)
+        place, like = place_of(opened, site, low, high, given)
         if bundles is not None:
             return _list(opened, bundles, place, like, rule, combiner, in_stock, everything, json, out)
         from cli.choosing import choose_inverter, choose_module
-        from cli.vet_files import print_document, write
-        from cli.vet_screen import show
         from matcher.vet import Vetter
 
         if module is None or inverter is None or (count is None and strings is None):
@@ -89,15 +88,20 @@ def vet(
             year = site_year(opened, place, chosen)
             plane = cold_plane(Request(place, rule))
         vetted = vetter.vet(bundle, place, year=year.year if year else None, plane=plane, like=like)
+        fit = vetter.bench(chosen, vetted.site, plane).fit
+    from cli import table_files, vet_files, vet_report
     from cli.bundle_lists import BundleRow
+    from cli.console import print_json
     from cli.vet_lists import Line
+    from cli.vet_screen import show
 
     row = BundleRow(1, "", chosen.name, str(bundle.modules), other.name, str(units), strings or "", site or "")
     line = Line(row, vetted.verdict, vetted)
     if out is not None:
-        write([line], out, rule)
+        page = partial(vet_report.write_bundle, vetted, fit, year)
+        table_files.write(vet_files.forms([line], rule, page), out)
     if json:
-        print_document([line], rule)
+        print_json(vet_files.document([line], rule))
     elif out is None:
         show(vetted, year, checks)
     return 0 if vetted.sound else UNSOUND
@@ -138,7 +142,7 @@ def loads_of(text: str) -> tuple[tuple[int, int], ...]:
     return tuple(found)
 
 
-def _place(catalog: Catalog, site: str | None, low: float | None, high: float | None, given: dict) -> tuple[Site | None, Site]:
+def place_of(catalog: Catalog, site: str | None, low: float | None, high: float | None, given: dict) -> tuple[Site | None, Site]:
     """The site that is meant, if any, and what is known of the place besides its temperatures."""
     from matcher.vet import ANYWHERE
 
@@ -172,7 +176,8 @@ def _list(
 ) -> int:  # fmt: skip
     from cli.bundle_lists import read_bundles
     from cli.console import note, on_terminal
-    from cli.vet_files import print_document, write
+    from cli import table_files, vet_files, vet_report
+    from cli.console import print_json
     from cli.vet_lists import vet_rows
     from cli.vet_screen import show_list, summary
 
@@ -186,10 +191,11 @@ def _list(
         vetted = vet_rows(catalog, read.rows, site, like, rules, combiner, available, progress)
     lines = vetted.lines
     if out is not None:
-        write(lines, out, rules)
+        page = partial(vet_report.write_list, vetted, rules, path)
+        table_files.write(vet_files.forms(lines, rules, page), out)
         note(f"{summary(lines)} Written to {out}.")
     if json:
-        print_document(lines, rules)
+        print_json(vet_files.document(lines, rules))
     elif out is None:
         show_list(vetted, everything)
     return 0 if all(line.vetted is not None and line.vetted.sound for line in lines) else UNSOUND

@@ -26,7 +26,7 @@ ONE_SCREEN = 17
 
 def show(vetted: Vetted, year: SiteYear | None, rules: bool = False) -> None:
     """Print one bundle: question, verdict, wiring, climate, reasons, changes, checks (and their ``rules``)."""
-    say(f"{_question(vetted)}?")
+    say(question_words(vetted))
     say()
     if vetted.verdict == "no-verdict":
         say(f"no-verdict: {vetted.reason}.")
@@ -34,7 +34,7 @@ def show(vetted: Vetted, year: SiteYear | None, rules: bool = False) -> None:
     if vetted.option is not None:
         _show_sound(vetted)
     else:
-        say(f"does-not-fit: {cause(vetted.failed)}. {_sentence(vetted.reason)}")
+        say(f"does-not-fit: {cause(vetted.failed)}. {sentence(vetted.reason)}")
         if vetted.window is not None:
             say(f"Elsewhere: {window_words(vetted.window)}.")
         say("What would mend it, the smallest change first:" if vetted.mends else "No single change mends it.")
@@ -58,7 +58,8 @@ def show(vetted: Vetted, year: SiteYear | None, rules: bool = False) -> None:
         say(line)
 
 
-def _question(vetted: Vetted) -> str:
+def question_words(vetted: Vetted) -> str:
+    """The question in a sentence."""
     b, site = vetted.bundle, vetted.site
     name = vetted.inverter.name
     where = "in which climates"
@@ -68,7 +69,7 @@ def _question(vetted: Vetted) -> str:
             where = f"at {site.name} ({site.design_low_c:g} to {site.design_high_c:g} degC, {site.mounting})"
     else:
         where = f"{where}, {site.mounting}"
-    return f"Is it sound: {b.modules} {b.module.name} on {b.units} {name}, {where}"
+    return f"Is it sound: {b.modules} {b.module.name} on {b.units} {name}, {where}?"
 
 
 def _show_sound(vetted: Vetted) -> None:
@@ -78,7 +79,7 @@ def _show_sound(vetted: Vetted) -> None:
     if option.clipping_loss_pct is not None:
         words += f", {option.clipping_loss_pct:.2f} % clipped, {number(option.yearly_kwh)} kWh/year"
     say(f"{words}.")
-    say(_sentence(window_words(vetted.window)))
+    say(sentence(window_words(vetted.window)))
     if option.confirm:
         say("To confirm on the datasheets before ordering:")
         for c in option.confirm:
@@ -88,7 +89,8 @@ def _show_sound(vetted: Vetted) -> None:
         say(f"Note: {remark}.")
 
 
-def _sentence(text: str) -> str:
+def sentence(text: str) -> str:
+    """A sentence with its capital and its point."""
     return f"{text[:1].upper()}{text[1:]}."
 
 
@@ -110,7 +112,7 @@ def show_list(vetted: VettedList, everything: bool) -> None:
     lines = vetted.lines
     shown = list(lines)
     if not everything and len(lines) > ONE_SCREEN:
-        shown = sorted(lines, key=lambda line: _ATTENTION[line.verdict])[:ONE_SCREEN]
+        shown = sorted(lines, key=lambda line: ATTENTION[line.verdict])[:ONE_SCREEN]
     say(summary(lines))
     say()
     clips = any(clipping(line) is not None for line in lines)
@@ -151,13 +153,13 @@ def year_words(vetted: VettedList) -> list[str]:
 
 def summary(lines: Sequence[Line]) -> str:
     """How many of a list came out how."""
-    counts = {v: sum(line.verdict == v for line in lines) for v in _ATTENTION}
-    said = ", ".join(f"{n:,} {v}" for v, n in sorted(counts.items(), key=lambda e: -_ATTENTION[e[0]]) if n)
+    counts = {v: sum(line.verdict == v for line in lines) for v in ATTENTION}
+    said = ", ".join(f"{n:,} {v}" for v, n in sorted(counts.items(), key=lambda e: -ATTENTION[e[0]]) if n)
     return f"{len(lines):,} bundle{'s' if len(lines) != 1 else ''}: {said}."
 
 
 #: What wants attention first.
-_ATTENTION = {"does-not-fit": 0, "not-judged": 1, "no-verdict": 2, "to-confirm": 3, "fits": 4}
+ATTENTION = {"does-not-fit": 0, "not-judged": 1, "no-verdict": 2, "to-confirm": 3, "fits": 4}
 
 
 def _line_row(line: Line, clips: bool) -> list[str]:
