@@ -5,7 +5,7 @@ from __future__ import annotations
 from cli import sheet_amend, sheet_backup, sheet_enter, sheet_export, sheet_find, sheet_history, sheet_load, sheet_show, sheet_twins
 from cli.groups import Commands
 
-app = Commands(help="The datasheets that are kept: load, enter, find, show, amend, export, history.")
+app = Commands(help="The datasheets that are kept: load, find, show, amend, history, undo, enter, export, twins, backup, restore.")
 app.command("load")(sheet_load.load)
 app.command("find")(sheet_find.find)
 app.command("show")(sheet_show.show)
