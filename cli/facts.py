@@ -100,13 +100,14 @@ def holds_to(option: Option) -> float | str | None:
 def climate_words(option: Option, low_c: float, high_c: float) -> str:
     """The climate window in words; where a value to confirm bounds it, the design temperatures stand in."""
     low, high = holds_from(option), holds_to(option)
+    waits = ", once confirmed" if low is None or high is None else ""
     if low == high == NO_LIMIT:
         return "any temperature"
-    waits = ", once confirmed" if low is None or high is None else ""
-    if low == FROM_HOURS:
-        low = "the cold of the weather file"
-    ends = (low_c if low is None else low, high_c if high is None else high)
-    return f"{whole(ends[0], cold=True)} to {whole(ends[1], cold=False)} °C{waits}"
+    coldest = "the cold of the weather file" if low == FROM_HOURS else whole(low_c if low is None else low, cold=True)
+    if high == NO_LIMIT:
+        return f"{coldest}{'' if low == FROM_HOURS else ' °C'} or warmer{waits}"
+    hottest = f"{whole(high_c if high is None else high, cold=False)} °C"
+    return f"{hottest} or cooler{waits}" if low == NO_LIMIT else f"{coldest} to {hottest}{waits}"
 
 
 def whole(end: float | str, cold: bool) -> str:

@@ -273,6 +273,20 @@ def test_a_voltage_to_confirm_is_drawn_as_one() -> None:
     assert 14 * 38.2 * (1 + 0.31 / 100 * 37) <= limit.volts < 14 * 38.2 * (1 + 0.31 / 100 * 37) + 0.1
 
 
+@pytest.mark.parametrize(
+    ("coldest", "hottest", "words"),
+    [
+        (-17.4, 58.2, "-17 to 58 °C"),
+        (-17.4, None, "-17 °C or warmer"),
+        (-120.0, 58.2, "58 °C or cooler"),
+        (None, None, "any temperature"),
+    ],
+)
+def test_the_climate_in_words(coldest: float | None, hottest: float | None, words: str) -> None:
+    option = replace(next(pair().options()), confirm=(), coldest_c=coldest, hottest_c=hottest)
+    assert facts.climate_words(option, -12, 36) == words
+
+
 def test_energy_by_count_is_that_of_the_options() -> None:
     fit = pair(TABLED)
     options = list(fit.options())
