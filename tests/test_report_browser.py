@@ -176,6 +176,50 @@ def test_it_works_without_script(browser: Any, report: str) -> None:
         browser.execute_cdp_cmd("Emulation.setScriptExecutionDisabled", {"value": False})
 
 
+@pytest.fixture(scope="module")
+def bundles(tmp_path_factory: pytest.TempPathFactory) -> str:
+    """Address of a page with vetted bundles, one of an inverter whose name would do harm."""
+    from report_cases import MODULE, SITE
+
+    from cli.bundle_lists import BundleRow
+    from cli.vet_lists import Line, VettedList
+    from cli.vet_report import write_list
+    from matcher.rules import DEFAULT_RULES
+    from matcher.vet import Bundle, Vetter
+
+    vetter = Vetter((DUO, TABLED, HOSTILE))
+    lines = []
+    for number, (inverter, count) in enumerate([(0, 20), (0, 400), (1, 20), (2, 16)], 2):
+        vetted = vetter.vet(Bundle(MODULE, inverter, count), SITE)
+        row = BundleRow(number, f"A-{number}", MODULE.name, str(count), vetted.inverter.name, "1", "", "")
+        lines.append(Line(row, vetted.verdict, vetted))
+    lines.append(Line(BundleRow(9, "A-9", "?", "1", "?", "1", "", ""), "not-judged", reason="no module is named"))
+    path = tmp_path_factory.mktemp("bundles") / "list.html"
+    with path.open("w", encoding="utf-8") as stream:
+        write_list(VettedList(lines, {}), DEFAULT_RULES, "bundles.csv", stream)
+    return path.as_uri()
+
+
+def test_a_list_of_bundles_sorts_and_filters_and_fits_phone_and_paper(browser: Any, bundles: str) -> None:
+    browser.get_log("browser")
+    browser.get(bundles)
+    assert browser.get_log("browser") == []
+    assert column(browser, "row") == ["2", "3", "4", "5", "9"]
+    choose(browser, "verdict", "does-not-fit")
+    assert column(browser, "article") == ["A-3"]
+    assert browser.find_element("id", "shown").text == "1 of 5 bundles match."
+    choose(browser, "verdict", "any")
+    choose(browser, "direction", "falling")
+    assert column(browser, "row") == ["9", "5", "4", "3", "2"]
+    for width, media in ((390, ""), (1200, ""), (688, "print")):
+        metrics = {"width": width, "height": 844, "deviceScaleFactor": 1, "mobile": width < 500}
+        browser.execute_cdp_cmd("Emulation.setDeviceMetricsOverride", metrics)
+        browser.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": media})
+        assert browser.execute_script("return document.documentElement.scrollWidth") <= width
+    browser.execute_cdp_cmd("Emulation.clearDeviceMetricsOverride", {})
+    browser.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": ""})
+
+
 # Paper sizes in inches: ISO 216 A4 and ANSI letter; margins as in the style sheet, 14 mm left and right.
 def test_a_long_table_is_printed_as_far_as_is_said(page: Any) -> None:
     page.execute_cdp_cmd("Emulation.setEmulatedMedia", {"media": "print"})

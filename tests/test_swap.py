@@ -191,6 +191,37 @@ def test_a_module_that_cannot_be_had(demo, tmp_path):
     assert openpyxl.load_workbook(tmp_path / "out.xlsx").sheetnames == ["Candidates", "Rests on"]
 
 
+def test_without_a_site_a_candidate_holds_wherever_the_array_does(demo):
+    """The array holds from some degree on; what is offered must pass the checks there, and at 50 degC."""
+    wiring = ("-m", "klassik 275p", "-i", "fiddle 3", "--count", 14)
+    ran = demo(*wiring)
+    assert "wherever it holds itself (-11 to 50 degC" in " ".join(ran.out.split())
+    document = json.loads(demo(*wiring, "--json").out)
+    assert document["site"]["solved"] and document["site"]["design_low_c"] == -11
+    at_edges = json.loads(demo(*wiring, "--low", -11, "--high", 50, "--json").out)
+    assert document["candidates"] == at_edges["candidates"]
+    ran = demo("-m", "klassik 275p", "-i", "fiddle 3", "--strings", "1x40")
+    assert ran.status == 2 and "sound in no climate" in ran.err
+
+
+@pytest.mark.parametrize(("within", "said"), [(1, "None within 1 % of its power; 1 of another power keeps"),
+                                              (2, "1 within 2 % of its power (of")])  # fmt: skip
+def test_how_many_are_alike_in_power_is_said(demo, within, said):
+    ran = demo(*ARRAY, "--within", within)
+    assert said in " ".join(ran.out.split())
+    totals = json.loads(demo(*ARRAY, "--within", within, "--json").out)["totals"]
+    assert (totals["within_pct"], totals["within"], totals["sound"]) == (within, within - 1, 1)
+
+
+@pytest.mark.parametrize("more", [(), ("--replace", "inverter"), ("--part", 3)])
+def test_candidates_as_a_page(demo, tmp_path, more):
+    out = tmp_path / "x.html"
+    ran = demo(*ARRAY, *more, "--out", out)
+    page = out.read_text("utf-8")
+    assert ran.status == 0 and "What takes the place of" in page and page.count("<tr data-verdict=") >= 1
+    assert "lethal voltages" in page and "Order: " in page
+
+
 def test_an_inverter_that_cannot_be_had(demo):
     ran = demo(*ARRAY, "--replace", "inverter")
     assert ran.status == 0 and "1 Sinewright Viola 6" in " ".join(ran.out.split())
