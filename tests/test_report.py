@@ -267,7 +267,7 @@ def test_a_voltage_to_confirm_is_drawn_as_one() -> None:
     fit = pair(replace(TABLED, mppt_high_v=450.0), counts=(14, 14), ratio=(0.7, 1.5))
     (option,) = (o for o in fit.options() if o.label == "1x14")
     assert facts.holds_from(option) is None
-    assert facts.climate_words(option, -12, 36).startswith("-12 to ")
+    assert facts.climate_words(option, -12, 36) == "-12 °C or warmer, once confirmed"
     (limit,) = (lim for lim in series.string_in_climate(fit, option).limits if not lim.recorded)
     assert limit.name == "confirm max DC voltage"
     assert 14 * 38.2 * (1 + 0.31 / 100 * 37) <= limit.volts < 14 * 38.2 * (1 + 0.31 / 100 * 37) + 0.1
