@@ -131,6 +131,6 @@ def _reasons(line: Line) -> list[list[Any]]:
             unit = None if c.unit == "1" else c.unit
             found.append(["check", c.check, c.value, c.limit, unit, c.margin_pct, c.remark or c.rule])
     found += [["change", m.kind, None, None, None, None, mend_words(m, v)] for m in v.mends]
-    if v.window is not None or v.failed:
+    if (v.window is not None or v.failed) and not (v.failed and v.window is not None and v.window.by_hours):
         found.append(["climate", "window", None, None, None, None, window_words(v.window)])
     return found

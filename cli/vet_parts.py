@@ -54,7 +54,7 @@ class Task:
                 vetter.prepare(
                     modules, site, condensed=self.condensed.get(site), plane=self.hourly.get(site), dc_loss_pct=DC_LOSS_PCT
                 )
-            if site is None or self.rules.cold_voltage != "hourly":
+            if self.rules.cold_voltage != "hourly":
                 vetter.prepare_climates(modules, self.like if site is None else site)
         found: list[Vetted | str] = []
         for bundle, site in part:

@@ -58,7 +58,7 @@ def _answer(v: Vetted) -> str:
     if v.verdict == "no-verdict":
         return f"No verdict: {v.reason}."
     if v.option is None:
-        elsewhere = f" Elsewhere: {window_words(v.window)}." if v.window is not None else ""
+        elsewhere = f" Elsewhere: {window_words(v.window)}." if v.window is not None and not v.window.by_hours else ""
         return f"It does not fit, {cause(v.failed)}: {v.reason}.{elsewhere}"
     fits = "It fits" if v.verdict == "fits" else "Nothing on record speaks against it, and something is to be confirmed"
     return f"{fits}. {sentence(window_words(v.window))}"

@@ -35,7 +35,7 @@ def show(vetted: Vetted, year: SiteYear | None, rules: bool = False) -> None:
         _show_sound(vetted)
     else:
         say(f"does-not-fit: {cause(vetted.failed)}. {sentence(vetted.reason)}")
-        if vetted.window is not None:
+        if vetted.window is not None and not vetted.window.by_hours:
             say(f"Elsewhere: {window_words(vetted.window)}.")
         say("What would mend it, the smallest change first:" if vetted.mends else "No single change mends it.")
         for mend in vetted.mends:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from cli.facts import COLDEST_ON_EARTH_C, NO_LIMIT
+from cli.facts import COLDEST_ON_EARTH_C, FROM_HOURS, NO_LIMIT
 
 if TYPE_CHECKING:
     from matcher.anyclimate import Window
@@ -36,6 +36,9 @@ def window_words(window: Window | None) -> str:
     if window is None:
         return "sound in no climate"
     low, high = _ends(window)
+    if window.by_hours:
+        heat = f", where the highest temperature on record is {high} degC or cooler" if high is not None else ""
+        return f"sound in the cold of the weather file{heat}"
     parts = []
     if low is not None:
         parts.append(f"the lowest temperature on record is {low} degC or milder")
@@ -58,9 +61,9 @@ def window_short(window: Window | None) -> str:
     if window is None:
         return "nowhere"
     low, high = _ends(window)
-    if low is None and high is None and not (window.cold_open or window.hot_open):
+    if low is None and high is None and not (window.cold_open or window.hot_open or window.by_hours):
         return NO_LIMIT
-    ends = ((low, window.cold_open), (high, window.hot_open))
+    ends = ((FROM_HOURS if window.by_hours else low, window.cold_open), (high, window.hot_open))
     return " to ".join(str(end) if end is not None else "?" if is_open else NO_LIMIT for end, is_open in ends)
 
 

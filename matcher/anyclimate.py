@@ -32,13 +32,15 @@ MILD_C = 25.0
 class Window:
     """Coldest and hottest ambient temperature [degC] of a way to wire; ``None`` where nothing known bounds it.
 
-    An end is open where a value that is not on record may bound it more narrowly.
+    An end is open where a value that is not on record may bound it more narrowly. ``by_hours``: the cold voltage
+    comes from hourly weather, and no temperature stands for the cold end.
     """
 
     coldest_c: float | None
     hottest_c: float | None
     cold_open: bool = False
     hot_open: bool = False
+    by_hours: bool = False
 
     def site(self, like: Site) -> Site | None:
         """A site at the edges, in whole degrees inside ordinary climates; ``None`` where no climate is left."""

@@ -216,9 +216,9 @@ class Vetter:
         return _sound(bundle, outcome, at_edges, solved, solved=True)
 
     def _elsewhere(self, bundle: Bundle, site: Site) -> Window | None:
-        """The climate in which an unsound bundle would be sound; ``None`` also where no temperature decides."""
+        """The climate in which an unsound bundle would be sound; an unknown one where hours of weather decide."""
         if self._rules.cold_voltage == "hourly":
-            return None
+            return Window(None, None, hot_open=True, by_hours=True)
         bench = self._bench(bundle.module, mild_of(site))
         return None if bench.reason is not None else self._widest(bundle, bench)
 
@@ -334,7 +334,7 @@ def _sound(bundle: Bundle, option: Option, bench: Bench, site: Site, solved: boo
     waiting = {c.field for c in option.confirm}
     window = Window(
         option.coldest_c, option.hottest_c, bool(waiting & {"max_dc_voltage_v", "max_system_voltage_v"}),
-        "voc_coef_pct" in waiting,
+        "voc_coef_pct" in waiting, option.cold_by_hours,
     )  # fmt: skip
     return Vetted(
         bundle, str(option.verdict), site, solved, option, checks=option.checks, wired=option.wired, window=window,

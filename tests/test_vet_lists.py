@@ -185,6 +185,8 @@ def test_like_strings_are_shared_evenly():
          "sound where the lowest temperature on record is -11 degC or milder, once confirmed"),
         (Window(None, None, cold_open=True), "? to no limit",
          "sound as far as is known; how cold it may get waits for a value to confirm"),
+        (Window(None, 41.6, by_hours=True), "file to 41",
+         "sound in the cold of the weather file, where the highest temperature on record is 41 degC or cooler"),
         (None, "nowhere", "sound in no climate"),
     ],
 )  # fmt: skip
