@@ -141,14 +141,17 @@ def fit(
         if by_count and limit is None and not checks:
             show_growth(found, year, worth, before)
         else:
+            aside: list[str] = []
             if energy is not None:
                 from cli.fit_energy import energy_lines
 
-                before += energy_lines(found, year, energy, enough)
+                said, *aside = energy_lines(found, year, energy, enough)
+                before.append(said)
             if by_count:
                 print("\n".join([*growth_lines(found, worth), ""]))
             wanted = None if energy is None else energy.yearly_kwh
-            fit_screen.show(found, year, limit=limit, checks=checks, why=why, before=before, wanted_kwh=wanted)
+            fit_screen.show(found, year, limit=limit, checks=checks, why=why, before=before, aside=aside,
+                            wanted_kwh=wanted)  # fmt: skip
     return 0 if found.totals.records_with_option else NOTHING_FITS
 
 

@@ -21,16 +21,17 @@ def energy_lines(fit: Fit, year: SiteYear, energy: EnergyWanted, enough: Enough)
     best, proven, links = enough.best, enough.proven, _chain(fit, year, enough)
     count = counted(enough.modules, "module")
     fewest = "is the fewest that yields it" if enough.modules == 1 else "are the fewest that yield it"
-    said = f"{energy.yearly_kwh:,.0f} kWh a year: {count} {fewest}, {_named(fit, best)}."
+    said = f"{energy.yearly_kwh:,.0f} kWh a year: {count} {fewest}, {_named(fit, best)}"
     if proven is None:
-        said += " It is to confirm, and nothing that fits yields so much."
+        said += "; nothing that fits yields so much"
     elif proven.modules > best.modules:
         said += (
-            f" It is to confirm; of what fits it takes {proven.modules:,}, {_named(fit, proven)}:"
-            f" --count {proven.modules} in place of the energy lists them."
+            f"; of what fits it takes {proven.modules:,}, {_named(fit, proven)}:"
+            f" --count {proven.modules} in place of the energy lists them"
         )
     elif best.verdict is not proven.verdict:
-        said += f" It is to confirm; of what fits with as many, {_named(fit, proven)}."
+        said += f"; of what fits as many, {_named(fit, proven)}"
+    said += "."
     lines = [said]
     if links is not None:
         clipping = "not known" if links.clipping is None else f"{links.clipping:.1%}"
@@ -43,10 +44,10 @@ def energy_lines(fit: Fit, year: SiteYear, energy: EnergyWanted, enough: Enough)
 
 
 def _named(fit: Fit, o: Option) -> str:
-    return (
-        f"{fit.modules[o.module].name} as {wiring(o)} on {fit.inverters[o.inverter].name}"
-        f" ({o.yearly_kwh:,.0f} kWh, {o.verdict})"
-    )
+    """An option without what the question names."""
+    module = f"{fit.modules[o.module].name} as " if len(fit.modules) > 1 else ""
+    inverter = f" on {fit.inverters[o.inverter].name}" if len(fit.inverters) > 1 else ""
+    return f"{module}{wiring(o)}{inverter} ({o.yearly_kwh:,.0f} kWh, {o.verdict})"
 
 
 def add_energy(fit: Fit, year: SiteYear, energy: EnergyWanted, enough: Enough) -> dict[str, Any]:

@@ -37,20 +37,20 @@ LEAST = 8
 _WHOLE, _NO_CHECKS, _RANGES, _TIGHT = range(4)
 
 #: Options that it shows where even then it is too long: names that take two lines.
-_FEWEST = 5
+_FEWEST = 3
 
 
 def show(
     fit: Fit, year: SiteYear, *, limit: int | None, checks: bool, why: bool, before: Sequence[str] = (),
-    wanted_kwh: float | None = None,
+    aside: Sequence[str] = (), wanted_kwh: float | None = None,
 ) -> None:
     """Print the answer: no more than a screen of it, unless a number of options, checks or reasons are asked for.
 
-    ``before`` are paragraphs that stand ahead of it; options are held against ``wanted_kwh`` a year.
+    ``before`` are paragraphs that stand ahead of it, ``aside`` those of them that a tight screen does without; options are held against ``wanted_kwh`` a year.
     """
     options = list(fit.options(limit or MOST))
     shown, level = len(options), _WHOLE
-    lines = _page(fit, year, options, shown, level, before, checks, why, wanted_kwh)
+    lines = _page(fit, year, options, shown, level, (*before, *aside), checks, why, wanted_kwh)
     if limit is None and not checks and not why:
         room = page_lines()
         while len(lines) > room and (shown > _FEWEST or level < _TIGHT):
@@ -59,7 +59,8 @@ def show(
                 shown = max(least, shown - max(1, (len(lines) - room) // 2))
             else:
                 shown, level = len(options), level + 1
-            lines = _page(fit, year, options, shown, level, before, checks, why, wanted_kwh)
+            ahead = before if level >= _TIGHT else (*before, *aside)
+            lines = _page(fit, year, options, shown, level, ahead, checks, why, wanted_kwh)
     print("\n".join(lines))
 
 

@@ -271,7 +271,7 @@ def test_fit_prints_count_chain_and_options(small_catalog, ferrule):
     assert "DC wiring 98.0%, inverter 97.0%" in ran.out
     assert "by falling yearly energy" in ran.out
     said = " ".join(ran.out.split())
-    assert "It is to confirm, and nothing that fits yields so much." in said
+    assert "to-confirm); nothing that fits yields so much." in said
     assert "reaches %: of the 8,000 kWh wanted; less than 100 falls short." in said
     energy = json.loads(ferrule(*FIT, *PLACE, "--yearly-kwh", "8000", "--json").out)["energy"]
     assert (energy["verdict"], energy["fits"]) == ("to-confirm", None)
