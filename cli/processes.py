@@ -21,12 +21,14 @@ def processes(number: int, begin: Callable[[T], None], task: T) -> Iterator[Proc
     for name in ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS"):
         os.environ.setdefault(name, "1")  # one process for each core is enough
     context = multiprocessing.get_context("spawn")
-    with ProcessPoolExecutor(number, context, _begin, (begin, task)) as pool:
-        try:
-            yield pool
-        except BaseException:
-            pool.shutdown(wait=False, cancel_futures=True)
-            raise
+    # Not as a context of its own: its way out takes the cancelling back.
+    pool = ProcessPoolExecutor(number, context, _begin, (begin, task))
+    try:
+        yield pool
+    except BaseException:
+        pool.shutdown(cancel_futures=True)
+        raise
+    pool.shutdown()
 
 
 def _begin(begin: Callable[[T], None], task: T) -> None:

@@ -13,6 +13,7 @@ from test_seed_catalog import INVERTERS, MODULES, SITES
 
 import oracle
 from catalog.records import Inputs, Inverter
+from cli.processes import processes
 from cli.vet_parts import Task, vet_all
 from cli.vet_words import window_short, window_words
 from matcher import reach
@@ -97,6 +98,22 @@ def test_several_processes_find_what_one_finds(monkeypatch):
     for (_, a), (_, b) in zip(one, two, strict=True):
         assert a == b and a.inverters[a.bundle.inverter].name == b.inverter.name
     assert {v.verdict for _, v in one} >= {"fits", "does-not-fit"}
+
+
+def test_an_interrupt_drops_what_still_waits(monkeypatch):
+    """A second shutdown, as on the way out of the pool's own context, would let everything run to its end."""
+    calls = []
+
+    class Pool:
+        def __init__(self, *_): ...
+
+        def shutdown(self, **how):
+            calls.append(how)
+
+    monkeypatch.setattr("cli.processes.ProcessPoolExecutor", Pool)
+    with pytest.raises(KeyboardInterrupt), processes(2, print, None):
+        raise KeyboardInterrupt
+    assert calls == [{"cancel_futures": True}]
 
 
 def test_a_list_says_what_one_bundle_says():
