@@ -7,11 +7,11 @@ modules; listing walks the trackers one by one and only ever enters branches tha
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from functools import cached_property
 from itertools import combinations
-from math import prod
+from math import comb, gcd, prod
 
 import numpy as np
 
@@ -166,7 +166,9 @@ class Space:
 
     def ways_by(self, tally: ByCount | ByStrings, sure_only: bool = False) -> list[int]:
         """Exact number of arrangements in each state of a tally, the module window left aside."""
-        total = np.zeros(tally.states, dtype=object)
+        # Machine integers hold most counts, and are many times faster than whole numbers of any size.
+        most = prod(comb(len(c.strings) + g.trackers, g.trackers) for g, c in zip(self.groups, self.choices, strict=True))
+        total = np.zeros(tally.states, dtype=np.int64 if most < 2**62 else object)
         total[0] = 1
         for group, choices in zip(self.groups, self.choices, strict=True):
             if sure_only:
@@ -217,6 +219,90 @@ class Space:
             slots += [slot if t == 0 else replace(slot, opens_group=False) for t in range(group.trackers)]
         return _walk(slots, accepted, needs_confirm=to_confirm is True)
 
+    def foremost(self, modules: int, to_confirm: bool) -> np.ndarray:
+        """Of the arrangements of one module count and verdict, in which there are some, the first of `classes`.
+
+        Shape (trackers, 2). Of those with as few lengths and as short a longest string, the first of `listing`.
+        """
+        for sets in self.sets_of_lengths(modules, to_confirm):
+            firsts = (next(self.of_lengths(modules, to_confirm, lengths), None) for lengths in sets)
+            found = [block[0] for block in firsts if block is not None]
+            if found:
+                return min(found, key=listing_key)
+        raise ValueError(f"no arrangement has {modules} modules")
+
+    def sets_of_lengths(
+        self, modules: int, to_confirm: bool, at_most: int | None = None
+    ) -> Iterator[list[tuple[int, ...]]]:
+        """Sets of (at most so many) string lengths that together can reach a module count, as `classes` takes them.
+
+        Fewest lengths first, then by the longest; sets that are alike in both come together.
+        """
+        every = range(self.shortest, min(self.longest, self.most) + 1)
+        if not to_confirm:
+            every = range(max(self.shortest, self.sure_from), min(self.longest, self.most, self.sure_to) + 1)
+        several = min(len(every), sum(g.trackers for g in self.groups))
+        for k in range(1, min(several, several if at_most is None else at_most) + 1):
+            for end in range(k - 1, len(every)):
+                sets = [(*others, every[end]) for others in combinations(every[:end], k - 1)]
+                sets = [lengths for lengths in sets if self._reaches(modules, lengths, to_confirm)]
+                if sets:
+                    yield sets
+
+    def _reaches(self, modules: int, lengths: tuple[int, ...], to_confirm: bool) -> bool:
+        """Whether strings of these lengths can add up to a module count; counts are bits of a whole number."""
+        if modules % gcd(*lengths):
+            return False
+        counts, below = 1, (1 << (modules + 1)) - 1
+        for group in self.groups:
+            if group.to_confirm and not to_confirm:
+                continue
+            steps = [n * s for n in lengths for s in range(1, min(group.max_strings, modules // n) + 1)]
+            for _ in range(group.trackers):
+                grown = counts
+                for step in steps:
+                    grown |= counts << step
+                grown &= below
+                if grown == counts:
+                    break
+                counts = grown
+        return bool(counts >> modules & 1)
+
+    def least_mean(
+        self, modules: int, to_confirm: bool, lengths: Sequence[int], values: Sequence[np.ndarray]
+    ) -> float:
+        """Least mean over the modules of what each choice costs a module, for one module count.
+
+        Over the arrangements with strings of some lengths (k,); those of the other verdict may be among them
+        where ``to_confirm``. ``values`` has an array (strings, k) for each group, by strings less one. Infinite
+        where no arrangement has the count.
+        """
+        least = np.full(modules + 1, np.inf)
+        least[0] = 0.0
+        for group, value in zip(self.groups, values, strict=True):
+            if group.to_confirm and not to_confirm:
+                continue
+            steps = [
+                (n * s, n * s * float(value[s - 1, k]))
+                for k, n in enumerate(lengths)
+                for s in range(1, min(group.max_strings, modules // n) + 1)
+            ]
+            for _ in range(group.trackers):
+                before = least
+                least = before.copy()
+                for step, cost in steps:
+                    np.minimum(least[step:], before[:-step] + cost, out=least[step:])
+        return float(least[modules]) / modules
+
+    def of_lengths(self, modules: int, to_confirm: bool, lengths: tuple[int, ...]) -> Iterator[np.ndarray]:
+        """Arrangements of one module count and verdict with strings of all these lengths, in blocks."""
+        accepted = np.zeros(self.most + 1, dtype=bool)
+        accepted[modules] = True
+        for block in self.listing(accepted, to_confirm, lengths):
+            block = block[distinct_lengths(block) == len(lengths)]
+            if len(block):
+                yield block
+
     def upto(self, longest: int) -> Space:
         """The arrangements whose strings are no longer than this."""
         return replace(self, longest=min(longest, self.longest))
@@ -241,15 +327,10 @@ class Space:
             if len(found):
                 yield found[np.lexsort((longest_string(found), distinct_lengths(found)))]
             return
-        every = range(self.shortest, min(self.longest, self.most) + 1)
-        for k in range(1, len(every) + 1):
-            for lengths in sorted(combinations(every, k), key=lambda c: (c[-1], c)):
-                if exactly_longest and lengths[-1] != self.longest:
-                    continue
-                for block in self.listing(accepted, to_confirm, lengths):
-                    block = block[distinct_lengths(block) == k]
-                    if len(block):
-                        yield block
+        for sets in self.sets_of_lengths(modules, to_confirm):
+            for lengths in sets:
+                if not exactly_longest or lengths[-1] == self.longest:
+                    yield from self.of_lengths(modules, to_confirm, lengths)
 
 
 def distinct_lengths(block: np.ndarray) -> np.ndarray:
@@ -257,6 +338,11 @@ def distinct_lengths(block: np.ndarray) -> np.ndarray:
     n = np.sort(block[:, :, 1], axis=1)
     new = np.diff(n, axis=1, prepend=0) > 0
     return new.sum(axis=1)
+
+
+def listing_key(row: np.ndarray) -> list[tuple[int, int]]:
+    """Sorts arrangements (trackers, 2) as they are listed: choices by length, then strings, an empty tracker last."""
+    return [(n, s) if s else (FACE, 0) for s, n in row.tolist()]
 
 
 def longest_string(block: np.ndarray) -> np.ndarray:
@@ -289,7 +375,7 @@ def _take_group(total: np.ndarray, choices: Choices, trackers: int, tally: ByCou
     steps, opens = tally.steps(choices), tally.open(choices)
     # used[k]: ways with k trackers of the group in use. A choice may be taken again and again, so each
     # is worked in for k ascending; what it can be added to is cut to the states it is open from.
-    used = [total] + [np.zeros(len(total), dtype=object) for _ in range(trackers)]
+    used = [total] + [np.zeros_like(total) for _ in range(trackers)]
     for step, opened in zip(steps.tolist(), opens, strict=True):
         start = np.flatnonzero(opened)
         if not len(start):

@@ -170,6 +170,62 @@ def block_losses(
     return to_losses(*sums).of(year)
 
 
+def pair_losses(
+    year: ModuleYear, inverters: InverterColumns, line: np.ndarray, row: np.ndarray, max_current_a: np.ndarray,
+    strings: np.ndarray, in_series: np.ndarray,
+) -> Losses:  # fmt: skip
+    """Losses of n arrangements, each of a pair of its own.
+
+    Parameters
+    ----------
+    year : ModuleYear
+        Arrays (classes,) of one module, or (modules, classes).
+    line, row : int array, shape (n,)
+        Year and inverter of each arrangement.
+    max_current_a : float array, shape (n, trackers)
+        Current limit of each tracker, NaN where not stated.
+    strings, in_series : int arrays, shape (n, trackers)
+        What each tracker carries; 0, 0 where it is empty or there is none.
+    """
+    n, classes = len(line), year.power_w.shape[-1]
+    powers, volts = np.atleast_2d(year.power_w), np.atleast_2d(year.vmp_v)
+    hours = np.broadcast_to(np.atleast_2d(year.hours), powers.shape)
+    limits = np.nan_to_num(max_current_a, nan=np.inf)
+    sums = np.empty((3, n))
+    step = max(1, CHUNK // classes)
+    for first in range(0, n, step):
+        part = np.arange(first, min(first + step, n))
+        total = np.zeros((2, len(part), classes))  # DC power without and with current limits
+        bent = np.zeros((2, 3, len(part), classes))  # and its sums with the coefficients of the AC power
+        for t in range(strings.shape[1]):
+            used = np.flatnonzero(strings[part, t])
+            if not len(used):
+                continue
+            some = part[used]
+            at = in_series[some, t, None] * volts[line[some]]
+            curve = parabola(inverters, row[some], at)
+            dc = (strings[some, t] * in_series[some, t])[:, None] * powers[line[some]]
+            with np.errstate(invalid="ignore"):
+                held = np.fmin(dc, limits[some, t, None] * at)
+            for k, power in enumerate((dc, held)):
+                total[k, used] += power
+                for c in range(3):
+                    bent[k, c, used] += power * curve[c]
+        start = start_power(inverters, row[part])[:, None]
+        with np.errstate(invalid="ignore", divide="ignore"):
+            ac = total * bent[:, 0] + bent[:, 1] + bent[:, 2] / total
+        ac[(total < start) | (total <= 0)] = 0.0
+        unlimited, held = np.maximum(ac, 0.0, out=ac)
+        limit = inverters.ac_power_w[row[part], None]
+        for k, power in enumerate((unlimited, np.minimum(unlimited, limit), np.minimum(held, limit))):
+            sums[k, part] = np.einsum("ij,ij->i", power, hours[line[part]])
+    losses = to_losses(*sums)
+    known = has_model(inverters)[row]
+    for values in (losses.power_pct, losses.current_pct, losses.yearly_kwh):
+        values[~known] = np.nan
+    return losses.of(year)
+
+
 def _multi_ac(amounts: np.ndarray, dc: np.ndarray, curve: tuple[np.ndarray, ...], start: float) -> np.ndarray:
     """AC power [W] of arrangements (k, kinds) over the classes; dc and curve have shape (kinds, classes).
 

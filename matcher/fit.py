@@ -23,6 +23,7 @@ from matcher.electrical import Points, design_points
 from matcher.errors import MatcherError
 from matcher.limits import UNLIMITED
 from matcher.moduleyear import ModuleYear, PlaneYear
+from matcher.multipairs import MultiPairs
 from matcher.near import Rejection, rejection
 from matcher.options import Options, Unit, join, label
 from matcher.order import in_words
@@ -282,21 +283,24 @@ def _on_one_unit(search: Search) -> tuple[Options, list[int], list[Callable[[], 
         arrangements[record] += size
     parts: list[Options] = [table]
     lazy: list[Callable[[], Lazy]] = []
-    for m in range(len(search.modules)):
-        for i in np.flatnonzero(~search.inverters.single).tolist():
-            space = search.space(m, i)
-            if not space.total:
-                continue
-            arrangements[i if lists_inverters else m] += space.total
-            if not request.every:
-                best = search.best(m, i, space)
-            elif space.total <= WHOLE_EVERY:
-                best = search.whole(m, i, space)
-            else:
-                best = None
-                lazy.append(partial(search.in_order, m, i, space))
-            if best is not None:
-                parts.append(best)
+    several = np.flatnonzero(~search.inverters.single)
+    module, inverter = np.repeat(np.arange(len(search.modules)), len(several)), np.tile(several, len(search.modules))
+    if not request.every:
+        tables, sizes = MultiPairs(search, module, inverter).bests()
+        for record, size in zip((inverter if lists_inverters else module).tolist(), sizes, strict=True):
+            arrangements[record] += size
+        return join([table, *tables]), arrangements, lazy
+    for m, i in zip(module.tolist(), inverter.tolist(), strict=True):
+        space = search.space(m, i)
+        if not space.total:
+            continue
+        arrangements[i if lists_inverters else m] += space.total
+        if space.total <= WHOLE_EVERY:
+            whole = search.whole(m, i, space)
+            assert whole is not None
+            parts.append(whole)
+        else:
+            lazy.append(partial(search.in_order, m, i, space))
     return join(parts), arrangements, lazy
 
 

@@ -217,8 +217,10 @@ def energies(
     NaN for the others.
     """
     found = np.full((3, len(line)), np.nan)
-    known = np.isfinite(power_w).all(axis=1) & (np.nan_to_num(power_w) > 0).any(axis=1)
-    served = known[line] & has_model(inverters)[inverter]
+    served = has_model(inverters)[inverter]
+    years, of = np.unique(line, return_inverse=True)
+    known = np.array([np.isfinite(p).all() and (p > 0).any() for p in power_w[years]], dtype=bool)
+    served &= known[of]
     chosen = np.flatnonzero(served)
     years, of = np.unique(line[chosen], return_inverse=True)
     for first in range(0, len(years), _YEARS):

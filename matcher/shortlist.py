@@ -94,14 +94,14 @@ class Heads:
 class Estimates:
     """Clipping losses by the power limit, about, of string lengths (k,) with any number of strings.
 
-    ``line`` is the year of each, ``clipped`` and ``total`` are the coefficients (3, k) of what lies above the
+    ``line`` is the year of each, ``step`` the modules of a string (or 1, to count by modules), ``clipped`` and ``total`` are the coefficients (3, k) of what lies above the
     limit and of the whole in modules squared, modules and 1; ``enough_w`` is the DC power at the limit.
     ``wild`` marks efficiencies that follow the voltage too much for an estimate.
     """
 
     heads: Heads
     line: np.ndarray
-    in_series: np.ndarray
+    step: np.ndarray
     clipped: np.ndarray
     total: np.ndarray
     enough_w: np.ndarray
@@ -132,7 +132,7 @@ class Estimates:
 
         0 where there is no efficiency model or no year, NaN where it is wild.
         """
-        modules = (strings * self.in_series[of]).astype(float)
+        modules = (strings * self.step[of]).astype(float)
         with np.errstate(invalid="ignore", divide="ignore", over="ignore"):
             hours, energy, square = self.heads.above(self.line[of], self.enough_w[of] / modules)
             c2, c1, c0 = self.clipped[:, of]

@@ -15,6 +15,7 @@ from catalog.records import Inverter, Module, specs
 from matcher.columns import InverterColumns
 from matcher.electrical import design_points, diodes_of
 from matcher.moduleyear import ModuleYear, PlaneYear, module_years
+from matcher.multipairs import MultiPairs
 from matcher.options import Options, join
 from matcher.request import Request
 from matcher.search import Search
@@ -100,11 +101,9 @@ def bests(
         lines = np.arange(first, min(first + step, len(modules)))
         m, i = np.repeat(lines, len(single)), np.tile(single, len(lines))
         add(search.single_trackers(m, i, search.limits(m, i), every=False)[0])
-    for m in range(len(modules)):
-        for i in several.tolist():
-            best = search.best(m, i, search.space(m, i))
-            if best is not None:
-                add(best)
+    m, i = np.repeat(np.arange(len(modules)), len(several)), np.tile(several, len(modules))
+    for table in MultiPairs(search, m, i).bests()[0]:
+        add(table)
     return Bests(join(tables), rows[module_of[:, None], inverters.of[None, :]])
 
 
