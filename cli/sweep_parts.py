@@ -4,21 +4,20 @@ from __future__ import annotations
 
 import hashlib
 import json
-import multiprocessing
 import os
 import shutil
-import signal
-import threading
 from collections.abc import Iterator, Sequence
-from concurrent.futures import ProcessPoolExecutor, as_completed
+from concurrent.futures import as_completed
 from dataclasses import dataclass
 from functools import cached_property
-from multiprocessing.connection import wait
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from filelock import FileLock, Timeout
+
 from catalog.errors import CatalogError
 from catalog.records import Inverter, Module
+from cli.processes import processes
 from cli.sweep_files import write_part
 from matcher.sweep import Takers, bests
 
@@ -33,7 +32,7 @@ _EDITION = 1
 
 #: Pairs in a part; one of an inverter with several trackers counts as many.
 _PAIRS = 200_000
-_SEVERAL_TRACKERS = 100
+_SEVERAL_TRACKERS = 50
 
 
 @dataclass(frozen=True)
@@ -70,6 +69,7 @@ class Parts:
         size = max(1, min(512, _PAIRS // (len(task.inverters) + _SEVERAL_TRACKERS * several)))
         self.modules = [modules[k : k + size] for k in range(0, len(modules), size)]
         self._key = _key_of(task, modules, size)
+        self._lock = FileLock(self.folder / ".lock", timeout=0)
 
     def open(self) -> bool:
         """Make the folder or take it up; whether parts of another sweep had to be thrown away.
@@ -77,30 +77,39 @@ class Parts:
         Raises
         ------
         CatalogError
-            Where that cannot be done, or the folder holds something else.
+            Where that cannot be done, the folder holds something else, or another sweep is at work there.
         """
         manifest = self.folder / "manifest.json"
         afresh = False
         try:
+            found = [path.name for path in self.folder.iterdir()] if self.folder.exists() else []
+            if set(found) - {".lock"} and "manifest.json" not in found:
+                raise self._something_else()
+            self.folder.mkdir(exist_ok=True)
+            self._lock.acquire()
             if manifest.exists():
                 kept = _manifest(manifest)
                 if kept.get("schema") != SCHEMA:
-                    raise CatalogError(f"{self.folder} holds something else: move it, or choose another --out")
+                    raise self._something_else()
                 afresh = kept.get("key") != self._key
                 if afresh:
-                    self.clear()
-            self.folder.mkdir(exist_ok=True)
+                    manifest.unlink()
+                    for left in self.made().values():
+                        left.unlink()
             for left in self.folder.glob(".*.tmp"):
                 left.unlink(missing_ok=True)
             if not manifest.exists():
-                if any(self.folder.iterdir()):
-                    raise CatalogError(f"{self.folder} holds something else: move it, or choose another --out")
                 draft = self.folder / ".manifest.tmp"
                 draft.write_text(json.dumps({"schema": SCHEMA, "key": self._key, "parts": len(self.modules)}))
                 os.replace(draft, manifest)
+        except Timeout:
+            raise CatalogError(f"{self.folder}: another sweep is at work on the same file: wait for it") from None
         except OSError as error:
             raise CatalogError(f"{self.folder}: {error.strerror}; choose another place with --out") from None
         return afresh
+
+    def _something_else(self) -> CatalogError:
+        return CatalogError(f"{self.folder} holds something else: move it, or choose another --out")
 
     def made(self) -> dict[int, Path]:
         """File of each part that is there, by its number."""
@@ -116,21 +125,15 @@ class Parts:
                 self.task.make(self.modules[number], self.folder, number)
                 yield number
             return
-        for name in ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS"):
-            os.environ.setdefault(name, "1")  # one process for each core is enough
-        context = multiprocessing.get_context("spawn")
-        with ProcessPoolExecutor(jobs, context, _begin, (self.task,)) as pool:
-            try:
-                futures = {pool.submit(_make, self.modules[k], self.folder, k): k for k in todo}
-                for future in as_completed(futures):
-                    future.result()
-                    yield futures.pop(future)
-            except BaseException:
-                pool.shutdown(wait=False, cancel_futures=True)
-                raise
+        with processes(jobs, _begin, self.task) as pool:
+            futures = {pool.submit(_make, self.modules[k], self.folder, k): k for k in todo}
+            for future in as_completed(futures):
+                future.result()
+                yield futures.pop(future)
 
     def clear(self) -> None:
         """Remove the folder."""
+        self._lock.release()
         shutil.rmtree(self.folder)
 
 
@@ -172,18 +175,8 @@ _task: Task | None = None
 
 
 def _begin(task: Task) -> None:
-    """Take the task over; leave interrupts to the parent, and end with it however it ends."""
     global _task
     _task = task
-    signal.signal(signal.SIGINT, signal.SIG_IGN)
-    parent = multiprocessing.parent_process()
-    assert parent is not None
-
-    def end_with_parent() -> None:
-        wait([parent.sentinel])
-        os._exit(1)
-
-    threading.Thread(target=end_with_parent, daemon=True).start()
 
 
 def _make(modules: Sequence[Module], folder: Path, number: int) -> Path:

@@ -16,6 +16,7 @@ from matcher.columns import InverterColumns
 from matcher.electrical import design_points
 from matcher.fit import Fit, Option, Totals
 from matcher.moduleyear import ModuleYear, PlaneYear
+from matcher.multipairs import MultiPairs
 from matcher.near import Rejection
 from matcher.options import join
 from matcher.request import Request
@@ -100,14 +101,10 @@ def grid(
     singles = np.flatnonzero(search.inverters.single)
     m, i = np.repeat(np.arange(len(modules)), len(singles)), np.tile(singles, len(modules))
     table, _, sizes = search.single_trackers(m, i, search.limits(m, i), every=False)
-    parts, arrangements = [table], int(sizes.sum())
-    for m_ in np.flatnonzero([r is None for r in points.reasons]).tolist():
-        for i_ in np.flatnonzero(~search.inverters.single).tolist():
-            space = search.space(m_, i_)
-            best = search.best(m_, i_, space)
-            if best is not None:
-                arrangements += space.total
-                parts.append(best)
+    several = np.flatnonzero(~search.inverters.single)
+    m, i = np.repeat(np.arange(len(modules)), len(several)), np.tile(several, len(modules))
+    tables, some = MultiPairs(search, m, i).bests()
+    parts, arrangements = [table, *tables], int(sizes.sum()) + sum(some)
     table = join(parts)
     table = table.take(search.rank(table))
     found = np.isin(np.arange(len(inverters)), table.inverter)

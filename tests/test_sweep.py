@@ -222,6 +222,18 @@ def test_chosen_sets(ferrule, small_catalog, tmp_path):
     assert ran.status in (0, 1) and "of 1 pairs" in ran.out
 
 
+def test_two_sweeps_do_not_write_one_file(ferrule, small_catalog, tmp_path):
+    from filelock import FileLock
+
+    out = tmp_path / "a.csv"
+    _some_parts(small_catalog, tmp_path, out, low=-12.0)
+    with FileLock(tmp_path / "a.csv.parts" / ".lock"):
+        ran = ferrule("sweep", *WHERE, "--out", out)
+        assert ran.status == 2 and "another sweep is at work" in ran.err and ran.err.count("\n") == 1
+    assert ferrule("sweep", *WHERE, "--out", out).status == 0
+    assert not (tmp_path / "a.csv.parts").exists()
+
+
 def test_parts_of_another_question_are_not_mixed_in(ferrule, small_catalog, tmp_path):
     ferrule("sweep", *WHERE, "--out", tmp_path / "whole.csv")
     out = tmp_path / "a.csv"
@@ -235,7 +247,8 @@ def test_parts_of_another_question_are_not_mixed_in(ferrule, small_catalog, tmp_
     assert out.read_bytes() == (tmp_path / "whole.csv").read_bytes()
 
 
-def test_killed_in_the_middle_and_started_again_gives_the_same_file(cec_catalog, tmp_path):
+@pytest.mark.parametrize("form", ["csv", "parquet"])
+def test_killed_in_the_middle_and_started_again_gives_the_same_file(cec_catalog, tmp_path, form):
     command = [
         sys.executable, "-m", "cli", "sweep", *PLACE, "--catalog", str(cec_catalog), "--jobs", "2",
         "--modules", "24", "--inverters", "SMA SB50", "--out",
@@ -244,12 +257,12 @@ def test_killed_in_the_middle_and_started_again_gives_the_same_file(cec_catalog,
     def run(out: Path) -> subprocess.CompletedProcess[str]:
         return subprocess.run([*command, str(out)], cwd=ROOT, capture_output=True, text=True, timeout=120)
 
-    whole, cut = tmp_path / "whole.csv", tmp_path / "cut.csv"
+    whole, cut = tmp_path / f"whole.{form}", tmp_path / f"cut.{form}"
     assert run(whole).returncode == 0
-    folder = tmp_path / "cut.csv.parts"
+    folder = tmp_path / f"cut.{form}.parts"
     process = subprocess.Popen([*command, str(cut)], cwd=ROOT, stderr=subprocess.DEVNULL, stdout=subprocess.DEVNULL)
     deadline = time.monotonic() + 60
-    while not list(folder.glob("0*.csv")) and process.poll() is None and time.monotonic() < deadline:
+    while not list(folder.glob(f"0*.{form}")) and process.poll() is None and time.monotonic() < deadline:
         time.sleep(0.002)
     process.kill()
     process.wait()
@@ -257,7 +270,7 @@ def test_killed_in_the_middle_and_started_again_gives_the_same_file(cec_catalog,
     ran = run(cut)
     assert ran.returncode == 0 and "are there already: going on with the rest" in ran.stderr
     assert cut.read_bytes() == whole.read_bytes()
-    assert whole.read_bytes().count(b"\n") > 10_000
+    assert len(pd.read_csv(whole) if form == "csv" else pd.read_parquet(whole)) > 10_000
     assert not folder.exists()
 
 
