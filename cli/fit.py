@@ -48,6 +48,7 @@ def fit(
     every: Annotated[bool, typer.Option("--every", help="Every arrangement, not the best one of each record.")] = False,
     checks: Annotated[bool, typer.Option("--checks", help="Show every check of the options shown (and put them into documents).")] = False,
     why: Annotated[bool, typer.Option("--why", help="Say of the records without option what stops them and what would change that.")] = False,
+    peaks: Annotated[bool, typer.Option("--peaks", help="Of the first options, how much may be clipped at most, as hourly means hide peaks.")] = False,
     limit: Annotated[int | None, typer.Option(metavar="N", min=1, help="Options shown on screen; without it as many as the screen holds, at most 20.")] = None,
     json: Annotated[bool, typer.Option("--json", help="Print the document ferrule.fit/1 instead of tables.")] = False,
     out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file; its ending decides the form: .csv, .xlsx, .json or .html.")] = None,
@@ -131,6 +132,13 @@ def fit(
         from cli.fit_energy import add_energy
 
         extra |= add_energy(found, year, energy, enough)
+    if peaks:
+        from cli.fit_peaks import peaks_entry, peaks_line, peaks_of
+        from cli.years import DC_LOSS_PCT
+
+        hidden = peaks_of(found, place, DC_LOSS_PCT)
+        extra |= peaks_entry(hidden)
+        year = replace(year, notes=(*year.notes, peaks_line(hidden)))
     if out is not None:
         fit_files.write(found, out, year, with_checks=checks or not request.every, why=why, extra=extra)
         note(f"Written to {out}.")
