@@ -23,7 +23,7 @@ from matcher.columns import column
 from matcher.limits import at_most
 from matcher.options import Options, build
 from matcher.order import Order, phase
-from matcher.shortlist import Estimates, Heads, margin
+from matcher.shortlist import Estimates, margin
 from matcher.singlelosses import single_losses
 
 if TYPE_CHECKING:
@@ -218,15 +218,10 @@ class MultiPairs:
 
     def _near_cap(self, m: np.ndarray, i: np.ndarray, limits: PairLimits, pairs: np.ndarray) -> _NearCap | None:
         """Module counts near the cap; ``None`` where no clipping can be known."""
-        search, year = self._search, self._search.year
-        if year is None or not year.shows_clipping or not len(m):
+        search, found = self._search, self._search.heads(m)
+        if found is None:
             return None
-        at = np.zeros(len(m), dtype=np.int64)
-        if year.power_w.ndim == 2:
-            several, at = np.unique(m, return_inverse=True)
-            hours = year.hours[several] if year.hours.ndim == 2 else year.hours
-            year = replace(year, power_w=year.power_w[several], vmp_v=year.vmp_v[several], hours=hours)
-        heads = Heads.of(year, search.request.clip_cap_pct)
+        heads, at = found
         known = has_model(search.inverters)[i] & (heads.highest_w[at] > 0)
         fewest, most = limits.fewest[pairs], limits.most[pairs]
         by_length = []

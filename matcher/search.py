@@ -25,6 +25,7 @@ from matcher.options import Options, build, join
 from matcher.order import ranked, sort_keys
 from matcher.request import Request
 from matcher.shelf import Shelf
+from matcher.shortlist import Heads
 from matcher.singlepairs import SinglePairs
 from matcher.singles import expand
 
@@ -176,6 +177,18 @@ class Search:
         return replace(
             self.year, power_w=self.year.power_w[m], vmp_v=self.year.vmp_v[m], hours=hours[m] if hours.ndim == 2 else hours
         )
+
+    def heads(self, module: np.ndarray) -> tuple[Heads, np.ndarray] | None:
+        """Sums of the years of some modules (n,), and the line of each; ``None`` where no clipping can be known."""
+        year = self.year
+        if year is None or not year.shows_clipping or not len(module):
+            return None
+        at = np.zeros(len(module), dtype=np.int64)
+        if year.power_w.ndim == 2:
+            several, at = np.unique(module, return_inverse=True)
+            hours = year.hours[several] if year.hours.ndim == 2 else year.hours
+            year = replace(year, power_w=year.power_w[several], vmp_v=year.vmp_v[several], hours=hours)
+        return Heads.of(year, self.request.clip_cap_pct), at
 
     def whole(self, m: int, i: int, space: Space) -> Options | None:
         """All options of a space; ``None`` where it is empty."""

@@ -11,7 +11,7 @@ import numpy as np
 from matcher.clipping import Losses
 from matcher.options import Options, build, join
 from matcher.order import Order
-from matcher.shortlist import Estimates, Heads, can_estimate, candidates, margin
+from matcher.shortlist import Estimates, can_estimate, candidates, margin
 from matcher.singlelosses import single_losses
 
 if TYPE_CHECKING:
@@ -82,16 +82,12 @@ class SinglePairs:
 
     def _estimates(self, lines: Expansion, most: np.ndarray) -> Estimates | None:
         """Of the clipping losses of lines with up to so many strings; ``None`` where they are not known."""
-        search, year = self.search, self.search.year
-        if year is None or not year.shows_clipping or not len(lines.pair):
-            return None
+        search = self.search
         module, inverter = self.module[lines.pair], self.inverter[lines.pair]
-        at = np.zeros(len(module), dtype=np.int64)
-        if year.power_w.ndim == 2:
-            several, at = np.unique(module, return_inverse=True)
-            hours = year.hours[several] if year.hours.ndim == 2 else year.hours
-            year = replace(year, power_w=year.power_w[several], vmp_v=year.vmp_v[several], hours=hours)
-        heads = Heads.of(year, search.request.clip_cap_pct)
+        known = search.heads(module)
+        if known is None:
+            return None
+        heads, at = known
         found = Estimates.of(heads, search.inverters, at, inverter, lines.in_series, most * lines.in_series)
         return replace(found, wild=found.wild | ~can_estimate(search.inverters)[inverter])
 
