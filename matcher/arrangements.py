@@ -15,103 +15,8 @@ from math import comb, gcd, prod
 
 import numpy as np
 
-#: A string length with the way it faces: ``face * FACE + length``. Strings that face different ways are
-#: different strings; face 0 is the plain length.
-FACE = 100_000
-
-#: Partial arrangements that are carried on at once: bounds memory, whatever the number of arrangements.
-BLOCK = 4096
-
-
-@dataclass(frozen=True, slots=True)
-class Group:
-    """Like trackers: how many, how many strings each takes at most, and whether using one is to be confirmed."""
-
-    trackers: int
-    max_strings: int
-    to_confirm: bool
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class Choices:
-    """What one tracker of a group can carry; arrays of shape (c,), ordered by length, then strings."""
-
-    in_series: np.ndarray
-    strings: np.ndarray
-    to_confirm: np.ndarray
-
-    @property
-    def modules(self) -> np.ndarray:
-        """Modules of each choice."""
-        return self.in_series * self.strings
-
-    def keep(self, which: np.ndarray) -> Choices:
-        """Only these choices, in their order."""
-        return Choices(self.in_series[which], self.strings[which], self.to_confirm[which])
-
-    def of_lengths(self, lengths: tuple[int, ...]) -> Choices:
-        """Only the choices with one of these string lengths."""
-        return self.keep(np.isin(self.in_series, lengths))
-
-
-@dataclass(frozen=True, slots=True)
-class ByCount:
-    """Arrangements told apart by their module count: state m is m modules placed, up to ``most``."""
-
-    most: int
-
-    @property
-    def states(self) -> int:
-        """Number of states."""
-        return self.most + 1
-
-    def steps(self, choices: Choices) -> np.ndarray:
-        """States that each choice moves on, shape (c,)."""
-        return choices.modules
-
-    def open(self, choices: Choices) -> np.ndarray:
-        """From which states each choice can be made; bool (c, states)."""
-        return np.arange(self.states)[None, :] + choices.modules[:, None] <= self.most
-
-
-@dataclass(frozen=True, slots=True)
-class ByStrings:
-    """Arrangements told apart by their strings of each length, up to ``wanted``: (length, strings) pairs.
-
-    A state is a mixed-radix number with one digit per length, the strings of that length placed so far.
-    """
-
-    wanted: tuple[tuple[int, int], ...]
-
-    @property
-    def states(self) -> int:
-        """Number of states; the last one is all strings placed."""
-        return prod(count + 1 for _, count in self.wanted)
-
-    def _strides(self) -> dict[int, tuple[int, int]]:
-        """Stride and wanted strings of each length."""
-        strides, stride = {}, 1
-        for length, count in self.wanted:
-            strides[length] = (stride, count)
-            stride *= count + 1
-        return strides
-
-    def steps(self, choices: Choices) -> np.ndarray:
-        """States that each choice moves on, shape (c,)."""
-        strides = self._strides()
-        stride = np.array([strides[n][0] if n in strides else 0 for n in choices.in_series.tolist()], dtype=np.int64)
-        return choices.strings * stride
-
-    def open(self, choices: Choices) -> np.ndarray:
-        """From which states each choice can be made; bool (c, states)."""
-        strides = self._strides()
-        state = np.arange(self.states)
-        rows = np.zeros((len(choices.in_series), self.states), dtype=bool)
-        for c, (n, s) in enumerate(zip(choices.in_series.tolist(), choices.strings.tolist(), strict=True)):
-            if n in strides:
-                stride, count = strides[n]
-                rows[c] = state // stride % (count + 1) + s <= count
-        return rows
+from matcher.choices import FACE, ByCount, ByStrings, Choices, Group
+from matcher.walking import Slot, walk
 
 
 @dataclass(frozen=True)
@@ -209,15 +114,15 @@ class Space:
         lengths : tuple of int, optional
             Only these string lengths.
         """
-        slots: list[_Slot] = []
+        slots: list[Slot] = []
         for group, choices in zip(self.groups, self.choices, strict=True):
             if lengths is not None:
                 choices = choices.of_lengths(lengths)
             if to_confirm is False:
                 choices = choices.keep(~choices.to_confirm)
-            slot = _Slot.of(choices, tally or ByCount(self.most))
+            slot = Slot.of(choices, tally or ByCount(self.most))
             slots += [slot if t == 0 else replace(slot, opens_group=False) for t in range(group.trackers)]
-        return _walk(slots, accepted, needs_confirm=to_confirm is True)
+        return walk(slots, accepted, needs_confirm=to_confirm is True)
 
     def foremost(self, modules: int, to_confirm: bool) -> np.ndarray:
         """Of the arrangements of one module count and verdict, in which there are some, the first of `classes`.
@@ -350,26 +255,6 @@ def longest_string(block: np.ndarray) -> np.ndarray:
     return block[:, :, 1].max(axis=1)
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class _Slot:
-    """One tracker on the walk. The last entry of each array stands for leaving it empty."""
-
-    choices: Choices
-    step: np.ndarray
-    unsure: np.ndarray
-    open: np.ndarray
-    opens_group: bool = True
-
-    @classmethod
-    def of(cls, choices: Choices, tally: ByCount | ByStrings) -> _Slot:
-        return cls(
-            choices,
-            np.append(tally.steps(choices), 0),
-            np.append(choices.to_confirm, False),
-            np.vstack([tally.open(choices), np.ones((1, tally.states), dtype=bool)]),
-        )
-
-
 def _take_group(total: np.ndarray, choices: Choices, trackers: int, tally: ByCount | ByStrings) -> np.ndarray:
     """Ways of each state after a group of like trackers; a multiset of at most ``trackers`` choices is added."""
     steps, opens = tally.steps(choices), tally.open(choices)
@@ -383,92 +268,3 @@ def _take_group(total: np.ndarray, choices: Choices, trackers: int, tally: ByCou
         for k in range(1, trackers + 1):
             used[k][start + step] += used[k - 1][start]
     return sum(used[1:], start=used[0])
-
-
-def _reach(slots: list[_Slot], accepted: np.ndarray, needs_confirm: bool) -> list[list[np.ndarray]]:
-    """Per slot and flag: whether an accepted state can still be reached; bool (choices + 1, states).
-
-    Entry [slot][flag][c, state] is for a slot that may take choice c or a later one, or stay empty. Flag 0:
-    something to confirm is still to come; flag 1: nothing is asked any more.
-    """
-    nothing = np.zeros(len(accepted), dtype=bool)
-    table: list[list[np.ndarray]] = [[np.empty(0)] * 2 for _ in slots]
-    for j in range(len(slots) - 1, -1, -1):
-        slot = slots[j]
-        for flag in (0, 1) if needs_confirm else (1,):
-            rows = np.zeros_like(slot.open)
-            for c in range(len(slot.step) - 1, -1, -1):
-                after = 1 if flag or slot.unsure[c] else 0
-                if j + 1 == len(slots):
-                    target = accepted if after else nothing
-                else:
-                    # The next tracker of a group takes the same choice or a later one.
-                    target = table[j + 1][after][0 if slots[j + 1].opens_group else c]
-                step = int(slot.step[c])
-                if step < len(target):
-                    rows[c, : len(target) - step] = target[step:]
-                rows[c] &= slot.open[c]
-                if c + 1 < len(slot.step):
-                    rows[c] |= rows[c + 1]
-            table[j][flag] = rows
-    return table
-
-
-def _walk(slots: list[_Slot], accepted: np.ndarray, needs_confirm: bool) -> Iterator[np.ndarray]:
-    """Depth first over blocks of partial arrangements; yields complete ones, shape (k, trackers, 2)."""
-    if not slots:
-        return
-    table = _reach(slots, accepted, needs_confirm)
-    flag = 0 if needs_confirm else 1
-    if not table[0][flag][0, 0]:
-        return
-    stack = [(np.zeros((1, 0), dtype=np.int64), np.zeros(1, np.int64), np.full(1, flag))]
-    while stack:
-        path, state, flags = stack.pop()
-        j = path.shape[1]
-        if j == len(slots):
-            yield _complete(slots, path)
-            continue
-        slot = slots[j]
-        row, c = np.nonzero(_allowed(slots, table, accepted, path, state, flags))
-        grown = np.column_stack([path[row], c])
-        grown_state = state[row] + slot.step[c]
-        grown_flags = flags[row] | slot.unsure[c]
-        for start in reversed(range(0, len(row), BLOCK)):
-            part = slice(start, start + BLOCK)
-            stack.append((grown[part], grown_state[part], grown_flags[part]))
-
-
-def _allowed(
-    slots: list[_Slot],
-    table: list[list[np.ndarray]],
-    accepted: np.ndarray,
-    path: np.ndarray,
-    state: np.ndarray,
-    flags: np.ndarray,
-) -> np.ndarray:
-    """Which choices each partial arrangement can take next; bool (k, choices + 1), the last is "empty"."""
-    j = path.shape[1]
-    slot = slots[j]
-    index = np.arange(len(slot.step))[None, :]
-    from_choice = np.zeros((len(path), 1), dtype=np.int64) if slot.opens_group else path[:, -1:]
-    inside = (index >= from_choice) & slot.open[:, state].T
-    after = flags[:, None] | slot.unsure[None, :]
-    next_state = np.minimum(state[:, None] + slot.step[None, :], len(accepted) - 1)
-    if j + 1 == len(slots):
-        return inside & (after == 1) & accepted[next_state]
-    entry = np.zeros_like(index) if slots[j + 1].opens_group else index
-    entry = np.broadcast_to(entry, next_state.shape)
-    good = table[j + 1][1][entry, next_state]
-    if len(table[j + 1][0]):
-        good = np.where(after == 1, good, table[j + 1][0][entry, next_state])
-    return inside & good
-
-
-def _complete(slots: list[_Slot], path: np.ndarray) -> np.ndarray:
-    """Chosen indices turned into strings and lengths; empty trackers are 0, 0."""
-    out = np.zeros((len(path), len(slots), 2), dtype=np.int64)
-    for j, slot in enumerate(slots):
-        out[:, j, 0] = np.append(slot.choices.strings, 0)[path[:, j]]
-        out[:, j, 1] = np.append(slot.choices.in_series, 0)[path[:, j]]
-    return out

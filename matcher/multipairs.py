@@ -17,7 +17,8 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from matcher.arrangements import Group, Space, listing_key
+from matcher.arrangements import Space, listing_key
+from matcher.choices import Group
 from matcher.clipping import Losses, has_model, pair_losses
 from matcher.columns import column
 from matcher.limits import at_most

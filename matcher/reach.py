@@ -11,7 +11,8 @@ from collections.abc import Sequence
 import numpy as np
 
 from catalog.records import Inverter
-from matcher.arrangements import ByStrings, Space, distinct_lengths
+from matcher.arrangements import Space, distinct_lengths
+from matcher.choices import ByStrings
 from matcher.checks import Tracker
 from matcher.options import Unit
 from matcher.several import even_split, even_strings

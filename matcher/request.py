@@ -5,7 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 from catalog.records import Site
-from matcher.arrangements import FACE
+from matcher.choices import FACE
 from matcher.errors import MatcherError
 from matcher.order import Order
 from matcher.rules import DEFAULT_RULES, RuleSet

@@ -13,7 +13,8 @@ from functools import cached_property
 import numpy as np
 
 from catalog.records import Inverter, Module
-from matcher.arrangements import FACE, ByStrings, Group, Space
+from matcher.arrangements import Space
+from matcher.choices import FACE, ByStrings, Group
 from matcher.bestfirst import SORTED_AT_ONCE, Key, best_first
 from matcher.clipping import Losses, block_losses, count_bounds
 from matcher.columns import InverterColumns, column

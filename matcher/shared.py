@@ -9,7 +9,8 @@ from functools import lru_cache, partial
 
 import numpy as np
 
-from matcher.arrangements import FACE, ByStrings, Space
+from matcher.arrangements import Space
+from matcher.choices import FACE, ByStrings
 from matcher.errors import MatcherError
 from matcher.limits import TOLERANCE, PairLimits, at_most
 from matcher.options import Options, join

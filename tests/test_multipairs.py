@@ -12,7 +12,8 @@ import pytest
 
 from catalog.cec import read_cec_inverters, read_cec_modules
 from catalog.records import Inputs, Inverter, Module, Site
-from matcher.arrangements import Group, Space, distinct_lengths
+from matcher.arrangements import Space, distinct_lengths
+from matcher.choices import Group
 from matcher.clipping import block_losses, pair_losses
 from matcher.columns import InverterColumns, column
 from matcher.electrical import design_points
