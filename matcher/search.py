@@ -242,8 +242,16 @@ class Search:
         _, options, row = next(self.in_order(m, i, space))
         return options.take(slice(row, row + 1))
 
-    def best_of_count(self, m: int, i: int, space: Space, modules: int) -> Options:
-        """The first option with exactly ``modules`` modules, which the space can reach."""
+    def best_of_count(
+        self, m: int, i: int, space: Space, modules: int, lengths: tuple[int, ...] | None = None
+    ) -> Options:
+        """The first option with exactly ``modules`` modules, which the space can reach.
+
+        With some string lengths given, the first of those that have these.
+        """
+        if lengths is not None:
+            unsure = not space.size(modules, False)
+            return self.table(m, i, next(space.of_lengths(modules, unsure, lengths))[:1], unsure)
         found = self.best(m, i, replace(space, fewest=modules, most=modules))
         assert found is not None, f"{modules} modules are not reachable"
         return found

@@ -6,6 +6,7 @@ from collections import Counter
 from collections.abc import Iterator, Sequence
 from dataclasses import replace
 from functools import lru_cache, partial
+from itertools import islice
 
 import numpy as np
 
@@ -22,6 +23,9 @@ from matcher.several import even_split, even_strings, together
 #: States of a hosted array (strings of each length so far) that are gone through at most.
 MOST_STATES = 200_000
 
+#: Sets of string lengths that are looked at for one of two unlike units, and how many lengths they have.
+_MOST_SETS = 60
+_MOST_LENGTHS = 3
 
 #: An option that is still to be put together: its units as rows of the single-tracker table or as tables of
 #: their own, and how many there are of each.
@@ -37,7 +41,7 @@ def on_several_units(search: Search) -> tuple[Options, list[int]]:
     request = search.request
     assert request.counts is not None
     singles = SingleUnits(search, request.counts[1])
-    plans: list[_Plan] = []
+    plans: list[list[_Plan]] = []
     arrangements: list[int] = []
     for m, i in _pairs(search):
         wanted = list(_wanted(search, m, i))
@@ -45,17 +49,25 @@ def on_several_units(search: Search) -> tuple[Options, list[int]]:
         if wanted and search.inverters.single[i]:
             ways = singles.ways(m, i)
             row = partial(singles.ask, m, i)
+            sets = partial(singles.sets_of_lengths, m, i)
         elif wanted:
             space = free_space(search, m, i, request.counts[1])
             ways = {count: space.ways[count] for count in space.reachable}
             row = partial(search.best_of_count, m, i, space)
+            sets = partial(_sets_of_lengths, space)
         for units, total in wanted:
             split = even_split(list(ways), total, units)
             if split is None:
                 continue
             copies = Counter(split)
             used |= {count: ways[count] for count in copies}
-            plans.append(([row(count) for count in copies], list(copies.values())))
+            number = list(copies.values())
+            alternatives: list[_Plan] = [([row(count) for count in copies], number)]
+            if len(copies) == 2:
+                # Units that are wired unlike, each as it is best alone, may have more lengths than need be.
+                alike = _alike(*(sets(count) for count in copies))
+                alternatives.append(([row(count, lengths) for count, lengths in zip(copies, alike, strict=True)], number))
+            plans.append(alternatives)
         arrangements.append(sum(used.values()))
     return _put_together(search, singles, plans), arrangements
 
@@ -78,7 +90,7 @@ def with_strings(search: Search, strings: Sequence[tuple[int, int]]) -> tuple[Op
         raise MatcherError("the strings have too many different lengths to be spread exactly; give fewer kinds")
     total = sum(kind % FACE * count for kind, count in wanted.items())
     singles = SingleUnits(search, total)
-    plans: list[_Plan] = []
+    plans: list[list[_Plan]] = []
     arrangements: list[int] = []
     for m, i in _pairs(search):
         low, high = search.asked(m, i).units
@@ -94,7 +106,7 @@ def with_strings(search: Search, strings: Sequence[tuple[int, int]]) -> tuple[Op
                     space = replace(free_space(search, m, i, total), facing=facing)
                 options, number = _hosted(search, m, i, space, tally, units)
             ways += number
-            plans += options
+            plans += [[plan] for plan in options]
         arrangements.append(ways)
     return _put_together(search, singles, plans), arrangements
 
@@ -112,7 +124,7 @@ def _hosted_by_singles(
     rows: list[int | Options] = []
     for share in copies:
         (length, strings) = next((n, s) for n, s in zip(lengths, share, strict=True) if s)
-        rows.append(singles.ask(m, i, length * strings, length))
+        rows.append(singles.ask(m, i, length * strings, (length,)))
     return [(rows, list(copies.values()))], len(copies)
 
 
@@ -191,15 +203,45 @@ def _inside(search: Search, m: int, i: int, total: int, units: int) -> bool:
     return bool(low * (1.0 - TOLERANCE) <= ratio <= high * (1.0 + TOLERANCE))
 
 
-def _put_together(search: Search, singles: SingleUnits, plans: Sequence[_Plan]) -> Options:
-    """The options of all plans in one table; a plan without copies is a table of one-unit options as it is."""
+#: Sets of string lengths of one unit, and whether they leave a safety rating to confirm.
+_Sets = Sequence[tuple[tuple[int, ...], bool]]
+
+
+def _sets_of_lengths(space: Space, modules: int) -> _Sets:
+    """Of a module count, those with few lengths first, and no more than need be looked at."""
+    unsure = not space.size(modules, False)
+    found = (some for sets in space.sets_of_lengths(modules, unsure, _MOST_LENGTHS) for some in sets)
+    return [(lengths, unsure) for lengths in islice(found, _MOST_SETS)]
+
+
+def _alike(one: _Sets, other: _Sets) -> tuple[tuple[int, ...], tuple[int, ...]]:
+    """Lengths of two unlike units: nothing to confirm, as few lengths in all, then as short a longest string."""
+    pairs = ((a, b) for a in one for b in other)
+    (first, _), (second, _) = min(
+        pairs, key=lambda p: (p[0][1] or p[1][1], len({*p[0][0], *p[1][0]}), max(*p[0][0], *p[1][0]))
+    )
+    return first, second
+
+
+def _put_together(search: Search, singles: SingleUnits, plans: Sequence[Sequence[_Plan]]) -> Options:
+    """The first option of the alternatives of each plan in one table.
+
+    A plan without copies, which has no alternative, is a table of one-unit options as it is.
+    """
     rows = singles.table()
     parts: list[Options] = []
-    for units, copies in plans:
-        table = join([rows.take(slice(u, u + 1)) if isinstance(u, int) else u for u in units])
-        if copies:
-            m, i = int(table.module[0]), int(table.inverter[0])
-            pmax_w, ac_power_w = float(search.points.pmax_w[m]), float(search.inverters.ac_power_w[i])
-            table = together(table, copies, pmax_w, ac_power_w)
-        parts.append(table)
+    for alternatives in plans:
+        tables: list[Options] = []
+        for units, copies in alternatives:
+            table = join([rows.take(slice(u, u + 1)) if isinstance(u, int) else u for u in units])
+            if copies:
+                m, i = int(table.module[0]), int(table.inverter[0])
+                pmax_w, ac_power_w = float(search.points.pmax_w[m]), float(search.inverters.ac_power_w[i])
+                table = together(table, copies, pmax_w, ac_power_w)
+            tables.append(table)
+        if len(tables) == 1:
+            parts.append(tables[0])
+        else:
+            both = join(tables)
+            parts.append(both.take(search.rank(both)[:1]))
     return join(parts) if parts else rows

@@ -51,10 +51,20 @@ class SingleUnits:
                 found[strings * length] = found.get(strings * length, 0) + 1
         return found
 
-    def ask(self, m: int, i: int, modules: int, length: int | None = None) -> int:
+    def sets_of_lengths(self, m: int, i: int, modules: int) -> list[tuple[tuple[int, ...], bool]]:
+        """String lengths that a unit with so many modules can have, and whether they leave a rating to confirm."""
+        k = self._position[m, i]
+        limits, unsure = self._limits, bool(np.isnan(self._search.inverters.max_isc_a[i]))
+        return [
+            ((n,), unsure or not limits.sure_from[k] <= n <= limits.sure_to[k])
+            for n in range(self._shortest[k], min(self._longest[k], modules) + 1)
+            if modules % n == 0 and modules // n <= self.strings(m, i, n)
+        ]
+
+    def ask(self, m: int, i: int, modules: int, lengths: tuple[int, ...] | None = None) -> int:
         """Ask for the best option with so many modules, of one string length if given; its row in `table`."""
         k = self._position[m, i]
-        shortest, longest = (self._shortest[k], self._longest[k]) if length is None else (length, length)
+        shortest, longest = (self._shortest[k], self._longest[k]) if lengths is None else (lengths[0], lengths[0])
         return self._asked.setdefault((k, modules, shortest, longest), len(self._asked))
 
     def table(self) -> Options:

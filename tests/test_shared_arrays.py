@@ -153,8 +153,23 @@ def check_units(option: Option, case: Case, known: dict[oracle.Arrangement, str]
     assert str(option.verdict) == max(verdicts, key=(oracle.FITS, oracle.TO_CONFIRM).index), where
 
 
+def lengths_of(arrangement) -> set[int]:
+    return {length for group in arrangement for _, length in group}
+
+
+def best_lengths(known, modules: int) -> list[set[int]]:
+    """String lengths of the arrangements of a module count that have the best verdict there is."""
+    of_count = {a: v for a, v in known.items() if oracle.modules_of(a) == modules}
+    best = min(of_count.values(), key=(oracle.FITS, oracle.TO_CONFIRM).index)
+    return [lengths_of(a) for a, v in of_count.items() if v == best]
+
+
+def option_lengths(option) -> set[int]:
+    return {t.in_series for unit in option.wired for t in unit.trackers}
+
+
 def test_counts_on_several_units():
-    tried = uneven = unlike = 0
+    tried = uneven = unlike = spared = 0
     for seed in range(150):
         case, rng = random_case(random.Random(seed)), random.Random(-seed)
         units = (rng.randint(1, 2), rng.randint(2, 3))
@@ -190,12 +205,21 @@ def test_counts_on_several_units():
                 best = min((v for a, v in known.items() if oracle.modules_of(a) == size), key=(oracle.FITS, oracle.TO_CONFIRM).index)
                 if best == oracle.TO_CONFIRM:
                     assert option.verdict is Verdict.TO_CONFIRM, f"seed {seed}: {option.label}"
+            if len(sizes) == 2 and (option.clipping_loss_pct is None or option.clipping_loss_pct <= request.clip_cap_pct):
+                # As few lengths over all units as there can be, and then as short a longest string.
+                found = option_lengths(option)
+                least = min(
+                    (len(a | b), max(a | b))
+                    for a, b in product(*(best_lengths(known, size) for size in sizes))
+                )
+                assert (len(found), max(found)) == least, f"seed {seed}: {option.label}"
+                spared += 1
             used |= set(sizes)
             uneven += max(sizes) - min(sizes) > 1
             unlike += len(sizes) > 1
         assert result.totals.arrangements == sum(oracle.modules_of(a) in used for a in known), f"seed {seed}"
     assert tried > 90
-    assert unlike > 8
+    assert unlike > 8 and spared > 2
     assert uneven > 1
 
 
