@@ -55,7 +55,22 @@ def list_(
 
         print_json(document(items, names))
     elif out is None:
-        _show(items, names)
+        from cli.console import say
+
+        if items:
+            _show(items, names)
+        else:
+            say(_none_of(everything, kind, open_))
+
+
+def _none_of(everything: Sequence[StockItem], kind: str | None, waiting: bool) -> str:
+    """What to say where no line is asked for or there: not the same whether others are in stock or none."""
+    if not everything:
+        return "Nothing is in stock: 'ferrule stock load FILE' loads a list."
+    article = f"{kind.casefold()} article" if kind else "article"
+    if waiting:
+        return f"No {article} waits for a decision." if kind else "Nothing waits for a decision."
+    return f"No {article} is in stock."
 
 
 def document(items: Sequence[StockItem], names: Mapping[int, Named]) -> dict[str, Any]:
@@ -84,11 +99,8 @@ def _entry(item: StockItem, names: Mapping[int, Named]) -> dict[str, Any]:
 
 
 def _show(items: Sequence[StockItem], names: Mapping[int, Named]) -> None:
-    from cli.console import Column, number, print_table, say
+    from cli.console import Column, number, print_table
 
-    if not items:
-        say("Nothing is in stock: 'ferrule stock load FILE' loads a list.")
-        return
     currencies = {item.currency for item in items if item.currency}
     one = currencies.pop() if len(currencies) == 1 else None
     columns = [

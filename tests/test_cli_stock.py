@@ -100,6 +100,16 @@ def test_the_document_of_the_stock(run: Run):
     assert waiting == unread
 
 
+def test_an_empty_list_says_why_it_is_empty(run: Run, ferrule: Run, tmp_path: Path, monkeypatch: pytest.MonkeyPatch):
+    assert run("stock", "list", "--open", "--kind", "inverter").out == "No inverter article waits for a decision.\n"
+    assert run("stock", "decide", "LL-M13", "--none").status == 0
+    assert run("stock", "list", "--open").out == "Nothing waits for a decision.\n"
+    monkeypatch.setenv("FERRULE_CATALOG", str(tmp_path / "new.sqlite"))
+    with Catalog.open(tmp_path / "new.sqlite", create=True):
+        pass
+    assert "Nothing is in stock: 'ferrule stock load FILE'" in ferrule("stock", "list", "--open").out
+
+
 @pytest.mark.parametrize("ending", ["csv", "xlsx"])
 def test_what_is_written_can_be_loaded_again(run: Run, tmp_path: Path, ending: str):
     before = document(run("stock", "list", "--json"))["items"]
