@@ -232,7 +232,13 @@ def _put_together(search: Search, singles: SingleUnits, plans: Sequence[Sequence
     parts: list[Options] = []
     for alternatives in plans:
         tables: list[Options] = []
+        seen: set[tuple] = set()
         for units, copies in alternatives:
+            if len(alternatives) > 1:
+                wiring = tuple(_wiring(rows, u) for u in units)
+                if wiring in seen:
+                    continue
+                seen.add(wiring)
             table = join([rows.take(slice(u, u + 1)) if isinstance(u, int) else u for u in units])
             if copies:
                 m, i = int(table.module[0]), int(table.inverter[0])
@@ -245,3 +251,9 @@ def _put_together(search: Search, singles: SingleUnits, plans: Sequence[Sequence
             both = join(tables)
             parts.append(both.take(search.rank(both)[:1]))
     return join(parts) if parts else rows
+
+
+def _wiring(rows: Options, unit: int | Options) -> bytes:
+    """Tells the wirings of one unit apart."""
+    table, k = (rows, unit) if isinstance(unit, int) else (unit, 0)
+    return table.strings[k].tobytes() + table.in_series[k].tobytes()
