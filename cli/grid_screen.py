@@ -1,11 +1,11 @@
-"""The grid of what is in stock on the terminal: blocks of inverters that fit the width, and what goes with nothing."""
+"""The grid of what is in stock on the terminal, whole: what goes with nothing, and blocks of inverters that fit the width."""
 
 from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS
-from cli.console import WIDTH, Column, counted, print_table, say
+from cli.console import Column, console, counted, print_table, say
 from cli.grid_files import letter
 
 if TYPE_CHECKING:
@@ -18,29 +18,22 @@ _INVERTER_WIDTH = 12
 
 
 def show(shown: Shown) -> None:
-    """Print question, grid, and what goes with nothing."""
-    grid, r = shown.grid, shown.grid.fit.request
-    site = r.site
-    say(
-        f"Which modules and inverters in stock go together at {site.design_low_c:g} to {site.design_high_c:g} degC,"
-        f" {site.mounting}? One inverter, DC/AC {r.ratio[0]:.2f} to {r.ratio[1]:.2f}, rules {r.rules.name}."
-    )
+    """Print the whole: question, what goes with nothing, the grid with counts and ratios."""
+    grid = shown.grid
+    say(question(shown))
+    for kind, lone in lonely(shown):
+        say()
+        say(f"Go with nothing in stock ({kind}s), and what stops their nearest pair:")
+        for own, other, reason in lone:
+            say(lone_line(shown, kind, own, other, reason), indent=2)
     say()
-    number = len(grid.modules) * len(grid.inverters)
-    kinds = f"{counted(len(grid.modules), 'module')} and {counted(len(grid.inverters), 'inverter')}"
-    say(f"{len(grid.pairs):,} of {counted(number, 'pair')} of {kinds}.")
+    say(in_short(shown))
     if grid.pairs:
         say(
             "F fits, C to confirm (a safety rating is not on record), then from how many to how many modules on one"
             " inverter, and the DC/AC ratio of the best arrangement."
         )
         _blocks(shown)
-    for kind, lone in (("module", grid.lone_modules), ("inverter", grid.lone_inverters)):
-        if lone:
-            say()
-            say(f"Go with nothing in stock ({kind}s), and what stops their nearest pair:")
-            for own, other, reason in lone:
-                say(lone_line(shown, kind, own, other, reason), indent=2)
     say()
     for line in shown.year.notes or (f"No clipping figure: {shown.year.why_not}.",):
         say(line)
@@ -48,15 +41,40 @@ def show(shown: Shown) -> None:
         say(line)
 
 
-def lone_line(shown: Shown, kind: str, own: int, other: int, reason: Rejection) -> str:
-    """Why a module or inverter goes with nothing."""
+def question(shown: Shown) -> str:
+    """The question as a sentence."""
+    r = shown.grid.fit.request
+    site = r.site
+    return (
+        f"Which modules and inverters in stock go together at {site.design_low_c:g} to {site.design_high_c:g} degC,"
+        f" {site.mounting}? One inverter, DC/AC {r.ratio[0]:.2f} to {r.ratio[1]:.2f}, rules {r.rules.name}."
+    )
+
+
+def in_short(shown: Shown) -> str:
+    """How many pairs go together, of how many."""
+    grid = shown.grid
+    number = len(grid.modules) * len(grid.inverters)
+    kinds = f"{counted(len(grid.modules), 'module')} and {counted(len(grid.inverters), 'inverter')}"
+    return f"{len(grid.pairs):,} of {counted(number, 'pair')} of {kinds} go together."
+
+
+def lonely(shown: Shown) -> list[tuple[str, list[tuple[int, int, Rejection]]]]:
+    """What goes with nothing, by kind: own place, place of the nearest of the other kind, reason."""
+    found = (("module", shown.grid.lone_modules), ("inverter", shown.grid.lone_inverters))
+    return [(kind, list(lone)) for kind, lone in found if lone]
+
+
+def lone_line(shown: Shown, kind: str, own: int, other: int, reason: Rejection, brief: bool = False) -> str:
+    """Why a module or inverter goes with nothing; ``brief`` names the checks only, where there are any."""
     records, others = shown.grid.modules, shown.grid.inverters
     if kind == "inverter":
         records, others = others, records
     name = f"{records[own].name} ({shown.pieces[records[own].id]:,})"
     if not reason.failed:
         return f"{name}: {reason.nearest}"
-    return f"{name}: with {others[other].name} {', '.join(reason.failed)}: {reason.nearest}"
+    stopped = f"{name}: with {others[other].name} {', '.join(reason.failed)}"
+    return stopped if brief else f"{stopped}: {reason.nearest}"
 
 
 def _blocks(shown: Shown) -> None:
@@ -70,7 +88,7 @@ def _blocks(shown: Shown) -> None:
         inverter = grid.inverters[i]
         columns.append((width, _folded(f"{inverter.name} ({shown.pieces[inverter.id]:,})", width), cells))
     while columns:
-        room, block = WIDTH - _MODULE_WIDTH - 8, []
+        room, block = console().width - _MODULE_WIDTH - 8, []
         while columns and (not block or columns[0][0] < room):
             room -= columns[0][0] + 1
             block.append(columns.pop(0))

@@ -28,6 +28,7 @@ def grid(
     clip_cap: Annotated[float, typer.Option(metavar="PCT", help="Clipping loss up to which a higher DC/AC ratio is better [%].")] = 2.0,
     rules: Annotated[str, typer.Option(metavar="NAME", help="Rule set: iec-62548, nec-690, or a file of your own, .toml.")] = "iec-62548",
     combiner: Annotated[bool, typer.Option("--combiner", help="Strings are paralleled in a combiner box: string inputs are waived.")] = False,
+    everything: Annotated[bool, typer.Option("--all", help="Show module counts, DC/AC ratios and all reasons, not one screen of them.")] = False,
     json: Annotated[bool, typer.Option("--json", help="Print the document ferrule.grid/1.")] = False,
     out: Annotated[str | None, typer.Option(metavar="FILE", help="Write it to a file: .csv, .xlsx, .json, or a picture, .svg or .png.")] = None,
     site: SiteOption = None,
@@ -45,8 +46,8 @@ def grid(
 ) -> int:
     """Which modules and inverters in stock go together, for how many modules on one inverter, and how well.
 
-    No pair takes more modules than are in stock. What goes with nothing is listed with the check that stops its
-    nearest pair. Exit status: 0 something goes together, 1 nothing does, 2 bad input.
+    No pair takes more modules than are in stock. What goes with nothing comes first, with the check that stops its
+    nearest pair; then a letter for every pair, or with --all module counts and DC/AC ratios too. Exit status: 0 something goes together, 1 nothing does, 2 bad input.
 
     Example: ferrule stock grid --low -12 --high 37
     """
@@ -69,16 +70,18 @@ def grid(
     pieces = {r.id: pieces_of(lots[r.id]) for r in (*modules, *inverters)}
     found = all_pairs(modules, inverters, request, year.year, cold_plane(request), _shelf(modules, inverters, pieces))
 
-    from cli import grid_files, grid_screen
+    from cli import grid_files, grid_screen, grid_short
+    from cli.console import note
     from cli.fit_screen import on_terminal
 
     shown = grid_files.Shown(found, year, pieces)
     if out is not None:
         grid_files.write(shown, Path(out))
+        note(f"{grid_screen.in_short(shown)} Written to {out}.")
     if json:
         grid_files.print_document(shown)
     elif out is None or on_terminal():
-        grid_screen.show(shown)
+        (grid_screen if everything else grid_short).show(shown)
     return 0 if found.pairs else NOTHING_FITS
 
 

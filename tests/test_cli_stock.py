@@ -376,12 +376,32 @@ def test_what_goes_with_nothing_is_named_with_what_stops_it(grid: dict):
     assert "cannot be matched" in alone["Kehraus 245P"]["nearest"]
 
 
-def test_the_grid_on_screen_fits_and_explains_itself(run: Run):
-    ran = run("stock", "grid", *CLIMATE)
-    assert max(map(len, ran.out.splitlines())) <= 100
-    said = " ".join(ran.out.split())
-    assert "F fits, C to confirm" in said and "Go with nothing in stock (modules)" in said
-    assert any(line.startswith("Marzipan Photovoltaik") and "F 5-8" in line for line in ran.out.splitlines())
+def test_the_grid_on_screen_is_one_screen_or_the_whole(run: Run, monkeypatch: pytest.MonkeyPatch, capsys):
+    from cli import grid_screen, grid_short
+
+    made = []
+    monkeypatch.setattr(grid_short, "show", made.append)
+    assert run("stock", "grid", *CLIMATE).status == 0
+    capsys.readouterr()
+
+    # A terminal of 36 lines, and a pipe: what goes with nothing comes first, and every pair has its letter.
+    for room in (34, 39):
+        short = grid_short.lines(made[0], room)
+        assert len(short) <= room and max(map(len, short)) <= 100
+        said = " ".join(" ".join(short).split())
+        assert said.index("Go with nothing in stock") < said.index("pairs of 13 modules")
+        assert "Kehraus 245P (48): cannot be matched" in said and "F fits, C to confirm" in said
+        rows = [line for line in short if line.split()[-1:] in (["C"], ["F"], ["-"]) and "(" in line]
+        assert sum(line.split(")")[1].count("F") + line.split(")")[1].count("C") for line in rows) == len(made[0].grid.pairs)
+    # However low it is: some of both, and how to see the rest.
+    low = " ".join(grid_short.lines(made[0], 20))
+    assert "and 7 modules more (--all shows them)" in low and "Griddle 475" in low
+
+    grid_screen.show(made[0])
+    whole = capsys.readouterr().out.splitlines()
+    assert max(map(len, whole)) <= 100
+    assert any(line.startswith("Marzipan Photovoltaik") and "F 5-8" in line for line in whole)
+    assert any("Go with nothing in stock (modules)" in line for line in whole[:6])
 
 
 def test_the_grid_as_files(run: Run, tmp_path: Path):
@@ -394,7 +414,8 @@ def test_the_grid_as_files(run: Run, tmp_path: Path):
     run("stock", "load", few)
     grid = document(run("stock", "grid", *CLIMATE, "--json"))
     for ending in ("csv", "xlsx", "json", "svg", "png"):
-        assert run("stock", "grid", *CLIMATE, "--out", tmp_path / f"g.{ending}").status == 0
+        ran = run("stock", "grid", *CLIMATE, "--out", tmp_path / f"g.{ending}")
+        assert ran.status == 0 and f"Written to {tmp_path / f'g.{ending}'}." in " ".join(ran.err.split())
     with (tmp_path / "g.csv").open(newline="") as file:
         rows = list(csv.DictReader(file))
     fits = [r for r in rows if r["verdict"] != "does-not-fit"]
