@@ -1,4 +1,4 @@
-"""How time grows with options, inverters, trackers and years, and memory with options."""
+"""How time grows with options, inverters, trackers, modules and years, and memory with options."""
 
 from __future__ import annotations
 
@@ -20,6 +20,7 @@ def run() -> None:
     _options(year)
     _inverters(year)
     _trackers(year)
+    _modules()
     _years()
 
 
@@ -58,6 +59,20 @@ def _trackers(year: ModuleYear) -> None:
         inverter = _with_trackers(big, trackers)
         cost, found = best_of(2, lambda inverter=inverter: fit([module()], [inverter], Request(SITE), year))
         row(f"{trackers}", f"{found.totals.arrangements:,}", f"{cost.cpu_s:.3f}")
+
+
+def _modules() -> None:
+    heading("Growth with modules: the best arrangement of each on one inverter of several trackers")
+    row("trackers of 2 strings each", "modules", "s", "us/module", "arrangements")
+    big = next(i for i in inverters() if i.ac_power_w > 9000 and i.mppt_high_v > 450)
+    classes = condense_plane(plane())
+    for trackers, counts in ((2, (500, 2_000, 8_000)), (6, (500, 2_000)), (12, (500,))):
+        inverter = _with_trackers(big, trackers)
+        for count in counts:
+            chosen = modules()[:: len(modules()) // count][:count]
+            years = years_of(chosen, classes, DC_LOSS_PCT)
+            cost, found = best_of(1, lambda c=chosen, i=inverter, y=years: fit(c, [i], Request(SITE), y))
+            row(f"{trackers}", f"{count:,}", f"{cost.cpu_s:.2f}", f"{cost.cpu_s / count * 1e6:.0f}", f"{found.totals.arrangements:.3g}")
 
 
 def _with_trackers(like: Inverter, trackers: int) -> Inverter:
