@@ -35,8 +35,8 @@ def console(stderr: bool = False) -> Console:
     return Console(file=stream, highlight=False, emoji=False, markup=False, width=width)
 
 
-#: Width below which a column is not folded further.
-_LEAST_FOLD = 12
+#: Width below which a column is not folded while others can still give way, and its width in the narrowest table.
+_LEAST_FOLD, _NARROWEST = 12, 8
 
 
 def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> None:
@@ -46,33 +46,91 @@ def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> Non
 
 
 def table_lines(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> list[str]:
-    """The lines of a table as `print_table` prints them."""
+    """The lines of a table as `print_table` prints them: no wider than the screen, and no cell of numbers cut."""
     from rich.table import Table
 
     rows = list(rows)
+    screen = console()
+    headers, widths = _fitted(columns, rows, screen.width)
     table = Table(box=None, pad_edge=False, padding=(0, 1, 0, 0), header_style="bold", show_edge=False)
-    needed = 0
-    for k, column in enumerate(columns):
-        # What must not fold keeps its width; the columns that may fold give way.
-        whole = max(len(line) for text in (column.header, *(row[k] for row in rows)) for line in text.split("\n"))
-        least = min(column.min_width or _LEAST_FOLD, whole) if column.fold else whole
-        needed += least + 1
+    for column, header, width in zip(columns, headers, widths, strict=True):
         table.add_column(
-            column.header,
+            header,
             justify="right" if column.number else "left",
             no_wrap=not column.fold,
             overflow="fold",
             vertical="top",
-            min_width=least,
+            width=width,
         )
     for row in rows:
-        table.add_row(*row)
-    screen = console()
+        table.add_row(*(_folded(text, w) if c.fold else text for text, c, w in zip(row, columns, widths, strict=False)))
     # A line that is too long is better than a value that is cut off.
-    screen.width = max(screen.width, needed)
+    screen.width = max(screen.width, sum(widths) + len(widths))
     with screen.capture() as captured:
         screen.print(table)
     return captured.get().splitlines()
+
+
+def _fitted(columns: Sequence[Column], rows: Sequence[Sequence[str]], room: int) -> tuple[list[str], list[int]]:
+    """Headers and widths of the columns: what must not fold keeps its width, and the others give way.
+
+    They give way step by step, for as long as the table is wider than the room: columns that fold down to their
+    least width, headers of the others over several lines, then columns that fold down to their longest word, and
+    at last below it.
+    """
+    headers = [c.header for c in columns]
+    cells = [max((_width(row[k]) for row in rows), default=0) for k in range(len(columns))]
+    words = [max((_width(w) for row in rows for w in row[k].replace("\n", " ").split(" ")), default=0) for k in range(len(columns))]
+    spare = room - (len(columns) - 1)
+    whole = [max(_width(h), cell) for h, cell in zip(headers, cells, strict=True)]
+    soft = [min(c.min_width or _LEAST_FOLD, w) if c.fold else w for c, w in zip(columns, whole, strict=True)]
+    if sum(soft) > spare:
+        headers = [h if c.fold else _narrowed(h, cell) for c, h, cell in zip(columns, headers, cells, strict=True)]
+        whole = [max(_width(h), cell) for h, cell in zip(headers, cells, strict=True)]
+        soft = [min(s, w) for s, w in zip(soft, whole, strict=True)]
+    for least in (
+        soft,
+        [min(s, max(_NARROWEST, word)) if c.fold else s for c, s, word in zip(columns, soft, words, strict=True)],
+        [min(s, _NARROWEST) if c.fold else s for c, s in zip(columns, soft, strict=True)],
+    ):
+        if sum(least) <= spare:
+            break
+    return headers, _shared_out(least, whole, spare)
+
+
+def _shared_out(least: Sequence[int], whole: Sequence[int], spare: int) -> list[int]:
+    """Widths from the least to the whole, what is there to share given to those that lack most."""
+    widths = list(least)
+    for _ in range(spare - sum(widths)):
+        lacking = [w - now for w, now in zip(whole, widths, strict=True)]
+        most = max(lacking, default=0)
+        if most <= 0:
+            break
+        widths[lacking.index(most)] += 1
+    return widths
+
+
+def _width(text: str) -> int:
+    """Columns of a screen that a text takes, of its longest line."""
+    from rich.cells import cell_len
+
+    return max(map(cell_len, text.split("\n")))
+
+
+def _folded(text: str, width: int) -> str:
+    """A text over several lines, where a no-break space does not break."""
+    import textwrap
+
+    lines = [some for line in text.split("\n") for some in textwrap.wrap(line, width, break_on_hyphens=False) or [""]]
+    return "\n".join(lines).replace("\u00a0", " ")
+
+
+def _narrowed(header: str, width: int) -> str:
+    """A header over several lines, no wider than its cells where its words allow."""
+    import textwrap
+
+    longest = max(map(len, header.split()), default=1)
+    return "\n".join(textwrap.wrap(header, max(width, longest, 1), break_long_words=False, break_on_hyphens=False))
 
 
 def say(text: str = "", indent: int = 0) -> None:

@@ -282,7 +282,8 @@ def _options_table(fit: Fit, options: Sequence[Option], has_year: bool, wanted_k
         row = [str(o.rank)]
         if not fit.is_pair:
             row += _listed(fit, o)
-        row += [wiring(o), f"{o.modules:,}", f"{o.dc_ac_ratio:.2f}"]
+        # A line may end behind a unit's strings, not between a number and its unit.
+        row += [wiring(o).replace(" unit", "\u00a0unit"), f"{o.modules:,}", f"{o.dc_ac_ratio:.2f}"]
         if has_year:
             row += [number(o.clipping_loss_pct, 2), number(o.yearly_kwh)]
         if wanted_kwh is not None:

@@ -153,3 +153,42 @@ def test_temperatures_as_people_write_them(text, celsius):
 def test_temperatures_in_other_units_are_told_what_to_write(text, said):
     with pytest.raises(CatalogError, match=re.escape(said)):
         degrees(text, "--low")
+
+
+def narrow(monkeypatch, width):
+    """Tables are made for a screen of so many columns."""
+    from cli import console as terminal
+
+    def screen(stderr=False):
+        from rich.console import Console
+
+        return Console(width=width, highlight=False, emoji=False, markup=False)
+
+    monkeypatch.setattr(terminal, "console", screen)
+
+
+@pytest.mark.parametrize("width", [72, 80, 90, 100])
+def test_a_table_keeps_to_the_screen_and_every_number_whole(monkeypatch, width):
+    from cli.console import Column, table_lines
+
+    narrow(monkeypatch, width)
+    columns = [Column("#", number=True), Column("inverter", fold=True, min_width=30), Column("AC kW", number=True),
+               Column("wiring", fold=True), Column("mod.", number=True), Column("kWh/year", number=True),
+               Column("cost EUR", number=True), Column("holds at degC", number=True)]  # fmt: skip
+    wirings = ["1 unit: 2x7 | 2x7 + 2 units: 1x13 | 1x12 | 3 of 1x11", "1x12"]
+    rows = [[str(k + 1), "Humdrum Electric Old Faithful 4.6", "1,004.60", wirings[k % 2], "1,240", "1,226,541", "13,210", "-67 to 66"]
+            for k in range(3)]  # fmt: skip
+    lines = table_lines(columns, rows)
+    assert max(map(len, lines)) <= width
+    text = "\n".join(lines)
+    for cell in ("1,004.60", "1,240", "1,226,541", "13,210", "-67 to 66"):
+        assert text.count(cell) == 3
+    assert set(" ".join(wirings).split()) <= set(text.split())
+
+
+def test_a_text_breaks_at_no_space_that_forbids_it(monkeypatch):
+    from cli.console import Column, table_lines
+
+    narrow(monkeypatch, 20)
+    lines = table_lines([Column("wiring", fold=True), Column("kWh", number=True)], [["2x7 | 2x7 + 2\u00a0units: 1x13", "1,000"]])
+    assert [line.split("  ")[0].rstrip() for line in lines] == ["wiring", "2x7 | 2x7 +", "2 units: 1x13"]
