@@ -78,7 +78,12 @@ def records_of(entries: Sequence[Entry], reading: Reading) -> list[Module | Inve
         records.append(record)
         places.append(entry.where)
     if bad:
-        raise CatalogError("\n".join(_told(list(bad.values()))))
+        lines = list(_told(list(bad.values())))
+        try:
+            _check(records, places, reading)
+        except CatalogError as problem:
+            lines.append(str(problem))
+        raise CatalogError("\n".join(lines))
     try:
         reading.signs.check()
     except CatalogError as problem:
@@ -115,6 +120,8 @@ def checked_records(
 
 
 def _record(entry: Entry, reading: Reading) -> Module | Inverter:
+    if entry.fault:
+        raise CatalogError(entry.fault)
     type_ = KINDS[entry.kind]
     values: dict[str, Any] = {}
     missing: list[FieldSpec] = []

@@ -28,6 +28,15 @@ def set_option(spec: FieldSpec) -> str | None:
     return f"--set {spec.name}={_SUCH_AS.get(spec.name, '...')}"
 
 
+def stand_ins(missing: Sequence[FieldSpec]) -> dict[str, str] | None:
+    """Values by which a table may be read on although fields are missing, to find its other faults; never kept.
+
+    ``None`` where a field is missing for which nothing can stand in: a number would not go with the others.
+    """
+    found = {spec.name: _SUCH_AS.get(spec.name, "?") for spec in missing if set_option(spec)}
+    return found if len(found) == len(missing) else None
+
+
 def needed(entry: Entry, spec: FieldSpec) -> str:
     """The fault of an entry that lacks one field."""
     what = f"{AN[entry.kind]} needs it ({what_is_needed(spec)})"

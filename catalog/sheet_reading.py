@@ -16,7 +16,8 @@ class Entry:
     """One record as a file has it: where it stands there, its kind, and its cells by field name.
 
     ``meant`` holds names of the file that are not known, by the field that they may mean; ``units`` the unit of a
-    field's number where it is another one than the field's.
+    field's number where it is another one than the field's. ``fault`` says why its cells could not be taken apart;
+    then it is no record.
     """
 
     where: str
@@ -24,6 +25,7 @@ class Entry:
     cells: Mapping[str, Any]
     meant: Mapping[str, str] = field(default_factory=dict)
     units: Mapping[str, str] = field(default_factory=dict)
+    fault: str = ""
 
 
 @dataclass(slots=True)

@@ -227,10 +227,15 @@ def _entries(
         if name:
             where += f" ({name[:80]})"
         kind = columns.kind or _kind(cells, where, reading)
-        cells = unpacked(cells, where, reading)
-        if foreign:
-            cells = composed_cells(cells, columns.units, where, reading)
-        entries.append(Entry(where, kind, cells, columns.meant, columns.units))
+        fault = ""
+        try:
+            cells = unpacked(cells, where, reading)
+            if foreign:
+                cells = composed_cells(cells, columns.units, where, reading)
+        except CatalogError as problem:
+            # Kept, so that it is told together with the faults of other rows.
+            fault = str(problem)
+        entries.append(Entry(where, kind, cells, columns.meant, columns.units, fault))
     return entries
 
 

@@ -39,7 +39,8 @@ class Columns:
     """Settles the columns of tables while files are read (see `catalog.sheet_tables`).
 
     ``said`` are fields by heading from the command line; ``yes`` accepts what is doubtful; ``given`` are the fields
-    that the command line gives for all rows.
+    that the command line gives for all rows. ``lacking`` is set where a table was refused: fields that no column of
+    it gives.
     """
 
     catalog: str | None
@@ -47,6 +48,7 @@ class Columns:
     yes: bool
     given: Collection[str] = ()
     settled: list[ColumnMap] = field(default_factory=list)
+    lacking: tuple[FieldSpec, ...] | None = None
     _used: set[str] = field(default_factory=set)
 
     def settle(self, proposed: ColumnMap) -> ColumnMap:
@@ -57,9 +59,9 @@ class Columns:
         CatalogError
             Where columns are doubtful and nobody is there to ask, or no column gives what every record needs.
         """
+        self.lacking = None
         found, before = self._kept(proposed) or proposed, "as kept from a table with these headings"
-        headings = {" ".join(c.heading.casefold().split()) for c in found.columns}
-        own = {h: name for h, name in self.said.items() if " ".join(h.casefold().split()) in headings}
+        own = self._own(found)
         self._used |= set(own)
         remark = "" if found is proposed else f", {before}"
         if own:
@@ -69,6 +71,7 @@ class Columns:
         asking = not self.yes and sys.stdin.isatty() and sys.stderr.isatty()
         doubtful = () if self.yes or asking else found.doubtful
         if doubtful or lacking:
+            self.lacking = lacking
             raise CatalogError("\n".join(_wanted(found, doubtful, lacking)))
         if found.doubtful:
             found = self._asked(found) if asking else found.confirmed()
@@ -76,6 +79,16 @@ class Columns:
         elif own:
             self.settled.append(found)
         return found
+
+    def as_it_seems(self, proposed: ColumnMap) -> ColumnMap:
+        """The map with all that is doubtful taken for true, to find what else is wrong with a table."""
+        found = self._kept(proposed) or proposed
+        return found.with_fields(self._own(found)).confirmed()
+
+    def _own(self, found: ColumnMap) -> dict[str, str]:
+        """Fields from the command line whose headings the table has."""
+        headings = {" ".join(c.heading.casefold().split()) for c in found.columns}
+        return {h: name for h, name in self.said.items() if " ".join(h.casefold().split()) in headings}
 
     def check_used(self) -> None:
         """Refuse headings from the command line that no table has.

@@ -115,5 +115,7 @@ def run(arguments: list[str] | None = None) -> int:
 
 
 def _refused(line: str, status: int = BAD_INPUT) -> int:
-    print(f"ferrule: {line}", file=sys.stderr)
+    for one in line.split("\n"):
+        # An indented line belongs to the one before.
+        print(one if one.startswith(" ") else f"ferrule: {one}", file=sys.stderr)
     return status

@@ -173,8 +173,26 @@ def _file(path: Path, columns: Columns, kind_of_rows: str | None, given: Mapping
             raise CatalogError(
                 f"{path}: no such file; write '{PUBLIC_TABLES}' for the public tables, or the path of a file"
             )
-        return read_sheets(path, settle=columns.settle, kind=kind_of_rows, given=given)
+        try:
+            return read_sheets(path, settle=columns.settle, kind=kind_of_rows, given=given)
+        except CatalogError as problem:
+            raise CatalogError("\n".join((str(problem), *_other_faults(path, columns, kind_of_rows, given)))) from None
     return _public(path, None) if kind == "module" else _public(None, path)
+
+
+def _other_faults(path: Path, columns: Columns, kind: str | None, given: Mapping[str, str]) -> list[str]:
+    """Rows that cannot be read, where the columns of a table are not settled yet: one try tells both."""
+    from catalog.sheet_needs import stand_ins
+    from catalog.sheetfiles import read_sheets
+
+    instead = None if columns.lacking is None else stand_ins(columns.lacking)
+    if instead is None:
+        return []
+    try:
+        read_sheets(path, settle=columns.as_it_seems, kind=kind, given={**given, **instead})
+    except CatalogError as problem:
+        return [str(problem)]
+    return []
 
 
 @contextmanager

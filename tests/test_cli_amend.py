@@ -251,6 +251,21 @@ def test_what_an_inverter_table_lacks_is_told_at_once(ferrule, small_catalog, tm
     assert "--yes --set mppt_low_v=... --set mppt_high_v=..." in ran.err
 
 
+def test_columns_to_confirm_and_bad_rows_are_told_in_one_try(ferrule, small_catalog, tmp_path):
+    file = tmp_path / "inverters.csv"
+    file.write_text(
+        "Manufacturer,Model,AC power (W),MPPT range (V),Trackers,Short circuit current (A)\n"
+        "Paper Sun,I-5,five,100-500,1,16\nPaper Sun,I-6,6000,100-,1,16\nPaper Sun,I-7,7000,900-500,1,16\n"
+    )
+    # Of the inverter's input it is the limit, most of the time: asked about, not left out.
+    for more, asked in (((), True), (("--yes",), False)):
+        ran = ferrule("sheet", "load", file, *more)
+        faults = [line for line in ran.err.splitlines() if line.startswith("ferrule: ")]
+        assert ran.status == 2 and ("'Short circuit current (A)' is max_isc_a in A?" in ran.err) == asked
+        rows = [line.partition(", row ")[2].split(" ")[0] for line in faults]
+        assert rows == ["1:"] * asked + ["2", "3", "4"]
+
+
 @pytest.mark.parametrize("text", ["...", "Gold"])
 def test_a_technology_that_names_no_cells_is_refused_with_those_that_may_stand_there(
     ferrule, small_catalog, tmp_path, text
