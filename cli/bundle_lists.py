@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from catalog.errors import CatalogError
+from catalog.namekeys import compact
 
 if TYPE_CHECKING:
     from catalog.names import NameIndex
@@ -150,6 +151,7 @@ class Reader:
         self._index, self._kind = index, kind
         self._full = {n.name.casefold(): n.id for n in index.names}
         self._name = {n.id: n.name for n in index.names}
+        self._model = {n.id: n.model for n in index.names}
         self._known: dict[str, int | str] = {}
 
     def read(self, text: str) -> int | str:
@@ -157,6 +159,13 @@ class Reader:
         if text not in self._known:
             self._known[text] = self._read(text)
         return self._known[text]
+
+    def read_as(self, text: str) -> str:
+        """The record that a text was read as, where its model does not stand in the text; blank where it does."""
+        id_ = self.read(text)
+        if isinstance(id_, str) or compact(self._model[id_]) in compact(text):
+            return ""
+        return f"{self._kind} {text!r} read as {self._name[id_]}"
 
     def _read(self, text: str) -> int | str:
         from catalog.names import look_up, resolve
@@ -174,6 +183,9 @@ class Reader:
             # What is too little for a text may be a part of a name that several records have.
             typed = look_up(text, self._index)
             candidates = typed.candidates if typed.match is not None or typed.ambiguous else []
+            if not candidates and typed.candidates:
+                near = ", ".join(self._name[c.id] for c in typed.candidates[:3])
+                return f"no {self._kind} of the catalog is called {text!r}; near to it: {near}"
         if not candidates:
             return f"no {self._kind} of the catalog is like {text!r}"
         near = " or ".join(self._name[c.id] for c in candidates[:3])

@@ -26,7 +26,6 @@ PRINTED = 100
 
 MARKS = {
     "fits": "\u25cf", "to-confirm": "\u25d0", "does-not-fit": "\u2715", "note": "\u25cb", "no-verdict": "?",
-    "not-judged": "?",
 }  # fmt: skip
 
 #: What each check compares, for readers who do not know its name.

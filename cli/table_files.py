@@ -88,8 +88,7 @@ def _write_workbook(forms: Forms, stream: IO[bytes]) -> None:
 
     book = xlsxwriter.Workbook(stream, {"strings_to_formulas": False, "strings_to_urls": False})
     formats = Formats(book)
-    for word in ("no-verdict", "not-judged"):
-        formats.verdicts[word] = formats.verdicts["note"]
+    formats.verdicts["no-verdict"] = formats.verdicts["note"]
     basis = Sheet("Rests on", (("what", 14, None), ("words", 110, None)),
                   [*forms.basis(), *(("Caution", line) for line in CAUTIONS)])  # fmt: skip
     for sheet in (*forms.sheets(), basis):

@@ -93,13 +93,13 @@ def vet(
     from cli.bundle_lists import BundleRow
     from cli.console import print_json
     from cli.vet_lists import Line
-    from cli.vet_screen import show
+    from cli.vet_screen import show, year_lines
 
     row = BundleRow(1, "", chosen.name, str(bundle.modules), other.name, str(units), strings or "", site or "")
     line = Line(row, vetted.verdict, vetted)
     if out is not None:
         page = partial(vet_report.write_bundle, vetted, fit, year)
-        table_files.write(vet_files.forms([line], rule, page), out)
+        table_files.write(vet_files.forms([line], rule, page, year_lines(year)), out)
     if json:
         print_json(vet_files.document([line], rule))
     elif out is None:
@@ -179,7 +179,7 @@ def _list(
     from cli import table_files, vet_files, vet_report
     from cli.console import print_json
     from cli.vet_lists import vet_rows
-    from cli.vet_screen import show_list, summary
+    from cli.vet_screen import show_list, summary, year_words
 
     read = read_bundles(path)
     for line in read.mapping:
@@ -192,7 +192,7 @@ def _list(
     lines = vetted.lines
     if out is not None:
         page = partial(vet_report.write_list, vetted, rules, path)
-        table_files.write(vet_files.forms(lines, rules, page), out)
+        table_files.write(vet_files.forms(lines, rules, page, year_words(vetted)), out)
         note(f"{summary(lines)} Written to {out}.")
     if json:
         print_json(vet_files.document(lines, rules))

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
@@ -20,17 +21,23 @@ if TYPE_CHECKING:
     from matcher.moduleyear import PlaneYear
     from matcher.vet import Vetted
 
-NOT_JUDGED = "not-judged"
-
-
 @dataclass(frozen=True, slots=True)
 class Line:
-    """One row and what came out: ``vetted``, or the ``reason`` why it was not judged."""
+    """One row and what came out: ``vetted``, or the ``reason`` why it has no verdict.
+
+    ``read_as`` tells which records were taken for names that are written otherwise.
+    """
 
     row: BundleRow
     verdict: str
     vetted: Vetted | None = None
     reason: str = ""
+    read_as: tuple[str, ...] = ()
+
+    @property
+    def remarks(self) -> tuple[str, ...]:
+        """What is worth knowing: how its names were read, and of the bundle itself."""
+        return self.read_as + (self.vetted.remarks if self.vetted is not None else ())
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,12 +55,14 @@ def vet_rows(
 ) -> VettedList:  # fmt: skip
     """Vet the rows of a list; a row's own site goes before the one for all.
 
-    ``progress`` is told how many of how many different bundles are done.
+    ``progress`` is told how many of how many rows are done; rows that ask the same are worked out once.
     """
     from cli.vet_parts import Task, vet_all
+    from matcher.vet import NO_VERDICT
 
     inverters = catalog.inverters()
-    asked = _questions(catalog, rows, site, inverters)
+    names = _readers(catalog)
+    asked = _questions(catalog, names, rows, site, inverters)
     different = {_key(q): q for q in asked if not isinstance(q, str)}
     years = {s: _years(catalog, s, rules) for s in dict.fromkeys(s for _, s in different.values()) if s is not None}
     task = Task(
@@ -62,28 +71,36 @@ def vet_rows(
         {s: y.hourly for s, y in years.items() if y.hourly is not None},
     )  # fmt: skip
     keys, done = list(different), {}
+    alike = Counter(_key(q) for q in asked if not isinstance(q, str))
+    told = len(rows) - alike.total()
     for k, found in vet_all(task, list(different.values()), jobs):
         done[keys[k]] = found
-        progress(len(done), len(keys))
+        told += alike[keys[k]]
+        progress(told, len(rows))
     lines = []
     for row, question in zip(rows, asked, strict=True):
         found = question if isinstance(question, str) else done[_key(question)]
         if isinstance(found, str):
-            lines.append(Line(row, NOT_JUDGED, reason=found))
+            lines.append(Line(row, NO_VERDICT, reason=found))
         else:
-            lines.append(Line(row, found.verdict, found))
+            read_as = tuple(filter(None, (names[kind].read_as(getattr(row, kind)) for kind in names)))
+            lines.append(Line(row, found.verdict, found, read_as=read_as))
     return VettedList(lines, {s: y.condensed for s, y in years.items()})
 
 
+def _readers(catalog: Catalog) -> dict[str, Reader]:
+    from catalog.names import NameIndex
+
+    return {kind: Reader(NameIndex(catalog.names(kind)), kind) for kind in ("module", "inverter")}
+
+
 def _questions(
-    catalog: Catalog, rows: Sequence[BundleRow], site: Site | None, inverters: Sequence[Inverter]
+    catalog: Catalog, names: Mapping[str, Reader], rows: Sequence[BundleRow], site: Site | None, inverters: Sequence[Inverter]
 ) -> list[Question | str]:
     """What each row asks, or why it asks nothing that can be judged."""
-    from catalog.names import NameIndex
     from matcher.vet import Bundle
 
     place = {record.id: k for k, record in enumerate(inverters)}
-    names = {kind: Reader(NameIndex(catalog.names(kind)), kind) for kind in ("module", "inverter")}
     wanted = {names["module"].read(row.module) for row in rows}
     modules = {m.id: m for m in catalog.modules([w for w in wanted if isinstance(w, int)])}
     sites: dict[str, Site | str] = {}

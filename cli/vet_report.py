@@ -7,13 +7,12 @@ from collections.abc import Sequence
 from typing import IO, TYPE_CHECKING, Any
 
 from cli import facts
-from cli.cautions import HOURLY_MEANS
 from cli.console import counted, number
 from cli.fit_screen import climate_window
 from cli.pages import ROWS, Cell, Column, check_row, figure, typeset, write_page
 from cli.vet_files import SOUND, rule_words
-from cli.vet_screen import ATTENTION, question_words, sentence, summary, year_words
-from cli.vet_words import assumed, cause, mend_words, window_short, window_words
+from cli.vet_screen import ATTENTION, question_words, sentence, summary, year_lines, year_words
+from cli.vet_words import assumed, cause, mend_words, place_words, window_short, window_words
 from matcher.options import label
 
 if TYPE_CHECKING:
@@ -107,8 +106,7 @@ def _rests_on(v: Vetted, fit: Fit, year: SiteYear | None) -> list[str]:
     if v.solved:
         lines.insert(0, "No site was given: the climate is solved for, and the checks stand at its edges (-40 to 50 °C at most).")
     if year is not None:
-        lines += year.notes or (f"No clipping figure: {year.why_not}.",)
-        lines += [HOURLY_MEANS] * (year.year is not None)
+        lines += year_lines(year)
     return [typeset(line) for line in [*lines, *assumed(v)]]
 
 
@@ -131,7 +129,9 @@ def write_list(vetted: VettedList, rules: RuleSet, name: str, stream: IO[str]) -
         "rows": [{"verdict": line.verdict, "cells": _cells(line, columns)} for line in lines],
         "shown": shown,
         "key": "? in the temperatures: a value to confirm bounds them. For a bundle that does not fit, they tell where it would.",
-        "rests_on": [typeset(line) for line in (f"Rule set {rule_words(rules)}", SOUND, *year_words(vetted))],
+        "rests_on": [typeset(line) for line in (
+            *place_words(vetted.lines), *year_words(vetted), f"Rule set {rule_words(rules)}", SOUND,
+        )],
     })  # fmt: skip
 
 
@@ -199,8 +199,9 @@ def _what_to_do(line: Line) -> str:
         return line.reason
     if v.option is not None:
         ask = facts.confirm_short(v.option)
-        return "; ".join([f"to confirm: {ask}"] * bool(ask) + list(v.remarks))
+        return "; ".join([f"to confirm: {ask}"] * bool(ask) + list(line.remarks))
+    read_as = "".join(f"; {words}" for words in line.read_as)
     if not v.failed:
-        return v.reason
+        return v.reason + read_as
     mends = f"; what would mend it: {mend_words(v.mends[0], v)}" if v.mends else "; no single change mends it"
-    return f"{cause(v.failed)}: {v.reason}{mends}"
+    return f"{cause(v.failed)}: {v.reason}{mends}{read_as}"

@@ -6,10 +6,10 @@ from collections.abc import Sequence
 from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
-from cli.console import Column, number, print_table, say
+from cli.console import Column, counted, number, say, table_lines
 from cli.facts import confirm_words
 from cli.fit_screen import climate_window
-from cli.vet_words import assumed, cause, mend_words, short, window_short, window_words
+from cli.vet_words import assumed, cause, mend_words, place_words, short, window_short, window_words
 from matcher.options import label
 
 if TYPE_CHECKING:
@@ -20,8 +20,8 @@ if TYPE_CHECKING:
 
 NO_CLIPPING_ANYWHERE = "No clipping figure: no site is given (--site, or --low and --high with --lat and --lon)."
 
-#: Lines of a list that fit one screen with what stands around them.
-ONE_SCREEN = 17
+#: Rows of a list, and lines of its table, that fit one screen with what stands around them.
+ONE_SCREEN, LINES = 17, 17
 
 
 def show(vetted: Vetted, year: SiteYear | None, rules: bool = False) -> None:
@@ -45,17 +45,22 @@ def show(vetted: Vetted, year: SiteYear | None, rules: bool = False) -> None:
         site = vetted.site
         say(f"Checks of {label(vetted.wired)} at {site.design_low_c:g} and {site.design_high_c:g} degC:")
         columns = len(_CHECKS) if rules else len(_CHECKS) - 1
-        print_table(_CHECKS[:columns], [_check_row(c)[:columns] for c in vetted.checks])
+        _print(table_lines(_CHECKS[:columns], [_check_row(c)[:columns] for c in vetted.checks]))
     say()
     if year is not None:
-        for line in year.notes or (f"No clipping figure: {year.why_not}.",):
+        for line in year_lines(year):
             say(line)
-        if year.year is not None:
-            say(HOURLY_MEANS)
     for line in assumed(vetted):
         say(line)
     for line in CAUTIONS:
         say(line)
+
+
+def year_lines(year: SiteYear | None) -> list[str]:
+    """Where clipping and energy of one bundle come from, or why there are none."""
+    if year is None:
+        return [NO_CLIPPING_ANYWHERE]
+    return [*(year.notes or (f"No clipping figure: {year.why_not}.",)), *[HOURLY_MEANS] * (year.year is not None)]
 
 
 def question_words(vetted: Vetted) -> str:
@@ -110,23 +115,33 @@ def _check_row(c: Check) -> list[str]:
 def show_list(vetted: VettedList, everything: bool) -> None:
     """Print a line for each bundle, those that want attention first where not all can be shown."""
     lines = vetted.lines
-    shown = list(lines)
-    if not everything and len(lines) > ONE_SCREEN:
-        shown = sorted(lines, key=lambda line: ATTENTION[line.verdict])[:ONE_SCREEN]
     say(summary(lines))
     say()
     clips = any(clipping(line) is not None for line in lines)
-    columns = [Column("row", number=True), Column("article", fold=True), Column("mod.", number=True), Column("verdict"),
+    columns = [Column("row", number=True), Column("article", fold=True), Column("modules", fold=True, min_width=15), Column("verdict"),
                *([Column("clip %", number=True)] if clips else []),
-               Column("holds at degC", number=True), Column("wiring, or what is wrong", fold=True)]  # fmt: skip
-    print_table(columns, [_line_row(line, clips) for line in shown])
+               Column("holds at degC", number=True), Column("wiring, or what is wrong", fold=True, min_width=24)]  # fmt: skip
+    shown = list(lines) if everything else sorted(lines, key=lambda line: ATTENTION[line.verdict])[:ONE_SCREEN]
+    if len(shown) == len(lines):
+        shown = list(lines)
+    table = table_lines(columns, [_line_row(line, clips) for line in shown])
+    while not everything and len(table) > LINES:
+        # Rows that fold take the room of others.
+        shown = sorted(shown, key=lambda line: ATTENTION[line.verdict])[:-1]
+        table = table_lines(columns, [_line_row(line, clips) for line in shown])
+    _print(table)
     if len(shown) < len(lines):
         say(f"... and {len(lines) - len(shown):,} more (--all shows them, --out FILE.xlsx holds all with their reasons).")
     say()
-    for line in year_words(vetted):
+    for line in (*place_words(lines), *year_words(vetted)):
         say(line)
     for line in CAUTIONS:
         say(line)
+
+
+def _print(table: Sequence[str]) -> None:
+    for line in table:
+        print(line)
 
 
 def clipping(line: Line) -> float | None:
@@ -155,20 +170,21 @@ def summary(lines: Sequence[Line]) -> str:
     """How many of a list came out how."""
     counts = {v: sum(line.verdict == v for line in lines) for v in ATTENTION}
     said = ", ".join(f"{n:,} {v}" for v, n in sorted(counts.items(), key=lambda e: -ATTENTION[e[0]]) if n)
-    return f"{len(lines):,} bundle{'s' if len(lines) != 1 else ''}: {said}."
+    return f"{counted(len(lines), 'bundle')}: {said}."
 
 
 #: What wants attention first.
-ATTENTION = {"does-not-fit": 0, "not-judged": 1, "no-verdict": 2, "to-confirm": 3, "fits": 4}
+ATTENTION = {"does-not-fit": 0, "no-verdict": 1, "to-confirm": 2, "fits": 3}
 
 
 def _line_row(line: Line, clips: bool) -> list[str]:
     v = line.vetted
     head = [str(line.row.number), line.row.article]
     if v is None:
-        return [*head, line.row.modules, line.verdict, *[""] * (2 if clips else 1), line.reason]
+        return [*head, f"{line.row.modules} {line.row.module}", line.verdict, *[""] * (2 if clips else 1), line.reason]
     holds = "" if v.verdict == "no-verdict" else window_short(v.window)
     if v.option is not None:
         holds = climate_window(v.option)
     clipped = [number(clipping(line), 2)] if clips else []
-    return [*head, str(v.bundle.modules), line.verdict, *clipped, holds, short(v)]
+    words = "; ".join([short(v), *line.read_as])
+    return [*head, f"{v.bundle.modules:,} {v.bundle.module.model}", line.verdict, *clipped, holds, words]

@@ -5,8 +5,13 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from cli.facts import COLDEST_ON_EARTH_C, FROM_HOURS, NO_LIMIT
+from matcher.anyclimate import ORDINARY_C
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from catalog.records import Site
+    from cli.vet_lists import Line
     from matcher.anyclimate import Window
     from matcher.mends import Mend
     from matcher.vet import Vetted
@@ -29,6 +34,36 @@ CAUSES = {
 def cause(failed: tuple[str, ...]) -> str:
     """The cause in words: that of the check which stops the nearest arrangement, and what comes with it."""
     return ", ".join(dict.fromkeys(CAUSES[check] for check in failed))
+
+
+def place_words(lines: Sequence[Line]) -> list[str]:
+    """For which places the verdicts hold: design temperatures, mounting, and what else a site says."""
+    judged = [line.vetted for line in lines if line.vetted is not None]
+    sites = list(dict.fromkeys(v.site for v in judged if not v.solved))
+    found = []
+    if sites:
+        named = [f"{'the site' if s.name == 'as given' else s.name} ({site_words(s)})" for s in sites]
+        found.append(f"Judged at {', '.join(named)}.")
+    solved = next((v.site for v in judged if v.solved), None)
+    if solved is not None:
+        low, high = ORDINARY_C
+        more = "".join(f", {words}" for words in (solved.mounting, *_more_of(solved)))
+        found.append(
+            f"{'Others, without a site' if sites else 'Without a site'}: in which climates they are sound, within"
+            f" {low:g} to {high:g} degC in the air{more}."
+        )
+    return found
+
+
+def site_words(site: Site) -> str:
+    """What of a site decides what is sound: "-12 to 37 degC, gap-roof"."""
+    temperatures = f"{site.design_low_c:g} to {site.design_high_c:g} degC"
+    return ", ".join([temperatures, site.mounting, *_more_of(site)])
+
+
+def _more_of(site: Site) -> list[str]:
+    more = [] if site.voltage_cap_v is None else [f"voltage cap {site.voltage_cap_v:,.0f} V"]
+    return more + ([] if site.rear_share is None else [f"rear irradiance {100 * site.rear_share:g} %"])
 
 
 def window_words(window: Window | None) -> str:
@@ -67,6 +102,25 @@ def window_short(window: Window | None) -> str:
     return " to ".join(str(end) if end is not None else "?" if is_open else NO_LIMIT for end, is_open in ends)
 
 
+#: Stands for an end of the climate window which a value to confirm may bound.
+TO_CONFIRM = "to confirm"
+
+
+def window_cells(window: Window | None) -> tuple[float | str, float | str]:
+    """Both ends of a climate window for the cells of a file [degC]; words where no number stands for an end."""
+    if window is None:
+        return "nowhere", "nowhere"
+    cold, hot = window.coldest_c, window.hottest_c
+    if cold is not None and cold < COLDEST_ON_EARTH_C:
+        cold = None
+    if window.by_hours:
+        return FROM_HOURS, hot if hot is not None else TO_CONFIRM if window.hot_open else NO_LIMIT
+    return (
+        cold if cold is not None else TO_CONFIRM if window.cold_open else NO_LIMIT,
+        hot if hot is not None else TO_CONFIRM if window.hot_open else NO_LIMIT,
+    )
+
+
 def _ends(window: Window) -> tuple[int | None, int | None]:
     """Both ends in whole degrees on the safe side; ``None`` where nothing on record bounds the window on Earth."""
     cold, hot = window.coldest_c, window.hottest_c
@@ -95,6 +149,20 @@ def mend_words(mend: Mend, vetted: Vetted) -> str:
     return f"{what} ({mend.label}{doubt})"
 
 
+#: What a note of the checks comes to, for one line of a table.
+_NOTES = {
+    "cold-tracking": "leaves the MPPT window in the cold",
+    "input-current": "the trackers limit the current",
+    "string-fuse": "needs string fuses",
+}
+
+
+def _remark_short(remark: str) -> str:
+    """A remark for one line of a table."""
+    check, colon, _ = remark.partition(":")
+    return _NOTES.get(check, check) if colon else remark
+
+
 def assumed(vetted: Vetted) -> list[str]:
     """Values that a default stands in for."""
     from matcher.electrical import ASSUMED_NOCT_C
@@ -110,7 +178,7 @@ def assumed(vetted: Vetted) -> list[str]:
 def short(vetted: Vetted) -> str:
     """The wiring and what to ask or know, or what is wrong and the smallest change, for one line of a table."""
     if vetted.option is not None:
-        more = vetted.remarks[0].partition(":")[0] if vetted.remarks else ""
+        more = _remark_short(vetted.remarks[0]) if vetted.remarks else ""
         if vetted.option.confirm:
             from cli.facts import confirm_short
 
@@ -122,9 +190,9 @@ def short(vetted: Vetted) -> str:
         return CAUSES[vetted.failed[0]]
     mend = vetted.mends[0]
     change = {
-        "count": f"{mend.modules} modules would do",
+        "count": f"{mend.modules:,} would do",
         "strings": f"{mend.label} would do",
         "units": f"{mend.units} inverters would do",
-        "inverter": f"{vetted.inverters[mend.inverter].name} would do",
+        "inverter": f"{vetted.inverters[mend.inverter].model} would do",
     }[mend.kind]
     return f"{CAUSES[vetted.failed[0]]}; {change}" + (", to confirm" if mend.verdict == "to-confirm" else "")

@@ -44,7 +44,7 @@ SHOWN = [
 ]
 
 #: Keys that are verdicts, or names of fields, which docs/file-forms.md lists.
-VERDICTS = {"fits", "to-confirm", "does-not-fit", "no-verdict", "not-judged"}
+VERDICTS = {"fits", "to-confirm", "does-not-fit", "no-verdict"}
 FIELDS = {*specs(Module), *specs(Inverter), *specs(Site)}
 
 

@@ -193,7 +193,7 @@ def bundles(tmp_path_factory: pytest.TempPathFactory) -> str:
         vetted = vetter.vet(Bundle(MODULE, inverter, count), SITE)
         row = BundleRow(number, f"A-{number}", MODULE.name, str(count), vetted.inverter.name, "1", "", "")
         lines.append(Line(row, vetted.verdict, vetted))
-    lines.append(Line(BundleRow(9, "A-9", "?", "1", "?", "1", "", ""), "not-judged", reason="no module is named"))
+    lines.append(Line(BundleRow(9, "A-9", "?", "1", "?", "1", "", ""), "no-verdict", reason="no module is named"))
     path = tmp_path_factory.mktemp("bundles") / "list.html"
     with path.open("w", encoding="utf-8") as stream:
         write_list(VettedList(lines, {}), DEFAULT_RULES, "bundles.csv", stream)

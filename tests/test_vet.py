@@ -265,7 +265,7 @@ def test_a_bundle_that_lacks_a_value_has_no_verdict(demo):
     ran = demo("vet", "-m", "kehraus 245p", "--count", 16, "-i", "fiddle 3")
     assert ran.status == 1 and ran.out.count("no-verdict:") == 1 and "not stated" in ran.out
     assert json.loads(demo("vet", "-m", "kehraus 245p", "--count", 16, "-i", "fiddle 3", "--json").out)["totals"] == {
-        "bundles": 1, "fits": 0, "to-confirm": 0, "does-not-fit": 0, "no-verdict": 1, "not-judged": 0
+        "bundles": 1, "fits": 0, "to-confirm": 0, "does-not-fit": 0, "no-verdict": 1
     }  # fmt: skip
 
 
@@ -315,10 +315,10 @@ FAULTS = [
     ("F4", "QF-400H", "7", "Honeycomb Twin 800", "3", "does-not-fit", "wrong count"),
     ("F5", "Meadow 590", "26", "Cello 10", "1", "does-not-fit", "too much array"),
     ("F6", "QF-410H", "2", "Fiddle 3", "1", "does-not-fit", "too short in the heat"),
-    ("F7", "Klassik", "14", "Fiddle 3", "1", "not-judged", "choose among"),
+    ("F7", "Klassik", "14", "Fiddle 3", "1", "no-verdict", "choose among"),
     ("F8", "Kehraus 245P", "16", "Fiddle 3", "1", "no-verdict", "not stated"),
-    ("F9", "QF-410H", "ten", "Fiddle 3", "1", "not-judged", "whole number"),
-    ("F10", "Moonbeam 999", "10", "Fiddle 3", "1", "not-judged", "no module of the catalog"),
+    ("F9", "QF-410H", "ten", "Fiddle 3", "1", "no-verdict", "whole number"),
+    ("F10", "Moonbeam 999", "10", "Fiddle 3", "1", "no-verdict", "no module of the catalog"),
 ]  # fmt: skip
 
 

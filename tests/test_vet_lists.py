@@ -8,6 +8,7 @@ import random
 from dataclasses import replace
 from pathlib import Path
 
+import openpyxl
 import pytest
 from test_seed_catalog import INVERTERS, MODULES, SITES
 
@@ -15,7 +16,7 @@ import oracle
 from catalog.records import Inputs, Inverter
 from cli.processes import processes
 from cli.vet_parts import Task, vet_all
-from cli.vet_words import window_short, window_words
+from cli.vet_words import window_cells, window_short, window_words
 from matcher import reach
 from matcher.anyclimate import Window
 from matcher.near import checks_of
@@ -217,7 +218,7 @@ def test_a_list_as_a_page(ferrule, demo_catalog, tmp_path):
     path.write_text(f"article,module,qty,inverter\n{rows}", encoding="utf-8")
     assert ferrule("vet", path, "--low", -12, "--high", 36, "--catalog", demo_catalog, "--out", out).status == 1
     page = out.read_text("utf-8")
-    assert page.count('<tr data-verdict="does-not-fit"') == 2 and page.count('<tr data-verdict="not-judged"') == 1
+    assert page.count('<tr data-verdict="does-not-fit"') == 2 and page.count('<tr data-verdict="no-verdict"') == 1
     assert "&lt;b&gt;A&amp;1" in page and "<b>A" not in page
     assert "13 modules instead of 14 (1x13)" in page and "lethal voltages" in page
 
@@ -232,3 +233,63 @@ def test_one_bundle_as_a_page(ferrule, demo_catalog, tmp_path):
     assert ferrule(*one, "--low", -12, "--high", 36).status == 1
     page = out.read_text("utf-8")
     assert "What would mend it" in page and "13 modules instead of 14 (1x13)" in page and page.count("<svg") == 1
+
+
+def test_a_name_is_read_aloud_where_it_is_misspelt_and_near_ones_are_named(ferrule, demo_catalog, tmp_path):
+    path, out = tmp_path / "list.csv", tmp_path / "out.json"
+    rows = "A1,Klasik 270P,11,Viola 5\nA2,qf 430x,16,Cello 10\nA3,QF-420H,10,Fiddle 3\n"
+    path.write_text(f"article,module,qty,inverter\n{rows}", encoding="utf-8")
+    ran = ferrule("vet", path, "--catalog", demo_catalog)
+    said = " ".join(ran.out.split())
+    assert ran.status == 1 and "module 'Klasik 270P' read as" in said and "'qf 430x'" not in said
+    assert "within -40 to 50 degC in the air, open-rack" in said
+    ferrule("vet", path, "--catalog", demo_catalog, "--out", out)
+    read, exact, unknown = json.loads(out.read_text("utf-8"))["bundles"]
+    assert read["listed"]["module"] == "Klasik 270P"
+    assert read["remarks"][0] == "module 'Klasik 270P' read as Marzipan Photovoltaik Klassik 270P"
+    assert not any("read as" in remark for remark in exact["remarks"])
+    assert "Quillfeather QF-410H" in unknown["reason"] and "Quillfeather QF-400H" in unknown["reason"]
+
+
+def test_a_list_says_in_every_form_for_which_place_it_holds(ferrule, demo_catalog, tmp_path):
+    path = tmp_path / "list.csv"
+    path.write_text("module,qty,inverter\nKlassik 275P,14,Fiddle 3\nKlassik 275P,13,Fiddle 3\n", encoding="utf-8")
+    asked = ("vet", path, "--low", -12, "--high", 36, "--mounting", "gap-roof", "--catalog", demo_catalog)
+    assert "Judged at the site (-12 to 36 degC, gap-roof)." in ferrule(*asked).out
+    for ending in (".xlsx", ".html"):
+        ferrule(*asked, "--out", tmp_path / f"out{ending}")
+    book = openpyxl.load_workbook(tmp_path / "out.xlsx")
+    rests_on = {row[1] for row in book["Rests on"].iter_rows(values_only=True)}
+    assert "Judged at the site (-12 to 36 degC, gap-roof)." in rests_on and any("clipping" in words for words in rests_on)
+    assert "12 to 36\u00a0\u00b0C, gap-roof)" in (tmp_path / "out.html").read_text("utf-8")
+    heading, _, sound = book["Bundles"].iter_rows(values_only=True)
+    assert sound[heading.index("hottest [degC]")] == "no limit"
+
+
+@pytest.mark.parametrize(
+    ("window", "cells"),
+    [
+        (None, ("nowhere", "nowhere")),
+        (Window(-11.3, None), (-11.3, "no limit")),
+        (Window(-145.0, 41.6), ("no limit", 41.6)),
+        (Window(None, 41.6, cold_open=True), ("to confirm", 41.6)),
+        (Window(None, None, by_hours=True), ("file", "no limit")),
+    ],
+)
+def test_cells_of_a_file_say_why_there_is_no_number(window, cells):
+    assert window_cells(window) == cells
+
+
+def test_progress_counts_rows(demo_catalog):
+    from catalog.store import Catalog
+    from cli.bundle_lists import BundleRow
+    from cli.vet_lists import vet_rows
+    from matcher.rules import DEFAULT_RULES
+    from matcher.vet import ANYWHERE
+
+    names = ("Klassik 275P", "Klassik 275P", "Moonbeam 999")
+    rows = [BundleRow(k, "", name, "14", "Fiddle 3", "", "", "") for k, name in enumerate(names)]
+    told = []
+    with Catalog.open(demo_catalog, readonly=True) as catalog:
+        vet_rows(catalog, rows, None, ANYWHERE, DEFAULT_RULES, False, progress=lambda done, of: told.append((done, of)))
+    assert told == [(3, 3)]
