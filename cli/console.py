@@ -75,7 +75,7 @@ def _fitted(columns: Sequence[Column], rows: Sequence[Sequence[str]], room: int)
     """Headers and widths of the columns: what must not fold keeps its width, and the others give way.
 
     They give way step by step, for as long as the table is wider than the room: columns that fold down to their
-    least width, headers of the others over several lines, then columns that fold down to their longest word, and
+    least width, headers of the others over two lines, then columns that fold down to their longest word, and
     at last below it.
     """
     headers = [c.header for c in columns]
@@ -121,16 +121,19 @@ def _folded(text: str, width: int) -> str:
     """A text over several lines, where a no-break space does not break."""
     import textwrap
 
-    lines = [some for line in text.split("\n") for some in textwrap.wrap(line, width, break_on_hyphens=False) or [""]]
+    lines = [some for line in text.split("\n") for some in textwrap.wrap(line, max(width, 1), break_on_hyphens=False) or [""]]
     return "\n".join(lines).replace("\u00a0", " ")
 
 
 def _narrowed(header: str, width: int) -> str:
-    """A header over several lines, no wider than its cells where its words allow."""
+    """A header over two lines at most, no wider than its cells where its words allow."""
     import textwrap
 
-    longest = max(map(len, header.split()), default=1)
-    return "\n".join(textwrap.wrap(header, max(width, longest, 1), break_long_words=False, break_on_hyphens=False))
+    for wide in range(max(width, 1), len(header) + 1):
+        lines = textwrap.wrap(header, wide, break_long_words=False, break_on_hyphens=False)
+        if len(lines) <= 2 and max(map(len, lines)) <= wide:
+            return "\n".join(lines)
+    return header
 
 
 def say(text: str = "", indent: int = 0) -> None:

@@ -30,6 +30,27 @@ def number_of_options(fit: Fit) -> int:
     return fit.totals.arrangements if fit.lazy else len(fit.table)
 
 
+def is_in_stock(fit: Fit) -> bool:
+    """Whether only what is in stock was looked at, in the numbers that are there."""
+    return any(n is not None for n in _bounds(fit))
+
+
+def pieces_in_stock(fit: Fit, option: Option) -> int | None:
+    """Pieces in stock of an option's listed record; ``None`` where nothing bounds them."""
+    bounds = _bounds(fit)
+    return bounds[option.inverter if fit.lists_inverters else option.module] if bounds else None
+
+
+def _bounds(fit: Fit) -> list[int | None]:
+    from matcher.limits import UNLIMITED
+
+    shelf = fit.search.shelf
+    if shelf is None:
+        return []
+    most = shelf.inverters_at_most if fit.lists_inverters else shelf.modules_at_most
+    return [None if n >= UNLIMITED else n for n in most.tolist()]
+
+
 def field_words(confirm: Confirm) -> str:
     """The value to confirm in words, with its group of inputs where it is not the first."""
     if confirm.field in specs(Inputs):

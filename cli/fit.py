@@ -139,26 +139,27 @@ def fit(
         hidden = peaks_of(found, place, DC_LOSS_PCT)
         extra |= peaks_entry(hidden)
         year = replace(year, notes=(*year.notes, peaks_line(hidden)))
+    said = [] if stock is None else list(stock.notes)
+    chained: list[str] = []
+    if energy is not None:
+        from cli.fit_energy import energy_lines
+
+        first, *chained = energy_lines(found, year, energy, enough)
+        said.append(first)
     if out is not None:
-        fit_files.write(found, out, year, with_checks=checks or not request.every, why=why, extra=extra)
+        fit_files.write(found, out, year, with_checks=checks or not request.every, why=why, extra=extra,
+                        said=[*said, *chained])  # fmt: skip
         note(f"Written to {out}.")
     if json:
         fit_files.print_document(found, year.weather, with_checks=checks or not request.every, why=why, extra=extra)
     elif out is None or fit_screen.on_terminal():
-        before = [] if stock is None else list(stock.notes)
         if by_count and limit is None and not checks:
-            show_growth(found, year, worth, before)
+            show_growth(found, year, worth, said)
         else:
-            aside: list[str] = []
-            if energy is not None:
-                from cli.fit_energy import energy_lines
-
-                said, *aside = energy_lines(found, year, energy, enough)
-                before.append(said)
             if by_count:
                 print("\n".join([*growth_lines(found, worth), ""]))
             wanted = None if energy is None else energy.yearly_kwh
-            fit_screen.show(found, year, limit=limit, checks=checks, why=why, before=before, aside=aside,
+            fit_screen.show(found, year, limit=limit, checks=checks, why=why, before=said, aside=chained,
                             wanted_kwh=wanted)  # fmt: skip
     return 0 if found.totals.records_with_option else NOTHING_FITS
 

@@ -21,7 +21,8 @@ def energy_lines(fit: Fit, year: SiteYear, energy: EnergyWanted, enough: Enough)
     best, proven, links = enough.best, enough.proven, _chain(fit, year, enough)
     count = counted(enough.modules, "module")
     fewest = "is the fewest that yields it" if enough.modules == 1 else "are the fewest that yield it"
-    said = f"{energy.yearly_kwh:,.0f} kWh a year: {count} {fewest}, {_named(fit, best)}"
+    sky = ", in a year without clouds and so at least" if year.clear_sky else ""
+    said = f"{energy.yearly_kwh:,.0f} kWh a year{sky}: {count} {fewest}, {_named(fit, best)}"
     if proven is None:
         said += "; nothing that fits yields so much"
     elif proven.modules > best.modules:
@@ -32,6 +33,8 @@ def energy_lines(fit: Fit, year: SiteYear, energy: EnergyWanted, enough: Enough)
     elif best.verdict is not proven.verdict:
         said += f"; of what fits as many, {_named(fit, proven)}"
     said += "."
+    if year.clear_sky:
+        said += " Clouds make it more: give a weather file (--weather), or --sun-hours with a site without a place."
     lines = [said]
     if links is not None:
         clipping = "not known" if links.clipping is None else f"{links.clipping:.1%}"

@@ -6,7 +6,7 @@ import csv
 import os
 import sys
 import tempfile
-from collections.abc import Callable, Iterable, Iterator, Mapping
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from pathlib import Path
 from typing import IO, TYPE_CHECKING, Any
@@ -25,9 +25,12 @@ FORMS = (".csv", ".json", ".xlsx", ".html", ".parquet")
 
 
 def write(
-    fit: Fit, out: str, year: SiteYear, *, with_checks: bool, why: bool, extra: Mapping[str, Any] | None = None
-) -> None:
+    fit: Fit, out: str, year: SiteYear, *, with_checks: bool, why: bool, extra: Mapping[str, Any] | None = None,
+    said: Sequence[str] = (),
+) -> None:  # fmt: skip
     """Write all options to a file; ``extra`` are further entries of the document.
+
+    ``said`` are paragraphs about the question as a whole, for the forms that are read as they are.
 
     Raises
     ------
@@ -48,11 +51,11 @@ def write(
         elif form == ".xlsx":
             from cli.workbook import write_workbook
 
-            write_workbook(fit, stream, year, with_checks=with_checks, why=why)
+            write_workbook(fit, stream, year, with_checks=with_checks, why=why, said=said)
         elif form == ".html":
             from cli.report import write_report
 
-            write_report(fit, stream, year, why=why)
+            write_report(fit, stream, year, why=why, said=said)
         elif form == ".json":
             rejected = _rejected(fit, why)
             write_fit(fit, stream, weather=year.weather, with_checks=with_checks, rejected=rejected, extra=extra)

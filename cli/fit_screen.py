@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
 from cli.console import Column, counted, number, page_lines, paragraph, table_lines
-from cli.facts import NO_LIMIT, assumptions, at_least, holds_from, holds_to, number_of_options, whole
+from cli.facts import NO_LIMIT, assumptions, at_least, holds_from, holds_to, is_in_stock, number_of_options, whole
 from cli.fit_confirm import amend_commands, confirm_lines, not_on_record
 from cli.fit_short import in_short
 from matcher.checks import Check, Verdict, face_mark
@@ -49,8 +49,9 @@ def show(
     ``before`` are paragraphs that stand ahead of it, ``aside`` those of them that a tight screen does without; options are held against ``wanted_kwh`` a year.
     """
     options = list(fit.options(limit or MOST))
+    reasons = (limit or MOST) if why else 0
     shown, level = len(options), _WHOLE
-    lines = _page(fit, year, options, shown, level, (*before, *aside), checks, why, wanted_kwh)
+    lines = _page(fit, year, options, shown, level, (*before, *aside), checks, reasons, wanted_kwh)
     if limit is None and not checks and not why:
         room = page_lines()
         while len(lines) > room and (shown > _FEWEST or level < _TIGHT):
@@ -60,15 +61,15 @@ def show(
             else:
                 shown, level = len(options), level + 1
             ahead = before if level >= _TIGHT else (*before, *aside)
-            lines = _page(fit, year, options, shown, level, ahead, checks, why, wanted_kwh)
+            lines = _page(fit, year, options, shown, level, ahead, checks, reasons, wanted_kwh)
     print("\n".join(lines))
 
 
 def _page(
     fit: Fit, year: SiteYear, options: Sequence[Option], number: int, level: int, before: Sequence[str],
-    checks: bool, why: bool, wanted_kwh: float | None,
+    checks: bool, reasons: int, wanted_kwh: float | None,
 ) -> list[str]:  # fmt: skip
-    """The lines of the answer with so many of the options."""
+    """The lines of the answer with so many of the options, and so many of the records without one."""
     shown = options[:number]
     blocks = [[line for text in before for line in paragraph(text)], paragraph(question(fit))]
     if shown:
@@ -79,14 +80,14 @@ def _page(
         stopped = f"Stopped by {', '.join(reason.failed)}: {reason.nearest}."
         blocks.append([*paragraph(answer(fit, ())), *paragraph(stopped)])
     else:
-        said = [answer(fit, ()), *([] if why else nothing_fits(fit))]
+        said = [answer(fit, ()), *([] if reasons else nothing_fits(fit))]
         blocks.append([line for text in said for line in paragraph(text)])
     if checks:
         blocks += [checks_lines(fit, o) for o in shown]
     elif fit.is_pair and shown:
         blocks.append(checks_lines(fit, shown[0]) if level < _NO_CHECKS else paragraph(checks_in_short(shown[0])))
-    if why and not fit.is_pair:
-        blocks.append(_why_lines(fit, number or MOST))
+    if reasons and not fit.is_pair:
+        blocks.append(_why_lines(fit, reasons))
     blocks.append(grounds_lines(fit, year))
     return joined(blocks, blank=level < _TIGHT)
 
@@ -98,7 +99,8 @@ def options_blocks(
     order = fit.order.rpartition("; ties")[0] if level >= _TIGHT else fit.order
     tables = list(_options_tables(fit, options, year.year is not None, wanted_kwh))
     if wanted_kwh is not None:
-        tables[-1] += paragraph(f"reaches %: of the {wanted_kwh:,.0f} kWh wanted; less than 100 falls short.")
+        sky = ", in a year without clouds" if year.clear_sky else ""
+        tables[-1] += paragraph(f"reaches %: of the {wanted_kwh:,.0f} kWh wanted{sky}; less than 100 falls short.")
     tables[-1] += _see_more(fit, len(options))
     # What waits for values is said twice more: above the table, and in short.
     head = [*paragraph(answer(fit, () if level >= _TIGHT else options)), *paragraph(f"Order: {order}.")]
@@ -198,12 +200,13 @@ def question(fit: Fit) -> str:
     where = f"{r.site.design_low_c:g} to {r.site.design_high_c:g} degC, {r.site.mounting}"
     if r.site.name != "as given":
         where = f"{r.site.name} ({where})"
+    stocked = " in stock" if is_in_stock(fit) else ""
     if fit.is_pair:
         asked = f"How can {fit.modules[0].name} be wired to {fit.inverters[0].name}"
     elif fit.lists_inverters:
-        asked = f"Which inverters take {fit.modules[0].name}"
+        asked = f"Which inverters{stocked} take {fit.modules[0].name}"
     else:
-        asked = f"Which modules can be wired to {fit.inverters[0].name}"
+        asked = f"Which modules{stocked} can be wired to {fit.inverters[0].name}"
     low, high = r.ratio
     count = ""
     if r.counts is not None:
@@ -268,7 +271,7 @@ def _options_table(fit: Fit, options: Sequence[Option], has_year: bool, wanted_k
     if not fit.is_pair:
         name_width = 30 if shelf is None else 22  # a column of costs needs the room
         columns += [Column("inverter" if fit.lists_inverters else "module", fold=True, min_width=name_width)]
-        columns += [Column("AC kW" if fit.lists_inverters else "W", number=True)]
+        columns += [Column(power_header(fit), number=True)]
     columns += [Column("wiring", fold=True), Column("mod.", number=True), Column("DC/AC", number=True)]
     if has_year:
         columns += [Column("clip %", number=True), Column("kWh/year", number=True)]
@@ -292,6 +295,13 @@ def _options_table(fit: Fit, options: Sequence[Option], has_year: bool, wanted_k
             row += [number(o.cost)]
         rows.append([*row, climate_window(o)])
     return table_lines(columns, rows)
+
+
+def power_header(fit: Fit) -> str:
+    """Header of the power of the listed records."""
+    if not fit.lists_inverters:
+        return "W"
+    return "AC kW each" if fit.request.several else "AC kW"
 
 
 def _listed(fit: Fit, option: Option) -> list[str]:

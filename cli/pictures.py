@@ -10,6 +10,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
+from cli import facts
 from cli.drawing import ACCENT, AMBER, INK, MUTED, RULE, VERMILION, figure, spread, styled, svg_of
 from cli.series import EnergyByCount, Limit, StringInClimate, WiringGrid, volts_words
 
@@ -76,9 +77,9 @@ def _heights(s: StringInClimate, limits: list[Limit]) -> tuple[float, float]:
 _PLATE = {"boxstyle": "square,pad=0.15", "fc": "white", "ec": "none", "alpha": 0.85}
 
 
-def degrees(value: float, digits: int = 0) -> str:
-    """A temperature as text, with a true minus sign."""
-    return f"{value:.{digits}f} °C".replace("-", "−")
+def end_words(edge: float, cold: bool) -> str:
+    """One end of a climate window as text, in whole degrees on the safe side, as tables and sentences have it."""
+    return f"{facts.whole(edge, cold)} °C".replace("-", "−")
 
 
 def _design_point(ax: Axes, at_c: float, volts: float, name: str, align: str) -> None:
@@ -119,7 +120,7 @@ def _outside(ax: Axes, s: StringInClimate) -> None:
         ax.axvline(edge, color=MUTED, lw=1)
         cold = edge == s.coldest_c
         ax.annotate(
-            f"{'holds from' if cold else 'holds up to'} {degrees(edge)}",
+            f"{'holds from' if cold else 'holds up to'} {end_words(edge, cold)}",
             (edge, top),
             (4 if cold else -4, -4),
             textcoords="offset points",

@@ -7,7 +7,8 @@ from typing import IO, TYPE_CHECKING, Any
 
 from cli import facts
 from cli.console import number
-from cli.fit_screen import answer, question, wiring
+from cli.fit_screen import MOST, answer, power_header, question, wiring
+from cli.fit_short import in_short
 from cli.pages import ROWS, Cell, Column, check_row, end_cell, figure, typeset, write_page
 
 if TYPE_CHECKING:
@@ -18,12 +19,12 @@ if TYPE_CHECKING:
 #: Options whose values to confirm are listed ahead of the table.
 CONFIRM_LISTED = 10
 
-def write_report(fit: Fit, stream: IO[str], year: SiteYear, *, why: bool) -> None:
-    """Write the page."""
-    write_page("report.html.j2", stream, _content(fit, year, why))
+def write_report(fit: Fit, stream: IO[str], year: SiteYear, *, why: bool, said: Sequence[str] = ()) -> None:
+    """Write the page; ``said`` are paragraphs that stand ahead of the options."""
+    write_page("report.html.j2", stream, _content(fit, year, why, said))
 
 
-def _content(fit: Fit, year: SiteYear, why: bool) -> dict[str, Any]:
+def _content(fit: Fit, year: SiteYear, why: bool, said: Sequence[str]) -> dict[str, Any]:
     # Options may be gone through only once.
     options = list(fit.options(ROWS))
     total = facts.number_of_options(fit)
@@ -36,7 +37,8 @@ def _content(fit: Fit, year: SiteYear, why: bool) -> dict[str, Any]:
         "question": question(fit),
         "answer": answer(fit, options),
         "order": f"Order: {fit.order}.",
-        "best": best and _best(fit, best),
+        "said": [*said, *filter(None, [in_short(fit, options[:MOST])])],
+        "best": best and _best(fit, best, year),
         "checks": [check_row(c) for c in best.checks] if best else [],
         "confirm": confirm,
         "confirm_more": confirm_more,
@@ -63,12 +65,12 @@ def _shown(listed: int, total: int) -> str:
     return f"{total:,} option{'s' if total != 1 else ''}."
 
 
-def _best(fit: Fit, o: Option) -> dict[str, Any]:
+def _best(fit: Fit, o: Option, year: SiteYear) -> dict[str, Any]:
     shown = [("modules", f"{o.modules:,}"), ("DC/AC ratio", f"{o.dc_ac_ratio:.2f}")]
     if o.clipping_loss_pct is not None:
         shown.append(("clipped", f"{o.clipping_loss_pct:.2f} %"))
     if o.yearly_kwh is not None:
-        shown.append(("a year", f"{o.yearly_kwh:,.0f} kWh"))
+        shown.append(("a year without clouds" if year.clear_sky else "a year", f"{o.yearly_kwh:,.0f} kWh"))
     if o.cost is not None:
         shown.append(("modules and inverters cost", f"{o.cost:,.2f} {_currency(fit)}"))
     site = fit.request.site
@@ -134,12 +136,14 @@ def _columns(fit: Fit, year: SiteYear) -> list[Column]:
     columns = [Column("#"), Column("verdict", "word")]
     if not fit.is_pair:
         side = "inverter" if fit.lists_inverters else "module"
-        columns += [Column(side, "name title"), Column("AC kW" if fit.lists_inverters else "W")]
+        columns += [Column(side, "name title"), Column(power_header(fit))]
     if fit.request.several:
         columns.append(Column("units"))
     columns += [Column("wiring", "text"), Column("modules"), Column("DC/AC")]
     if year.year is not None:
         columns += [Column("clipped %"), Column("kWh a year")]
+    if facts.is_in_stock(fit):
+        columns.append(Column("in stock"))
     if _currency(fit):
         columns.append(Column(f"cost {_currency(fit)}"))
     return [*columns, Column("holds from °C"), Column("holds to °C"), Column("to confirm", "name")]
@@ -152,14 +156,16 @@ def _cells(fit: Fit, o: Option, columns: Sequence[Column]) -> list[Cell]:
         "verdict": Cell(str(o.verdict)),
         "inverter": Cell(inverter.name),
         "module": Cell(module.name),
-        "AC kW": Cell(f"{inverter.ac_power_w / 1000:.2f}", inverter.ac_power_w),
-        "W": Cell(f"{module.pmax_w:.0f}", module.pmax_w),
+        power_header(fit): Cell(f"{inverter.ac_power_w / 1000:,.2f}", inverter.ac_power_w)
+        if fit.lists_inverters
+        else Cell(f"{module.pmax_w:.0f}", module.pmax_w),
         "units": Cell(str(o.units), o.units),
         "wiring": Cell(wiring(o)),
         "modules": Cell(f"{o.modules:,}", o.modules),
         "DC/AC": Cell(f"{o.dc_ac_ratio:.2f}", o.dc_ac_ratio),
         "clipped %": Cell(number(o.clipping_loss_pct, 2), o.clipping_loss_pct),
         "kWh a year": Cell(number(o.yearly_kwh), o.yearly_kwh),
+        "in stock": Cell(number(pieces := facts.pieces_in_stock(fit, o)), pieces),
         f"cost {_currency(fit)}": Cell(number(o.cost, 2), o.cost),
         "holds from °C": end_cell(facts.holds_from(o), True, -999.0),
         "holds to °C": end_cell(facts.holds_to(o), False, 999.0),

@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
 from typing import IO, TYPE_CHECKING, Any
 
 from catalog.errors import CatalogError
 from cli import facts
 from cli.cautions import CAUTIONS
 from cli.console import on_terminal
-from cli.fit_screen import answer, question
+from cli.fit_screen import MOST, answer, question
+from cli.fit_short import in_short
 from cli.worksheets import Column, Formats, Table, set_page
 
 if TYPE_CHECKING:
@@ -26,9 +27,9 @@ EXPLAINED = 1_000
 
 
 def write_workbook(
-    fit: Fit, stream: IO[bytes], year: SiteYear, *, with_checks: bool, why: bool = False
+    fit: Fit, stream: IO[bytes], year: SiteYear, *, with_checks: bool, why: bool = False, said: Sequence[str] = ()
 ) -> None:
-    """Write the workbook.
+    """Write the workbook; ``said`` are paragraphs that stand with the question.
 
     Checks and values to confirm are written for the first `EXPLAINED` options. The climate window and the
     values to confirm stand beside every option where there are no more than that, or with ``with_checks``;
@@ -56,7 +57,7 @@ def write_workbook(
     }
     book = xlsxwriter.Workbook(stream, options)
     book.set_properties({"title": question(fit), "comments": "Made by Ferrule. Ratings only: no design."})
-    sheets = _Sheets(book, fit, year, with_checks or number <= EXPLAINED, number)
+    sheets = _Sheets(book, fit, year, with_checks or number <= EXPLAINED, number, said)
     sheets.fill()
     if why:
         sheets.fill_rejected()
@@ -69,8 +70,10 @@ def write_workbook(
 class _Sheets:
     """The four sheets, filled in one pass over the options, which may be gone through only once."""
 
-    def __init__(self, book: Workbook, fit: Fit, year: SiteYear, explain_all: bool, number: int) -> None:
+    def __init__(self, book: Workbook, fit: Fit, year: SiteYear, explain_all: bool, number: int,
+                 said: Sequence[str]) -> None:  # fmt: skip
         self.fit, self.year, self.explain_all, self.number = fit, year, explain_all, number
+        self.said, self.in_stock = said, facts.is_in_stock(fit)
         self.costed = fit.search.shelf.currency if fit.search.shelf else None
         self.formats = Formats(book)
         self.options = Table(book, "Options", self._option_columns(), self.formats, number)
@@ -87,7 +90,8 @@ class _Sheets:
             self.confirm.heading(note.replace("checks", "values to confirm"))
         with on_terminal("Written", "options") as progress:
             for option in self._all():
-                first = first or [option]
+                if option.rank <= MOST:
+                    first.append(option)
                 self.options.row(self._option_row(option))
                 if option.rank <= EXPLAINED:
                     for values in self._check_rows(option):
@@ -122,14 +126,16 @@ class _Sheets:
             Column("module power [W]", 9, 0),
             Column("inverter maker", 20),
             Column("inverter model", 26),
-            Column("AC power [W]", 10, 0),
+            Column("AC power of a unit [W]" if self.fit.request.several else "AC power [W]", 10, 0),
             Column("units", 6, 0),
             Column("modules", 9, 0),
             Column("arrangement", 20),
             Column("DC/AC ratio", 8, 3),
             Column("clipping loss [%]", 9, 2),
-            Column("yearly energy [kWh]", 10, 0),
+            Column("yearly energy, no clouds [kWh]" if self.year.clear_sky else "yearly energy [kWh]", 10, 0),
         ]
+        if self.in_stock:
+            columns.append(Column("in stock", 8, 0))
         if self.costed:
             columns.append(Column(f"cost [{self.costed}]", 11, 2))
         if self.explain_all:
@@ -158,6 +164,8 @@ class _Sheets:
             o.clipping_loss_pct,
             o.yearly_kwh,
         ]
+        if self.in_stock:
+            row.append(facts.pieces_in_stock(self.fit, o))
         if self.costed:
             row.append(o.cost)
         if self.explain_all:
@@ -216,6 +224,7 @@ class _Sheets:
             ("Question", question(self.fit)),
             ("Answer", answer(self.fit, first)),
             ("Order", f"{self.fit.order}."),
+            *[("In short", line) for line in (*self.said, in_short(self.fit, first)) if line],
             *[("Rests on", line) for line in facts.rests_on(self.fit, self.year)],
             *[("Caution", line) for line in CAUTIONS],
             (

@@ -30,7 +30,10 @@ NO_PLACE = "the site has no place: give --lat and --lon, or a --weather file"
 ASSUMED_TILT = 30.0
 
 #: Goes into the key of a kept year; to be raised when the calculation changes.
-_EDITION = 5
+_EDITION = 6
+
+#: What a year made of place and design temperatures alone is called.
+CLEAR_SKY = "clear-sky year"
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,6 +49,11 @@ class SiteYear:
     notes: tuple[str, ...] = ()
     why_not: str | None = None
     irradiation_kwh_m2: float | None = None
+
+    @property
+    def clear_sky(self) -> bool:
+        """Whether the year is one without clouds, so that energies and clipping are upper bounds."""
+        return self.weather == CLEAR_SKY
 
 
 @dataclass(frozen=True, slots=True)
@@ -174,7 +182,7 @@ def site_plane(site: Site, weather: Weather | None = None) -> tuple[PlaneYear, s
     weather = weather or weather_of(site)
     tilt, azimuth, assumed = plane_of(site, weather)
     plane = plane_year(weather, tilt, azimuth)
-    label = "clear-sky year" if site.weather is None else f"{weather.kind} {os.path.basename(site.weather)}"
+    label = CLEAR_SKY if site.weather is None else f"{weather.kind} {os.path.basename(site.weather)}"
     place = f" ({weather.name})" if weather.name and site.weather is not None else ""
     notes = [
         f"Weather: {label}{place}, {len(weather.times):,} intervals of {weather.interval_hours:g} h,"

@@ -199,7 +199,7 @@ def clear_sky_weather(lat: float, lon: float, design_low_c: float, design_high_c
         dhi=sky["dhi"].to_numpy(),
         temp_air=temp_air,
         wind_speed=np.ones(8760),
-        notes=("clear sky all year: an upper bound of clipping, not a forecast",),
+        notes=("clear sky all year: an upper bound of energy and of clipping, not a forecast",),
     )
     # The sun is known already; `sun` is a cached property.
     weather.__dict__["sun"] = (position["apparent_zenith"].to_numpy(), position["azimuth"].to_numpy())

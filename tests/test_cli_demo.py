@@ -42,7 +42,7 @@ def test_the_demo_tells_question_answer_reasons_doubts_cautions_and_what_next(sc
     assert "In short: the least inverter" in said
     assert "max-dc-voltage" in said and "IEC 62548" in said
     assert "stopped by" in said
-    assert "clear-sky year" in said and "upper bound of clipping" in said
+    assert "clear-sky year" in said and "upper bound of energy and of clipping" in said
     assert all(caution in said for caution in CAUTIONS)
     assert "--catalog" in said
 

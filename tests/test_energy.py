@@ -272,7 +272,10 @@ def test_fit_prints_count_chain_and_options(small_catalog, ferrule):
     assert "by falling yearly energy" in ran.out
     said = " ".join(ran.out.split())
     assert "to-confirm); nothing that fits yields so much." in said
-    assert "reaches %: of the 8,000 kWh wanted; less than 100 falls short." in said
+    assert "reaches %: of the 8,000 kWh wanted, in a year without clouds; less than 100 falls short." in said
+    # Without clouds it takes the fewest that it ever could, and the first sentence says so.
+    assert said.startswith("8,000 kWh a year, in a year without clouds and so at least: ")
+    assert "give a weather file (--weather), or --sun-hours" in said
     energy = json.loads(ferrule(*FIT, *PLACE, "--yearly-kwh", "8000", "--json").out)["energy"]
     assert (energy["verdict"], energy["fits"]) == ("to-confirm", None)
 
@@ -292,3 +295,20 @@ def test_fit_refuses_in_one_line(small_catalog, ferrule, more, words):
     assert ran.status == 2
     assert words in ran.err
     assert ran.err.count("\n") == 1 and not ran.out
+
+
+@pytest.mark.parametrize("ending", ["html", "xlsx"])
+def test_page_and_workbook_keep_the_question_of_an_energy(small_catalog, ferrule, tmp_path, ending):
+    from openpyxl import load_workbook
+
+    out = tmp_path / f"energy.{ending}"
+    ran = ferrule(*FIT, *PLACE, "--yearly-kwh", "8000", "--out", str(out))
+    assert ran.status == 0, ran.err
+    if ending == "html":
+        text = out.read_text("utf-8")
+        assert "In short: #1, " in text and "a year without clouds" in text
+    else:
+        lines = load_workbook(out)["Assumptions"].iter_rows(values_only=True)
+        text = "\n".join(str(cell) for line in lines for cell in line)
+    assert "8,000 kWh a year, in a year without clouds and so at least: " in text
+    assert "are the fewest that yield it" in text and "The chain: " in text

@@ -192,3 +192,26 @@ def test_a_text_breaks_at_no_space_that_forbids_it(monkeypatch):
     narrow(monkeypatch, 20)
     lines = table_lines([Column("wiring", fold=True), Column("kWh", number=True)], [["2x7 | 2x7 + 2\u00a0units: 1x13", "1,000"]])
     assert [line.split("  ")[0].rstrip() for line in lines] == ["wiring", "2x7 | 2x7 +", "2 units: 1x13"]
+
+
+def test_reasons_are_as_many_as_asked_for_whatever_fits(demo_catalog, ferrule):
+    words = (*KLASSIK, *BARN, "--ratio", "1.2..1.21", "--why")
+    few, all_ = ferrule(*words, "--limit", "2").out, ferrule(*words, "--limit", "50").out
+    assert ", 2 of them shown (--limit)" in few
+    number = int(re.search(r"Without option: (\d+);", all_)[1])
+    assert number > 2 and "shown (--limit)" not in all_
+
+
+def test_files_say_what_is_in_stock(demo_catalog, ferrule, tmp_path):
+    from openpyxl import load_workbook
+
+    words = (*KLASSIK, *BARN, "--count", "24", "--units", "1..2", "--in-stock")
+    for ending in ("html", "xlsx"):
+        assert ferrule(*words, "--out", str(tmp_path / f"s.{ending}")).status == 0
+    page = (tmp_path / "s.html").read_text("utf-8")
+    assert "Which inverters in stock take" in page and "In stock: 54 of " in page and "AC kW each" in page
+    book = load_workbook(tmp_path / "s.xlsx")
+    lines = list(book["Options"].iter_rows(values_only=True))
+    pieces = {line[lines[0].index("inverter model")]: line[lines[0].index("in stock")] for line in lines[1:]}
+    assert pieces["Viola 5"] == 9
+    assert "Which inverters in stock take" in ferrule(*words).out

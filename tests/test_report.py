@@ -27,7 +27,7 @@ from report_cases import (
 )
 
 from catalog.records import Inputs
-from cli import facts, fit_files, pages, report, series
+from cli import facts, fit_files, pages, pictures, report, series
 from cli.cautions import CAUTIONS
 from cli.drawing import spread
 from cli.fit_screen import question, wiring
@@ -261,6 +261,15 @@ def test_the_climate_picture_meets_limit_and_window() -> None:
     assert {"MPPT window, top", "MPPT window, bottom", "module system voltage"} == {
         lim.name for lim in s.limits
     }
+
+
+def test_the_picture_rounds_the_climate_window_to_the_safe_side() -> None:
+    fit = pair(TABLED)
+    (option,) = fit.options(1)
+    option = replace(option, confirm=(), coldest_c=-3.9, hottest_c=46.709)
+    drawn = pictures.draw_climate(series.string_in_climate(fit, option)).svg
+    assert "holds from −3 °C" in drawn and "holds up to 46 °C" in drawn
+    assert facts.climate_words(option, -12, 36) == "-3 to 46 °C"
 
 
 def test_a_voltage_to_confirm_is_drawn_as_one() -> None:
