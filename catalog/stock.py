@@ -154,13 +154,22 @@ def _read(item: StockItem, names: NamesByKind, kinds: Sequence[str]) -> tuple[se
     return sure, some
 
 
+#: Candidates that are looked at for each that is suggested, where only those with something in common count.
+_LOOKED_AT = 5
+
+
 def suggestions(item: StockItem, names: NamesByKind, limit: int = 5) -> list[Suggestion]:
-    """Records that an article may mean, best first."""
+    """Records that an article may mean, best first; where none is near, those that share a number or a telling word."""
+    from catalog.common_ground import has_in_common
+
     best: dict[tuple[str, int], float] = {}
     for text in filter(None, (item.named, item.text or item.article)):
         for kind in [item.kind] if item.kind else names:
-            for c in resolve(text, names[kind], limit).candidates:
-                best[kind, c.id] = max(c.score, best.get((kind, c.id), 0.0))
+            found = resolve(text, names[kind], limit * _LOOKED_AT)
+            called = {n.id: n for n in names[kind].names} if found.confidence == "none" and found.candidates else {}
+            for c in found.candidates:
+                if not called or has_in_common(text, called[c.id].maker, called[c.id].model):
+                    best[kind, c.id] = max(c.score, best.get((kind, c.id), 0.0))
     ranked = sorted(best.items(), key=lambda entry: -entry[1])[:limit]
     return [Suggestion(kind, id_, score) for (kind, id_), score in ranked]
 

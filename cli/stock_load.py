@@ -39,14 +39,29 @@ def load(
 
     found = read_stock_file(file, currency)
     with open_catalog(catalog) as opened:
-        before = len(opened.stock())
+        before = opened.stock()
         items = opened.load_stock(found.items, add=add)
         for line in found.notes:
             note(line)
         say(summary(items))
         if before:
-            say(f"{'Beside' if add else 'In the place of'} the {counted(before, 'line')} before.")
+            lines = f"the {counted(len(before), 'line')} before"
+            say(f"Beside {lines}." if add else f"In the place of {lines}, {_way_back(before, file.name)}.")
         say_open(opened, items)
+
+
+#: Lists that are named as those that were replaced.
+_LISTS = 3
+
+
+def _way_back(before: Sequence[StockItem], now: str) -> str:
+    """From which lists the lines are that were replaced, and how to have them again."""
+    lists = list(dict.fromkeys(str(item.source) for item in before))
+    if lists == [now]:
+        return f"from {now} as it was; 'ferrule stock list --out FILE' keeps a copy of what is in stock"
+    named = ", ".join(lists[:_LISTS]) + (f" and {len(lists) - _LISTS:,} more" if len(lists) > _LISTS else "")
+    again = "that list" if len(lists) == 1 else "these lists, each with --add,"
+    return f"from {named}; load {again} again to have them back (--add keeps them beside the new ones; decisions are kept)"
 
 
 _HOW = {

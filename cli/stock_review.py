@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 import sys
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from typing import TYPE_CHECKING, Annotated
 
 import typer
 
 from catalog.errors import CatalogError
+from cli.kinds import KINDS
 from cli.opening import CatalogOption, open_catalog
 
 if TYPE_CHECKING:
@@ -55,7 +56,6 @@ def decide(
     """
     from cli.choosing import choose
     from cli.console import counted, say
-    from cli.kinds import KINDS
 
     if (name is None) != none:
         raise CatalogError("say which record the article means, or that it is none: NAME or --none")
@@ -97,24 +97,26 @@ def say_open(catalog: Catalog, items: Sequence[StockItem]) -> int:
     say("Not sure which record is meant:")
     for item in waiting[:_SHOWN]:
         say(f"{item.label} ({counted(item.quantity, 'piece')})", indent=2)
-        for _, line in _candidates(item, names):
+        found = _candidates(item, names)
+        for _, line in found:
             say(line, indent=6)
-        if item.confidence == "none":
-            say(_not_loaded(item), indent=6)
+        if not found:
+            say("No record is near to it.", indent=6)
     if len(waiting) > _SHOWN:
         say(f"... and {len(waiting) - _SHOWN:,} more", indent=2)
+    unlike = [item.kind for item in waiting if item.confidence == "none"]
+    if unlike:
+        say(f"What is like none of them {_not_loaded(unlike)}")
     first = quoted(waiting[0].article or waiting[0].text)
     say("Decide with 'ferrule stock review' on a terminal, or one by one (--none: no record of the catalog):")
     print(f'  ferrule stock decide {first} "Maker Model"')
     return len(waiting)
 
 
-def _not_loaded(item: StockItem) -> str:
-    """What to do where no record comes near."""
-    return (
-        "No record is near to it. Its datasheet may not be loaded yet: 'ferrule sheet load FILE' or"
-        f" 'ferrule sheet enter {item.kind or 'module'}', then it is matched again."
-    )
+def _not_loaded(kinds: Collection[str | None]) -> str:
+    """What to do where no record comes near, or none that is offered is meant."""
+    kind = "|".join(k for k in KINDS if not {k, None}.isdisjoint(kinds))
+    return f"may not be loaded yet: 'ferrule sheet load FILE' or 'ferrule sheet enter {kind}', then it is matched again."
 
 
 def _candidates(item: StockItem, names: Mapping[str, NameIndex]) -> list[tuple[Suggestion, str]]:
@@ -141,7 +143,7 @@ def _ask_all(catalog: Catalog) -> int:
         for _, line in found:
             say(line, indent=2)
         if item.confidence == "none":
-            say(_not_loaded(item), indent=2)
+            say(f"{'Its datasheet' if not found else 'What is like none of them'} {_not_loaded([item.kind])}", indent=2)
         while True:
             answer = typer.prompt("number, name, none, q", default="", show_default=False).strip()
             if answer.casefold() == "q":
@@ -162,7 +164,6 @@ def _ask_all(catalog: Catalog) -> int:
 
 def _meant(catalog: Catalog, item: StockItem, answer: str, found: Sequence[Suggestion]) -> tuple[str, int] | None:
     from cli.choosing import choose
-    from cli.kinds import KINDS
 
     if answer.casefold() == "none":
         return None

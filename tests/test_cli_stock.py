@@ -68,9 +68,30 @@ def test_loading_says_what_was_matched_and_what_waits(run: Run):
     said = " ".join(ran.out.split())
     assert ran.status == 0
     assert "30 lines in stock: 29 matched to records (29 by the full name), 1 to review." in said
-    assert "In the place of the 30 lines before." in said
+    assert "In the place of the 30 lines before, from stock.csv as it was; 'ferrule stock list --out FILE' keeps" in said
     assert "LL-M13: MARZIPAN KLASSIK poly 60 cells" in said and "1 Marzipan Photovoltaik Klassik 270P" in said
     assert 'ferrule stock decide LL-M13 "Maker Model"' in said
+
+
+def test_only_what_shares_a_number_or_a_telling_word_is_offered(run: Run, tmp_path: Path):
+    unlike = tmp_path / "unlike.csv"
+    unlike.write_text(
+        "article,quantity\nWibblemoor Sparrow 377,4\ncable 6mm2 red 100 m,3\nQF-415H black,2\nHoneycomb micro,1\n"
+    )
+    offered: dict[str, list[str]] = {}
+    said = run("stock", "load", unlike).out
+    assert "from stock.csv; load that list again to have them back" in " ".join(said.split())
+    for line in said.partition("is meant:")[2].splitlines():
+        if line.startswith("      "):
+            offered[list(offered)[-1]].append(line.strip())
+        elif line.endswith(("pieces)", "piece)")):
+            offered[line.strip()] = []
+    none = ["No record is near to it."]
+    assert offered["Wibblemoor Sparrow 377 (4 pieces)"] == none == offered["cable 6mm2 red 100 m (3 pieces)"]
+    assert offered["QF-415H black (2 pieces)"] == ["1  Quillfeather QF-410H"]
+    assert {line.split("  ")[1] for line in offered["Honeycomb micro (1 piece)"]} == {
+        "Bumblebridge Honeycomb 380", "Bumblebridge Honeycomb Twin 800",
+    }  # fmt: skip
 
 
 def test_a_bad_list_changes_nothing(run: Run, tmp_path: Path):
