@@ -30,6 +30,8 @@ def backup(source: Database, path: Path) -> None:
     """Write a copy of a catalog to a new file; see `catalog.store.Catalog.backup`."""
     if path.exists():
         raise CatalogError(f"{path} exists already: name a new file for the backup")
+    if not path.parent.is_dir():
+        raise CatalogError(f"{path}: there is no folder {path.parent}; make it, or name a file in one that is there")
     if isinstance(source, SqliteFile):
         copy_file(source.path, path)
         return

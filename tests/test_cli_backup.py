@@ -30,3 +30,9 @@ def test_what_is_no_copy_is_refused_and_the_catalog_stays(ferrule, small_catalog
         ran = ferrule("sheet", "restore", file)
         assert (ran.status, ran.out) == (2, "") and ran.err.count("\n") == 1
     assert small_catalog.read_bytes() == kept
+
+
+def test_a_backup_makes_no_folder(ferrule, small_catalog, tmp_path):
+    ran = ferrule("sheet", "backup", tmp_path / "nowhere" / "b.sqlite")
+    assert ran.status == 2 and "there is no folder" in ran.err and ran.err.count("\n") == 1
+    assert not (tmp_path / "nowhere").exists()
