@@ -346,7 +346,7 @@ class Catalog:
         Raises
         ------
         CatalogError
-            If the file exists or cannot be written.
+            If the file exists, its folder does not, or it cannot be written.
         """
         from catalog.backup import backup
 

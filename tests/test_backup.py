@@ -18,7 +18,7 @@ from catalog.store import Catalog
 
 
 def test_a_backup_is_a_catalog_and_comes_back(store_location: str, tmp_path: Path) -> None:
-    copy = tmp_path / "copies" / "monday.sqlite"
+    copy = tmp_path / "monday.sqlite"
     with Catalog.open(store_location, create=True) as catalog:
         catalog.load(MODULES, [INVERTER, TWO_GROUPS])
         catalog.amend("inverter", 3, {"max_dc_voltage_v": 600.0}, REV_C)
