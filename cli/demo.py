@@ -117,7 +117,7 @@ def _answer(catalog: Catalog, path: Path) -> None:
         paragraph(fit_screen.question(found)),
         *fit_screen.options_blocks(found, year, options),
         paragraph(_in_short(found, options, shelf)),
-        [*fit_screen.checks_lines(found, options[0]), *_misses(found)],
+        [*paragraph(_proof(options[0])), *_misses(found)],
         fit_screen.grounds_lines(found, year),
         _next(path),
     ]
@@ -159,6 +159,18 @@ def _ordered(found: Fit, option: Option, shelf: Mapping[str, StockItem]) -> str:
     lot = shelf[_name(found, option)]
     price = f"{_cost(found, option, shelf):,.0f} {lot.currency}"
     return f"#{option.rank}, {option.units} x {_name(found, option)} ({price}, {lot.quantity} on the shelf)"
+
+
+def _proof(option: Option) -> str:
+    """What an option was held against: the check of the cold voltage, and the one with the least room."""
+    cold = next(c for c in option.checks if c.check == "max-dc-voltage")
+    stops = [c for c in option.checks if c.stop and c.margin_pct is not None and c.unit != "1"]
+    tight = min(stops, key=lambda c: c.margin_pct or 0.0)
+    return (
+        f"#{option.rank} passed {len(option.checks)} checks, each with value, limit and clause (fit --checks shows them):"
+        f" max-dc-voltage {cold.value:,.1f} of {cold.limit:,.1f} {cold.unit} ({cold.rule}) and so on; the least room is in"
+        f" {tight.check}, {tight.value:,.0f} of {tight.limit:,.0f} {tight.unit}."
+    )
 
 
 def _misses(found: Fit) -> list[str]:
