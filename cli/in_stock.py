@@ -93,19 +93,24 @@ def waiting_line(items: Sequence[StockItem]) -> str:
 
 
 def held(catalog: Catalog, kind: str) -> dict[int, int]:
-    """Pieces in stock by the id of the record, of one kind; says how many articles wait for a decision.
+    """Pieces in stock by the id of the record, of one kind; says and raises what `held_lots` does."""
+    return {id_: pieces_of(some) for id_, some in held_lots(catalog, kind).items()}
+
+
+def held_lots(catalog: Catalog, kind: str) -> dict[int, list[StockItem]]:
+    """Lines in stock by the id of the record, of one kind; says how many articles wait for a decision.
 
     Raises
     ------
     CatalogError
         Where no record of the kind is on a stock list.
     """
-    found: dict[int, int] = {}
+    found: dict[int, list[StockItem]] = {}
     items = catalog.stock()
     note_waiting(items)
     for item in items:
         if item.kind == kind and item.record is not None:
-            found[item.record] = found.get(item.record, 0) + item.quantity
+            found.setdefault(item.record, []).append(item)
     if not found:
         raise CatalogError(f"--in-stock: no {kind} is in stock; load a list with 'ferrule stock load FILE'")
     return found

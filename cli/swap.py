@@ -16,9 +16,10 @@ from cli.siting import (
 from cli.vet import place_of
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Mapping, Sequence
 
     from catalog.records import Inverter, Module, Site
+    from catalog.stock import StockItem
     from catalog.store import Catalog
     from cli.years import SiteYear
     from matcher.fit import Fit, Option
@@ -36,6 +37,10 @@ NOTHING_TAKES_ITS_PLACE = 1
 EXPLAINED = 100
 
 
+class Unsound(Exception):
+    """The array itself is not sound, so that nothing can take a place in it."""
+
+
 @dataclass(eq=False)
 class Question:
     """What was asked and what came out, for the screen and for files."""
@@ -48,7 +53,7 @@ class Question:
     vetted: Vetted
     wired: tuple[Unit, ...]
     replaces_inverter: bool
-    stock_only: bool
+    stock: Mapping[int, Sequence[StockItem]] | None
     part: int | None
     records: Sequence[Module] | Sequence[Inverter]
     swaps: Swaps
@@ -107,17 +112,26 @@ def swap(
         raise CatalogError(f"--replace {replaced}: it is module or inverter")
     if part is not None and replaced == "inverter":
         raise CatalogError("--part is about modules: leave --replace inverter away")
-    if (strings is None) == (count is None):
+    if strings is not None and count is not None:
+        raise CatalogError("give --strings or --count, not both: --count wires the modules the best way, --strings says the wiring")
+    if strings is None and count is None:
         raise CatalogError("say how the array is wired: --strings 2x11|1x12, or --count N for the best way")
     with open_catalog(catalog) as opened:
         given = dict(mounting=mounting, voltage_cap=voltage_cap, rear_share=rear_share, lat=lat, lon=lon, tilt=tilt,
                      azimuth=azimuth, weather=weather)  # fmt: skip
         place, like = place_of(opened, site, low, high, given)
-        question = _asked(
-            opened, place, like, module, inverter, strings, count, units, replaced, part, in_stock, rules, combiner, within
-        )  # fmt: skip
         from cli import swap_files, swap_screen, table_files
-        from cli.console import print_json
+        from cli.console import note, print_json, say
+
+        try:
+            question = _asked(
+                opened, place, like, module, inverter, strings, count, units, replaced, part, in_stock, rules, combiner,
+                within,
+            )  # fmt: skip
+        except Unsound as found:
+            # An answer and no bad input; it has no document.
+            (note if json or out is not None else say)(f"Nothing: {found}")
+            return NOTHING_TAKES_ITS_PLACE
 
         shown = EXPLAINED if out is not None or json else limit
         full = explained(opened, question, shown)
@@ -126,7 +140,7 @@ def swap(
     if json:
         print_json(swap_files.document(question, full))
     elif out is None:
-        swap_screen.show(question, full)
+        swap_screen.show(question, full, limit)
     return 0 if len(question.swaps) else NOTHING_TAKES_ITS_PLACE
 
 
@@ -136,6 +150,7 @@ def _asked(
 ) -> Question:  # fmt: skip
     from cli.asking import rule_set
     from cli.choosing import choose_inverter, choose_module
+    from cli.in_stock import held_lots, pieces_of
     from cli.vet import bundle_of
     from cli.years import cold_plane, site_year
     from matcher.request import Request
@@ -152,14 +167,14 @@ def _asked(
     vetted = vetter.vet(bundle, site, year=year and year.year, plane=plane, mending=False, like=like)
     if site is None:
         if not vetted.sound:
-            raise CatalogError(
-                f"this wiring is sound in no climate with {old.name} itself; 'ferrule vet' says what would mend it"
+            raise Unsound(
+                f"this wiring is sound in no climate with {old.name} itself; 'ferrule vet' says what would mend it."
             )
         site = vetted.site
-    if not vetted.wired:
-        raise CatalogError(
+    if not vetted.wired or (count is not None and sum(u.copies * u.modules for u in vetted.wired) != count):
+        raise Unsound(
             f"this wiring cannot be kept, it is not sound with {old.name} itself: {vetted.reason or vetted.verdict};"
-            " 'ferrule vet' says what would mend it"
+            " 'ferrule vet' says what would mend it."
         )
     from matcher.options import Unit
 
@@ -167,10 +182,12 @@ def _asked(
     total = sum(u.copies * u.modules for u in wired)
     if part is not None and part >= total:
         raise CatalogError(f"--part {part}: the array has {total} modules; leave --part away to replace them all")
+    stock = None
     records: Sequence = catalog.inverters() if replaced == "inverter" else catalog.modules()
     if in_stock:
         needed = sum(u.copies for u in wired) if replaced == "inverter" else part or total
-        records = _held(catalog, records, replaced, needed)
+        stock = held_lots(catalog, replaced)
+        records = [r for r in records if pieces_of(stock.get(r.id, ())) >= needed]
     if replaced == "inverter":
         swaps = swap_inverter(old, own, wired, records, site, rule, combiner, plane)
     elif part is None:
@@ -180,17 +197,9 @@ def _asked(
 
         swaps = swap_part(old, own, wired, part, records, site, rule, combiner, plane)
     return Question(
-        old, own, site, rule, combiner, vetted, wired, replaced == "inverter", in_stock, part, records, swaps, year,
+        old, own, site, rule, combiner, vetted, wired, replaced == "inverter", stock, part, records, swaps, year,
         within,
     )  # fmt: skip
-
-
-def _held(catalog: Catalog, records: Sequence, kind: str, needed: int) -> Sequence:
-    """Records of which enough pieces are in stock."""
-    from cli.in_stock import held
-
-    there = held(catalog, kind)
-    return [r for r in records if there.get(r.id, 0) >= needed]
 
 
 def explained(catalog: Catalog, question: Question, limit: int) -> Full:

@@ -8,7 +8,7 @@ from cli import facts
 from cli.cautions import HOURLY_MEANS
 from cli.console import counted, number
 from cli.pages import ROWS, Cell, Column, check_row, end_cell, typeset, write_page
-from cli.swap_screen import PART_WORDS, answer, order, question_words, signed
+from cli.swap_words import PART_WORDS, answer, offer, offer_words, order, part_notes, question_words, signed
 from cli.vet_files import rule_words
 from matcher.options import label
 
@@ -76,7 +76,7 @@ def _whole(q: Question, full: Full) -> tuple[list[Column], list[dict[str, Any]]]
         Column("AC kW" if inverters else "W"), *(Column(_CHANGES[name]) for name in swaps.changes),
         *([Column("size mm")] if sizes else []), *([Column("wiring", "text")] if inverters else []),
         Column("DC/AC"), *([Column("clipped %")] if clips else []), Column("holds from °C"), Column("holds to °C"),
-        Column("to confirm", "name"),
+        Column("to confirm", "name"), *_stock_column(q),
     ]  # fmt: skip
     rows = []
     for k in range(min(len(swaps), ROWS)):
@@ -89,13 +89,13 @@ def _whole(q: Question, full: Full) -> tuple[list[Column], list[dict[str, Any]]]
         cells += [_change(float(v[k]), 1) for v in swaps.changes.values()]
         cells += [_size(swaps.size_mm[k].tolist())] if sizes else []
         cells += [Cell(label(swaps.wired[k]))] if inverters else []
-        cells.append(Cell(f"{swaps.ratio[k]:.2f}", float(swaps.ratio[k])))
+        cells.append(Cell(f"{swaps.ratio[k]:.2f}{' !' * bool(swaps.odd[k])}", float(swaps.ratio[k])))
         cells += [_clipped(o)] if clips else []
         cells += [Cell(""), Cell(""), Cell("")] if o is None else [
             end_cell(facts.holds_from(o), True, -999.0), end_cell(facts.holds_to(o), False, 999.0),
             Cell(facts.confirm_short(o)),
         ]  # fmt: skip
-        rows.append({"verdict": outcome, "cells": cells})
+        rows.append({"verdict": outcome, "cells": cells + _stock_cell(q, record)})
     return columns, rows
 
 
@@ -103,6 +103,7 @@ def _part(q: Question) -> tuple[list[Column], list[dict[str, Any]]]:
     columns = [
         Column("#"), Column("verdict", "word"), Column("module", "name title"), Column("W"), Column("wiring", "text"),
         Column("loss at STC %"), Column("loss in the heat %"), Column("loss if spread %"), Column("to confirm", "name"),
+        *_stock_column(q),
     ]  # fmt: skip
     rows = []
     for k, c in enumerate(q.swaps.found[:ROWS]):
@@ -110,11 +111,21 @@ def _part(q: Question) -> tuple[list[Column], list[dict[str, Any]]]:
         losses = [None if m is None else m.loss_pct for m in (c.stc, c.hot, c.spread_stc)]
         cells = [
             Cell(str(k + 1), k + 1), Cell(c.verdict), Cell(record.name), Cell(f"{record.pmax_w:.0f}", record.pmax_w),
-            Cell(" | ".join(t.label for t in c.trackers)), *(Cell(number(v, 2), v) for v in losses),
+            Cell(" | ".join(t.label for t in c.trackers)), *(Cell("?" if v is None else number(v, 2), v) for v in losses),
             Cell("; ".join(f"{x.record}: {facts.confirm_words(x)}" for x in c.confirm)),
         ]  # fmt: skip
-        rows.append({"verdict": c.verdict, "cells": cells})
+        rows.append({"verdict": c.verdict, "cells": cells + _stock_cell(q, record)})
     return columns, rows
+
+
+def _stock_column(q: Question) -> list[Column]:
+    return [] if q.stock is None else [Column("in stock, price each", "text")]
+
+
+def _stock_cell(q: Question, record: Any) -> list[Cell]:
+    """Pieces and price; sorts by the pieces."""
+    found = offer(q, record)
+    return [] if found is None else [Cell(offer_words(q, record), found[0])]
 
 
 def _change(value: float, digits: int) -> Cell:
@@ -143,7 +154,7 @@ def _rests_on(q: Question) -> list[str]:
     if q.combiner:
         lines.append("Strings are paralleled in a combiner box: the inverter's string inputs are waived.")
     if q.part is not None:
-        lines.append(PART_WORDS)
+        lines += [PART_WORDS, *part_notes(q, ROWS)]
     elif year is not None:
         lines += year.notes or (f"No clipping figure: {year.why_not}.",)
         lines += [HOURLY_MEANS] * (year.year is not None)

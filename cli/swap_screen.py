@@ -2,27 +2,23 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
-from cli.console import Column, counted, number, print_table, say
+from cli.console import Column, number, print_table, say
 from cli.facts import confirm_words
 from cli.fit_screen import climate_window
+from cli.swap_words import PART_WORDS, CURRENT, VOLTAGE, answer, margin, offer_words, order, part_notes, question_words, signed
 from cli.vet_words import window_short
 from matcher.options import label
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from cli.swap import Question
     from matcher.fit import Fit, Option
 
-PART_WORDS = (
-    "Unlike modules in one string share the current, which the weaker ones limit; unlike strings on one tracker share"
-    " the voltage. What that costs is told for the whole array, at standard test conditions (STC) and in the heat;"
-    " 'spread' is what it would cost at STC with the new modules spread over all strings."
-)
-
-
-def show(question: Question, full: list[tuple[Fit, Option]]) -> None:
+def show(question: Question, full: list[tuple[Fit, Option]], limit: int) -> None:
     """Print question, answer, candidates, what to confirm, cautions."""
     q = question
     say(question_words(q))
@@ -30,7 +26,7 @@ def show(question: Question, full: list[tuple[Fit, Option]]) -> None:
         say(f"Note: this wiring is not sound with {q.module.name} itself: {q.vetted.reason}.")
     say()
     if q.part is not None:
-        _show_part(question)
+        _show_part(question, limit)
     elif q.replaces_inverter:
         _show_inverters(question, full)
     else:
@@ -44,54 +40,6 @@ def show(question: Question, full: list[tuple[Fit, Option]]) -> None:
             say(HOURLY_MEANS)
     for line in CAUTIONS:
         say(line)
-
-
-def question_words(question: Question) -> str:
-    """The question in a sentence."""
-    q = question
-    temperatures = f"{q.site.design_low_c:g} to {q.site.design_high_c:g} degC, {q.site.mounting}"
-    where = f"at {temperatures}"
-    if q.vetted.solved:
-        where = f"wherever it holds itself ({temperatures})"
-    elif q.site.name != "as given":
-        where = f"at {q.site.name} ({temperatures})"
-    total = sum(u.copies * u.modules for u in q.wired)
-    what = f"{q.part} of the {total} {q.module.name}" if q.part is not None else q.name
-    return f"What takes the place of {what}, wired as {label(q.wired)}, {where}?"
-
-
-def answer(question: Question) -> str:
-    """How many are like it in power, and how many more keep the wiring sound, of how many."""
-    swaps = question.swaps
-    kind = "inverter" if question.replaces_inverter else "module"
-    where = " in stock" if question.stock_only else ""
-    if question.part is not None:
-        return (
-            f"{len(swaps)} of the {swaps.looked_at} {kind}s{where} that are nearest in current and voltage"
-            f" (of {swaps.considered:,})."
-        )
-    of = f"of {counted(swaps.considered, kind)}{where}"
-    lacking = f" {swaps.unmatched:,} {'lacks' if swaps.unmatched == 1 else 'lack'} a value to be judged at all." * bool(swaps.unmatched)
-    if not len(swaps):
-        return f"Nothing: none {of} keeps the wiring sound.{lacking}"
-    like, more = question.within, len(swaps) - question.within
-    words = f"{like or 'None':,} within {question.within_pct:g} % of its power" if like else f"None within {question.within_pct:g} % of its power"
-    others = f"; {more:,} {'more ' if like else ''}of another power {'keeps' if more == 1 else 'keep'} the wiring sound" * bool(more)
-    return f"{words}{others} ({of}).{lacking}"
-
-
-def order(question: Question) -> str:
-    """The order in words."""
-    from matcher import partswap, swap
-
-    if question.part is not None:
-        return partswap.ORDER
-    return swap.INVERTER_ORDER if question.replaces_inverter else swap.ORDER
-
-
-def signed(value: float, digits: int = 1) -> str:
-    """A change with its sign; blank where it is not known."""
-    return "" if value != value else f"{value + 0.0:+.{digits}f}"
 
 
 def _show_modules(question: Question, full: list[tuple[Fit, Option]]) -> None:
@@ -118,10 +66,12 @@ def _show_modules(question: Question, full: list[tuple[Fit, Option]]) -> None:
         row = [
             str(k + 1), fit.modules[0].name, str(o.verdict), f"{fit.modules[0].pmax_w:.0f}",
             *(signed(swaps.changes[n][k]) for n in ("power", "vmp", "imp")),
-            "x".join(signed(v, 0) for v in size) if size[0] == size[0] else "", f"{o.dc_ac_ratio:.2f}",
+            "x".join(signed(v, 0) for v in size) if size[0] == size[0] else "", _ratio(question, k, o),
         ]  # fmt: skip
         rows.append([*row, *([number(o.clipping_loss_pct, 2)] if clips else []), climate_window(o)])
     print_table(columns, rows)
+    _in_stock(question, [question.records[k] for k in swaps.index[: len(full)].tolist()])
+    _unclipped(full)
     _more(question, len(full))
     _margins(full)
     _confirm(full)
@@ -158,28 +108,38 @@ def _show_inverters(question: Question, full: list[tuple[Fit, Option]]) -> None:
     for k, (fit, o) in enumerate(full):
         inverter = fit.inverters[0]
         row = [str(k + 1), inverter.name, str(o.verdict), f"{inverter.ac_power_w / 1000:.2f}",
-               signed(swaps.changes["power"][k]), o.label, f"{o.dc_ac_ratio:.2f}"]  # fmt: skip
+               signed(swaps.changes["power"][k]), o.label, _ratio(question, k, o)]  # fmt: skip
         rows.append([*row, *([number(o.clipping_loss_pct, 2)] if clips else []), climate_window(o)])
     print_table(columns, rows)
+    _in_stock(question, [question.records[k] for k in swaps.index[: len(full)].tolist()])
+    _unclipped(full)
     _more(question, len(full))
     _margins(full)
     _confirm(full)
+
+
+def _unclipped(full: list[tuple[Fit, Option]]) -> None:
+    """Say why a figure is missing where others have one."""
+    missing = [f"#{k + 1}" for k, (_, o) in enumerate(full) if o.clipping_loss_pct is None]
+    if 0 < len(missing) < len(full):
+        say(f"No clipping figure for {', '.join(missing)}: a coefficient that the single-diode model needs is not stated.")
+
+
+def _ratio(question: Question, k: int, option: Option) -> str:
+    """DC/AC ratio of a candidate, marked where it is of another size altogether."""
+    return f"{option.dc_ac_ratio:.2f}" + (" !" if question.swaps.odd[k] else "")
+
+
+def _in_stock(question: Question, records: Sequence[Any]) -> None:
+    if question.stock is not None and records:
+        words = "; ".join(f"#{k + 1} {offer_words(question, r)}" for k, r in enumerate(records))
+        say(f"In stock, pieces and price each: {words}.")
 
 
 def _more(question: Question, shown: int) -> None:
     left = len(question.swaps) - shown
     if left > 0:
         say(f"... and {left:,} more (--limit N shows more, --out FILE.csv holds all of them).")
-
-
-def margin(option: Option, checks: tuple[str, ...]) -> float | None:
-    """Smallest margin of some checks [%]; ``None`` where none is known."""
-    known = [c.margin_pct for c in option.checks if c.check in checks and c.margin_pct is not None]
-    return min(known, default=None)
-
-
-VOLTAGE = ("max-dc-voltage", "system-voltage", "voltage-cap", "mppt-low", "mppt-high", "start")
-CURRENT = ("short-circuit",)
 
 
 def _margins(full: list[tuple[Fit, Option]]) -> None:
@@ -204,7 +164,7 @@ def _confirm(full: list[tuple[Fit, Option]]) -> None:
         say("(the document holds them for all: --json)", indent=2)
 
 
-def _show_part(question: Question, limit: int = 10) -> None:
+def _show_part(question: Question, limit: int) -> None:
     swaps = question.swaps
     say(answer(question))
     if not len(swaps):
@@ -219,13 +179,17 @@ def _show_part(question: Question, limit: int = 10) -> None:
     rows = [["old", old.name, "", f"{old.pmax_w:.0f}", f"{old.vmp_v:.1f}", f"{old.imp_a:.2f}", "", "", ""]]
     for k, c in enumerate(swaps.found[:limit]):
         new = question.records[c.index]
-        losses = [number(None if m is None else m.loss_pct, 2) for m in (c.stc, c.hot, c.spread_stc)]
+        losses = ["?" if m is None else number(m.loss_pct, 2) for m in (c.stc, c.hot, c.spread_stc)]
+        losses[0] += " !" if c.idle else ""
         rows.append([str(k + 1), new.name, c.verdict, f"{new.pmax_w:.0f}", f"{new.vmp_v:.1f}", f"{new.imp_a:.2f}", *losses])
     print_table(columns, rows)
+    for line in part_notes(question, limit):
+        say(line)
+    _in_stock(question, [question.records[c.index] for c in swaps.found[:limit]])
     best = swaps.found[0]
     say(f"Wired, tracker by tracker: {' | '.join(t.label for t in best.trackers)}.")
     if len(swaps) > limit:
-        say(f"... and {len(swaps) - limit:,} more (--out FILE.csv holds all of them).")
-    for k, c in enumerate(swaps.found[:3]):
+        say(f"... and {len(swaps) - limit:,} more (--limit N shows more, --out FILE.csv holds all of them).")
+    for k, c in enumerate(swaps.found[: min(limit, 3)]):
         if c.confirm:
             say(f"To confirm for #{k + 1}: " + "; ".join(f"{x.record}: {confirm_words(x)}" for x in c.confirm))

@@ -26,7 +26,7 @@ from matcher.rules import RuleSet
 NEAREST = 150
 
 ORDER = (
-    "what fits before what is to be confirmed; then by what wiring unlike modules together costs, the larger of the"
+    "what gives power before what gives none; then what fits before what is to be confirmed; then by what wiring unlike modules together costs, the larger of the"
     " losses at standard test conditions and in the heat"
 )
 
@@ -36,7 +36,7 @@ class PartSwap:
     """One candidate: where the new modules go, what it costs, and what is to be confirmed.
 
     ``stc`` and ``hot`` are losses with the new modules gathered, ``spread_stc`` with one in each string in turn;
-    ``None`` where a record allows no model.
+    ``None`` where a record allows no model. ``idle``: the array gives no more than the old modules that stay would.
     """
 
     index: int
@@ -46,6 +46,7 @@ class PartSwap:
     stc: Mismatch | None
     hot: Mismatch | None
     spread_stc: Mismatch | None
+    idle: bool = False
 
     @property
     def loss_pct(self) -> float:
@@ -103,13 +104,15 @@ def swap_part(
         outcome = verdict(checks)
         if outcome is Verdict.DOES_NOT_FIT:
             continue
+        lost = stc and stc.mismatch(together)
         found.append(
             PartSwap(
                 place[new.name], str(outcome), together, tuple(dict.fromkeys(to_confirm(checks))),
-                stc and stc.mismatch(together), hot and hot.mismatch(together), stc and stc.mismatch(apart),
+                lost, hot and hot.mismatch(together), stc and stc.mismatch(apart),
+                lost is not None and lost.together_w <= lost.apart_w - part * new.pmax_w,
             )  # fmt: skip
         )
-    found.sort(key=lambda c: (c.verdict != "fits", round(c.loss_pct, 6), modules[c.index].name))
+    found.sort(key=lambda c: (c.idle, c.verdict != "fits", round(c.loss_pct, 6), modules[c.index].name))
     return PartSwaps(tuple(found), len(others), len(near))
 
 

@@ -22,14 +22,15 @@ from matcher.limits import at_most, pair_limits
 from matcher.moduleyear import PlaneYear
 from matcher.options import Unit
 from matcher.rules import RuleSet
+from matcher.vet import COMMON_RATIO
 from matcher.wiring import place
 
 ORDER = (
-    "what fits before what is to be confirmed; then by how little changes: the sum of the relative changes of power,"
+    "common DC/AC ratios before others; then what fits before what is to be confirmed; then by how little changes: the sum of the relative changes of power,"
     " voltage, current and size (a size that is not on record adds nothing)"
 )
 INVERTER_ORDER = (
-    "what fits before what is to be confirmed; then by how little changes: the sum of the relative changes of AC power"
+    "common DC/AC ratios before others; then what fits before what is to be confirmed; then by how little changes: the sum of the relative changes of AC power"
     " and of both ends of the MPPT window"
 )
 
@@ -40,7 +41,8 @@ class Swaps:
 
     ``index`` points into the records gone through. ``changes`` holds relative changes in percent by name, new
     against old; ``size_mm`` the change of length and width, shape (n, 2). ``stopped`` counts the records that
-    some check stops, ``unmatched`` those that lack a value to be matched at all.
+    some check stops, ``unmatched`` those that lack a value to be matched at all. ``common`` are the DC/AC ratios that
+    are common, widened to that of the array itself; ``odd`` tells which candidates lie outside.
     """
 
     index: np.ndarray
@@ -51,6 +53,8 @@ class Swaps:
     considered: int
     stopped: int
     unmatched: int
+    common: tuple[float, float]
+    odd: np.ndarray
     points: Points | None = None
     wired: tuple[tuple[Unit, ...], ...] = ()
 
@@ -110,15 +114,29 @@ def swap_module(
         if getattr(old, field) is not None:
             moved += np.nan_to_num(np.abs(size[:, k]) / getattr(old, field) / 10.0) / 2.0
     names = np.array([modules[k].name for k in found])
-    order = np.lexsort((names, np.round(moved, 9), unsure[found])) if len(found) else np.zeros(0, dtype=int)
+    common = _common(total * old.pmax_w / (units * inverter.ac_power_w))
+    odd = _odd(ratio, common)
+    order = np.lexsort((names, np.round(moved, 9), unsure[found], odd)) if len(found) else np.zeros(0, dtype=int)
     return Swaps(
         found[order], unsure[found][order], {n: v[order] for n, v in changes.items()}, size[order], ratio[order],
-        len(modules) - int(same.sum()), int((matched & ~sound & ~same).sum()), int((~matched & ~same).sum()), points,
+        len(modules) - int(same.sum()), int((matched & ~sound & ~same).sum()), int((~matched & ~same).sum()), common,
+        odd[order], points,
     )  # fmt: skip
 
 
 #: Changes that are told, and the field each is the change of.
 _MODULE_CHANGES = {"power": "pmax_w", "vmp": "vmp_v", "voc": "voc_v", "imp": "imp_a", "isc": "isc_a"}
+
+
+def _common(own: float) -> tuple[float, float]:
+    """DC/AC ratios that are common, and that of the array itself."""
+    low, high = COMMON_RATIO
+    return min(low, round(own, 2)), max(high, round(own, 2))
+
+
+def _odd(ratio: np.ndarray, common: tuple[float, float]) -> np.ndarray:
+    shown = np.round(ratio, 2)
+    return (shown < common[0]) | (shown > common[1])
 
 
 def _check_wiring(inverter: Inverter, trackers: Sequence[Tracker], combiner: bool) -> None:
@@ -177,9 +195,11 @@ def swap_inverter(
     ratio = total * module.pmax_w / (count * columns.ac_power_w[index])
     moved = sum(np.abs(c) for c in changes.values())
     names = np.array([inverters[k].name for k in found])
-    order = np.lexsort((names, np.round(moved, 9), to_confirm)) if found else np.zeros(0, dtype=int)
+    common = _common(total * module.pmax_w / (count * old.ac_power_w))
+    odd = _odd(ratio, common)
+    order = np.lexsort((names, np.round(moved, 9), to_confirm, odd)) if found else np.zeros(0, dtype=int)
     return Swaps(
         index[order], to_confirm[order], {n: v[order] for n, v in changes.items()}, np.full((len(found), 2), np.nan),
-        ratio[order], len(inverters) - int(same.sum()), len(inverters) - int(same.sum()) - len(found), 0, None,
-        tuple(placed[k] for k in order),
+        ratio[order], len(inverters) - int(same.sum()), len(inverters) - int(same.sum()) - len(found), 0, common,
+        odd[order], None, tuple(placed[k] for k in order),
     )  # fmt: skip
