@@ -49,7 +49,10 @@ def list_(
         items = [item for item in items if item.open]
     note_waiting(everything)
     if out is not None:
+        from cli.console import counted, note
+
         _write(items, names, out)
+        note(f"{counted(len(items), 'line')}. Written to {out}.")
     if as_json:
         from cli.console import print_json
 

@@ -135,7 +135,8 @@ def test_an_empty_list_says_why_it_is_empty(run: Run, ferrule: Run, tmp_path: Pa
 def test_what_is_written_can_be_loaded_again(run: Run, tmp_path: Path, ending: str):
     before = document(run("stock", "list", "--json"))["items"]
     out = tmp_path / f"stock.{ending}"
-    assert run("stock", "list", "--out", out).status == 0
+    ran = run("stock", "list", "--out", out)
+    assert ran.status == 0 and f"30 lines. Written to {out}." in " ".join(ran.err.split())
     assert run("stock", "load", out).status == 0
     after = document(run("stock", "list", "--json"))["items"]
     for item in (*before, *after):
