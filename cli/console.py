@@ -74,28 +74,43 @@ def table_lines(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> lis
 def _fitted(columns: Sequence[Column], rows: Sequence[Sequence[str]], room: int) -> tuple[list[str], list[int]]:
     """Headers and widths of the columns: what must not fold keeps its width, and the others give way.
 
-    They give way step by step, for as long as the table is wider than the room: columns that fold down to their
-    least width, headers of the others over two lines, then columns that fold down to their longest word, and
-    at last below it.
+    Headers over two lines where the table cannot do without, or has fewer lines with them.
     """
-    headers = [c.header for c in columns]
-    cells = [max((_width(row[k]) for row in rows), default=0) for k in range(len(columns))]
-    words = [max((_width(w) for row in rows for w in row[k].replace("\n", " ").split(" ")), default=0) for k in range(len(columns))]
     spare = room - (len(columns) - 1)
+    cells = [max((_width(row[k]) for row in rows), default=0) for k in range(len(columns))]
+    plain = [c.header for c in columns]
+    narrow = [h if c.fold else _narrowed(h, cell) for c, h, cell in zip(columns, plain, cells, strict=True)]
+    widths, narrow_widths = (_widths(columns, headers, rows, cells, spare) for headers in (plain, narrow))
+    if sum(widths) > spare or _lines(columns, rows, narrow_widths) + 1 < _lines(columns, rows, widths):
+        return narrow, narrow_widths
+    return plain, widths
+
+
+def _widths(
+    columns: Sequence[Column], headers: Sequence[str], rows: Sequence[Sequence[str]], cells: Sequence[int], spare: int
+) -> list[int]:
+    """Widths that leave columns which may fold as wide as can be, and at least as wide as their longest word."""
+    words = [max((_width(w) for row in rows for w in row[k].replace("\n", " ").split(" ")), default=0) for k in range(len(columns))]
     whole = [max(_width(h), cell) for h, cell in zip(headers, cells, strict=True)]
     soft = [min(c.min_width or _LEAST_FOLD, w) if c.fold else w for c, w in zip(columns, whole, strict=True)]
-    if sum(soft) > spare:
-        headers = [h if c.fold else _narrowed(h, cell) for c, h, cell in zip(columns, headers, cells, strict=True)]
-        whole = [max(_width(h), cell) for h, cell in zip(headers, cells, strict=True)]
-        soft = [min(s, w) for s, w in zip(soft, whole, strict=True)]
+    least = soft
     for least in (
+        [min(w, max(s, word)) for s, w, word in zip(soft, whole, words, strict=True)],
         soft,
         [min(s, max(_NARROWEST, word)) if c.fold else s for c, s, word in zip(columns, soft, words, strict=True)],
         [min(s, _NARROWEST) if c.fold else s for c, s in zip(columns, soft, strict=True)],
     ):
         if sum(least) <= spare:
             break
-    return headers, _shared_out(least, whole, spare)
+    return _shared_out(least, whole, spare)
+
+
+def _lines(columns: Sequence[Column], rows: Sequence[Sequence[str]], widths: Sequence[int]) -> int:
+    """Lines of the rows of a table."""
+    return sum(
+        max((_folded(text, w).count("\n") + 1 for text, c, w in zip(row, columns, widths, strict=False) if c.fold), default=1)
+        for row in rows
+    )
 
 
 def _shared_out(least: Sequence[int], whole: Sequence[int], spare: int) -> list[int]:

@@ -51,7 +51,7 @@ def fit(
     peaks: Annotated[bool, typer.Option("--peaks", help="Of the first options, how much may be clipped at most, as hourly means hide peaks.")] = False,
     limit: Annotated[int | None, typer.Option(metavar="N", min=1, help="Options shown on screen; without it as many as the screen holds, at most 20.")] = None,
     json: Annotated[bool, typer.Option("--json", help="Print the document ferrule.fit/1 instead of tables.")] = False,
-    out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file; its ending decides the form: .csv, .xlsx, .json or .html.")] = None,
+    out: Annotated[str | None, typer.Option(metavar="FILE", help="Write the result to a file; its ending decides the form: .csv, .xlsx, .json, .html, or .parquet where the extra 'parquet' is installed.")] = None,
     site: SiteOption = None,
     low: LowOption = None,
     high: HighOption = None,

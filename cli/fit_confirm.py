@@ -16,6 +16,9 @@ if TYPE_CHECKING:
 #: Values of one field that are told apart; more are given as a range.
 _TOLD_APART = 8
 
+#: The same where the screen is small.
+_TOLD_APART_BRIEFLY = 3
+
 
 def confirm_lines(fit: Fit, options: Sequence[Option], brief: bool) -> list[str]:
     """What to read on which datasheet, a line for each field; ``brief``: values that differ as a range.
@@ -50,7 +53,7 @@ def _of_their_own(waiting: Sequence[Option], own: str, brief: bool) -> Iterator[
         ranks = sorted({rank for some in values.values() for rank in some})
         if not known:
             yield f"{own}: {words} ({ranks_words(ranks)})"
-        elif len(known) > (1 if brief else _TOLD_APART):
+        elif len(known) > (_TOLD_APART_BRIEFLY if brief else _TOLD_APART):
             span = f"{known[-1]:,.1f} to {known[0]:,.1f} {units[words]}"
             yield f"{own}: {words} of at least {span} ({ranks_words(ranks)})"
         else:

@@ -55,7 +55,9 @@ def growth_lines(fit: Fit, worth: Worth | None, most: int = _ROWS) -> list[str]:
     columns += [Column("", fold=True)]
     every = -(-len(steps) // most)
     rows = []
+    net: float | None = 0.0
     for k, s in enumerate(steps):
+        net = None if net is None or s.net is None else net + s.net
         if k % every and s is not last and k + 1 < len(steps):
             continue
         row = [f"{s.option.modules:,}", wiring(s.option), f"{s.option.dc_ac_ratio:.2f}",
@@ -63,7 +65,7 @@ def growth_lines(fit: Fit, worth: Worth | None, most: int = _ROWS) -> list[str]:
         if worth is not None:
             row += [number(s.worth, 2), number(s.added_worth, 2)]
             if worth.module_price is not None:
-                row += [number(s.net, 2)]
+                row += [number(net, 2)]
         marks = ["most worth"] * (s is last) + ["to confirm"] * (len(verdicts) > 1 and bool(s.option.confirm))
         rows.append([*row, ", ".join(marks)])
     lines = ["The best wiring of each module count, by rising count:", *table_lines(columns, rows)]

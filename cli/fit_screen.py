@@ -34,7 +34,7 @@ MOST = 20
 LEAST = 8
 
 #: A short answer that is too long leaves these away, one after the other.
-_WHOLE, _NO_CHECKS, _RANGES, _TIGHT = range(4)
+_WHOLE, _NO_CHECKS, _RANGES, _TIGHT, _BARE = range(5)
 
 #: Options that it shows where even then it is too long: names that take two lines.
 _FEWEST = 3
@@ -54,8 +54,8 @@ def show(
     lines = _page(fit, year, options, shown, level, (*before, *aside), checks, reasons, wanted_kwh)
     if limit is None and not checks and not why:
         room = page_lines()
-        while len(lines) > room and (shown > _FEWEST or level < _TIGHT):
-            least = LEAST if shown > LEAST or level < _TIGHT else _FEWEST
+        while len(lines) > room and (shown > _FEWEST or level < _BARE):
+            least = LEAST if shown > LEAST or level < _BARE else _FEWEST
             if shown > least:
                 shown = max(least, shown - max(1, (len(lines) - room) // 2))
             else:
@@ -133,13 +133,14 @@ def _confirm_blocks(fit: Fit, options: Sequence[Option], level: int) -> list[lis
     if waiting is not None:
         texts = confirm_lines(fit, options, brief=level >= _RANGES)
         each = "" if not any(" to " in text for text in texts) else " (--checks says what each needs)"
-        confirm = [f"To confirm on the datasheets before ordering{each}:"]
+        record = f", and the command that puts what #{waiting.rank} needs on record" * (level == _TIGHT)
+        confirm = paragraph(f"To confirm on the datasheets before ordering{each}{record}:")
         confirm += [line for text in texts for line in paragraph(text, indent=2)]
     blocks, notes = [confirm], not_on_record(options)
     if notes and level < _NO_CHECKS:
         blocks.append(paragraph(notes))
-    if waiting is not None and level < _RANGES:
-        blocks[-1] += [f"What you have read goes on record by a command, here for #{waiting.rank}:"]
+    if waiting is not None and level < _BARE:
+        blocks[-1] += [] if level == _TIGHT else [f"What you have read goes on record by a command, here for #{waiting.rank}:"]
         # Not wrapped as text: it is there to be copied.
         blocks[-1] += [line for command in amend_commands(fit, waiting) for line in f"  {command}".splitlines()]
     return blocks

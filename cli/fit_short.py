@@ -22,28 +22,56 @@ def in_short(fit: Fit, options: Sequence[Option], brief: bool = False) -> str:
     brief
         Leave out what equals the first one.
     """
-    if len(options) < 2:
+    if not options:
         return ""
     best = options[0]
-    reason = _reason(fit, best)
+    reason = _reason(fit, best) if len(options) > 1 else ""
     if not reason:
-        return ""
+        return _mind(fit, options, [best])
     if best.verdict is Verdict.TO_CONFIRM:
         said = f"In short: {_named(fit, best)}, {reason}; do not pay before its datasheet gives the values above."
     else:
         mixed = any(o.verdict is Verdict.TO_CONFIRM for o in options)
         said = f"In short: {_named(fit, best)}, {reason}{', of what fits' if mixed else ''}."
     if fit.request.order is Order.MARGIN:
-        return said  # the margins of options are not on the screen
+        return _joined(said, _mind(fit, options, [best]))  # the margins of options are not on the screen
     keys = _keys(fit, options)
     equal = [o for o, key in zip(options[1:], keys[1:], strict=True) if o.verdict is best.verdict and key == keys[0]]
     if equal and not brief:
         said += " " + _equals(fit, best, equal)
+    named = [best]
     if best.verdict is Verdict.FITS:
         ahead = [o for o, key in zip(options, keys, strict=True) if o.verdict is Verdict.TO_CONFIRM and key < keys[0]]
         if ahead:
+            named.append(ahead[0])
             said += f" {_named(fit, ahead[0])}, would stand before it: do not pay before its datasheet gives the values above."
-    return said
+    return _joined(said, _mind(fit, options, named))
+
+
+def _joined(*sentences: str) -> str:
+    return " ".join(filter(None, sentences))
+
+
+def _mind(fit: Fit, options: Sequence[Option], named: Sequence[Option]) -> str:
+    """What the order that was asked for does not see of some options: clipping over the cap, limited currents."""
+    said = [words for o in named if (words := _drawbacks(fit, options, o))]
+    return f"Mind: {'; '.join(said)}." if said else ""
+
+
+def _drawbacks(fit: Fit, options: Sequence[Option], o: Option) -> str:
+    cap, words = fit.request.clip_cap_pct, []
+    # These orders look at the clipping themselves, and the reason says it.
+    seen = fit.request.order in (Order.LEAST_INVERTER, Order.CLIPPING)
+    if not seen and o.clipping_loss_pct is not None and o.clipping_loss_pct > cap:
+        words.append(f"clips {o.clipping_loss_pct:.2f} % where {cap:g} % is the most wanted")
+        better = next((b for b in options if b.clipping_loss_pct is not None and b.clipping_loss_pct <= cap), None)
+        if better is not None and (lost := (better.yearly_kwh or 0.0) - (o.yearly_kwh or 0.0)) >= 1.0 and better.modules == o.modules:
+            words.append(f"yields {lost:,.0f} kWh a year less than #{better.rank}")
+    over = (c for c in o.checks if c.check == "input-current" and c.limit is not None and (c.margin_pct or 0.0) < 0.0)
+    words += [f"brings {c.value:,.1f} A to a tracker that takes {c.limit:,g} A and holds it back" for c in over]
+    if not words:
+        return ""
+    return f"#{o.rank} " + (f"{', '.join(words[:-1])} and {words[-1]}" if len(words) > 1 else words[0])
 
 
 def _named(fit: Fit, o: Option) -> str:

@@ -65,8 +65,31 @@ def rejection(pair: Pair, space: Space, window: ClimateWindow, request: Request)
     """Why a pair has no option: string length, strings, the asked strings or count, then the asked ratio.
 
     ``space`` holds what the ratings allow, whatever count and DC/AC ratio are asked for; its ``most`` is bound
-    by the array power at most.
+    by the array power at most. An inverter that is far too large or too small for the asked modules is no near
+    miss, however little else is missed.
     """
+    found = _rejection(pair, space, window, request)
+    ratio, miss = _asked_ratio(pair, request)
+    if miss <= TOLERANCE or "ratio-window" in found.failed:
+        return found
+    low, high = request.ratio
+    words = f"{found.nearest}; and the DC/AC ratio, {ratio:.2f}, is outside the asked {low:g} to {high:g}"
+    return replace(found, nearest=words, distance=found.distance + miss)
+
+
+def _asked_ratio(pair: Pair, request: Request) -> tuple[float, float]:
+    """The DC/AC ratio of the asked modules that is nearest to the asked window, and by what share it is outside."""
+    low, high = (request.modules_in_strings,) * 2 if request.strings is not None else request.counts or (0, 0)
+    if not high:
+        return request.ratio[0], 0.0
+    each = pair.points.pmax_w / pair.inverter.ac_power_w
+    # Any number of modules and units of their ranges: only where the whole span is outside is the size wrong.
+    least, most = low * each / request.units[1], high * each / request.units[0]
+    nearest = min(max(request.ratio[0], least), most)
+    return nearest, _ratio_miss(nearest, request.ratio)
+
+
+def _rejection(pair: Pair, space: Space, window: ClimateWindow, request: Request) -> Rejection:
     if space.shortest > space.longest:
         return no_length(pair, space, window)
     if all(g.max_strings < 1 for g in space.groups):
@@ -346,8 +369,20 @@ def strings_stopped(
             if wired is None:
                 continue
             checks = checks_of(pair, wired)
-            return stopped_by(pair, wired, checks) if _failing(checks) else None
+            if not _failing(checks):
+                return None
+            stopped = stopped_by(pair, wired, checks)
+            return replace(stopped, nearest=stopped.nearest + _whole_strings(pair, whole.most, count, checks))
     return Rejection(("module-count",), "these strings cannot be shared by so many units", 1.0)
+
+
+def _whole_strings(pair: Pair, total: int, units: int, checks: Sequence[Check]) -> str:
+    """That modules shared out evenly would not exceed the array power of a unit, were strings not whole; or empty."""
+    even_w = total / units * pair.points.pmax_w
+    power = next((c for c in _failing(checks) if c.check == "array-power"), None)
+    if units == 1 or power is None or power.limit is None or even_w > power.limit:
+        return ""
+    return f" (strings stay whole: they cannot be parted into {even_w:,.0f} W on each of {units} units)"
 
 
 def stopped_by(pair: Pair, wired: tuple[Unit, ...], checks: Sequence[Check]) -> Rejection:

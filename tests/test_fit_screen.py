@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import random
 import re
 from dataclasses import replace
@@ -74,6 +75,33 @@ def test_in_short_says_what_stands_first_and_what_would_overtake_it(demo_catalog
     assert "#1, 3 x Sinewright Fiddle 1.5, is the least inverter for them (4.50 kW, DC/AC 1.44) that clips" in said
 
 
+def test_in_short_minds_what_the_order_does_not_see(demo_catalog, ferrule):
+    asked = ("fit", "-m", "qf 400h", "--count", "40", "--units", "1..3", *BARN)
+    said = " ".join(ferrule(*asked, "--by", "cost").out.split())
+    mind = re.search(r"Mind: #(\d) clips 5.68 % where 2 % is the most wanted, yields ([\d,]+) kWh a year less than #1 and brings", said)
+    # Two strings of 13.0 A on a tracker of the Old Faithful 4.6, which states 15 A.
+    assert mind and "brings 26.0 A to a tracker that takes 15 A and holds it back." in said
+    assert "Mind:" not in ferrule(*KLASSIK, *BARN, "--count", "24", "--units", "1..3").out.split("In short")[1]
+
+
+def test_a_small_screen_keeps_the_command_that_puts_a_value_on_record(demo_catalog, ferrule, monkeypatch):
+    monkeypatch.setattr(cli.fit_screen, "page_lines", lambda: 35)
+    said = ferrule("fit", "-m", "qf 400h", "--count", "40", "--units", "1..3", *BARN, "--in-stock", "--by", "cost").out
+    assert "ferrule sheet amend " in said and "at least 34.3 A (#4), 17.2 A (#5)" in said
+
+
+def test_the_nearest_miss_is_not_one_of_quite_another_size(demo_catalog, ferrule):
+    asked = ("fit", "-m", "qf 430x", "--strings", "2x11@100/30,1x12@280/30", "--units", "2", *BARN)
+    said = " ".join(ferrule(*asked).out.split())
+    # 22 modules of 430 W on one unit are 9,460 W of 9,000 W; the half of all 34 would be 7,310 W.
+    assert "The nearest is Sinewright Viola 6, stopped by array-power: wired as 1 of (1x11 | 1x11) + 1 of (1x12): 9,460 W" in said
+    assert "(strings stay whole: they cannot be parted into 7,310 W on each of 2 units)" in said
+    told = json.loads(ferrule(*asked, "--why", "--json").out)["rejected"]
+    # 34 modules on two inverters of 2.5 MW are DC/AC 0.003, whatever else stops them.
+    (nearest,) = (r["nearest"] for r in told if r["model"] == "Mainstay 2500")
+    assert nearest.endswith("; and the DC/AC ratio, 0.00, is outside the asked 0.8 to 1.5")
+
+
 def _waiting(rank: int, at_least: float) -> Option:
     confirm = Confirm("inverter", "max_dc_voltage_v", at_least, "V")
     return Option(rank, Verdict.TO_CONFIRM, 0, 0, 12, (), 1.2, None, None, None, confirm=(confirm,))
@@ -84,8 +112,14 @@ def test_what_to_confirm_is_grouped_by_value(demo_catalog, ferrule):
     # 2 strings of 12 need more than the top of the MPPT window, those of 9 to 11 do not.
     assert re.search(r"inverter: maximum DC input voltage of at least [\d.]+ V \(#1\) inverter", said)
     assert re.search(r"maximum short-circuit current of one tracker of at least [\d.]+ A \(#1-4\)", said)
-    for brief, words in ((False, "600.0 V (#2), 500.0 V (#1, #3)"), (True, "500.0 to 600.0 V (#1-3)")):
-        (line,) = _of_their_own([_waiting(1, 500.0), _waiting(2, 600.0), _waiting(3, 500.0)], "inverter", brief)
+    four = [_waiting(1, 500.0), _waiting(2, 600.0), _waiting(3, 550.0), _waiting(4, 520.0)]
+    # A few values are told apart on a small screen too: a range would leave open which option needs what.
+    for waiting, brief, words in (
+        (four[:2], False, "600.0 V (#2), 500.0 V (#1)"),
+        (four[:2], True, "600.0 V (#2), 500.0 V (#1)"),
+        (four, True, "500.0 to 600.0 V (#1-4)"),
+    ):
+        (line,) = _of_their_own(waiting, "inverter", brief)
         assert line == f"inverter: maximum DC input voltage of at least {words}"
     assert ranks_words([2, 4, 5, 6, 9]) == "#2, #4-6, #9"
 
