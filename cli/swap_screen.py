@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Any
 
 from cli.cautions import CAUTIONS, HOURLY_MEANS
-from cli.console import Column, number, print_table, say
+from cli.console import Column, console, number, print_table, say
 from cli.facts import confirm_words
 from cli.fit_screen import climate_window
 from cli.swap_words import PART_WORDS, CURRENT, VOLTAGE, answer, margin, offer_words, order, part_notes, question_words, signed
@@ -50,14 +50,17 @@ def _show_modules(question: Question, full: list[tuple[Fit, Option]]) -> None:
     say(f"Order: {order(question)}.")
     say()
     clips = any(o.clipping_loss_pct is not None for _, o in full)
-    columns = [Column("#", number=True), Column("module", fold=True, min_width=26), Column("verdict"), Column("W", number=True),
+    # A narrow screen has no room for sizes beside names that can be read.
+    sizes = console().width >= _ROOM_FOR_SIZES
+    columns = [Column("#", number=True), Column("module", fold=True, min_width=20), Column("verdict"), Column("W", number=True),
                Column("power %", number=True), Column("Vmp %", number=True), Column("Imp %", number=True),
-               Column("mm", number=True), Column("DC/AC", number=True)]  # fmt: skip
+               *([Column("mm", number=True)] if sizes else []), Column("DC/AC", number=True)]  # fmt: skip
     if clips:
         columns.append(Column("clip %", number=True))
     columns.append(Column("holds at degC", number=True))
     own = question.vetted.option
-    rows = [["old", question.module.name, question.vetted.verdict, f"{question.module.pmax_w:.0f}", "", "", "", _size(question.module)]]
+    rows = [["old", question.module.name, question.vetted.verdict, f"{question.module.pmax_w:.0f}", "", "", ""]]
+    rows[0] += [_size(question.module)] * sizes
     rows[0] += ["" if own is None else f"{own.dc_ac_ratio:.2f}"]
     rows[0] += [] if not clips else ["" if own is None else number(own.clipping_loss_pct, 2)]
     rows[0] += [_own_window(question)]
@@ -66,7 +69,7 @@ def _show_modules(question: Question, full: list[tuple[Fit, Option]]) -> None:
         row = [
             str(k + 1), fit.modules[0].name, str(o.verdict), f"{fit.modules[0].pmax_w:.0f}",
             *(signed(swaps.changes[n][k]) for n in ("power", "vmp", "imp")),
-            "x".join(signed(v, 0) for v in size) if size[0] == size[0] else "", _ratio(question, k, o),
+            *["x".join(signed(v, 0) for v in size) if size[0] == size[0] else ""] * sizes, _ratio(question, k, o),
         ]  # fmt: skip
         rows.append([*row, *([number(o.clipping_loss_pct, 2)] if clips else []), climate_window(o)])
     print_table(columns, rows)
@@ -75,6 +78,10 @@ def _show_modules(question: Question, full: list[tuple[Fit, Option]]) -> None:
     _more(question, len(full))
     _margins(full)
     _confirm(full)
+
+
+#: Width of a screen from which on changes of size are shown.
+_ROOM_FOR_SIZES = 96
 
 
 def _size(module) -> str:
