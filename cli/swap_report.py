@@ -109,9 +109,12 @@ def _part(q: Question) -> tuple[list[Column], list[dict[str, Any]]]:
     for k, c in enumerate(q.swaps.found[:ROWS]):
         record = q.records[c.index]
         losses = [None if m is None else m.loss_pct for m in (c.stc, c.hot, c.spread_stc)]
+        marks = (" !" * c.idle, "", "")
         cells = [
             Cell(str(k + 1), k + 1), Cell(c.verdict), Cell(record.name), Cell(f"{record.pmax_w:.0f}", record.pmax_w),
-            Cell(" | ".join(t.label for t in c.trackers)), *(Cell("?" if v is None else number(v, 2), v) for v in losses),
+            Cell(" | ".join(t.label for t in c.trackers)), *(
+                Cell("?" if v is None else number(v, 2) + mark, v) for v, mark in zip(losses, marks, strict=True)
+            ),
             Cell("; ".join(f"{x.record}: {facts.confirm_words(x)}" for x in c.confirm)),
         ]  # fmt: skip
         rows.append({"verdict": c.verdict, "cells": cells + _stock_cell(q, record)})
