@@ -38,6 +38,9 @@ def console(stderr: bool = False) -> Console:
 #: Width below which a column is not folded while others can still give way, and its width in the narrowest table.
 _LEAST_FOLD, _NARROWEST = 12, 8
 
+#: Rows up to which it is tried how to share the width out for the fewest lines.
+_WEIGHED = 200
+
 
 def print_table(columns: Sequence[Column], rows: Iterable[Sequence[str]]) -> None:
     """Print rows of text; numbers are set to the right and never wrapped."""
@@ -81,7 +84,7 @@ def _fitted(columns: Sequence[Column], rows: Sequence[Sequence[str]], room: int)
     plain = [c.header for c in columns]
     narrow = [h if c.fold else _narrowed(h, cell) for c, h, cell in zip(columns, plain, cells, strict=True)]
     widths, narrow_widths = (_widths(columns, headers, rows, cells, spare) for headers in (plain, narrow))
-    if sum(widths) > spare or _lines(columns, rows, narrow_widths) + 1 < _lines(columns, rows, widths):
+    if sum(widths) > spare or _lines(columns, rows, narrow_widths) < _lines(columns, rows, widths):
         return narrow, narrow_widths
     return plain, widths
 
@@ -89,7 +92,7 @@ def _fitted(columns: Sequence[Column], rows: Sequence[Sequence[str]], room: int)
 def _widths(
     columns: Sequence[Column], headers: Sequence[str], rows: Sequence[Sequence[str]], cells: Sequence[int], spare: int
 ) -> list[int]:
-    """Widths that leave columns which may fold as wide as can be, and at least as wide as their longest word."""
+    """Widths with which the rows take the fewest lines, columns that may fold no narrower than their words if it can be."""
     words = [max((_width(w) for row in rows for w in row[k].replace("\n", " ").split(" ")), default=0) for k in range(len(columns))]
     whole = [max(_width(h), cell) for h, cell in zip(headers, cells, strict=True)]
     soft = [min(c.min_width or _LEAST_FOLD, w) if c.fold else w for c, w in zip(columns, whole, strict=True)]
@@ -102,7 +105,11 @@ def _widths(
     ):
         if sum(least) <= spare:
             break
-    return _shared_out(least, whole, spare)
+    firsts = [None, *(k for k, c in enumerate(columns) if c.fold)] if len(rows) <= _WEIGHED else [None]
+    shares = [_shared_out(least, whole, spare, k) for k in firsts]
+    if len(shares) == 1 or sum(whole) <= spare:
+        return shares[0]
+    return min(shares, key=lambda widths: _lines(columns, rows, widths))
 
 
 def _lines(columns: Sequence[Column], rows: Sequence[Sequence[str]], widths: Sequence[int]) -> int:
@@ -113,10 +120,15 @@ def _lines(columns: Sequence[Column], rows: Sequence[Sequence[str]], widths: Seq
     )
 
 
-def _shared_out(least: Sequence[int], whole: Sequence[int], spare: int) -> list[int]:
-    """Widths from the least to the whole, what is there to share given to those that lack most."""
+def _shared_out(least: Sequence[int], whole: Sequence[int], spare: int, first: int | None = None) -> list[int]:
+    """Widths from the least to the whole; what is there to share goes to the ``first``, then to those that lack most."""
     widths = list(least)
-    for _ in range(spare - sum(widths)):
+    left = max(0, spare - sum(widths))
+    if first is not None:
+        given = min(left, whole[first] - widths[first])
+        widths[first] += given
+        left -= given
+    for _ in range(left):
         lacking = [w - now for w, now in zip(whole, widths, strict=True)]
         most = max(lacking, default=0)
         if most <= 0:
@@ -136,6 +148,8 @@ def _folded(text: str, width: int) -> str:
     """A text over several lines, where a no-break space does not break."""
     import textwrap
 
+    if len(text) <= width and "\n" not in text:
+        return text.replace("\u00a0", " ")
     lines = [some for line in text.split("\n") for some in textwrap.wrap(line, max(width, 1), break_on_hyphens=False) or [""]]
     return "\n".join(lines).replace("\u00a0", " ")
 
