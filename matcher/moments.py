@@ -67,14 +67,15 @@ class _Sums:
             mean = (energy * volts).sum(axis=1) / energy.sum(axis=1)
             w = np.where(power > 0, volts / mean[:, None] - 1.0, 0.0)
         sums = np.zeros((power.shape[0], power.shape[1] + 1, sum(_TERMS)))
-        powers = w[..., None] ** np.arange(max(_TERMS))
-        first = 0
-        for a, count in enumerate(_TERMS):
-            weight = hours * power**a
-            np.cumsum(weight[..., None] * powers[..., :count], axis=1, out=sums[:, 1:, first : first + count])
-            first += count
+        weights, starts = (hours, energy, energy * power), np.cumsum((0, *_TERMS))
+        risen = np.ones_like(w)  # w**b
+        for b in range(max(_TERMS)):
+            for weight, start, count in zip(weights, starts, _TERMS, strict=False):
+                if b < count:
+                    np.cumsum(weight * risen, axis=1, out=sums[:, 1:, start + b])
+            risen = risen * w
         with np.errstate(invalid="ignore", divide="ignore"):
-            fifth = (energy * np.abs(w) ** 5).sum(axis=1) / energy.sum(axis=1)
+            fifth = (energy * np.abs(w * w * w * w * w)).sum(axis=1) / energy.sum(axis=1)
         peak = power[:, 0]
         share = power[:, ::-1] / np.where(peak > 0, peak, 1.0)[:, None]
         keys = (np.arange(len(power))[:, None] + share / 2.0).ravel()

@@ -13,6 +13,9 @@ from matcher.columns import InverterColumns
 from matcher.moduleyear import ModuleYear
 from matcher.moments import energies
 
+#: Options of one year from which on the sums over it are worth making.
+_WORTH_SUMS = 8
+
 
 def single_losses(
     year: ModuleYear,
@@ -36,7 +39,10 @@ def single_losses(
     line = np.zeros(len(inverter), dtype=np.int64) if module is None else module
     order = np.argsort(line, kind="stable")
     options = line[order], inverter[order], strings[order], in_series[order]
-    sums, served = energies(power, volts, hours, inverters, *options)
+    sums, served = np.empty((3, len(order))), np.zeros(len(order), dtype=bool)
+    many = np.flatnonzero(np.bincount(line)[options[0]] >= _WORTH_SUMS)
+    if len(many):
+        sums[:, many], served[many] = energies(power, volts, hours, inverters, *(o[many] for o in options))
     rest = np.flatnonzero(~served)
     step = max(1, CHUNK // power.shape[1])
     for first in range(0, len(rest), step):
