@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 import sys
 import time
 from collections.abc import Callable, Iterable, Iterator, Sequence
@@ -25,14 +26,21 @@ class Column:
     min_width: int | None = None
 
 
+#: Asks for plain text on a terminal too, where it is set.
+PLAIN = "FERRULE_PLAIN"
+
+
 def console(stderr: bool = False) -> Console:
-    """A console no wider than `WIDTH`; without colour where it is no terminal."""
+    """A console no wider than `WIDTH`; without bold and colour where it is no terminal, or plain text is asked for."""
     from rich.console import Console
 
     stream = sys.stderr if stderr else sys.stdout
     screen = Console(file=stream, highlight=False, soft_wrap=False, emoji=False, markup=False)
     width = min(screen.width, WIDTH) if stream.isatty() else WIDTH
-    return Console(file=stream, highlight=False, emoji=False, markup=False, width=width)
+    plain = bool(os.environ.get(PLAIN))
+    return Console(
+        file=stream, highlight=False, emoji=False, markup=False, width=width, color_system=None if plain else "auto"
+    )
 
 
 #: Width below which a column is not folded while others can still give way, and its width in the narrowest table.

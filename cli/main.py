@@ -2,17 +2,22 @@
 
 from __future__ import annotations
 
+import os
 import sys
+from collections.abc import Iterator
+from contextlib import contextmanager
 from functools import cache
 from typing import Annotated, Any
 
 import typer
 
 from catalog.errors import CatalogError
+from cli.console import PLAIN
 from cli.groups import Commands
 from matcher.errors import MatcherError
 
 BAD_INPUT = 2
+_PLAIN = "--plain"
 INTERRUPTED = 130
 
 app = Commands(
@@ -40,6 +45,7 @@ def ferrule(
     version: Annotated[
         bool, typer.Option("--version", callback=_print_version, is_eager=True, help="Show the version and exit.")
     ] = False,
+    plain: Annotated[bool, typer.Option("--plain", help="No bold and no colour, as in a pipe. May stand anywhere.")] = False,
 ) -> None:
     """Which PV modules and inverters go together, in which strings, how sure that is, and what it
     costs in clipping.
@@ -85,6 +91,11 @@ def main(arguments: list[str] | None = None) -> None:
 
 def run(arguments: list[str] | None = None) -> int:
     """Run the command line and return its exit status; every error is one line on stderr."""
+    arguments = list(sys.argv[1:] if arguments is None else arguments)
+    if _PLAIN in arguments:
+        # Taken here, so that it may stand before a command and behind it.
+        with _plain():
+            return run([word for word in arguments if word != _PLAIN])
     try:
         status = command().main(arguments, prog_name="ferrule", standalone_mode=False)
         if status == INTERRUPTED:
@@ -112,6 +123,20 @@ def run(arguments: list[str] | None = None) -> int:
         context = getattr(error, "ctx", None)
         where = context.command_path if context else "ferrule"
         return _refused(f"{message} (see '{where} --help')")
+
+
+@contextmanager
+def _plain() -> Iterator[None]:
+    """Plain text for as long as this lasts."""
+    before = os.environ.get(PLAIN)
+    os.environ[PLAIN] = "1"
+    try:
+        yield
+    finally:
+        if before is None:
+            del os.environ[PLAIN]
+        else:
+            os.environ[PLAIN] = before
 
 
 def _refused(line: str, status: int = BAD_INPUT) -> int:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import ctypes
 import importlib.metadata
+import io
 import os
 import re
 import shlex
@@ -288,3 +289,26 @@ def test_of_many_candidates_some_are_listed_and_the_rest_is_a_command_away(ferru
     assert len(listed) == 10
     found = ferrule(*shlex.split(re.search(r"'ferrule (.+)'", more)[1]), "--limit", 50).out
     assert sum("Row 1" in line for line in found.splitlines()) == 12
+
+
+def test_plain_text_on_a_terminal(small_catalog, monkeypatch):
+    from cli.main import run
+
+    class Terminal(io.StringIO):
+        def isatty(self) -> bool:
+            return True
+
+    monkeypatch.setenv("TERM", "xterm-256color")
+    for name in ("FERRULE_PLAIN", "NO_COLOR"):
+        monkeypatch.delenv(name, raising=False)
+
+    def printed(*words: str) -> str:
+        monkeypatch.setattr(sys, "stdout", Terminal())
+        assert run([*words, "--catalog", str(small_catalog)]) == 0
+        return sys.stdout.getvalue()
+
+    styled = printed("site", "list")
+    assert "\x1b" in styled
+    for words in (("--plain", "site", "list"), ("site", "list", "--plain")):
+        assert printed(*words) == re.sub("\x1b\\[[0-9;]*m", "", styled)
+    assert "FERRULE_PLAIN" not in os.environ
