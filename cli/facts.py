@@ -25,6 +25,11 @@ FROM_HOURS = "file"
 _VOLTAGE_MAXIMA = ("max_dc_voltage_v", "max_system_voltage_v")
 
 
+def year_words(year: SiteYear | None) -> str:
+    """What stands over a yearly energy."""
+    return "a year without clouds" if year is not None and year.clear_sky else "a year"
+
+
 def number_of_options(fit: Fit) -> int:
     """Options that the result holds, known before they are gone through."""
     return fit.totals.arrangements if fit.lazy else len(fit.table)

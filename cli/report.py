@@ -70,7 +70,7 @@ def _best(fit: Fit, o: Option, year: SiteYear) -> dict[str, Any]:
     if o.clipping_loss_pct is not None:
         shown.append(("clipped", f"{o.clipping_loss_pct:.2f} %"))
     if o.yearly_kwh is not None:
-        shown.append(("a year without clouds" if year.clear_sky else "a year", f"{o.yearly_kwh:,.0f} kWh"))
+        shown.append((facts.year_words(year), f"{o.yearly_kwh:,.0f} kWh"))
     if o.cost is not None:
         shown.append(("modules and inverters cost", f"{o.cost:,.2f} {_currency(fit)}"))
     site = fit.request.site

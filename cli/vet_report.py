@@ -34,7 +34,7 @@ def write_bundle(vetted: Vetted, fit: Fit, year: SiteYear | None, stream: IO[str
         "outcome": v.verdict,
         "label": wired,
         "what": f"of {v.bundle.module.name} on {counted(v.bundle.units, 'unit')} of {v.inverter.name}",
-        "named": _facts(v),
+        "named": _facts(v, year),
         "remarks": [f"Note: {r}." for r in v.remarks],
         "mends": None if o is not None or v.verdict == "no-verdict" else [
             {"verdict": m.verdict, "words": mend_words(m, v)} for m in v.mends
@@ -63,7 +63,7 @@ def _answer(v: Vetted) -> str:
     return f"{fits}. {sentence(window_words(v.window))}"
 
 
-def _facts(v: Vetted) -> list[tuple[str, str]]:
+def _facts(v: Vetted, year: SiteYear | None) -> list[tuple[str, str]]:
     o = v.option
     if o is None:
         return []
@@ -71,7 +71,7 @@ def _facts(v: Vetted) -> list[tuple[str, str]]:
     if o.clipping_loss_pct is not None:
         shown.append(("clipped", f"{o.clipping_loss_pct:.2f} %"))
     if o.yearly_kwh is not None:
-        shown.append(("a year", f"{o.yearly_kwh:,.0f} kWh"))
+        shown.append((facts.year_words(year), f"{o.yearly_kwh:,.0f} kWh"))
     shown.append(("holds in air of", typeset(facts.climate_words(o, v.site.design_low_c, v.site.design_high_c))))
     margins = [c for c in v.checks if c.stop and c.margin_pct is not None and c.unit != "1"]
     if margins:

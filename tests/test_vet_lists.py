@@ -233,6 +233,9 @@ def test_one_bundle_as_a_page(ferrule, demo_catalog, tmp_path):
     assert ferrule(*one, "--low", -12, "--high", 36).status == 1
     page = out.read_text("utf-8")
     assert "What would mend it" in page and "13 modules instead of 14 (1x13)" in page and page.count("<svg") == 1
+    # Without a weather file the energy is that of a clear sky, and said to be.
+    assert ferrule(*one, "--low", -2, "--high", 36, "--lat", 47, "--lon", 1).status == 0
+    assert "a year without clouds" in out.read_text("utf-8")
 
 
 def test_a_name_is_read_aloud_where_it_is_misspelt_and_near_ones_are_named(ferrule, demo_catalog, tmp_path):
